@@ -1,0 +1,28 @@
+//! Gaptone turns receiver audio back into the firing rate, the jitter and the gap voltage of a
+//! relaxation-fired spark gap, and goes forward from bench settings to the audio a receiver would give.
+//!
+//! ```text
+//!  bench ──► model ──► audio ──► file, sound card
+//!              ▲          │
+//!              │ firings  ▼
+//!  report ◄── voltage ◄── rhythm ◄── clicks
+//! ```
+//!
+//! The rooms, in the order the data takes: [`bench`] reads the description of a bench; [`model`] holds the
+//! laws (charging, breakdown, receiver) and goes forward; [`audio`] carries samples; [`clicks`] finds clicks;
+//! [`rhythm`] finds the trains among them and their statistics; [`voltage`] inverts the charging law;
+//! [`report`] says it to people and machines. [`cli`] is the only room that knows files, terminals and devices.
+//!
+//! Everything inside is in SI units; a name carries its unit (`period_s`, `gap_voltage_v`).
+
+pub mod audio;
+pub mod bench;
+pub mod cli;
+pub mod clicks;
+pub mod estimate;
+pub mod firing;
+pub mod measure;
+pub mod model;
+pub mod report;
+pub mod rhythm;
+pub mod voltage;
