@@ -16,6 +16,8 @@ pub const DEFAULT_PEAK: f64 = 0.5;
 const LONGEST_RUN_IN_S: f64 = 5.0;
 /// Longest stretch that is listened to before the level is set, s.
 const LONGEST_PROBE_S: f64 = 2.0;
+/// Shortest such stretch, s: long enough for a rare coincidence of overlapping clicks.
+const SHORTEST_PROBE_S: f64 = 1.0;
 /// Seed of that stretch: the level does not hang on the seed of the clip.
 const PROBE_SEED: u64 = 1;
 
@@ -277,7 +279,7 @@ fn loudest(settings: &RenderSettings, rate_hz: f64, click_peak: f64) -> f64 {
     let receiver = &settings.receiver;
     let period_s = if settings.expected_rate_hz > 0.0 { 1.0 / settings.expected_rate_hz } else { f64::INFINITY };
     let run_in = (run_in_s(receiver) * rate_hz).ceil() as i64;
-    let trial = ((8.0 * period_s).clamp(0.25, LONGEST_PROBE_S) * rate_hz) as i64;
+    let trial = ((8.0 * period_s).clamp(SHORTEST_PROBE_S, LONGEST_PROBE_S) * rate_hz) as i64;
     let mut chain = Chain::new(receiver, rate_hz, -run_in, PROBE_SEED);
     // A train that has been going on since the receiver was switched on, with a click soon after time 0.
     let mut next_click_s = if period_s.is_finite() { -(run_in_s(receiver) / period_s).floor() * period_s } else { 0.0 };

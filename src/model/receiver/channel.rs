@@ -169,6 +169,13 @@ fn divide_by_linear(series: &mut [Complex], gain: Complex, distance: Complex) {
     }
 }
 
+/// z_k = Σ step_j·z_(k−j), in place.
+fn convolve(z: &mut [Complex], step: &[Complex]) {
+    for k in (0..z.len()).rev() {
+        z[k] = (0..=k).map(|j| step[j] * z[k - j]).sum();
+    }
+}
+
 /// States of one pole.
 #[derive(Debug, Clone, PartialEq)]
 struct Chain {
@@ -189,13 +196,14 @@ impl ChannelState {
     #[inline]
     pub fn advance(&mut self) {
         for chain in &mut self.chains {
-            let (step, z) = (&chain.step[..], &mut chain.states[..]);
-            for k in (0..z.len()).rev() {
-                let mut sum = step[0] * z[k];
-                for j in 1..=k {
-                    sum += step[j] * z[k - j];
+            match (&mut chain.states[..], &chain.step[..]) {
+                // The usual filters have single and double poles.
+                ([z], [e]) => *z *= e,
+                ([z, chained], [e, e_t]) => {
+                    *chained = e * *chained + e_t * *z;
+                    *z *= e;
                 }
-                z[k] = sum;
+                (z, step) => convolve(z, step),
             }
         }
     }

@@ -20,18 +20,22 @@ pub(crate) enum Stream {
 
 /// A stream of draws.
 #[derive(Debug, Clone)]
-pub(crate) struct Draw(Xoshiro256PlusPlus);
+pub(crate) struct Draw {
+    generator: Xoshiro256PlusPlus,
+    /// The second of the last pair of normal numbers.
+    spare: Option<f64>,
+}
 
 impl Draw {
     pub(crate) fn new(seed: u64, stream: Stream) -> Self {
-        Self(Xoshiro256PlusPlus::seed_from_u64(scramble(seed ^ scramble(stream as u64))))
+        Self { generator: Xoshiro256PlusPlus::seed_from_u64(scramble(seed ^ scramble(stream as u64))), spare: None }
     }
 
     /// Uniform in (0, 1), neither end reached.
     #[inline]
     pub(crate) fn uniform(&mut self) -> f64 {
         const UNIT: f64 = 1.0 / (1u64 << 53) as f64;
-        ((self.0.next_u64() >> 11) as f64 + 0.5) * UNIT
+        ((self.generator.next_u64() >> 11) as f64 + 0.5) * UNIT
     }
 
     /// A point on the unit circle.
@@ -39,18 +43,28 @@ impl Draw {
         Complex::from_polar(1.0, TAU * self.uniform())
     }
 
-    /// Complex normal number of mean square 1: both parts normal with variance 1/2 (Box and Muller 1958).
+    /// Complex normal number of mean square 1: both parts normal with variance 1/2, by the polar method (Marsaglia and Bray
+    /// 1964). Whether a point is drawn again is decided by sums and products alone, so every machine draws the same points.
     #[inline]
     pub(crate) fn complex_normal(&mut self) -> Complex {
-        let radius = (-self.uniform().ln()).sqrt();
-        let (sin, cos) = (TAU * self.uniform()).sin_cos();
-        Complex::new(radius * cos, radius * sin)
+        loop {
+            let point = Complex::new(2.0 * self.uniform() - 1.0, 2.0 * self.uniform() - 1.0);
+            let square = point.norm_sqr();
+            if square < 1.0 && square > 0.0 {
+                return point * (-square.ln() / square).sqrt();
+            }
+        }
     }
 
-    /// Normal number of variance 1; two uniform draws each.
+    /// Normal number of variance 1.
     #[inline]
     pub(crate) fn normal(&mut self) -> f64 {
-        self.complex_normal().re * std::f64::consts::SQRT_2
+        if let Some(spare) = self.spare.take() {
+            return spare;
+        }
+        let pair = self.complex_normal() * std::f64::consts::SQRT_2;
+        self.spare = Some(pair.im);
+        pair.re
     }
 }
 
@@ -60,4 +74,37 @@ fn scramble(value: u64) -> u64 {
     z = (z ^ (z >> 33)).wrapping_mul(0xff51_afd7_ed55_8ccd);
     z = (z ^ (z >> 33)).wrapping_mul(0xc4ce_b9fe_1a85_ec53);
     z ^ (z >> 33)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn complex_normal_numbers_have_the_moments_of_a_normal_distribution() {
+        const N: usize = 200_000;
+        let mut draw = Draw::new(7, Stream::ChannelNoise);
+        let values: Vec<Complex> = (0..N).map(|_| draw.complex_normal()).collect();
+        let mean = |f: &dyn Fn(&Complex) -> f64| values.iter().map(f).sum::<f64>() / N as f64;
+        // Standard errors: 1/√n for the square, √(96/4)/√n for the fourth power of a part, 1/√(2n) for the products.
+        let error = 1.0 / (N as f64).sqrt();
+        assert!((mean(&|z| z.norm_sqr()) - 1.0).abs() < 4.0 * error);
+        assert!((mean(&|z| z.re.powi(4)) - 0.75).abs() < 4.0 * 24f64.sqrt() * error);
+        assert!(mean(&|z| z.re * z.im).abs() < 4.0 * error);
+        assert!(mean(&|z| z.re).abs() < 4.0 * error && mean(&|z| z.im).abs() < 4.0 * error);
+    }
+
+    #[test]
+    fn streams_and_neighbouring_seeds_are_unrelated() {
+        let first = |seed, stream| Draw::new(seed, stream).uniform();
+        let draws = [
+            first(1, Stream::ClickPhase),
+            first(2, Stream::ClickPhase),
+            first(1, Stream::Carrier),
+            first(3, Stream::Recorder),
+        ];
+        for (i, a) in draws.iter().enumerate() {
+            assert!(draws[i + 1..].iter().all(|b| (a - b).abs() > 1e-3), "{draws:?}");
+        }
+    }
 }
