@@ -56,7 +56,7 @@ fn impulse_and_noise_bandwidths_have_the_ratios_of_filter_theory() {
     let synchronous = |circuits| Selectivity::Synchronous { circuits };
     let butterworth = |poles| Selectivity::Butterworth { poles };
     let table = [
-        (synchronous(1), PI, PI / 3f64.sqrt(), 1.5708),
+        (synchronous(1), PI, PI / 3f64.sqrt(), PI / 2.0),
         (synchronous(2), 1.796, 1.156, 1.220),
         (synchronous(3), 1.668, 1.109, 1.155),
         (synchronous(4), 1.618, 1.094, 1.128),
@@ -262,8 +262,8 @@ fn click_strength_off_tune_follows_the_independent_software_radio_sweep() {
 // The bound RC ≤ √(1 − m²)/(m·ω) is common practice (diode-detector theory).
 #[test]
 fn a_detector_clips_diagonally_beyond_the_textbook_time_constant() {
-    let (depth, omega, step_s) = (0.8, TAU * 1000.0, 1e-7);
-    let bound_s = (1.0 - depth * depth as f64).sqrt() / (depth * omega);
+    let (depth, omega, step_s) = (0.8f64, TAU * 1000.0, 1e-7);
+    let bound_s = (1.0 - depth * depth).sqrt() / (depth * omega);
     assert!((bound_s - 119.4e-6).abs() < 1e-6);
     let worst = |discharge_s: f64| {
         let mut detector = Detector::new(DetectorSettings { charge_s: 0.0, discharge_s }, step_s);
