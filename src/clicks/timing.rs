@@ -4,8 +4,8 @@
 //! carrier needs two shapes. The gap's own jitter is the same in every channel, so the channel with the least scatter of
 //! periods has the least timing noise. Each channel is a whitening, a window about the click and a number of shape vectors.
 
-use super::snippet::{dot, normalise, read};
 use super::shape::{leading_vectors, median_shape};
+use super::snippet::{dot, normalise, read};
 
 /// How much the spectrum is flattened before times are read.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -70,7 +70,7 @@ pub fn channels(signed: bool) -> Vec<Channel> {
 }
 
 /// Most clicks a shape is learnt from.
-const LEARN_FROM: usize = 600;
+const LEARN_FROM: usize = 200;
 /// Farthest that a time may move, s and periods.
 const REACH_S: f64 = 0.12e-3;
 const REACH_PERIODS: f64 = 0.2;

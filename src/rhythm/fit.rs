@@ -43,6 +43,15 @@ pub struct Start {
     pub rounds: usize,
 }
 
+impl Start {
+    /// A start from what an earlier fit found: tight trains follow the period, loose ones would wander.
+    #[must_use]
+    pub fn again(period_s: f64, jitter: f64) -> Self {
+        let loose = jitter > super::path::GAMMA_FROM;
+        Self { period_s, jitter, follow: if loose { 0.0 } else { 0.1 }, steep: loose, rounds: 3 }
+    }
+}
+
 /// Fewest firings of a chain that is looked at.
 const FEWEST: usize = 5;
 
@@ -58,9 +67,7 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
     let mut periods = vec![start.period_s; c.len()];
     let mut last = None;
     for round in 0..start.rounds {
-        let ln_off = off_rate.ln();
-        let net: Vec<f64> = gain.iter().map(|g| g - ln_off).collect();
-        let chain = best_chain(&c.time_s, &net, &periods, law);
+        let chain = chain_of_hopeful(c, &gain, off_rate.ln(), &periods, law, round == 0);
         if chain.index.len() < FEWEST {
             return None;
         }
@@ -74,11 +81,10 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         let densities = (binned.density(|i| on[i]), binned.density(|i| !on[i]));
         let off = (c.len() - chain.index.len()).max(1) as f64;
         gain = binned.gain(&densities.0, &densities.1);
-        let used_rate = off_rate.max((off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s));
         off_rate = (off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s);
-        last = Some((chain, steps, on, densities, used_rate));
+        last = Some((chain, steps, on, densities));
     }
-    let (chain, steps, on, densities, _) = last?;
+    let (chain, steps, on, densities) = last?;
     let evidence = evidence(c, duration_s, &binned, &chain, &on, &densities, off_rate, &steps);
     Some(Fit {
         evidence,
@@ -88,6 +94,22 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         cover: steps.span() / duration_s,
         chain,
     })
+}
+
+/// A candidate this many nats worse than leaving its firing out as missed is not looked at.
+const HOPELESS: f64 = 4.0;
+
+/// The best chain through the candidates that can be on one; indices refer to all. The first round looks at all.
+fn chain_of_hopeful(c: &Candidates, gain: &[f64], ln_off: f64, periods: &[f64], law: Law, all: bool) -> Chain {
+    // The most that a step's density can add is that of its peak, about −ln(2.5·s·T).
+    let least = law.missed.ln() + (2.5 * law.jitter).ln() - HOPELESS;
+    let keep: Vec<usize> = (0..c.len()).filter(|&i| all || gain[i] - ln_off >= least + periods[i].ln()).collect();
+    let time_s: Vec<f64> = keep.iter().map(|&i| c.time_s[i]).collect();
+    let net: Vec<f64> = keep.iter().map(|&i| gain[i] - ln_off).collect();
+    let period_s: Vec<f64> = keep.iter().map(|&i| periods[i]).collect();
+    let mut chain = best_chain(&time_s, &net, &period_s, law);
+    chain.index.iter_mut().for_each(|i| *i = keep[*i]);
+    chain
 }
 
 /// Gains before any chain is known: a soft threshold a little under the mark of rank 0.9·duration/T.
@@ -137,10 +159,8 @@ impl Steps {
         }
         let centre = median(&z);
         let robust = 1.4826 * median(&z.iter().map(|v| (v - centre).abs()).collect::<Vec<_>>());
-        let (sum, n) = z
-            .iter()
-            .filter(|v| v.abs() < 5.0 * robust + 1e-9)
-            .fold((0.0, 0usize), |(s, n), v| (s + v * v, n + 1));
+        let (sum, n) =
+            z.iter().filter(|v| v.abs() < 5.0 * robust + 1e-9).fold((0.0, 0usize), |(s, n), v| (s + v * v, n + 1));
         let rms = if n > 3 { (sum / n as f64).sqrt() } else { robust };
         let seen = rms.max(robust).max(3e-6 / median(&self.period)).max(5e-4);
         (1.1 * seen).max(0.3 * before).min(0.6)
@@ -180,7 +200,8 @@ fn evidence(
     }
     if median(&steps.period) < 2e-3 {
         let gaps: Vec<f64> = c.time_s.windows(2).map(|w| w[1] - w[0]).collect();
-        let off_gaps: Vec<f64> = gaps.iter().zip(on.windows(2)).filter(|(_, o)| !o[0] && !o[1]).map(|(g, _)| *g).collect();
+        let off_gaps: Vec<f64> =
+            gaps.iter().zip(on.windows(2)).filter(|(_, o)| !o[0] && !o[1]).map(|(g, _)| *g).collect();
         with += regularity(&off_gaps);
         null += regularity(&gaps);
     }
@@ -223,7 +244,8 @@ pub fn local_period(c: &Candidates, chain: &Chain, fallback_s: f64) -> Vec<f64> 
     if period.len() < 4 {
         return vec![fallback_s; c.len()];
     }
-    let smooth = if period.len() > 2 * LOCAL_HALF { smooth_periods(&period) } else { vec![median(&period); period.len()] };
+    let smooth =
+        if period.len() > 2 * LOCAL_HALF { smooth_periods(&period) } else { vec![median(&period); period.len()] };
     interpolate(&c.time_s, &when, &smooth)
 }
 
@@ -239,9 +261,8 @@ fn smooth_periods(period: &[f64]) -> Vec<f64> {
         })
         .collect();
     let width = 2 * LOCAL_HALF + 1;
-    let weight: Vec<f64> = (0..width)
-        .map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos())
-        .collect();
+    let weight: Vec<f64> =
+        (0..width).map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos()).collect();
     let total: f64 = weight.iter().sum();
     (0..held.len())
         .map(|i| {
@@ -327,7 +348,8 @@ mod tests {
             state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
             (state >> 33) as f64 / (1u64 << 31) as f64
         };
-        let mut all: Vec<(f64, f64)> = (0..400).map(|n| (0.01 * f64::from(n) + 4e-4 * (uniform() - 0.5), 2.0 + uniform())).collect();
+        let mut all: Vec<(f64, f64)> =
+            (0..400).map(|n| (0.01 * f64::from(n) + 4e-4 * (uniform() - 0.5), 2.0 + uniform())).collect();
         all.extend((0..4000).map(|_| (uniform() * 4.0, uniform())));
         all.sort_by(|a, b| a.0.total_cmp(&b.0));
         let c = Candidates { time_s: all.iter().map(|a| a.0).collect(), mark: all.iter().map(|a| a.1).collect() };
