@@ -67,11 +67,6 @@ fn butterworth(order: usize, corner_hz: f64, rate_hz: f64, pair: [f64; 3], singl
     chain
 }
 
-/// Band-pass resonance of centre and quality, unit gain at the centre.
-pub fn resonance(centre_hz: f64, quality: f64, rate_hz: f64) -> Section {
-    Section::bilinear(centre_hz, rate_hz, [0.0, 1.0 / quality, 0.0], [1.0, 1.0 / quality, 1.0])
-}
-
 /// Low-pass equivalent of two coupled circuits: each of half-width `half_hz` alone, coupling relative to critical.
 pub fn coupled_pair(coupling: f64, half_hz: f64, rate_hz: f64) -> Section {
     let c = 1.0 + coupling * coupling;

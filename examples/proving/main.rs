@@ -23,6 +23,7 @@ mod receiver;
 mod recorder;
 mod scene;
 mod score;
+mod sounds;
 mod table;
 mod write;
 

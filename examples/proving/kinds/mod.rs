@@ -2,6 +2,7 @@
 
 mod circuits;
 mod faults;
+mod nothing;
 mod reception;
 mod steady;
 
@@ -40,6 +41,33 @@ pub const KINDS: &[Kind] = &[
     Kind { name: "clipped", build: reception::clipped },
     Kind { name: "agclevel", build: reception::level_dependent_gain },
     Kind { name: "fm", build: reception::discriminator },
+    Kind { name: "station", build: reception::station },
+    Kind { name: "music", build: reception::station_music },
+    Kind { name: "no-whistle", build: nothing::whistle },
+    Kind { name: "no-warble", build: nothing::warble },
+    Kind { name: "no-chord", build: nothing::chord },
+    Kind { name: "no-keyed", build: nothing::keyed },
+    Kind { name: "no-data", build: nothing::data },
+    Kind { name: "no-sweep", build: nothing::sweep },
+    Kind { name: "no-dial", build: nothing::dial },
+    Kind { name: "no-music", build: nothing::melody },
+    Kind { name: "no-speech", build: nothing::voice },
+    Kind { name: "no-engine", build: nothing::engine },
+    Kind { name: "no-fan", build: nothing::fan },
+    Kind { name: "no-white", build: nothing::white },
+    Kind { name: "no-pink", build: nothing::pink },
+    Kind { name: "no-brown", build: nothing::brown },
+    Kind { name: "no-blue", build: nothing::blue },
+    Kind { name: "no-hum", build: nothing::hum },
+    Kind { name: "no-buzz", build: nothing::buzz },
+    Kind { name: "no-silence", build: nothing::silence },
+    Kind { name: "no-channel", build: nothing::channel },
+    Kind { name: "no-carrier", build: nothing::bare_carrier },
+    Kind { name: "no-am", build: nothing::programme },
+    Kind { name: "no-fm", build: nothing::frequency_programme },
+    Kind { name: "no-static", build: nothing::crackle },
+    Kind { name: "no-clock", build: nothing::clock },
+    Kind { name: "no-dimmer", build: nothing::dimmer },
 ];
 
 /// Kinds for a comma-separated list of names; `all`, `gap` and `no` stand for every kind, those with and without a gap.

@@ -1,5 +1,6 @@
 //! A steady gap, heard badly.
 
+use super::nothing::modulated;
 use super::steady::train;
 use crate::case::Draft;
 use crate::codec::Codec;
@@ -8,6 +9,7 @@ use crate::random::Dice;
 use crate::receiver::{Detector, GainControl};
 use crate::recorder::Recorder;
 use crate::scene::{Carrier, Tone};
+use crate::sounds::{music, speech};
 
 /// An unmodulated carrier, 0.3..3 times the click, on tune or up to 3 kHz off.
 pub fn carrier(dice: &mut Dice) -> Draft {
@@ -102,5 +104,24 @@ pub fn discriminator(dice: &mut Dice) -> Draft {
     scene.receiver.gain_control = None;
     scene.click_over_noise_db = dice.uniform(25.0, 40.0);
     scene.carrier = Some(Carrier::bare(dice.log_uniform(0.4, 2.0), dice.uniform(-500.0, 500.0)));
+    Draft::gap(scene, truth)
+}
+
+/// A station talking under the clicks, up to three times as strong.
+pub fn station(dice: &mut Dice) -> Draft {
+    under_programme(dice, speech::speech)
+}
+
+/// A station playing music under the clicks, up to three times as strong.
+pub fn station_music(dice: &mut Dice) -> Draft {
+    under_programme(dice, music::music)
+}
+
+fn under_programme(dice: &mut Dice, sound: fn(&mut Dice, f64) -> Vec<f64>) -> Draft {
+    let plan = Plan::draw(dice, 15.0, 600.0);
+    let (mut scene, truth) = train(dice, plan, Scatter::Normal);
+    let programme = sound(dice, plan.duration_s);
+    let ratio = dice.log_uniform(0.3, 3.0);
+    scene.carrier = Some(modulated(dice, ratio, programme));
     Draft::gap(scene, truth)
 }
