@@ -1,1 +1,0 @@
-//! From audio to a measurement: joins [`crate::clicks`], [`crate::rhythm`] and [`crate::voltage`].
