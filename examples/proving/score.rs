@@ -4,6 +4,7 @@ use crate::case::{Answer, Case, Truth};
 use gaptone::estimate::{COVERAGE_95, Estimate};
 use gaptone::measure::{Measurer, Options};
 use gaptone::rhythm::{Reading, Verdict};
+use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::time::Instant;
 
 /// Samples handed over at a time, as a sound card would.
@@ -32,6 +33,8 @@ pub enum Outcome {
     Read(Errors),
     /// A gap, and no figure.
     Refused,
+    /// The analyzer panicked.
+    Crashed,
     /// No gap: true if a figure came out that should not.
     NoGap(bool),
     /// Another rhythm: true if a figure came out.
@@ -55,10 +58,15 @@ pub struct Score {
 /// Reads a case and scores it.
 pub fn score(case: &Case) -> Score {
     let started = Instant::now();
-    let mut measurer = Measurer::new(case.sample_rate_hz, Options::default());
-    case.samples.chunks(BLOCK).for_each(|block| measurer.push(block));
-    let result = measurer.finish();
-    let taken_s = started.elapsed().as_secs_f64();
+    let read = catch_unwind(AssertUnwindSafe(|| {
+        let mut measurer = Measurer::new(case.sample_rate_hz, Options::default());
+        case.samples.chunks(BLOCK).for_each(|block| measurer.push(block));
+        measurer.finish()
+    }));
+    let cost_s = (started.elapsed().as_secs_f64(), case.duration_s());
+    let Ok(result) = read else {
+        return Score { kind: case.kind, seed: case.seed, outcome: Outcome::Crashed, cost_s, line: String::new() };
+    };
     let reading = &result.reading;
     let told = reading.firing_rate_hz.is_some();
     let outcome = match &case.answer {
@@ -71,7 +79,7 @@ pub fn score(case: &Case) -> Score {
         Answer::OtherRhythm => Outcome::OtherRhythm(told),
     };
     let line = line(case, reading);
-    Score { kind: case.kind, seed: case.seed, outcome, cost_s: (taken_s, case.duration_s()), line }
+    Score { kind: case.kind, seed: case.seed, outcome, cost_s, line }
 }
 
 fn errors(truth: &Truth, rate: Estimate, jitter: Option<Estimate>) -> Errors {

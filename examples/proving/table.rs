@@ -18,6 +18,7 @@ struct Total {
     jitter_good: usize,
     no_gaps: usize,
     false_accepts: usize,
+    crashes: usize,
 }
 
 /// Prints the table, a line a kind, and the totals.
@@ -48,7 +49,7 @@ pub fn print(kinds: &[&Kind], scores: &[Score]) {
     let percent = |part: usize, of: usize| 100.0 * part as f64 / of.max(1) as f64;
     println!(
         "TOTAL gaps {}: rate within 0.5 % {} ({:.1} %), jitter within 15 % {} ({:.1} %), wrong by over 2 % {}, refused {}; \
-         no gap {}: false accepts {}",
+         no gap {}: false accepts {}; crashes {}",
         total.gaps,
         total.rate_good,
         percent(total.rate_good, total.gaps),
@@ -57,7 +58,8 @@ pub fn print(kinds: &[&Kind], scores: &[Score]) {
         total.wrong,
         total.refused,
         total.no_gaps,
-        total.false_accepts
+        total.false_accepts,
+        total.crashes
     );
     let read: Vec<&Errors> = scores.iter().filter_map(Score::errors).collect();
     println!(
@@ -69,6 +71,7 @@ pub fn print(kinds: &[&Kind], scores: &[Score]) {
 
 fn print_kind(name: &str, scores: &[&Score], total: &mut Total) {
     let cost = scores.iter().map(|s| s.cost_s.0).sum::<f64>() / scores.iter().map(|s| s.cost_s.1).sum::<f64>();
+    total.crashes += scores.iter().filter(|s| matches!(s.outcome, Outcome::Crashed)).count();
     let told = scores.iter().filter(|s| matches!(s.outcome, Outcome::NoGap(true) | Outcome::OtherRhythm(true))).count();
     let no_gaps = scores.iter().filter(|s| matches!(s.outcome, Outcome::NoGap(_))).count();
     let others = scores.iter().filter(|s| matches!(s.outcome, Outcome::OtherRhythm(_))).count();
@@ -122,6 +125,7 @@ pub fn print_cases(scores: &[Score]) {
                 format!("rate {:+8.4} % jitter {jitter} % {r}{j}", 100.0 * e.rate)
             }
             Outcome::Refused => "REFUSED".into(),
+            Outcome::Crashed => "CRASHED".into(),
             Outcome::NoGap(true) => "FALSE ACCEPT".into(),
             Outcome::NoGap(false) => "nothing, rightly".into(),
             Outcome::OtherRhythm(told) => format!("other rhythm, figures: {told}"),
@@ -140,6 +144,7 @@ impl Score {
         match &self.outcome {
             Outcome::Read(e) => (e.rate.abs() / RATE_GOOD).max(e.jitter.map_or(1.5, f64::abs) / JITTER_GOOD),
             Outcome::Refused => 1e6,
+            Outcome::Crashed => 1e8,
             Outcome::NoGap(true) => 1e7,
             Outcome::NoGap(false) => -1.0,
             Outcome::OtherRhythm(_) => 0.0,
