@@ -19,6 +19,9 @@ pub struct Arguments {
     /// A line a case, worst first.
     #[arg(long)]
     pub verbose: bool,
+    /// With the line of a case, how the analyzer came to its answer.
+    #[arg(long, requires = "verbose")]
+    pub explain: bool,
     /// Write recordings and truth here instead of reading them.
     #[arg(long, value_name = "DIR")]
     pub write: Option<PathBuf>,

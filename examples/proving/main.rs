@@ -56,7 +56,7 @@ fn run(arguments: &Arguments) -> Result<(), String> {
         });
         return results.into_iter().collect();
     }
-    let scores: Vec<Score> = on_threads(&jobs, arguments.threads, score::score);
+    let scores: Vec<Score> = on_threads(&jobs, arguments.threads, |case| score::score(case, arguments.explain));
     if arguments.verbose {
         table::print_cases(&scores);
     }

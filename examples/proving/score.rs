@@ -55,11 +55,11 @@ pub struct Score {
     pub line: String,
 }
 
-/// Reads a case and scores it.
-pub fn score(case: &Case) -> Score {
+/// Reads a case and scores it; `explain`: with how the analyzer came to its answer.
+pub fn score(case: &Case, explain: bool) -> Score {
     let started = Instant::now();
     let read = catch_unwind(AssertUnwindSafe(|| {
-        let mut measurer = Measurer::new(case.sample_rate_hz, Options::default());
+        let mut measurer = Measurer::new(case.sample_rate_hz, Options { explain });
         case.samples.chunks(BLOCK).for_each(|block| measurer.push(block));
         measurer.finish()
     }));
@@ -78,7 +78,10 @@ pub fn score(case: &Case) -> Score {
         Answer::NoRhythm => Outcome::NoGap(told && reading.verdict != Verdict::Irregular),
         Answer::OtherRhythm => Outcome::OtherRhythm(told),
     };
-    let line = line(case, reading);
+    let mut line = line(case, reading);
+    for step in &result.explanation {
+        line += &format!("\n    {step}");
+    }
     Score { kind: case.kind, seed: case.seed, outcome, cost_s, line }
 }
 
