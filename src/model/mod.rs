@@ -1,1 +1,9 @@
-//! (room model)
+//! The laws, and the way forward: from a bench to firings and to the audio a receiver would give.
+//!
+//! [`charging`] holds the charging law in both directions, [`random`] the portable random numbers, [`firings`]
+//! makes trains of firings with known truth.
+
+pub mod charging;
+pub mod firings;
+pub mod random;
+pub mod root;
