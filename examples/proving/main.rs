@@ -25,16 +25,17 @@ mod scene;
 mod score;
 mod sounds;
 mod table;
+mod volts;
 mod write;
 
 use arguments::Arguments;
 use case::Case;
 use clap::Parser;
 use kinds::Kind;
-use score::Score;
 use std::process::ExitCode;
 use std::sync::Mutex;
-use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::atomic::{AtomicU64, Ordering};
+use table::Table;
 
 fn main() -> ExitCode {
     match run(&Arguments::parse()) {
@@ -48,39 +49,44 @@ fn main() -> ExitCode {
 
 fn run(arguments: &Arguments) -> Result<(), String> {
     let kinds = kinds::select(&arguments.kinds)?;
-    let jobs: Vec<(&Kind, u64)> =
-        kinds.iter().flat_map(|kind| (arguments.seeds.0..arguments.seeds.1).map(|seed| (*kind, seed))).collect();
-    if let Some(directory) = &arguments.write {
-        let results = on_threads(&jobs, arguments.threads, |case| {
-            write::write(case, directory).map_err(|e| format!("{}: {e}", directory.display()))
-        });
-        return results.into_iter().collect();
+    let mut table = Table::new(!arguments.verbose);
+    for kind in kinds {
+        if let Some(directory) = &arguments.write {
+            let write =
+                |case: &Case| write::write(case, directory).map_err(|e| format!("{}: {e}", directory.display()));
+            on_threads(kind, arguments, write).into_iter().collect::<Result<(), String>>()?;
+            continue;
+        }
+        let scores = on_threads(kind, arguments, |case| score::score(case, arguments.explain));
+        if arguments.verbose {
+            table::print_cases(&scores);
+        }
+        table.add(kind.name, &scores);
     }
-    let scores: Vec<Score> = on_threads(&jobs, arguments.threads, |case| score::score(case, arguments.explain));
-    if arguments.verbose {
-        table::print_cases(&scores);
-    }
-    table::print(&kinds, &scores);
+    table.finish();
     Ok(())
 }
 
-/// Makes every case and works on it, on several threads; results in the order of the jobs.
-fn on_threads<T: Send>(jobs: &[(&Kind, u64)], threads: usize, work: impl Fn(&Case) -> T + Sync) -> Vec<T> {
-    let next = AtomicUsize::new(0);
-    let results = Mutex::new(Vec::with_capacity(jobs.len()));
+/// Makes every case of a kind and works on it, on several threads; results in the order of the seeds.
+fn on_threads<T: Send>(kind: &Kind, arguments: &Arguments, work: impl Fn(&Case) -> T + Sync) -> Vec<T> {
+    let (first, after_last) = arguments.seeds;
+    let next = AtomicU64::new(first);
+    let results = Mutex::new(Vec::new());
     std::thread::scope(|scope| {
-        for _ in 0..threads.max(1) {
+        for _ in 0..arguments.threads.max(1) {
             scope.spawn(|| {
                 loop {
-                    let index = next.fetch_add(1, Ordering::Relaxed);
-                    let Some(&(kind, seed)) = jobs.get(index) else { return };
+                    let seed = next.fetch_add(1, Ordering::Relaxed);
+                    if seed >= after_last {
+                        return;
+                    }
                     let result = work(&Case::make(kind, seed));
-                    results.lock().expect("no thread panics while it holds the lock").push((index, result));
+                    results.lock().expect("no thread panics while it holds the lock").push((seed, result));
                 }
             });
         }
     });
     let mut results = results.into_inner().expect("no thread panics while it holds the lock");
-    results.sort_by_key(|(index, _)| *index);
+    results.sort_by_key(|(seed, _)| *seed);
     results.into_iter().map(|(_, result)| result).collect()
 }

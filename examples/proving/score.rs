@@ -1,6 +1,7 @@
 //! One case read by the analyzer and held against its truth.
 
 use crate::case::{Answer, Case, Truth};
+use crate::volts::{self, VoltageErrors};
 use gaptone::estimate::{COVERAGE_95, Estimate};
 use gaptone::measure::{Measurer, Options};
 use gaptone::rhythm::{Reading, Verdict};
@@ -25,6 +26,8 @@ pub struct Errors {
     pub rate_width: f64,
     /// The same for the jitter.
     pub jitter_width: Option<f64>,
+    /// Of the gap voltage, where a circuit is behind the firings and a voltage came out.
+    pub voltage: Option<VoltageErrors>,
 }
 
 /// Outcome of one case.
@@ -71,7 +74,10 @@ pub fn score(case: &Case, explain: bool) -> Score {
     let told = reading.firing_rate_hz.is_some();
     let outcome = match &case.answer {
         Answer::Gap(truth) => match reading.firing_rate_hz {
-            Some(rate) => Outcome::Read(errors(truth, rate, reading.period_jitter_s)),
+            Some(rate) => {
+                let voltage = truth.circuit.and_then(|c| volts::errors(&c, &result.events, reading));
+                Outcome::Read(Errors { voltage, ..errors(truth, rate, reading.period_jitter_s) })
+            }
             None => Outcome::Refused,
         },
         Answer::Nothing => Outcome::NoGap(told),
@@ -97,6 +103,7 @@ fn errors(truth: &Truth, rate: Estimate, jitter: Option<Estimate>) -> Errors {
         jitter_covered: jitter.and_then(|j| truth.process_jitter_s.map(|p| holds(&j, p))),
         rate_width: width(&rate) / (truth.jitter_s * truth.rate_hz / n.sqrt()),
         jitter_width: jitter.map(|j| width(&j) * (2.0 * n).sqrt()),
+        voltage: None,
     }
 }
 

@@ -1,12 +1,16 @@
 //! The table of scores, a line a kind.
 
-use crate::kinds::Kind;
 use crate::score::{Errors, Outcome, Score};
+use crate::volts::VoltageErrors;
 
 /// Bounds of a good answer, relative: rate, jitter; and of a wrong one: rate.
 const RATE_GOOD: f64 = 0.005;
 const JITTER_GOOD: f64 = 0.15;
 const RATE_WRONG: f64 = 0.02;
+
+/// Heading of the table. m: median, max: highest, p90: nine in ten are below. cov: share of 95 % intervals that hold the
+/// truth of the process. w: width of the interval over what the number of firings allows (median).
+const HEADING: &str = "kind            n  ans wrong | rate% m     max <0.5% | jitt% m    p90  <15% |  covR%  covJ% |   wR    wJ |  volt% m    max  covV% spread% m |   ms/s";
 
 /// Sums over kinds.
 #[derive(Default)]
@@ -19,118 +23,138 @@ struct Total {
     no_gaps: usize,
     false_accepts: usize,
     crashes: usize,
+    rate_covered: Vec<bool>,
+    jitter_covered: Vec<bool>,
 }
 
-/// Prints the table, a line a kind, and the totals.
-pub fn print(kinds: &[&Kind], scores: &[Score]) {
-    println!(
-        "{:12} {:>4} {:>4} {:>5} | {:>7} {:>7} {:>6} | {:>6} {:>6} {:>6} | {:>7} {:>7} | {:>5} {:>5} | {:>6}",
-        "kind",
-        "n",
-        "ans",
-        "wrong",
-        "rate% m",
-        "max",
-        "<0.5%",
-        "jit% m",
-        "p90",
-        "<15%",
-        "covR%",
-        "covJ%",
-        "wR",
-        "wJ",
-        "ms/s"
-    );
-    let mut total = Total::default();
-    for kind in kinds {
-        let of_kind: Vec<&Score> = scores.iter().filter(|s| s.kind == kind.name).collect();
-        print_kind(kind.name, &of_kind, &mut total);
+/// The table as it grows.
+pub struct Table {
+    at_once: bool,
+    rows: Vec<String>,
+    total: Total,
+}
+
+impl Table {
+    /// An empty table; `at_once`: rows are printed as they come, otherwise at the end.
+    pub fn new(at_once: bool) -> Self {
+        let mut table = Self { at_once, rows: Vec::new(), total: Total::default() };
+        table.row(HEADING.into());
+        table
     }
-    let percent = |part: usize, of: usize| 100.0 * part as f64 / of.max(1) as f64;
-    println!(
-        "TOTAL gaps {}: rate within 0.5 % {} ({:.1} %), jitter within 15 % {} ({:.1} %), wrong by over 2 % {}, refused {}; \
-         no gap {}: false accepts {}; crashes {}",
-        total.gaps,
-        total.rate_good,
-        percent(total.rate_good, total.gaps),
-        total.jitter_good,
-        percent(total.jitter_good, total.gaps),
-        total.wrong,
-        total.refused,
-        total.no_gaps,
-        total.false_accepts,
-        total.crashes
-    );
-    let read: Vec<&Errors> = scores.iter().filter_map(Score::errors).collect();
-    println!(
-        "coverage of 95 % intervals: rate {:.1} %, jitter {:.1} %",
-        100.0 * share(read.iter().map(|e| e.rate_covered)),
-        100.0 * share(read.iter().filter_map(|e| e.jitter_covered))
-    );
-}
 
-fn print_kind(name: &str, scores: &[&Score], total: &mut Total) {
-    let cost = scores.iter().map(|s| s.cost_s.0).sum::<f64>() / scores.iter().map(|s| s.cost_s.1).sum::<f64>();
-    total.crashes += scores.iter().filter(|s| matches!(s.outcome, Outcome::Crashed)).count();
-    let told = scores.iter().filter(|s| matches!(s.outcome, Outcome::NoGap(true) | Outcome::OtherRhythm(true))).count();
-    let no_gaps = scores.iter().filter(|s| matches!(s.outcome, Outcome::NoGap(_))).count();
-    let others = scores.iter().filter(|s| matches!(s.outcome, Outcome::OtherRhythm(_))).count();
-    if no_gaps + others > 0 {
-        total.no_gaps += no_gaps;
-        total.false_accepts += if no_gaps > 0 { told } else { 0 };
-        let what = if no_gaps > 0 { "false accepts" } else { "a rhythm is there; figures given" };
-        println!("{name:12} {:4} {what} {told} | {:.1} ms/s", scores.len(), 1e3 * cost);
-        return;
+    fn row(&mut self, text: String) {
+        if self.at_once {
+            println!("{text}");
+        } else {
+            self.rows.push(text);
+        }
     }
-    let read: Vec<&Errors> = scores.iter().filter_map(|s| s.errors()).collect();
-    let rate = sorted(read.iter().map(|e| e.rate.abs()));
-    let jitter = sorted(read.iter().filter_map(|e| e.jitter.map(f64::abs)));
-    let count = |errors: &[f64], bound: f64| errors.iter().filter(|e| **e <= bound).count();
-    let wrong = rate.len() - count(&rate, RATE_WRONG);
-    total.gaps += scores.len();
-    total.refused += scores.len() - read.len();
-    total.wrong += wrong;
-    total.rate_good += count(&rate, RATE_GOOD);
-    total.jitter_good += count(&jitter, JITTER_GOOD);
-    println!(
-        "{:12} {:4} {:4} {:5} | {:7.4} {:7.3} {:6} | {:6.2} {:6.1} {:6} | {:7.1} {:7.1} | {:5.2} {:5.2} | {:6.1}",
-        name,
-        scores.len(),
-        read.len(),
-        wrong,
-        100.0 * quantile(&rate, 0.5),
-        100.0 * quantile(&rate, 1.0),
-        count(&rate, RATE_GOOD),
-        100.0 * quantile(&jitter, 0.5),
-        100.0 * quantile(&jitter, 0.9),
-        count(&jitter, JITTER_GOOD),
-        100.0 * share(read.iter().map(|e| e.rate_covered)),
-        100.0 * share(read.iter().filter_map(|e| e.jitter_covered)),
-        quantile(&sorted(read.iter().map(|e| e.rate_width)), 0.5),
-        quantile(&sorted(read.iter().filter_map(|e| e.jitter_width)), 0.5),
-        1e3 * cost
-    );
+
+    /// Adds the scores of one kind.
+    pub fn add(&mut self, name: &str, scores: &[Score]) {
+        let seconds = |of: fn(&Score) -> f64| scores.iter().map(of).sum::<f64>();
+        let cost = 1e3 * seconds(|s| s.cost_s.0) / seconds(|s| s.cost_s.1);
+        let count = |is: fn(&Outcome) -> bool| scores.iter().filter(|s| is(&s.outcome)).count();
+        self.total.crashes += count(|o| matches!(o, Outcome::Crashed));
+        let other = count(|o| matches!(o, Outcome::OtherRhythm(_)));
+        let text = if name.starts_with("no-") {
+            let told = count(|o| matches!(o, Outcome::NoGap(true) | Outcome::OtherRhythm(true)));
+            if other == 0 {
+                self.total.no_gaps += scores.len();
+                self.total.false_accepts += told;
+            }
+            let what = if other > 0 { "a rhythm is there; figures given" } else { "false accepts" };
+            format!("{what} {told}")
+        } else {
+            self.gap_row(scores)
+        };
+        self.row(format!("{name:12} {:4} {text} | {cost:6.1}", scores.len()));
+    }
+
+    fn gap_row(&mut self, scores: &[Score]) -> String {
+        let read: Vec<&Errors> = scores.iter().filter_map(Score::errors).collect();
+        let rate = sorted(read.iter().map(|e| e.rate.abs()));
+        let jitter = sorted(read.iter().filter_map(|e| e.jitter.map(f64::abs)));
+        let within = |errors: &[f64], bound: f64| errors.iter().filter(|e| **e <= bound).count();
+        let wrong = rate.len() - within(&rate, RATE_WRONG);
+        let rate_covered: Vec<bool> = read.iter().map(|e| e.rate_covered).collect();
+        let jitter_covered: Vec<bool> = read.iter().filter_map(|e| e.jitter_covered).collect();
+        let text = format!(
+            "{:4} {wrong:5} | {:7.4} {:7.3} {:5} | {:7.2} {:6.1} {:5} | {:6.1} {:6.1} | {:5.2} {:5.2} | {}",
+            read.len(),
+            100.0 * quantile(&rate, 0.5),
+            100.0 * quantile(&rate, 1.0),
+            within(&rate, RATE_GOOD),
+            100.0 * quantile(&jitter, 0.5),
+            100.0 * quantile(&jitter, 0.9),
+            within(&jitter, JITTER_GOOD),
+            percent(&rate_covered),
+            percent(&jitter_covered),
+            quantile(&sorted(read.iter().map(|e| e.rate_width)), 0.5),
+            quantile(&sorted(read.iter().filter_map(|e| e.jitter_width)), 0.5),
+            voltage_cells(&read)
+        );
+        let total = &mut self.total;
+        total.gaps += scores.len();
+        total.refused += scores.len() - read.len();
+        total.wrong += wrong;
+        total.rate_good += within(&rate, RATE_GOOD);
+        total.jitter_good += within(&jitter, JITTER_GOOD);
+        total.rate_covered.extend(rate_covered);
+        total.jitter_covered.extend(jitter_covered);
+        text
+    }
+
+    /// Prints what is left and the totals.
+    pub fn finish(self) {
+        for row in &self.rows {
+            println!("{row}");
+        }
+        let t = &self.total;
+        let share = |part: usize| 100.0 * part as f64 / t.gaps.max(1) as f64;
+        println!(
+            "TOTAL gaps {}: rate within 0.5 % {} ({:.1} %), jitter within 15 % {} ({:.1} %), wrong by over 2 % {}, refused {}",
+            t.gaps,
+            t.rate_good,
+            share(t.rate_good),
+            t.jitter_good,
+            share(t.jitter_good),
+            t.wrong,
+            t.refused
+        );
+        println!(
+            "95 % intervals hold the process: rate {:.1} %, jitter {:.1} %; no gap {}: false accepts {}; crashes {}",
+            percent(&t.rate_covered),
+            percent(&t.jitter_covered),
+            t.no_gaps,
+            t.false_accepts,
+            t.crashes
+        );
+    }
 }
 
-/// Prints a line a case, worst first: refused and falsely accepted ones, then by rate and jitter error.
+fn voltage_cells(read: &[&Errors]) -> String {
+    let volts: Vec<VoltageErrors> = read.iter().filter_map(|e| e.voltage).collect();
+    if volts.is_empty() {
+        return " ".repeat(33);
+    }
+    let mean = sorted(volts.iter().map(|v| v.mean.abs()));
+    let covered: Vec<bool> = volts.iter().map(|v| v.covered).collect();
+    format!(
+        "{:8.4} {:6.3} {:6.1} {:9.1}",
+        100.0 * quantile(&mean, 0.5),
+        100.0 * quantile(&mean, 1.0),
+        percent(&covered),
+        100.0 * quantile(&sorted(volts.iter().filter_map(|v| v.spread.map(f64::abs))), 0.5)
+    )
+}
+
+/// Prints a line a case, worst first: crashes, false accepts, refusals, then by rate and jitter error.
 pub fn print_cases(scores: &[Score]) {
     let mut order: Vec<&Score> = scores.iter().collect();
     order.sort_by(|a, b| b.badness().total_cmp(&a.badness()));
     for s in order {
-        let errors = match &s.outcome {
-            Outcome::Read(e) => {
-                let jitter = e.jitter.map_or("     -".into(), |j| format!("{:+6.1}", 100.0 * j));
-                let outside = |covered: bool, letter| if covered { ' ' } else { letter };
-                let (r, j) = (outside(e.rate_covered, 'R'), outside(e.jitter_covered.unwrap_or(true), 'J'));
-                format!("rate {:+8.4} % jitter {jitter} % {r}{j}", 100.0 * e.rate)
-            }
-            Outcome::Refused => "REFUSED".into(),
-            Outcome::Crashed => "CRASHED".into(),
-            Outcome::NoGap(true) => "FALSE ACCEPT".into(),
-            Outcome::NoGap(false) => "nothing, rightly".into(),
-            Outcome::OtherRhythm(told) => format!("other rhythm, figures: {told}"),
-        };
-        println!("{}-{} {errors} | {}", s.kind, s.seed, s.line);
+        println!("{}-{} {} | {}", s.kind, s.seed, s.verdict(), s.line);
     }
 }
 
@@ -139,13 +163,30 @@ impl Score {
         if let Outcome::Read(errors) = &self.outcome { Some(errors) } else { None }
     }
 
+    fn verdict(&self) -> String {
+        match &self.outcome {
+            Outcome::Read(e) => {
+                let jitter = e.jitter.map_or("     -".into(), |j| format!("{:+6.1}", 100.0 * j));
+                let volts = e.voltage.map_or(String::new(), |v| format!(" volts {:+.4} %", 100.0 * v.mean));
+                let outside = |covered: bool, letter| if covered { ' ' } else { letter };
+                let (r, j) = (outside(e.rate_covered, 'R'), outside(e.jitter_covered.unwrap_or(true), 'J'));
+                format!("rate {:+8.4} % jitter {jitter} %{volts} {r}{j}", 100.0 * e.rate)
+            }
+            Outcome::Refused => "REFUSED".into(),
+            Outcome::Crashed => "CRASHED".into(),
+            Outcome::NoGap(true) => "FALSE ACCEPT".into(),
+            Outcome::NoGap(false) => "nothing, rightly".into(),
+            Outcome::OtherRhythm(told) => format!("other rhythm, figures: {told}"),
+        }
+    }
+
     /// Order of interest: 1 is the bound of a good answer.
     fn badness(&self) -> f64 {
         match &self.outcome {
             Outcome::Read(e) => (e.rate.abs() / RATE_GOOD).max(e.jitter.map_or(1.5, f64::abs) / JITTER_GOOD),
             Outcome::Refused => 1e6,
-            Outcome::Crashed => 1e8,
             Outcome::NoGap(true) => 1e7,
+            Outcome::Crashed => 1e8,
             Outcome::NoGap(false) => -1.0,
             Outcome::OtherRhythm(_) => 0.0,
         }
@@ -164,11 +205,7 @@ fn quantile(sorted: &[f64], q: f64) -> f64 {
     sorted.get((q * last as f64).round() as usize).copied().unwrap_or(f64::NAN)
 }
 
-fn share(values: impl Iterator<Item = bool>) -> f64 {
-    let (mut yes, mut all) = (0_u32, 0_u32);
-    for value in values {
-        yes += u32::from(value);
-        all += 1;
-    }
-    f64::from(yes) / f64::from(all)
+/// Share of yes, percent; not a number if there are none.
+fn percent(values: &[bool]) -> f64 {
+    100.0 * values.iter().filter(|v| **v).count() as f64 / values.len() as f64
 }
