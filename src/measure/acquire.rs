@@ -138,7 +138,7 @@ fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Resul
     let mut output = Vec::new();
     candidates::matched_output(window.bank, &window.through(&finder.kernel), &hypothesis.shape, &mut output);
     let found = candidates::find(&output, window.rate_hz, if hypothesis.fast { 0.0 } else { APART_S });
-    let start = Start::again(hypothesis.fit.period_s, hypothesis.fit.jitter);
+    let start = Start::again(&hypothesis.fit);
     hypothesis.fit =
         fit_whole(&found, window.duration_s(), start, DENSITY).ok_or("the rhythm is lost after a few seconds")?;
     hypothesis.candidates = found;
