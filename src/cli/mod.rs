@@ -1,4 +1,6 @@
-//! The command line.
+//! The command line: the only room that knows files, terminals and devices.
+
+pub mod files;
 
 /// Runs the program with the arguments of the process.
 pub fn main() -> std::process::ExitCode {
