@@ -2,9 +2,24 @@
 //!
 //! Every value inside is in SI units with its standard uncertainty.
 
+mod check;
+mod dimension;
+mod error;
+mod format;
+mod keys;
 mod quantity;
+mod read;
+mod suggest;
+mod syntax;
+mod text;
+mod unit;
 
+pub use dimension::Dimension;
+pub use error::{BenchError, BenchFault};
+pub use format::{quantity_text, si, with_uncertainty};
 pub use quantity::{Quantity, Tolerance};
+pub use read::parse;
+pub use text::{QuantityError, parse_quantity, parse_range};
 
 /// A bench as described; a part that the text does not mention is absent.
 #[derive(Debug, Clone, Default, PartialEq)]

@@ -36,4 +36,13 @@ impl Quantity {
             Tolerance::Standard(u) => u,
         }
     }
+
+    /// Greatest distance from the value that a limit allows, same unit; zero if there is no limit.
+    #[must_use]
+    pub fn limit(&self) -> f64 {
+        match self.tolerance {
+            Tolerance::Limit(half_width) => half_width,
+            Tolerance::Exact | Tolerance::Standard(_) => 0.0,
+        }
+    }
 }

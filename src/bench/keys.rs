@@ -1,0 +1,152 @@
+//! The keys of a bench file: where each value goes, what it measures, which values make sense.
+
+use super::dimension::Dimension;
+use super::quantity::Quantity;
+use super::{Bench, format};
+
+/// Which SI values a key allows.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) enum Allowed {
+    /// Any finite value.
+    Any,
+    /// Above zero.
+    Positive,
+    /// Zero or above.
+    NotNegative,
+    /// Zero or above and below one.
+    BelowOne,
+    /// Zero to one.
+    UpToOne,
+    /// Between −1 and 1, both excluded: at ±1 the spread would never settle.
+    Memory,
+}
+
+impl Allowed {
+    /// True if the value and all of its tolerance lie in the allowed range.
+    pub(super) fn holds(self, quantity: &Quantity) -> bool {
+        let value = quantity.value;
+        match self {
+            Self::Any => true,
+            // A resistance of 1 MΩ ± 120 % is as wrong as a negative one.
+            Self::Positive => value > 0.0 && quantity.u() < value && quantity.limit() < value,
+            Self::NotNegative => value >= 0.0,
+            Self::BelowOne => (0.0..1.0).contains(&value),
+            Self::UpToOne => (0.0..=1.0).contains(&value),
+            Self::Memory => value.abs() < 1.0,
+        }
+    }
+
+    /// The allowed range in words, for a quantity outside of it.
+    pub(super) fn words(self, quantity: &Quantity, dimension: Dimension) -> String {
+        let zero = match dimension {
+            Dimension::Temperature => "0 K (-273.15 °C)".to_owned(),
+            Dimension::Fraction => "0 %".to_owned(),
+            other => format::si(0.0, other.symbol(), 1),
+        };
+        match self {
+            Self::Any => "any finite value".to_owned(),
+            Self::Positive if quantity.value > 0.0 => format!("above {zero} with all of its tolerance"),
+            Self::Positive => format!("above {zero}"),
+            Self::NotNegative => format!("{zero} or above"),
+            Self::BelowOne => "0 % or above and below 100 %".to_owned(),
+            Self::UpToOne => "0 % to 100 %".to_owned(),
+            Self::Memory => "between -1 and 1, both excluded".to_owned(),
+        }
+    }
+}
+
+/// Where a quantity is stored.
+pub(super) type Slot = fn(&mut Bench) -> &mut Option<Quantity>;
+
+/// What a key holds.
+#[derive(Debug, Clone, Copy)]
+pub(super) enum Kind {
+    /// Free text.
+    Title,
+    /// One of the words of [`super::Electrodes`].
+    Electrodes,
+    /// A list of voltages.
+    Peaks,
+    /// Two frequencies with `..` between.
+    Band,
+    /// One quantity.
+    Quantity(Dimension, Allowed, Slot),
+}
+
+/// One key of the file.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Key {
+    /// Its section; empty at the top of the file.
+    pub(super) section: &'static str,
+    /// Its name.
+    pub(super) name: &'static str,
+    /// A right value, as it stands in the file.
+    pub(super) example: &'static str,
+    /// What it holds.
+    pub(super) kind: Kind,
+}
+
+const fn key(section: &'static str, name: &'static str, example: &'static str, kind: Kind) -> Key {
+    Key { section, name, example, kind }
+}
+
+/// The sections, in the order of the handbook.
+pub(super) const SECTIONS: [&str; 6] = ["supply", "charging", "gap", "air", "tank", "receiver"];
+
+use Allowed::{Any, BelowOne, Memory, NotNegative, Positive, UpToOne};
+use Dimension as D;
+use Kind::Quantity as Q;
+
+/// Every key that a bench file may hold.
+#[rustfmt::skip]
+static KEYS: [Key; 39] = [
+    key("", "title", "\"North bench\"", Kind::Title),
+    key("supply", "voltage", "\"9.2 kV ± 1 %\"", Q(D::Voltage, Positive, |b| &mut b.supply.voltage)),
+    key("supply", "ripple", "\"1 %\"", Q(D::Fraction, BelowOne, |b| &mut b.supply.ripple)),
+    key("supply", "ripple_frequency", "\"100 Hz\"", Q(D::Frequency, Positive, |b| &mut b.supply.ripple_frequency)),
+    key("supply", "current_limit", "\"2 mA\"", Q(D::Current, Positive, |b| &mut b.supply.current_limit)),
+    key("charging", "resistance", "\"1.2 MΩ ± 1 %\"", Q(D::Resistance, Positive, |b| &mut b.charging.resistance)),
+    key("charging", "current", "\"0.8 mA\"", Q(D::Current, Positive, |b| &mut b.charging.current)),
+    key("charging", "time_constant", "\"8.2 ms (u 0.4 %)\"", Q(D::Time, Positive, |b| &mut b.charging.time_constant)),
+    key("charging", "capacitance", "\"6.8 nF ± 5 %\"", Q(D::Capacitance, Positive, |b| &mut b.charging.capacitance)),
+    key("charging", "leakage", "\"100 MΩ\"", Q(D::Resistance, Positive, |b| &mut b.charging.leakage)),
+    key("gap", "voltage", "\"7.1 kV\"", Q(D::Voltage, Positive, |b| &mut b.gap.voltage)),
+    key("gap", "electrodes", "\"spheres\"", Kind::Electrodes),
+    key("gap", "diameter", "\"25 mm\"", Q(D::Length, Positive, |b| &mut b.gap.diameter)),
+    key("gap", "spacing", "\"2.2 mm\"", Q(D::Length, Positive, |b| &mut b.gap.spacing)),
+    key("gap", "spread", "\"1.5 %\"", Q(D::Fraction, BelowOne, |b| &mut b.gap.spread)),
+    key("gap", "memory", "0.4", Q(D::Number, Memory, |b| &mut b.gap.memory)),
+    key("gap", "residual_voltage", "\"150 V\"", Q(D::Voltage, Any, |b| &mut b.gap.residual_voltage)),
+    key("gap", "recovery_time", "\"1 ms\"", Q(D::Time, NotNegative, |b| &mut b.gap.recovery_time)),
+    key("gap", "conduction_time", "\"12 us\"", Q(D::Time, NotNegative, |b| &mut b.gap.conduction_time)),
+    key("gap", "stray_capacitance", "\"2 pF\"", Q(D::Capacitance, NotNegative, |b| &mut b.gap.stray_capacitance)),
+    key("air", "temperature", "\"21 °C\"", Q(D::Temperature, Positive, |b| &mut b.air.temperature)),
+    key("air", "pressure", "\"1002 hPa\"", Q(D::Pressure, Positive, |b| &mut b.air.pressure)),
+    key("air", "humidity", "\"45 %\"", Q(D::Fraction, UpToOne, |b| &mut b.air.humidity)),
+    key("tank", "frequency", "\"1.8 MHz\"", Q(D::Frequency, Positive, |b| &mut b.tank.frequency)),
+    key("tank", "quality", "12", Q(D::Number, Positive, |b| &mut b.tank.quality)),
+    key("tank", "inductance", "\"1.1 uH\"", Q(D::Inductance, Positive, |b| &mut b.tank.inductance)),
+    key("tank", "capacitance", "\"1.8 nF\"", Q(D::Capacitance, Positive, |b| &mut b.tank.capacitance)),
+    key("tank", "resistance", "\"0.9 ohm\"", Q(D::Resistance, Positive, |b| &mut b.tank.resistance)),
+    key("tank", "lead_inductance", "\"60 nH\"", Q(D::Inductance, NotNegative, |b| &mut b.tank.lead_inductance)),
+    key("tank", "peaks", "[\"240 V\", \"170 V\", \"121 V\"]", Kind::Peaks),
+    key("tank", "peak_spacing", "\"0.55 us\"", Q(D::Time, Positive, |b| &mut b.tank.peak_spacing)),
+    key("receiver", "tuned", "\"1.8 MHz\"", Q(D::Frequency, Positive, |b| &mut b.receiver.tuned)),
+    key("receiver", "bandwidth", "\"6 kHz\"", Q(D::Frequency, Positive, |b| &mut b.receiver.bandwidth)),
+    key("receiver", "audio_band", "\"120 Hz .. 3400 Hz\"", Kind::Band),
+    key("receiver", "noise", "\"-30 dB\"", Q(D::Level, NotNegative, |b| &mut b.receiver.noise)),
+    key("receiver", "carrier", "\"1.5\"", Q(D::Ratio, NotNegative, |b| &mut b.receiver.carrier)),
+    key("receiver", "carrier_offset", "\"400 Hz\"", Q(D::Frequency, Any, |b| &mut b.receiver.carrier_offset)),
+    key("receiver", "hum", "\"30 %\"", Q(D::Level, NotNegative, |b| &mut b.receiver.hum)),
+    key("receiver", "hum_frequency", "\"50 Hz\"", Q(D::Frequency, Positive, |b| &mut b.receiver.hum_frequency)),
+];
+
+/// The keys of a section.
+pub(super) fn of_section(section: &str) -> impl Iterator<Item = &'static Key> + '_ {
+    KEYS.iter().filter(move |key| key.section == section)
+}
+
+/// Sections that have a key of this name.
+pub(super) fn sections_with(name: &str) -> Vec<&'static str> {
+    SECTIONS.into_iter().filter(|section| of_section(section).any(|key| key.name == name)).collect()
+}

@@ -1,0 +1,139 @@
+//! A carrier in the channel under the clicks, with or without a programme.
+//!
+//! It enters the channel filter as impulses at the internal rate, so that the filter shapes its side bands. Amplitudes are those
+//! behind the filter, in click peaks; frequencies in Hz from the tuned frequency.
+
+use super::{AudioBand, AudioFilter, Complex, Draw};
+use serde::{Deserialize, Serialize};
+use std::f64::consts::TAU;
+
+/// What the carrier is modulated with.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case", tag = "kind")]
+pub enum Programme {
+    /// A tone.
+    Tone {
+        /// Frequency, Hz.
+        frequency_hz: f64,
+        /// Depth of modulation, 0..=1.
+        depth: f64,
+    },
+    /// Something like speech: noise of 300 to 3000 Hz that swells and fades a few times a second.
+    Speech {
+        /// Depth of modulation at the loudest, 0..=1.
+        depth: f64,
+    },
+}
+
+impl Programme {
+    /// Depth of modulation at the loudest.
+    #[must_use]
+    pub fn depth(self) -> f64 {
+        match self {
+            Self::Tone { depth, .. } | Self::Speech { depth } => depth,
+        }
+    }
+}
+
+/// A co-channel carrier.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct Carrier {
+    /// Amplitude behind the channel filter, in click peaks.
+    pub amplitude: f64,
+    /// Distance from the tuned frequency, Hz.
+    pub offset_hz: f64,
+    /// Programme; none is a bare carrier.
+    pub programme: Option<Programme>,
+}
+
+/// Band of the made-up speech.
+const SPEECH_BAND: AudioBand = AudioBand { low_hz: 300.0, low_poles: 2, high_hz: 3000.0, high_poles: 2 };
+/// Rates of three turning vectors whose sum swells and fades as syllables do, Hz.
+const SYLLABLES_HZ: [f64; 3] = [1.7, 3.1, 4.9];
+/// Rms of the speech against its limit: 3 standard deviations are near full modulation in a loud syllable.
+const SPEECH_RMS: f64 = 0.3;
+
+/// A unit vector that turns by the same angle in each step.
+#[derive(Debug, Clone)]
+struct Turning {
+    now: Complex,
+    turn: Complex,
+}
+
+impl Turning {
+    fn new(start: Complex, frequency_hz: f64, step_s: f64) -> Self {
+        Self { now: start, turn: Complex::from_polar(1.0, TAU * frequency_hz * step_s) }
+    }
+
+    fn next(&mut self) -> Complex {
+        let now = self.now;
+        let next = now * self.turn;
+        // One Newton step of the reciprocal root keeps the length at 1.
+        self.now = next * (1.5 - 0.5 * next.norm_sqr());
+        now
+    }
+}
+
+#[derive(Debug, Clone)]
+enum Modulation {
+    None,
+    Tone { depth: f64, tone: Turning },
+    Speech { depth: f64, filter: AudioFilter, scale: f64, syllables: [Turning; 3], draw: Draw },
+}
+
+/// A carrier at work.
+#[derive(Debug, Clone)]
+pub struct CarrierSource {
+    /// Strength of the impulse of one step of the unmodulated carrier.
+    strength: f64,
+    carrier: Turning,
+    modulation: Modulation,
+}
+
+impl CarrierSource {
+    /// A carrier stepped by `step_s`, for a channel whose gain at the carrier's offset is `gain`.
+    pub(crate) fn new(settings: Carrier, gain: f64, step_s: f64, mut draw: Draw) -> Self {
+        let carrier = Turning::new(draw.phase(), settings.offset_hz, step_s);
+        let modulation = match settings.programme {
+            None => Modulation::None,
+            Some(Programme::Tone { frequency_hz, depth }) => {
+                Modulation::Tone { depth, tone: Turning::new(draw.phase(), frequency_hz, step_s) }
+            }
+            Some(Programme::Speech { depth }) => {
+                let filter = AudioFilter::new(SPEECH_BAND, 1.0 / step_s);
+                let scale = SPEECH_RMS / noise_gain(filter.clone(), 1.0 / step_s);
+                let syllables = SYLLABLES_HZ.map(|f| Turning::new(draw.phase(), f, step_s));
+                Modulation::Speech { depth, filter, scale, syllables, draw }
+            }
+        };
+        Self { strength: settings.amplitude * step_s / gain, carrier, modulation }
+    }
+
+    /// Strength of the impulse of this step.
+    #[inline]
+    pub fn next_impulse(&mut self) -> Complex {
+        self.carrier.next() * (self.strength * (1.0 + self.modulation.next()))
+    }
+}
+
+impl Modulation {
+    /// Relative change of the amplitude in this step, within ± the depth.
+    fn next(&mut self) -> f64 {
+        match self {
+            Self::None => 0.0,
+            Self::Tone { depth, tone } => *depth * tone.next().im,
+            Self::Speech { depth, filter, scale, syllables, draw } => {
+                let swell = syllables.iter_mut().map(Turning::next).sum::<Complex>().norm();
+                let voice = filter.step(draw.normal()) * *scale * swell;
+                *depth * voice.clamp(-1.0, 1.0)
+            }
+        }
+    }
+}
+
+/// Rms of the output of a filter for white noise of rms 1: the root of the energy of its impulse response.
+fn noise_gain(mut filter: AudioFilter, rate_hz: f64) -> f64 {
+    // The slowest part, 300 Hz, has died away after 30 ms.
+    let samples = (0.03 * rate_hz) as usize;
+    (0..samples).map(|k| filter.step(if k == 0 { 1.0 } else { 0.0 }).powi(2)).sum::<f64>().sqrt()
+}

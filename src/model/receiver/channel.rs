@@ -1,0 +1,249 @@
+//! The channel filter as a state that is carried exactly from one instant to any other.
+//!
+//! The transfer function is split into partial fractions, Σ g/(s − p)^k. A pole p of multiplicity m holds a chain of m states,
+//! z₁' = p·z₁ + u, z_k' = p·z_k + |p|·z_(k−1), whose step over a time t is exact: z_k(t) = e^(pt)·Σ (|p|t)^j/j!·z_(k−j).
+//! A click between two samples therefore enters with its exact age, and a sample costs only the order of the filter.
+//!
+//! Times in s, frequencies in Hz from the tuned frequency. Gain 1 at the tuned frequency.
+
+use super::selectivity::Pole;
+use super::{Complex, Selectivity};
+
+/// Square of a state that is as good as 0 (states are of the order of 10⁻⁴ for a click).
+const NOTHING_SQUARED: f64 = 1e-60;
+
+/// One pole with the weights of its chain of states in the output.
+#[derive(Debug, Clone, PartialEq)]
+struct Mode {
+    pole: Complex,
+    /// Weight of z₁, z₂, ….
+    weights: Vec<Complex>,
+}
+
+impl Mode {
+    /// |p|, which keeps the states of a chain of one size.
+    fn scale(&self) -> f64 {
+        self.pole.norm()
+    }
+
+    /// e^(pt)·(|p|t)^j/j! for j = 0, 1, ….
+    fn step(&self, time_s: f64) -> Vec<Complex> {
+        let mut term = (self.pole * time_s).exp();
+        let ratio = self.scale() * time_s;
+        (1..=self.weights.len())
+            .map(|j| {
+                let this = term;
+                term *= ratio / j as f64;
+                this
+            })
+            .collect()
+    }
+}
+
+/// A channel filter.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Channel {
+    modes: Vec<Mode>,
+    /// Time constant of the slowest pole, s.
+    slowest_s: f64,
+}
+
+impl Channel {
+    /// The filter of a `selectivity` with a 6 dB bandwidth in Hz.
+    #[must_use]
+    pub fn new(selectivity: Selectivity, bandwidth_hz: f64) -> Self {
+        let poles = selectivity.poles(bandwidth_hz);
+        let slowest_s = poles.iter().map(|p| -1.0 / p.at.re).fold(0.0, f64::max);
+        let modes = (0..poles.len()).map(|i| Mode { pole: poles[i].at, weights: weights(&poles, i) }).collect();
+        Self { modes, slowest_s }
+    }
+
+    /// Complex gain at a distance of `offset_hz` from the tuned frequency.
+    #[must_use]
+    pub fn gain(&self, offset_hz: f64) -> Complex {
+        let s = Complex::new(0.0, std::f64::consts::TAU * offset_hz);
+        self.modes
+            .iter()
+            .map(|mode| {
+                let first = 1.0 / (s - mode.pole);
+                let chain = first * mode.scale();
+                let mut term = first;
+                mode.weights.iter().fold(Complex::default(), |sum, weight| {
+                    let sum = sum + weight * term;
+                    term *= chain;
+                    sum
+                })
+            })
+            .sum()
+    }
+
+    /// Envelope `time_s` after an impulse of unit strength, 1/s; 0 before it.
+    #[must_use]
+    pub fn impulse_response(&self, time_s: f64) -> Complex {
+        if time_s < 0.0 {
+            return Complex::default();
+        }
+        self.modes
+            .iter()
+            .map(|mode| mode.step(time_s).iter().zip(&mode.weights).map(|(z, weight)| z * weight).sum::<Complex>())
+            .sum()
+    }
+
+    /// Peak of the envelope after an impulse of unit strength: (time in s, height in 1/s). The height is the impulse
+    /// bandwidth in Hz.
+    #[must_use]
+    pub fn impulse_peak(&self) -> (f64, f64) {
+        let height = |t: f64| self.impulse_response(t).norm();
+        let mut step = self.slowest_s / 32.0;
+        let mut best = 0.0;
+        // The peak of an n-th order filter lies near n − 1 time constants.
+        let steps = 64 * (2 + self.modes.iter().map(|m| m.weights.len()).sum::<usize>());
+        for k in 0..steps {
+            let t = k as f64 * step;
+            if height(t) > height(best) {
+                best = t;
+            }
+        }
+        while step > 1e-9 * self.slowest_s {
+            step /= 2.0;
+            for t in [(best - step).max(0.0), best + step] {
+                if height(t) > height(best) {
+                    best = t;
+                }
+            }
+        }
+        (best, height(best))
+    }
+
+    /// Time after which what an impulse left is under 10⁻⁷ of its peak, s.
+    #[must_use]
+    pub fn memory_s(&self) -> f64 {
+        let (peak_s, height) = self.impulse_peak();
+        let mut t = peak_s + self.slowest_s;
+        // A ringing tail crosses zero: look at two instants a quarter of a ring apart.
+        while self.impulse_response(t).norm() + self.impulse_response(t + self.slowest_s).norm() > 1e-7 * height {
+            t += self.slowest_s;
+        }
+        t
+    }
+
+    /// A state at rest that is carried from sample to sample by `step_s`.
+    #[must_use]
+    pub fn state(&self, step_s: f64) -> ChannelState {
+        let chains = self
+            .modes
+            .iter()
+            .map(|mode| Chain {
+                mode: mode.clone(),
+                step: mode.step(step_s),
+                states: vec![Complex::default(); mode.weights.len()],
+            })
+            .collect();
+        ChannelState { chains }
+    }
+}
+
+/// Weights of the chain of pole `which`: the Taylor series of the rest of the transfer function about it.
+fn weights(poles: &[Pole], which: usize) -> Vec<Complex> {
+    let Pole { at, multiplicity } = poles[which];
+    let mut series = vec![Complex::default(); multiplicity];
+    series[0] = Complex::from(1.0);
+    for (_, other) in poles.iter().enumerate().filter(|(i, _)| *i != which) {
+        let distance = at - other.at;
+        for _ in 0..other.multiplicity {
+            divide_by_linear(&mut series, -other.at, distance);
+        }
+    }
+    // H = Σ series_r·(s − p)^(r − m)·(−p)^m, and z_k stands for |p|^(k−1)/(s − p)^k.
+    let gain = (0..multiplicity).fold(Complex::from(1.0), |g, _| g * -at);
+    let scale = at.norm();
+    (1..=multiplicity).map(|k| gain * series[multiplicity - k] / scale.powi(k as i32 - 1)).collect()
+}
+
+/// The series times gain/(distance + x), in place.
+fn divide_by_linear(series: &mut [Complex], gain: Complex, distance: Complex) {
+    let mut before = Complex::default();
+    for term in series.iter_mut() {
+        before = (*term * gain - before) / distance;
+        *term = before;
+    }
+}
+
+/// z_k = Σ step_j·z_(k−j), in place.
+fn convolve(z: &mut [Complex], step: &[Complex]) {
+    for k in (0..z.len()).rev() {
+        z[k] = (0..=k).map(|j| step[j] * z[k - j]).sum();
+    }
+}
+
+/// States of one pole.
+#[derive(Debug, Clone, PartialEq)]
+struct Chain {
+    mode: Mode,
+    /// Step over one sample.
+    step: Vec<Complex>,
+    states: Vec<Complex>,
+}
+
+/// A channel filter at work.
+#[derive(Debug, Clone, PartialEq)]
+pub struct ChannelState {
+    chains: Vec<Chain>,
+}
+
+impl ChannelState {
+    /// Carries the state on by one sample.
+    #[inline]
+    pub fn advance(&mut self) {
+        for chain in &mut self.chains {
+            match (&mut chain.states[..], &chain.step[..]) {
+                // The usual filters have single and double poles.
+                ([z], [e]) => *z *= e,
+                ([z, chained], [e, e_t]) => {
+                    *chained = e * *chained + e_t * *z;
+                    *z *= e;
+                }
+                (z, step) => convolve(z, step),
+            }
+        }
+    }
+
+    /// Adds what an impulse of the given strength has become `age_s` after it.
+    pub fn add_impulse(&mut self, strength: Complex, age_s: f64) {
+        for chain in &mut self.chains {
+            for (z, term) in chain.states.iter_mut().zip(chain.mode.step(age_s)) {
+                *z += strength * term;
+            }
+        }
+    }
+
+    /// Adds an impulse at this very instant.
+    #[inline]
+    pub fn add_impulse_now(&mut self, strength: Complex) {
+        for chain in &mut self.chains {
+            chain.states[0] += strength;
+        }
+    }
+
+    /// Puts states that are far below anything audible to rest, where arithmetic on them would become slow.
+    pub fn settle(&mut self) {
+        for z in self.chains.iter_mut().flat_map(|chain| &mut chain.states) {
+            if z.norm_sqr() < NOTHING_SQUARED {
+                *z = Complex::default();
+            }
+        }
+    }
+
+    /// Complex envelope at this instant.
+    #[inline]
+    #[must_use]
+    pub fn output(&self) -> Complex {
+        let mut sum = Complex::default();
+        for chain in &self.chains {
+            for (z, weight) in chain.states.iter().zip(&chain.mode.weights) {
+                sum += z * weight;
+            }
+        }
+        sum
+    }
+}

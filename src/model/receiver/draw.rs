@@ -1,0 +1,110 @@
+//! Random draws of the receiver, one stream for each purpose so that switching one thing on leaves the others as they were.
+
+use super::Complex;
+use rand::rngs::Xoshiro256PlusPlus;
+use rand::{Rng, SeedableRng};
+use std::f64::consts::TAU;
+
+/// What a stream of draws is for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Stream {
+    /// Carrier phase of each click.
+    ClickPhase = 1,
+    /// Noise in the channel.
+    ChannelNoise = 2,
+    /// The co-channel carrier and its programme.
+    Carrier = 3,
+    /// Noise of the recorder.
+    Recorder = 4,
+}
+
+/// A stream of draws.
+#[derive(Debug, Clone)]
+pub(crate) struct Draw {
+    generator: Xoshiro256PlusPlus,
+    /// The second of the last pair of normal numbers.
+    spare: Option<f64>,
+}
+
+impl Draw {
+    pub(crate) fn new(seed: u64, stream: Stream) -> Self {
+        Self { generator: Xoshiro256PlusPlus::seed_from_u64(scramble(seed ^ scramble(stream as u64))), spare: None }
+    }
+
+    /// Uniform in (0, 1), neither end reached.
+    #[inline]
+    pub(crate) fn uniform(&mut self) -> f64 {
+        const UNIT: f64 = 1.0 / (1u64 << 53) as f64;
+        ((self.generator.next_u64() >> 11) as f64 + 0.5) * UNIT
+    }
+
+    /// A point on the unit circle.
+    pub(crate) fn phase(&mut self) -> Complex {
+        Complex::from_polar(1.0, TAU * self.uniform())
+    }
+
+    /// Complex normal number of mean square 1: both parts normal with variance 1/2, by the polar method (Marsaglia and Bray
+    /// 1964). Whether a point is drawn again is decided by sums and products alone, so every machine draws the same points.
+    #[inline]
+    pub(crate) fn complex_normal(&mut self) -> Complex {
+        loop {
+            let point = Complex::new(2.0 * self.uniform() - 1.0, 2.0 * self.uniform() - 1.0);
+            let square = point.norm_sqr();
+            if square < 1.0 && square > 0.0 {
+                return point * (-square.ln() / square).sqrt();
+            }
+        }
+    }
+
+    /// Normal number of variance 1.
+    #[inline]
+    pub(crate) fn normal(&mut self) -> f64 {
+        if let Some(spare) = self.spare.take() {
+            return spare;
+        }
+        let pair = self.complex_normal() * std::f64::consts::SQRT_2;
+        self.spare = Some(pair.im);
+        pair.re
+    }
+}
+
+/// Bijective mixing of 64 bits (finalizer of MurmurHash3), so that neighbouring seeds and streams have unrelated states.
+fn scramble(value: u64) -> u64 {
+    let mut z = value.wrapping_add(0x2545_f491_4f6c_dd1d);
+    z = (z ^ (z >> 33)).wrapping_mul(0xff51_afd7_ed55_8ccd);
+    z = (z ^ (z >> 33)).wrapping_mul(0xc4ce_b9fe_1a85_ec53);
+    z ^ (z >> 33)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn complex_normal_numbers_have_the_moments_of_a_normal_distribution() {
+        const N: usize = 200_000;
+        let mut draw = Draw::new(7, Stream::ChannelNoise);
+        let values: Vec<Complex> = (0..N).map(|_| draw.complex_normal()).collect();
+        let mean = |f: &dyn Fn(&Complex) -> f64| values.iter().map(f).sum::<f64>() / N as f64;
+        // Standard errors: 1/√n for the square, √(96/4)/√n for the fourth power of a part, 1/√(2n) for the products.
+        let error = 1.0 / (N as f64).sqrt();
+        assert!((mean(&|z| z.norm_sqr()) - 1.0).abs() < 4.0 * error);
+        assert!((mean(&|z| z.re.powi(4)) - 0.75).abs() < 4.0 * 24f64.sqrt() * error);
+        assert!(mean(&|z| z.re * z.im).abs() < 4.0 * error);
+        assert!(mean(&|z| z.re).abs() < 4.0 * error && mean(&|z| z.im).abs() < 4.0 * error);
+    }
+
+    #[test]
+    fn streams_and_neighbouring_seeds_are_unrelated() {
+        let first = |seed, stream| Draw::new(seed, stream).uniform();
+        let draws = [
+            first(1, Stream::ClickPhase),
+            first(2, Stream::ClickPhase),
+            first(1, Stream::Carrier),
+            first(3, Stream::Recorder),
+        ];
+        for (i, a) in draws.iter().enumerate() {
+            assert!(draws[i + 1..].iter().all(|b| (a - b).abs() > 1e-3), "{draws:?}");
+        }
+    }
+}

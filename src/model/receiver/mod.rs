@@ -1,0 +1,43 @@
+//! The receiver, from the damped wave of a spark to the audio.
+//!
+//! ```text
+//!  firing ─► burst ─► selectivity ─► AGC ─► envelope detector ─► audio band ─► decimation ─► recorder
+//!                         ▲
+//!           noise, carrier with programme
+//! ```
+//!
+//! Everything before the detector is complex baseband about the tuned frequency: the modulus of the complex number is the
+//! envelope, its argument the phase against the tuned frequency. Amplitudes are relative to the envelope peak of one
+//! isolated click of the reference voltage, which is 1.
+
+mod agc;
+mod audio_band;
+mod burst;
+mod carrier;
+mod chain;
+mod channel;
+mod decimator;
+mod detector;
+mod draw;
+mod hum;
+mod selectivity;
+mod settings;
+
+pub use agc::{Agc, AgcSettings};
+pub use audio_band::{AudioBand, AudioFilter};
+pub use burst::{Burst, BurstError};
+pub use carrier::{Carrier, CarrierSource, Programme};
+pub(crate) use chain::{Chain, oversampling};
+pub use channel::{Channel, ChannelState};
+pub use decimator::Decimator;
+pub use detector::{Detector, DetectorSettings};
+pub(crate) use draw::{Draw, Stream};
+pub use hum::{Hum, HumSource};
+pub use selectivity::Selectivity;
+pub(crate) use settings::within;
+pub use settings::{
+    DEFAULT_AUDIO_BAND_HZ, DEFAULT_BANDWIDTH_HZ, DEFAULT_CLICK_TO_NOISE, ReceiverError, ReceiverSettings,
+};
+
+/// A complex number of the baseband.
+pub type Complex = rustfft::num_complex::Complex<f64>;
