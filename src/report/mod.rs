@@ -1,5 +1,13 @@
-//! Results as text, JSON and CSV. Computes nothing.
+//! Results as text, JSON and CSV. Computes nothing: it rounds, names units and leaves out what is not finite.
 
+mod events;
+mod figure;
+mod json;
 mod measurement;
+mod text;
 
+pub use events::{EVENTS_HEADER, write_events};
+pub use figure::Figure;
+pub use json::{Failure, Report, finite, to_json};
 pub use measurement::{FORMAT, Measurement, Recording};
+pub use text::{HIGH_VOLTAGE_CAUTION, measurement_text, wrapped};
