@@ -123,10 +123,7 @@ mod tests {
 
     #[test]
     fn a_channel_beyond_the_recording_is_refused() {
-        assert_eq!(
-            Pick::settled(ChannelChoice::Right, 1),
-            Err(AudioError::NoChannel { asked: 2, channels: 1 })
-        );
+        assert_eq!(Pick::settled(ChannelChoice::Right, 1), Err(AudioError::NoChannel { asked: 2, channels: 1 }));
         assert_eq!(Pick::settled(ChannelChoice::Number(2), 2), Ok(Some(Pick::One(1))));
     }
 

@@ -50,13 +50,8 @@ mod tests {
 
     #[test]
     fn an_event_is_a_line_and_what_is_not_known_is_empty() {
-        let firing = Event {
-            time_s: 1.25,
-            kind: EventKind::Firing,
-            size: 0.5,
-            timing_u_s: 2e-6,
-            period_s: Some(0.0025),
-        };
+        let firing =
+            Event { time_s: 1.25, kind: EventKind::Firing, size: 0.5, timing_u_s: 2e-6, period_s: Some(0.0025) };
         let missed = Event { time_s: 1.2525, kind: EventKind::Missed, size: 0.0, timing_u_s: f64::NAN, period_s: None };
         let mut out = Vec::new();
         write_events(&mut out, &[firing, missed], |event| event.period_s.map(|_| 7103.26)).expect("memory");

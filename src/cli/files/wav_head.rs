@@ -114,7 +114,8 @@ fn plain_format(format: &[u8]) -> Result<(Vec<u8>, Option<u16>), FileError> {
         return Ok((format.to_vec(), None));
     }
     // Samples stand left-justified in containers of whole bytes, so 20 valid bits in 3 bytes read as 24.
-    let container = if frame_bytes > 0 && frame_bytes % channels == 0 { frame_bytes / channels } else { bits.div_ceil(8) };
+    let container =
+        if frame_bytes > 0 && frame_bytes % channels == 0 { frame_bytes / channels } else { bits.div_ceil(8) };
     let possible = match tag {
         PCM => (1..=4).contains(&container),
         FLOAT => matches!(container, 4 | 8),
