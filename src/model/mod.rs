@@ -1,5 +1,13 @@
-//! The laws, forward: from a bench to firings, and from firings to the audio a receiver would give.
+//! The laws, and the way forward: from a bench to firings and to the audio a receiver would give.
+//!
+//! [`charging`] holds the charging law in both directions, [`random`] the portable random numbers, [`firings`]
+//! makes trains of firings with known truth; [`receiver`] and [`render`] turn firings into audio, [`truth`] says what a
+//! clip holds.
 
+pub mod charging;
+pub mod firings;
+pub mod random;
 pub mod receiver;
 pub mod render;
+pub mod root;
 pub mod truth;
