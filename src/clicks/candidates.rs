@@ -1,0 +1,149 @@
+//! Every local maximum of the matched filter, with its mark. No threshold: what is a firing is decided by the rhythm.
+
+use super::filter::FilterBank;
+use super::shape::Shape;
+
+/// Candidate clicks in the order of time: the two vectors have equal length.
+#[derive(Debug, Clone, Default)]
+pub struct Candidates {
+    /// Time from the start of the window, s.
+    pub time_s: Vec<f64>,
+    /// Mark: natural logarithm of the filter output over its robust standard deviation.
+    pub mark: Vec<f64>,
+}
+
+/// Marks alone, where the times do not matter.
+pub type Marks = [f64];
+
+/// At most this many candidates a second: maxima of noise in a 7 kHz band.
+const MOST_PER_S: f64 = 7_000.0;
+/// Outputs below this many standard deviations all say the same.
+const LEAST_SIGMAS: f32 = 0.3;
+
+impl Candidates {
+    /// Number of candidates.
+    #[must_use]
+    pub fn len(&self) -> usize {
+        self.time_s.len()
+    }
+
+    /// True if there is none.
+    #[must_use]
+    pub fn is_empty(&self) -> bool {
+        self.time_s.is_empty()
+    }
+
+    /// The candidates with the given indices.
+    #[must_use]
+    pub fn pick(&self, indices: &[usize]) -> Self {
+        Self {
+            time_s: indices.iter().map(|&i| self.time_s[i]).collect(),
+            mark: indices.iter().map(|&i| self.mark[i]).collect(),
+        }
+    }
+
+    /// Indices of the `count` strongest, in the order of time.
+    #[must_use]
+    pub fn strongest(&self, count: usize) -> Vec<usize> {
+        if count >= self.len() {
+            return (0..self.len()).collect();
+        }
+        let threshold = nth_largest(&self.mark, count.max(1) - 1);
+        (0..self.len()).filter(|&i| self.mark[i] >= threshold).collect()
+    }
+}
+
+/// The value of rank `rank` from the top (0 is the largest); the slice must not be empty.
+#[must_use]
+pub fn nth_largest(values: &Marks, rank: usize) -> f64 {
+    let mut copy = values.to_vec();
+    let rank = rank.min(copy.len() - 1);
+    *copy.select_nth_unstable_by(rank, |a, b| b.total_cmp(a)).1
+}
+
+/// Output of the matched filter for a shape: signed, or the root of the summed squares over its vectors.
+pub fn matched_output(bank: &FilterBank, x: &[f32], shape: &Shape, out: &mut Vec<f32>) {
+    bank.apply(x, &bank.correlator(&shape.vectors[0], shape.centre), out);
+    if shape.signed {
+        return;
+    }
+    out.iter_mut().for_each(|v| *v *= *v);
+    let mut other = Vec::new();
+    for vector in &shape.vectors[1..] {
+        bank.apply(x, &bank.correlator(vector, shape.centre), &mut other);
+        out.iter_mut().zip(&other).for_each(|(o, v)| *o += v * v);
+    }
+    out.iter_mut().for_each(|v| *v = v.sqrt());
+}
+
+/// Robust standard deviation: 1.4826 × the median distance from the median, over at most 200 000 samples.
+#[must_use]
+pub fn robust_sd(x: &[f32]) -> f32 {
+    let stride = (x.len() / 200_000).max(1);
+    let mut part: Vec<f32> = x.iter().step_by(stride).copied().collect();
+    if part.is_empty() {
+        return 0.0;
+    }
+    let mid = part.len() / 2;
+    let median = *part.select_nth_unstable_by(mid, f32::total_cmp).1;
+    part.iter_mut().for_each(|v| *v = (*v - median).abs());
+    1.4826 * *part.select_nth_unstable_by(mid, f32::total_cmp).1
+}
+
+/// All local maxima of `output`, times by the parabola through three samples; a maximum that is not the largest
+/// within ± `apart_s` is left out.
+#[must_use]
+pub fn find(output: &[f32], rate_hz: f64, apart_s: f64) -> Candidates {
+    let scale = robust_sd(output) + 1e-12;
+    let top = output.iter().copied().fold(0.0f32, f32::max);
+    let floor = 1e-9 * top;
+    let reach = (apart_s * rate_hz) as usize;
+    let mut found: Vec<(f64, f32)> = Vec::new();
+    for i in 1..output.len().saturating_sub(1) {
+        let (a, b, c) = (output[i - 1], output[i], output[i + 1]);
+        if !(b > a && b >= c && b > floor) {
+            continue;
+        }
+        if reach > 1 {
+            let near = &output[i.saturating_sub(reach)..(i + reach + 1).min(output.len())];
+            if near.iter().any(|&v| v > b * 1.0001) {
+                continue;
+            }
+        }
+        let bend = a - 2.0 * b + c;
+        let shift = if bend < 0.0 { 0.5 * (a - c) / bend } else { 0.0 };
+        found.push(((i as f64 + f64::from(shift)) / rate_hz, b - 0.25 * (a - c) * shift));
+    }
+    keep_strongest(&mut found, (MOST_PER_S * output.len() as f64 / rate_hz) as usize);
+    Candidates {
+        time_s: found.iter().map(|f| f.0).collect(),
+        mark: found.iter().map(|f| f64::from(f.1.max(LEAST_SIGMAS * scale) / scale).ln()).collect(),
+    }
+}
+
+fn keep_strongest(found: &mut Vec<(f64, f32)>, most: usize) {
+    if found.len() > most && most > 0 {
+        let mut sizes: Vec<f32> = found.iter().map(|f| f.1).collect();
+        let threshold = *sizes.select_nth_unstable_by(most - 1, |a, b| b.total_cmp(a)).1;
+        found.retain(|f| f.1 >= threshold);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_parabola_is_found_between_samples() {
+        let output: Vec<f32> = (0..100).map(|n| 10.0 - 0.05 * (n as f32 - 50.3).powi(2)).map(|v| v.max(0.0)).collect();
+        let found = find(&output, 1.0, 0.0);
+        let best = (0..found.len()).max_by(|&a, &b| found.mark[a].total_cmp(&found.mark[b])).unwrap();
+        assert!((found.time_s[best] - 50.3).abs() < 1e-3);
+    }
+
+    #[test]
+    fn the_strongest_are_kept_in_the_order_of_time() {
+        let c = Candidates { time_s: vec![0.0, 1.0, 2.0, 3.0], mark: vec![1.0, 4.0, 2.0, 3.0] };
+        assert_eq!(c.strongest(2), vec![1, 3]);
+    }
+}

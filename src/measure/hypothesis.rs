@@ -1,0 +1,93 @@
+//! The first pass: which shape, which sign, which period.
+
+use super::window::Window;
+use crate::clicks::candidates::{self, Candidates};
+use crate::clicks::shape::{FirstLook, Shape, first_look};
+use crate::rhythm::fit::Fit;
+use crate::rhythm::search;
+use rustfft::num_complex::Complex32;
+
+/// A rhythm with the candidates and the shape that it was found with.
+pub struct Hypothesis {
+    /// The fit; its chain refers to `candidates`.
+    pub fit: Fit,
+    /// All candidates.
+    pub candidates: Candidates,
+    /// The click's shape.
+    pub shape: Shape,
+    /// True if found among closely spaced candidates.
+    pub fast: bool,
+}
+
+/// From this share of one sign on, clicks are taken as signed …
+const SIGNED: f64 = 0.93;
+/// … and from this on, nothing else is tried.
+const CERTAIN: f64 = 0.985;
+/// Maxima nearer than this are one click, s (slow trains only).
+pub const APART_S: f64 = 0.2e-3;
+/// A rhythm covering less than this share of the time counts a thousandth.
+const COVER: f64 = 0.4;
+
+/// Looks for the best rhythm; lines of the explanation are appended.
+#[must_use]
+pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) -> Option<Hypothesis> {
+    let mut envelope: Vec<Complex32> = Vec::new();
+    window.bank.apply_analytic(whitened, &window.bank.kernel_of_gain(window.rate_hz, |_| 1.0), &mut envelope);
+    let look = first_look(whitened, &envelope, window.rate_hz)?;
+    explanation.push(format!(
+        "click shape learnt from the strongest peaks; {:.0} % of them have one sign",
+        100.0 * look.positive_share.max(1.0 - look.positive_share)
+    ));
+    let mut best: Option<Hypothesis> = None;
+    let mut output = Vec::new();
+    for shape in shapes(&look) {
+        candidates::matched_output(window.bank, whitened, &shape, &mut output);
+        for fast in [false, true] {
+            let found = candidates::find(&output, window.rate_hz, if fast { 0.0 } else { APART_S });
+            for mut fit in search::rhythms(&found, window.duration_s(), fast) {
+                if fit.cover < COVER {
+                    fit.evidence = fit.evidence.min(1e-3 * fit.evidence);
+                }
+                explanation.push(describe(&fit, &shape, fast));
+                if best.as_ref().is_none_or(|b| fit.evidence > b.fit.evidence) {
+                    best = Some(Hypothesis { fit, candidates: found.clone(), shape: shape.clone(), fast });
+                }
+            }
+        }
+    }
+    best
+}
+
+/// The shapes tried: one signed shape, or both signs and an unsigned pair.
+fn shapes(look: &FirstLook) -> Vec<Shape> {
+    let share = look.positive_share.max(1.0 - look.positive_share);
+    let flipped = look.positive_share < 0.5;
+    let signed = |flip: bool| Shape {
+        vectors: vec![look.vectors[0].iter().map(|v| if flip { -v } else { *v }).collect()],
+        centre: look.centre,
+        signed: true,
+    };
+    if share >= CERTAIN {
+        return vec![signed(flipped)];
+    }
+    let flipped = flipped && share > SIGNED;
+    vec![
+        signed(flipped),
+        signed(!flipped),
+        Shape { vectors: look.vectors[..2].to_vec(), centre: look.centre, signed: false },
+    ]
+}
+
+fn describe(fit: &Fit, shape: &Shape, fast: bool) -> String {
+    format!(
+        "period {:.4} ms ({} clicks, {}): evidence {:.0} nats over no rhythm, {} firings, {:.2} % missed, scatter {:.2} %, covers {:.0} %",
+        1e3 * fit.period_s,
+        if shape.signed { "signed" } else { "unsigned" },
+        if fast { "close" } else { "apart" },
+        fit.evidence,
+        fit.chain.index.len(),
+        100.0 * fit.missed,
+        100.0 * fit.jitter,
+        100.0 * fit.cover
+    )
+}

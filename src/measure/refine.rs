@@ -1,0 +1,81 @@
+//! The second pass: the shape from the clicks on the rhythm, the noise from what is left, and the rhythm fitted again.
+
+use super::hypothesis::{APART_S, Hypothesis};
+use super::window::Window;
+use crate::clicks::candidates;
+use crate::clicks::shape::{Shape, leading_vectors, median_shape, pieces};
+use crate::clicks::snippet::{dot, normalise};
+use crate::clicks::spectrum::Spectrum;
+use crate::rhythm::fit::Start;
+use crate::rhythm::search::fit_whole;
+
+/// Half width of the second shape, s and periods.
+const HALF_S: f64 = 1.2e-3;
+const HALF_PERIODS: f64 = 0.45;
+/// Clicks that the shape is learnt from at most.
+const LEARN_FROM: usize = 600;
+/// High-pass and floor of the second whitening.
+const HIGH_PASS_HZ: f64 = 180.0;
+const FLOOR: f64 = 3e-3;
+/// Candidates per expected firing.
+const DENSITY: f64 = 14.0;
+
+/// Refines a hypothesis in place, twice; returns the whitened signal of the last pass that held.
+pub fn refine(window: &Window, whitened: Vec<f32>, h: &mut Hypothesis) -> Vec<f32> {
+    let mut x = whitened;
+    let mut output = Vec::new();
+    for pass in 0..2 {
+        let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
+        let positions = strongest_on_rhythm(h, window.rate_hz);
+        let mut shape = learn(&x, &positions, half, h.shape.signed);
+        if pass == 0 {
+            let rest = without_clicks(&x, h, &shape, window.rate_hz);
+            let noise = Spectrum::of_noise(&rest, window.rate_hz);
+            x = window.through(&x, &noise, HIGH_PASS_HZ, FLOOR);
+            shape = learn(&x, &positions, half, h.shape.signed);
+        }
+        candidates::matched_output(window.bank, &x, &shape, &mut output);
+        let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
+        let start =
+            Start { period_s: h.fit.period_s, jitter: h.fit.jitter, follow: 0.1, steep: false, rounds: 6 };
+        match fit_whole(&found, window.duration_s(), start, DENSITY) {
+            Some(fit) if 2 * fit.chain.index.len() >= h.fit.chain.index.len() => {
+                h.fit = fit;
+                h.candidates = found;
+                h.shape = shape;
+            }
+            _ => break,
+        }
+    }
+    x
+}
+
+fn strongest_on_rhythm(h: &Hypothesis, rate_hz: f64) -> Vec<f64> {
+    let stride = h.fit.chain.index.len().div_ceil(LEARN_FROM);
+    h.fit.chain.index.iter().step_by(stride.max(1)).map(|&i| h.candidates.time_s[i] * rate_hz).collect()
+}
+
+fn learn(x: &[f32], positions: &[f64], half: usize, signed: bool) -> Shape {
+    let mut rows = pieces(x, positions, half);
+    rows.iter_mut().for_each(|r| normalise(r));
+    let vectors = if signed { vec![median_shape(&rows)] } else { leading_vectors(&rows, None, 2) };
+    Shape { vectors, centre: half, signed }
+}
+
+/// The signal with the fitted clicks taken off (to the nearest sample: only the spectrum of the rest is used).
+fn without_clicks(x: &[f32], h: &Hypothesis, shape: &Shape, rate_hz: f64) -> Vec<f32> {
+    let mut rest = x.to_vec();
+    let length = shape.vectors[0].len();
+    for &i in &h.fit.chain.index {
+        let first = (h.candidates.time_s[i] * rate_hz).round() as isize - shape.centre as isize;
+        if first < 0 || first as usize + length > x.len() {
+            continue;
+        }
+        let range = first as usize..first as usize + length;
+        for vector in &shape.vectors {
+            let size = dot(&x[range.clone()], vector);
+            rest[range.clone()].iter_mut().zip(vector).for_each(|(r, v)| *r -= size * v);
+        }
+    }
+    rest
+}

@@ -1,0 +1,340 @@
+//! Fits one rhythm to marked candidates: the chain, its jitter, the share of missed clicks and the densities of the marks, in
+//! turns (expectation–maximisation with the best chain in place of the expectation).
+//!
+//! The evidence of a fit is the log likelihood of the candidates under it over that of the same candidates with the same marks
+//! and no rhythm (independent arrivals). At short periods maxima of band-limited noise keep a distance from each other, which is
+//! no rhythm: both sides are then given the regularity of a gamma law.
+
+use super::marks::Binned;
+use super::path::{Chain, Law, best_chain};
+use crate::clicks::Candidates;
+use crate::clicks::candidates::nth_largest;
+use statrs::function::gamma::ln_gamma;
+
+/// A fitted rhythm.
+#[derive(Debug, Clone)]
+pub struct Fit {
+    /// Evidence, nats.
+    pub evidence: f64,
+    /// Candidates on the rhythm.
+    pub chain: Chain,
+    /// Median local period, s.
+    pub period_s: f64,
+    /// Relative scatter of single periods (timing noise in it).
+    pub jitter: f64,
+    /// Share of firings without a candidate.
+    pub missed: f64,
+    /// Share of the window's time that the chain covers.
+    pub cover: f64,
+}
+
+/// Where a fit starts.
+#[derive(Debug, Clone, Copy)]
+pub struct Start {
+    /// Period, s.
+    pub period_s: f64,
+    /// Relative jitter.
+    pub jitter: f64,
+    /// How fast the period follows in the first round.
+    pub follow: f64,
+    /// First gains by a steep threshold (loose trains) instead of a soft one.
+    pub steep: bool,
+    /// Rounds.
+    pub rounds: usize,
+}
+
+/// Fewest firings of a chain that is looked at.
+const FEWEST: usize = 5;
+
+/// Fits a rhythm; none if no chain of five candidates is found.
+#[must_use]
+pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
+    if c.len() < FEWEST {
+        return None;
+    }
+    let binned = Binned::new(&c.mark);
+    let (mut gain, mut off_rate) = first_gain(c, duration_s, start);
+    let mut law = Law { jitter: start.jitter, missed: 0.05, follow: start.follow };
+    let mut periods = vec![start.period_s; c.len()];
+    let mut last = None;
+    for round in 0..start.rounds {
+        let ln_off = off_rate.ln();
+        let net: Vec<f64> = gain.iter().map(|g| g - ln_off).collect();
+        let chain = best_chain(&c.time_s, &net, &periods, law);
+        if chain.index.len() < FEWEST {
+            return None;
+        }
+        periods = local_period(c, &chain, start.period_s);
+        law.follow = if round >= 1 { 0.0 } else { start.follow };
+        let steps = Steps::of(c, &chain, &periods);
+        law.jitter = steps.jitter(law.jitter);
+        law.missed = steps.missed();
+        let mut on = vec![false; c.len()];
+        chain.index.iter().for_each(|&i| on[i] = true);
+        let densities = (binned.density(|i| on[i]), binned.density(|i| !on[i]));
+        let off = (c.len() - chain.index.len()).max(1) as f64;
+        gain = binned.gain(&densities.0, &densities.1);
+        let used_rate = off_rate.max((off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s));
+        off_rate = (off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s);
+        last = Some((chain, steps, on, densities, used_rate));
+    }
+    let (chain, steps, on, densities, _) = last?;
+    let evidence = evidence(c, duration_s, &binned, &chain, &on, &densities, off_rate, &steps);
+    Some(Fit {
+        evidence,
+        period_s: median(&steps.period),
+        jitter: law.jitter,
+        missed: law.missed,
+        cover: steps.span() / duration_s,
+        chain,
+    })
+}
+
+/// Gains before any chain is known: a soft threshold a little under the mark of rank 0.9·duration/T.
+fn first_gain(c: &Candidates, duration_s: f64, start: Start) -> (Vec<f64>, f64) {
+    let expected = duration_s / start.period_s;
+    let n = c.len() as f64;
+    if start.steep {
+        let threshold = nth_largest(&c.mark, expected as usize);
+        let gain = c.mark.iter().map(|m| (6.0 * (m - threshold)).clamp(-6.0, 12.0)).collect();
+        (gain, (n - expected).max(0.2 * expected) / duration_s)
+    } else {
+        let threshold = nth_largest(&c.mark, (0.9 * expected) as usize) + 0.7f64.ln();
+        let gain = c.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0)).collect();
+        (gain, (n - expected).max(0.3 * expected) / duration_s)
+    }
+}
+
+/// The steps of a chain, restarts left out.
+struct Steps {
+    length: Vec<f64>,
+    count: Vec<f64>,
+    period: Vec<f64>,
+}
+
+impl Steps {
+    fn of(c: &Candidates, chain: &Chain, periods: &[f64]) -> Self {
+        let mut me = Self { length: Vec::new(), count: Vec::new(), period: Vec::new() };
+        for (w, &k) in chain.index.windows(2).zip(&chain.steps[1..]) {
+            if k > 0 {
+                me.length.push(c.time_s[w[1]] - c.time_s[w[0]]);
+                me.count.push(k as f64);
+                me.period.push(0.5 * (periods[w[0]] + periods[w[1]]));
+            }
+        }
+        me
+    }
+
+    fn residuals(&self) -> Vec<f64> {
+        self.length.iter().zip(&self.count).zip(&self.period).map(|((d, k), t)| (d - k * t) / k.sqrt() / t).collect()
+    }
+
+    /// Relative jitter for the next round: 1.1 × the rms of residuals within five robust deviations, falling slowly.
+    fn jitter(&self, before: f64) -> f64 {
+        let z = self.residuals();
+        if z.is_empty() {
+            return before;
+        }
+        let centre = median(&z);
+        let robust = 1.4826 * median(&z.iter().map(|v| (v - centre).abs()).collect::<Vec<_>>());
+        let (sum, n) = z
+            .iter()
+            .filter(|v| v.abs() < 5.0 * robust + 1e-9)
+            .fold((0.0, 0usize), |(s, n), v| (s + v * v, n + 1));
+        let rms = if n > 3 { (sum / n as f64).sqrt() } else { robust };
+        let seen = rms.max(robust).max(3e-6 / median(&self.period)).max(5e-4);
+        (1.1 * seen).max(0.3 * before).min(0.6)
+    }
+
+    fn missed(&self) -> f64 {
+        let missed: f64 = self.count.iter().map(|k| k - 1.0).sum();
+        ((missed + 0.5) / (missed + self.count.len() as f64 + 1.0)).clamp(5e-4, 0.35)
+    }
+
+    fn span(&self) -> f64 {
+        self.count.iter().zip(&self.period).map(|(k, t)| k * t).sum()
+    }
+}
+
+#[allow(clippy::too_many_arguments, reason = "one formula over everything that the last round knows")]
+fn evidence(
+    c: &Candidates,
+    duration_s: f64,
+    binned: &Binned,
+    chain: &Chain,
+    on: &[bool],
+    densities: &(super::marks::Density, super::marks::Density),
+    off_rate: f64,
+    steps: &Steps,
+) -> f64 {
+    let (n, n_on) = (c.len() as f64, chain.index.len() as f64);
+    let (rate_on, rate_off) = (n_on / duration_s, (n - n_on) / duration_s);
+    let mut null = -n;
+    let mut with = chain.score - off_rate * duration_s;
+    for (f_on, f_off) in binned.at(&densities.0).zip(binned.at(&densities.1)) {
+        null += (rate_on * f_on + rate_off * f_off + 1e-300).ln();
+        with += (off_rate * f_off).ln();
+    }
+    if steps.period.is_empty() {
+        return f64::NEG_INFINITY;
+    }
+    if median(&steps.period) < 2e-3 {
+        let gaps: Vec<f64> = c.time_s.windows(2).map(|w| w[1] - w[0]).collect();
+        let off_gaps: Vec<f64> = gaps.iter().zip(on.windows(2)).filter(|(_, o)| !o[0] && !o[1]).map(|(g, _)| *g).collect();
+        with += regularity(&off_gaps);
+        null += regularity(&gaps);
+    }
+    with - null
+}
+
+/// How much more likely gaps are under a gamma law (shape up to 18: maxima of band-limited noise) than under the exponential.
+fn regularity(gaps: &[f64]) -> f64 {
+    if gaps.len() < 5 {
+        return 0.0;
+    }
+    let n = gaps.len() as f64;
+    let mean = gaps.iter().sum::<f64>() / n;
+    let (mut ln_sum, mut sum) = (0.0, 0.0);
+    for g in gaps {
+        let x = (g / mean).max(1e-3);
+        ln_sum += x.ln();
+        sum += x;
+    }
+    [1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0, 12.0, 18.0]
+        .iter()
+        .map(|&k: &f64| n * (k * k.ln() - ln_gamma(k)) + (k - 1.0) * ln_sum - k * sum + sum)
+        .fold(f64::NEG_INFINITY, f64::max)
+}
+
+/// Half width of the running median and of the smoothing window, steps.
+const LOCAL_HALF: usize = 15;
+
+/// Expected period at every candidate: running median over 31 steps of the chain, then a Hann mean of the held values.
+#[must_use]
+pub fn local_period(c: &Candidates, chain: &Chain, fallback_s: f64) -> Vec<f64> {
+    let mut when = Vec::new();
+    let mut period = Vec::new();
+    for (w, &k) in chain.index.windows(2).zip(&chain.steps[1..]) {
+        if k > 0 {
+            when.push(0.5 * (c.time_s[w[0]] + c.time_s[w[1]]));
+            period.push((c.time_s[w[1]] - c.time_s[w[0]]) / k as f64);
+        }
+    }
+    if period.len() < 4 {
+        return vec![fallback_s; c.len()];
+    }
+    let smooth = if period.len() > 2 * LOCAL_HALF { smooth_periods(&period) } else { vec![median(&period); period.len()] };
+    interpolate(&c.time_s, &when, &smooth)
+}
+
+fn smooth_periods(period: &[f64]) -> Vec<f64> {
+    let mid = running_median(period, LOCAL_HALF);
+    let spread = 1.5 * median(&period.iter().zip(&mid).map(|(x, m)| (x - m).abs()).collect::<Vec<_>>());
+    let held: Vec<f64> = period
+        .iter()
+        .zip(&mid)
+        .map(|(x, m)| {
+            let reach = 3.0 * (spread + 1e-9 * m);
+            x.clamp(m - reach, m + reach)
+        })
+        .collect();
+    let width = 2 * LOCAL_HALF + 1;
+    let weight: Vec<f64> = (0..width)
+        .map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos())
+        .collect();
+    let total: f64 = weight.iter().sum();
+    (0..held.len())
+        .map(|i| {
+            weight
+                .iter()
+                .enumerate()
+                .map(|(j, w)| w * held[reflect(i as isize + j as isize - LOCAL_HALF as isize, held.len())])
+                .sum::<f64>()
+                / total
+        })
+        .collect()
+}
+
+fn reflect(i: isize, n: usize) -> usize {
+    let last = n as isize - 1;
+    let mut k = i;
+    if k < 0 {
+        k = -k;
+    }
+    if k > last {
+        k = 2 * last - k;
+    }
+    k.clamp(0, last) as usize
+}
+
+/// Median of each value's neighbourhood of ± `half`, reflected at the ends.
+#[must_use]
+pub fn running_median(x: &[f64], half: usize) -> Vec<f64> {
+    let mut window = vec![0.0; 2 * half + 1];
+    (0..x.len())
+        .map(|i| {
+            for (j, w) in window.iter_mut().enumerate() {
+                *w = x[reflect(i as isize + j as isize - half as isize, x.len())];
+            }
+            *window.select_nth_unstable_by(half, f64::total_cmp).1
+        })
+        .collect()
+}
+
+/// Linear interpolation of (`at`, `value`) at ascending places, held at the ends.
+#[must_use]
+pub fn interpolate(places: &[f64], at: &[f64], value: &[f64]) -> Vec<f64> {
+    let mut k = 0;
+    places
+        .iter()
+        .map(|&p| {
+            while k + 1 < at.len() && at[k + 1] <= p {
+                k += 1;
+            }
+            if p <= at[0] || k + 1 >= at.len() {
+                return if p <= at[0] { value[0] } else { value[at.len() - 1] };
+            }
+            value[k] + (value[k + 1] - value[k]) * (p - at[k]) / (at[k + 1] - at[k])
+        })
+        .collect()
+}
+
+/// Median; 0 for nothing.
+#[must_use]
+pub fn median(x: &[f64]) -> f64 {
+    if x.is_empty() {
+        return 0.0;
+    }
+    let mut copy = x.to_vec();
+    let mid = copy.len() / 2;
+    let upper = *copy.select_nth_unstable_by(mid, f64::total_cmp).1;
+    if x.len() % 2 == 1 {
+        upper
+    } else {
+        let lower = copy[..mid].iter().copied().fold(f64::NEG_INFINITY, f64::max);
+        0.5 * (lower + upper)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_jittered_clock_among_noise_is_fitted() {
+        let mut state = 7u64;
+        let mut uniform = || {
+            state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+            (state >> 33) as f64 / (1u64 << 31) as f64
+        };
+        let mut all: Vec<(f64, f64)> = (0..400).map(|n| (0.01 * f64::from(n) + 4e-4 * (uniform() - 0.5), 2.0 + uniform())).collect();
+        all.extend((0..4000).map(|_| (uniform() * 4.0, uniform())));
+        all.sort_by(|a, b| a.0.total_cmp(&b.0));
+        let c = Candidates { time_s: all.iter().map(|a| a.0).collect(), mark: all.iter().map(|a| a.1).collect() };
+        let start = Start { period_s: 0.0103, jitter: 0.07, follow: 0.15, steep: false, rounds: 6 };
+        let fitted = fit(&c, 4.0, start).unwrap();
+        assert!((fitted.period_s / 0.01 - 1.0).abs() < 0.003 && fitted.evidence > 1_000.0);
+        assert!(fitted.chain.index.len().abs_diff(400) < 4, "{}", fitted.chain.index.len());
+        assert!((0.010..0.03).contains(&fitted.jitter), "{}", fitted.jitter);
+    }
+}

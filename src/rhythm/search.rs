@@ -1,0 +1,126 @@
+//! Which periods are worth a fit: the rhythm model itself is scored on a grid of periods (not autocorrelation, which likes
+//! multiples), the best few are fitted, with half and twice the best and two loose starts beside them.
+
+use super::fit::{Fit, Start, fit};
+use super::path::{Law, best_chain};
+use crate::clicks::Candidates;
+use crate::clicks::candidates::nth_largest;
+
+/// Longest period looked for, s.
+pub const LONGEST_S: f64 = 4.0;
+/// Shortest period of the search with separate clicks, s.
+pub const SHORTEST_SLOW_S: f64 = 0.55e-3;
+/// The search for fast trains, s.
+pub const FAST_S: (f64, f64) = (1.0 / 4000.0, 0.7e-3);
+/// Step of the logarithmic grid.
+const GRID_STEP: f64 = 0.05;
+/// Candidates per expected firing on the grid, and in a fit.
+const GRID_DENSITY: f64 = 10.0;
+const FIT_DENSITY: f64 = 14.0;
+/// A stretch of this length is enough to find a fast rhythm, s.
+const FAST_STRETCH_S: f64 = 2.5;
+/// Loose starts: first period and ratio.
+const LOOSE_FIRST_S: f64 = 1.5e-3;
+const LOOSE_RATIO: f64 = 1.5;
+const LOOSE_COUNT: usize = 17;
+
+/// A fit, with the indices of its chain referring to the whole list of candidates.
+pub fn fit_whole(c: &Candidates, duration_s: f64, start: Start, density: f64) -> Option<Fit> {
+    let keep = c.strongest((density * duration_s / start.period_s + 60.0) as usize);
+    let mut found = fit(&c.pick(&keep), duration_s, start)?;
+    found.chain.index.iter_mut().for_each(|i| *i = keep[*i]);
+    Some(found)
+}
+
+/// Fits the promising periods of one list of candidates; each fit with its evidence, in no order.
+#[must_use]
+pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
+    let (shortest, longest) = if fast { FAST_S } else { (SHORTEST_SLOW_S, LONGEST_S) };
+    let longest = longest.min(duration_s / 4.0);
+    if c.len() < 8 || longest <= shortest {
+        return Vec::new();
+    }
+    let grid = if fast && duration_s > FAST_STRETCH_S {
+        let from = 0.5 * (duration_s - FAST_STRETCH_S);
+        let part: Vec<usize> =
+            (0..c.len()).filter(|&i| (from..from + FAST_STRETCH_S).contains(&c.time_s[i])).collect();
+        scan(&c.pick(&part), FAST_STRETCH_S, shortest, longest)
+    } else {
+        scan(c, duration_s, shortest, longest)
+    };
+    let best = local_maxima(&grid, if fast { 3 } else { 5 });
+    let mut starts: Vec<Start> = best.iter().map(|&period_s| tight(period_s)).collect();
+    if !fast {
+        if let Some(&first) = best.first() {
+            starts.push(tight(first / 2.0));
+            starts.push(tight(first * 2.0));
+        }
+        starts.extend(loose_starts(c, duration_s));
+    }
+    starts
+        .into_iter()
+        .filter(|s| s.period_s <= duration_s / 4.0 && s.period_s >= 1.0 / 4200.0)
+        .filter_map(|s| fit_whole(c, duration_s, s, FIT_DENSITY))
+        // A loose train at a very short period is what noise looks like.
+        .filter(|f| f.period_s >= 0.7e-3 || f.jitter <= 0.12)
+        .collect()
+}
+
+fn tight(period_s: f64) -> Start {
+    Start { period_s, jitter: 0.07, follow: 0.15, steep: false, rounds: 6 }
+}
+
+/// Score of the best chain for each period of the grid.
+fn scan(c: &Candidates, duration_s: f64, shortest_s: f64, longest_s: f64) -> Vec<(f64, f64)> {
+    let count = ((longest_s / shortest_s).ln() / GRID_STEP).floor() as usize + 1;
+    (0..count)
+        .map(|q| shortest_s * (GRID_STEP * q as f64).exp())
+        .filter_map(|period_s| Some((period_s, grid_score(c, duration_s, period_s)?)))
+        .collect()
+}
+
+fn grid_score(c: &Candidates, duration_s: f64, period_s: f64) -> Option<f64> {
+    let expected = duration_s / period_s;
+    if 0.7 * expected > c.len() as f64 {
+        return None;
+    }
+    let keep = c.pick(&c.strongest((GRID_DENSITY * expected + 60.0) as usize));
+    let threshold = nth_largest(&c.mark, (0.9 * expected) as usize) + 0.7f64.ln();
+    let off_rate = (keep.len() as f64 - expected).max(0.3 * expected) / duration_s;
+    let gain: Vec<f64> =
+        keep.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
+    let law = Law { jitter: 0.06, missed: 0.05, follow: 0.15 };
+    Some(best_chain(&keep.time_s, &gain, &vec![period_s; keep.len()], law).score)
+}
+
+/// The periods of the best local maxima, best first.
+fn local_maxima(grid: &[(f64, f64)], most: usize) -> Vec<f64> {
+    let mut peaks: Vec<usize> = (0..grid.len())
+        .filter(|&i| {
+            let near = &grid[i.saturating_sub(2)..(i + 3).min(grid.len())];
+            near.iter().all(|g| g.1 <= grid[i].1)
+        })
+        .collect();
+    peaks.sort_by(|&a, &b| grid[b].1.total_cmp(&grid[a].1));
+    peaks.truncate(most);
+    peaks.into_iter().map(|i| grid[i].0).collect()
+}
+
+/// The two best starts for trains with 15 to 40 % jitter, by short fits over a coarse row of periods.
+fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
+    let mut found: Vec<(f64, f64)> = (0..LOOSE_COUNT)
+        .map(|k| LOOSE_FIRST_S * LOOSE_RATIO.powi(k as i32))
+        .take_while(|t| *t <= duration_s / 10.0)
+        .filter_map(|period_s| {
+            let start = Start { period_s, jitter: 0.3, follow: 0.0, steep: true, rounds: 3 };
+            let fitted = fit_whole(c, duration_s, start, 6.0)?;
+            Some((fitted.evidence, fitted.period_s))
+        })
+        .collect();
+    found.sort_by(|a, b| b.0.total_cmp(&a.0));
+    found.truncate(2);
+    found
+        .into_iter()
+        .map(|(_, period_s)| Start { period_s, jitter: 0.3, follow: 0.0, steep: true, rounds: 6 })
+        .collect()
+}

@@ -1,0 +1,162 @@
+//! The part of the periods that is not random: a curved drift, and a swing that keeps step with the mains.
+//!
+//! Both are found by regression of the periods and taken out of the click times before the random part is fitted; white or
+//! moving-average models under ripple would read the random jitter 40 % low.
+
+use crate::rhythm::fit::median;
+
+/// Mains and rectified-mains frequencies tried, Hz.
+pub const LINES_HZ: [f64; 4] = [50.0, 60.0, 100.0, 120.0];
+/// A set of regressors is kept if it explains more than this many times the rest's variance per parameter.
+const KEEP: f64 = 9.0;
+/// Fewest periods for which structure is looked for.
+const FEWEST: usize = 60;
+
+/// Structure found in the periods of a stretch.
+#[derive(Debug, Clone, Default)]
+pub struct Structure {
+    /// Deviation of each step's mean period (one per step between neighbouring clicks), s.
+    pub deviation_s: Vec<f64>,
+    /// Standard deviation of the curved drift, s.
+    pub drift_sd_s: f64,
+    /// Mains line with the standard deviation of the swing, if any: frequency (Hz), s, and its standard uncertainty, s.
+    pub mains: Option<(f64, f64, f64)>,
+}
+
+/// Looks for structure in click times with firing numbers.
+#[must_use]
+pub fn find(time_s: &[f64], number: &[i64]) -> Structure {
+    let steps: Vec<f64> = number.windows(2).map(|w| (w[1] - w[0]).max(1) as f64).collect();
+    let period: Vec<f64> = time_s.windows(2).zip(&steps).map(|(w, k)| (w[1] - w[0]) / k).collect();
+    let n = period.len();
+    let mut found = Structure { deviation_s: vec![0.0; n], ..Structure::default() };
+    if n <= FEWEST {
+        return found;
+    }
+    let middle: Vec<f64> = time_s.windows(2).map(|w| 0.5 * (w[0] + w[1])).collect();
+    let rest = held_residual(&period, &middle);
+    add_drift(&mut found, &rest, &middle);
+    add_mains(&mut found, &rest, &middle);
+    let mean = found.deviation_s.iter().sum::<f64>() / n as f64;
+    found.deviation_s.iter_mut().for_each(|d| *d -= mean);
+    found
+}
+
+/// Periods about a straight line, held within four robust deviations.
+fn held_residual(period: &[f64], middle: &[f64]) -> Vec<f64> {
+    let line = [vec![1.0; middle.len()], middle.to_vec()];
+    let fit = least_squares(&line, period);
+    let rest: Vec<f64> = period.iter().zip(&fit).map(|(p, f)| p - f).collect();
+    let reach = 4.0 * 1.4826 * median(&rest.iter().map(|r| r.abs()).collect::<Vec<_>>()) + 1e-12;
+    rest.into_iter().map(|r| r.clamp(-reach, reach)).collect()
+}
+
+/// Legendre polynomials of degree 2 to 4 over the stretch.
+fn add_drift(found: &mut Structure, rest: &[f64], middle: &[f64]) {
+    let (from, to) = (middle[0], middle[middle.len() - 1]);
+    let x: Vec<f64> = middle.iter().map(|t| 2.0 * (t - from) / (to - from) - 1.0).collect();
+    let basis = [
+        x.iter().map(|x| 0.5 * (3.0 * x * x - 1.0)).collect(),
+        x.iter().map(|x| 0.5 * (5.0 * x * x * x - 3.0 * x)).collect(),
+        x.iter().map(|x| 0.125 * (35.0 * x.powi(4) - 30.0 * x * x + 3.0)).collect(),
+    ];
+    if let Some(fit) = worth_keeping(&basis, rest, &found.deviation_s) {
+        found.drift_sd_s = sd(&fit);
+        found.deviation_s.iter_mut().zip(fit).for_each(|(d, f)| *d += f);
+    }
+}
+
+/// The mains line that explains most, with its second harmonic.
+fn add_mains(found: &mut Structure, rest: &[f64], middle: &[f64]) {
+    let mut best: Option<(f64, Vec<f64>)> = None;
+    for line_hz in LINES_HZ {
+        let basis: [Vec<f64>; 4] = std::array::from_fn(|c| {
+            let harmonic = (c / 2 + 1) as f64;
+            middle
+                .iter()
+                .map(|t| {
+                    let phase = std::f64::consts::TAU * line_hz * harmonic * t;
+                    if c % 2 == 0 { phase.cos() } else { phase.sin() }
+                })
+                .collect()
+        });
+        if let Some(fit) = worth_keeping(&basis, rest, &found.deviation_s)
+            && best.as_ref().is_none_or(|(_, b)| sd(&fit) > sd(b))
+        {
+            best = Some((line_hz, fit));
+        }
+    }
+    if let Some((line_hz, fit)) = best {
+        found.deviation_s.iter_mut().zip(&fit).for_each(|(d, f)| *d += f);
+        let left: Vec<f64> = rest.iter().zip(&found.deviation_s).map(|(r, d)| r - d).collect();
+        // The amplitude of a fitted sine is known to √(2/N) of the rest, its rms to 1/√2 of that.
+        found.mains = Some((line_hz, sd(&fit), sd(&left) / (rest.len() as f64).sqrt()));
+    }
+}
+
+fn worth_keeping(basis: &[Vec<f64>], rest: &[f64], taken: &[f64]) -> Option<Vec<f64>> {
+    let target: Vec<f64> = rest.iter().zip(taken).map(|(r, t)| r - t).collect();
+    let fit = least_squares(basis, &target);
+    let explained: f64 = fit.iter().map(|f| f * f).sum();
+    let left: f64 = target.iter().zip(&fit).map(|(t, f)| (t - f).powi(2)).sum();
+    (explained / basis.len() as f64 > KEEP * left / target.len() as f64).then_some(fit)
+}
+
+fn sd(x: &[f64]) -> f64 {
+    let mean = x.iter().sum::<f64>() / x.len() as f64;
+    (x.iter().map(|v| (v - mean).powi(2)).sum::<f64>() / x.len() as f64).sqrt()
+}
+
+/// Fitted values of a least-squares fit by the normal equations (a handful of well-scaled columns).
+#[must_use]
+pub fn least_squares(basis: &[Vec<f64>], target: &[f64]) -> Vec<f64> {
+    let q = basis.len();
+    let mut m = vec![vec![0.0; q + 1]; q];
+    for a in 0..q {
+        for b in 0..q {
+            m[a][b] = basis[a].iter().zip(&basis[b]).map(|(x, y)| x * y).sum();
+        }
+        m[a][q] = basis[a].iter().zip(target).map(|(x, y)| x * y).sum();
+    }
+    let coefficient = solve(m);
+    (0..target.len()).map(|i| basis.iter().zip(&coefficient).map(|(b, c)| b[i] * c).sum()).collect()
+}
+
+/// Gauss elimination with pivoting; a column without a pivot gets zero.
+fn solve(mut m: Vec<Vec<f64>>) -> Vec<f64> {
+    let q = m.len();
+    for col in 0..q {
+        let pivot = (col..q).max_by(|&a, &b| m[a][col].abs().total_cmp(&m[b][col].abs())).unwrap_or(col);
+        m.swap(col, pivot);
+        if m[col][col].abs() < 1e-30 {
+            continue;
+        }
+        let top = m[col].clone();
+        for (r, row) in m.iter_mut().enumerate() {
+            if r != col {
+                let f = row[col] / top[col];
+                row.iter_mut().zip(&top).for_each(|(x, t)| *x -= f * t);
+            }
+        }
+    }
+    (0..q).map(|i| if m[i][i].abs() < 1e-30 { 0.0 } else { m[i][q] / m[i][i] }).collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_swing_at_100_hz_is_found_with_its_size() {
+        let mut time_s = vec![0.0];
+        for n in 0..800 {
+            let t: f64 = time_s[n];
+            let noise = 3e-5 * ((n * n) as f64 * 0.37).sin();
+            time_s.push(t + 0.0131 + 2e-4 * (std::f64::consts::TAU * 100.0 * t).sin() + noise);
+        }
+        let number: Vec<i64> = (0..time_s.len() as i64).collect();
+        let (line, sd, _) = find(&time_s, &number).mains.unwrap();
+        assert_eq!(line, 100.0);
+        assert!((sd / (2e-4 / 2f64.sqrt()) - 1.0).abs() < 0.05, "{sd}");
+    }
+}
