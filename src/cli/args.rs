@@ -39,8 +39,9 @@ pub enum Command {
 /// Arguments of `measure`.
 #[derive(Debug, Args)]
 #[command(after_help = "\
-With several recordings the exit status is 1 if one of them could not be read, else 3 if one of them holds nothing
-that can be measured, else 0. WAV, FLAC, Ogg Vorbis, MP3, M4A (AAC, ALAC), AIFF and CAF can be read.")]
+With several recordings the exit status is 1 if one of them could not be read, else 3 if one
+of them holds nothing that can be measured, else 0.
+WAV, FLAC, Ogg Vorbis, MP3, M4A (AAC, ALAC), AIFF and CAF can be read.")]
 pub struct MeasureArguments {
     /// Recordings to measure; - is a recording on standard input
     #[arg(required = true, value_name = "RECORDING")]

@@ -94,21 +94,27 @@ impl<'a> Task<'a> {
         let mut intake = Intake::new(recording, self.channel, self.span).map_err(told)?;
         let sample_rate_hz = intake.sample_rate_hz();
         let channels = intake.channels();
-        let mut measurer = Measurer::new(sample_rate_hz, Options::default());
+        let mut measurer = Measurer::new(sample_rate_hz, Options { explain: self.explain });
         let mut mono = Vec::new();
         while intake.next(&mut mono).map_err(told)? {
             measurer.push(&mono);
             progress.heard(mono.len() as f64 / f64::from(sample_rate_hz));
         }
         let heard = intake.finish();
-        let Outcome { mut reading, events, explanation } = measurer.finish();
+        let Outcome { mut reading, mut events, explanation } = measurer.finish();
+        // The analyzer counts from the first sample it hears; a person, and the CSV, count from the start of the file.
+        let from_s = self.span.from_s;
+        events.iter_mut().for_each(|event| event.time_s += from_s);
+        for stretch in &mut reading.stretches {
+            (stretch.from_s, stretch.to_s) = (stretch.from_s + from_s, stretch.to_s + from_s);
+        }
         let recording = Recording {
             file: name.to_owned(),
             duration_s: heard.duration_s,
             sample_rate_hz,
             channels,
             channel: heard.channel.clone(),
-            from_s: self.span.from_s,
+            from_s,
         };
         reading.notes.splice(0..0, notes_of(&heard, self.span));
         if let Some(place) = self.events {

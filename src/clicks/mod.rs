@@ -12,6 +12,5 @@ pub mod snippet;
 pub mod spectrum;
 pub mod timing;
 
-
 pub use candidates::{Candidates, Marks};
 pub use shape::Shape;

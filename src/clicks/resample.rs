@@ -104,7 +104,10 @@ mod tests {
 
     #[test]
     fn every_rate_lands_between_32_and_64_khz() {
-        for rate in [8_000.0, 11_025.0, 16_000.0, 22_050.0, 32_000.0, 44_100.0, 48_000.0, 64_000.0, 88_200.0, 96_000.0, 192_000.0] {
+        for rate in [
+            8_000.0, 11_025.0, 16_000.0, 22_050.0, 32_000.0, 44_100.0, 48_000.0, 64_000.0, 88_200.0, 96_000.0,
+            192_000.0,
+        ] {
             let (up, down) = whole_factors(rate);
             let inside = rate * up as f64 / down as f64;
             assert!((32_000.0..66_200.0).contains(&inside), "{rate} -> {inside}");

@@ -228,10 +228,10 @@ mod tests {
 
     #[test]
     fn the_leading_vectors_of_two_mixed_waves_span_them() {
-        let (a, b): (Vec<f32>, Vec<f32>) =
-            (0..21).map(|i| ((i as f32 * 0.5).sin(), (i as f32 * 0.9).cos())).unzip();
-        let rows: Vec<Vec<f32>> =
-            (0..40).map(|k| a.iter().zip(&b).map(|(x, y)| x * (k as f32).cos() + y * (k as f32).sin()).collect()).collect();
+        let (a, b): (Vec<f32>, Vec<f32>) = (0..21).map(|i| ((i as f32 * 0.5).sin(), (i as f32 * 0.9).cos())).unzip();
+        let rows: Vec<Vec<f32>> = (0..40)
+            .map(|k| a.iter().zip(&b).map(|(x, y)| x * (k as f32).cos() + y * (k as f32).sin()).collect())
+            .collect();
         let v = leading_vectors(&rows, None, 2);
         for wave in [&a, &b] {
             let inside = dot(wave, &v[0]).powi(2) + dot(wave, &v[1]).powi(2);

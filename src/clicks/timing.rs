@@ -4,8 +4,8 @@
 //! carrier needs two shapes. The gap's own jitter is the same in every channel, so the channel with the least scatter of
 //! periods has the least timing noise. Each channel is a whitening, a window about the click and a number of shape vectors.
 
-use super::snippet::{dot, normalise, read};
 use super::shape::{leading_vectors, median_shape};
+use super::snippet::{dot, normalise, read};
 
 /// How much the spectrum is flattened before times are read.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

@@ -162,8 +162,7 @@ impl Accumulator {
             return None;
         }
         let value = (self.phase.iter().map(|(e, w)| w * e.value.powi(2)).sum::<f64>() / weight).sqrt();
-        let relative =
-            (self.phase.iter().map(|(e, w)| (w * e.u / e.value).powi(2)).sum::<f64>()).sqrt() / weight;
+        let relative = (self.phase.iter().map(|(e, w)| (w * e.u / e.value).powi(2)).sum::<f64>()).sqrt() / weight;
         let reach = (COVERAGE_95 * relative).exp();
         Some(Estimate { value, u: value * relative, low: value / reach, high: value * reach })
     }
@@ -217,18 +216,29 @@ impl Accumulator {
 
     fn add_notes(&self, notes: &mut Vec<String>, posterior: &Posterior, period_s: f64) {
         if posterior.memory_probability > 0.95 {
-            notes.push(format!("neighbouring periods are alike: memory from firing to firing about {:.2}", posterior.memory));
+            notes.push(format!(
+                "neighbouring periods are alike: memory from firing to firing about {:.2}",
+                posterior.memory
+            ));
         } else if posterior.memory_probability > 0.3 && posterior.timing_noise_s.value > posterior.jitter_s.value {
             notes.push("timing noise exceeds the gap's own jitter: memory from firing to firing can be neither seen nor excluded".into());
         }
         let share = self.removed as f64 / self.counts.on_rhythm.max(1) as f64;
         if share > 0.01 {
-            notes.push(format!("{:.1} % of the clicks stand off the rhythm by chance noise and are left out of the jitter", 100.0 * share));
+            notes.push(format!(
+                "{:.1} % of the clicks stand off the rhythm by chance noise and are left out of the jitter",
+                100.0 * share
+            ));
         }
         if self.stretches.len() > 1 {
-            let list: Vec<String> = self.stretches.iter().take(6).map(|s| format!("{:.1}–{:.1} s", s.from_s, s.to_s)).collect();
+            let list: Vec<String> =
+                self.stretches.iter().take(6).map(|s| format!("{:.1}–{:.1} s", s.from_s, s.to_s)).collect();
             let more = if self.stretches.len() > 6 { ", …" } else { "" };
-            notes.push(format!("the gap fires in {} stretches ({}{more}); the figures are of these", self.stretches.len(), list.join(", ")));
+            notes.push(format!(
+                "the gap fires in {} stretches ({}{more}); the figures are of these",
+                self.stretches.len(),
+                list.join(", ")
+            ));
         }
         if let Some(line_hz) = locked_to(1.0 / period_s, posterior.jitter_s.value / period_s) {
             notes.push(format!(

@@ -54,7 +54,12 @@ fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Tr
     let Some(mut h) = clicks else { return Err("no clicks stand out") };
     let first_evidence = h.fit.evidence;
     let x = refine(window, whitened, &mut h);
-    explanation.push(format!("refined: period {:.5} ms, {} firings, evidence {:.0} nats", 1e3 * h.fit.period_s, h.fit.chain.index.len(), h.fit.evidence));
+    explanation.push(format!(
+        "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
+        1e3 * h.fit.period_s,
+        h.fit.chain.index.len(),
+        h.fit.evidence
+    ));
     let chain_times: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
     let (numbers, stretches) = number(&chain_times, &h.fit.chain.steps, h.fit.period_s);
     let times = times::read(window, &x, &h, &numbers);
@@ -62,7 +67,12 @@ fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Tr
     h.fit.evidence = h.fit.evidence.max(first_evidence);
     let rate_hz = 1.0 / h.fit.period_s;
     let tones = presence::tones(&window.x, window.rate_hz, rate_hz);
-    explanation.push(format!("energy: {:.0} % in tones foreign to the rate, {:.0} % outside the line at the rate, {:.0} % in six lines", 100.0 * tones.foreign, 100.0 * tones.outside, 100.0 * tones.six));
+    explanation.push(format!(
+        "energy: {:.0} % in tones foreign to the rate, {:.0} % outside the line at the rate, {:.0} % in six lines",
+        100.0 * tones.foreign,
+        100.0 * tones.outside,
+        100.0 * tones.six
+    ));
     if let Some(why) = presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter) {
         return Err(why);
     }
@@ -74,7 +84,8 @@ fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Tr
         && let Some(line) = &line
         && (line.fit.period_s / h.fit.period_s - 1.0).abs() < 0.03
     {
-        train.phase_jitter_s = phase::read(window.bank, &window.x, window.rate_hz, line.line.frequency_hz).map(|p| p.jitter_s);
+        train.phase_jitter_s =
+            phase::read(window.bank, &window.x, window.rate_hz, line.line.frequency_hz).map(|p| p.jitter_s);
     }
     Ok(train)
 }
@@ -98,7 +109,10 @@ fn best_line(window: &Window, explanation: &mut Vec<String>) -> Option<LineTrain
         if let Some(counted) = line::count(window.bank, &window.x, window.rate_hz, found) {
             explanation.push(format!(
                 "its cycles: period {:.5} ms, {} firings, evidence {:.0} nats, scatter {:.2} %",
-                1e3 * counted.fit.period_s, counted.fit.chain.index.len(), counted.fit.evidence, 100.0 * counted.fit.jitter
+                1e3 * counted.fit.period_s,
+                counted.fit.chain.index.len(),
+                counted.fit.evidence,
+                100.0 * counted.fit.jitter
             ));
             if best.as_ref().is_none_or(|b| counted.fit.evidence > b.fit.evidence) {
                 best = Some(counted);

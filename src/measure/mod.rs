@@ -132,7 +132,9 @@ impl Measurer {
 fn reason(reading: &Reading) -> String {
     let jitter = reading.period_jitter_s.map_or(0.0, |j| j.value) / reading.period_s.map_or(1.0, |p| p.value);
     match reading.verdict {
-        Verdict::Steady => format!("the gap fires on a steady rhythm; single periods scatter by {:.2} %", 100.0 * jitter),
+        Verdict::Steady => {
+            format!("the gap fires on a steady rhythm; single periods scatter by {:.2} %", 100.0 * jitter)
+        }
         _ => format!("the gap keeps a rhythm but loosely; single periods scatter by {:.1} %", 100.0 * jitter),
     }
 }

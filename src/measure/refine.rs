@@ -36,8 +36,7 @@ pub fn refine(window: &Window, whitened: Vec<f32>, h: &mut Hypothesis) -> Vec<f3
         }
         candidates::matched_output(window.bank, &x, &shape, &mut output);
         let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
-        let start =
-            Start { period_s: h.fit.period_s, jitter: h.fit.jitter, follow: 0.1, steep: false, rounds: 6 };
+        let start = Start { period_s: h.fit.period_s, jitter: h.fit.jitter, follow: 0.1, steep: false, rounds: 6 };
         match fit_whole(&found, window.duration_s(), start, DENSITY) {
             Some(fit) if 2 * fit.chain.index.len() >= h.fit.chain.index.len() => {
                 h.fit = fit;

@@ -85,11 +85,9 @@ fn spread_of_difference(a: &[f64], b: &[f64]) -> f64 {
 /// clicks to the shape added.
 fn predicted_noise_s(window: &Window, whitened: &[f32], h: &Hypothesis) -> f64 {
     let shape = &h.shape.vectors[0];
-    let slope = (1..shape.len() - 1)
-        .map(|i| f64::from(0.5 * (shape[i + 1] - shape[i - 1])).powi(2))
-        .sum::<f64>()
-        .sqrt()
-        * window.rate_hz;
+    let slope =
+        (1..shape.len() - 1).map(|i| f64::from(0.5 * (shape[i + 1] - shape[i - 1])).powi(2)).sum::<f64>().sqrt()
+            * window.rate_hz;
     let marks: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.mark[i]).collect();
     let by_noise = 1.0 / (median(&marks).exp() * slope);
     let stride = h.fit.chain.index.len().div_ceil(TRIAL).max(1);

@@ -61,7 +61,14 @@ pub fn number(time_s: &[f64], steps: &[usize], period_s: f64) -> (Vec<i64>, Vec<
 impl Train {
     /// The train of separate clicks of a hypothesis.
     #[must_use]
-    pub fn of_clicks(h: &Hypothesis, times: Times, x: &[f32], rate_hz: f64, number: Vec<i64>, stretches: Vec<Range<usize>>) -> Self {
+    pub fn of_clicks(
+        h: &Hypothesis,
+        times: Times,
+        x: &[f32],
+        rate_hz: f64,
+        number: Vec<i64>,
+        stretches: Vec<Range<usize>>,
+    ) -> Self {
         let extra = extras(h).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();
         Self {
             size: times.time_s.iter().map(|t| size_at(x, t * rate_hz, rate_hz)).collect(),
@@ -102,7 +109,13 @@ impl Train {
                 for k in 1..steps {
                     let share = k as f64 / steps as f64;
                     let time_s = self.time_s[i - 1] + share * (self.time_s[i] - self.time_s[i - 1]);
-                    all.push(Event { time_s, kind: EventKind::Missed, size: 0.0, timing_u_s: self.period_s, period_s: None });
+                    all.push(Event {
+                        time_s,
+                        kind: EventKind::Missed,
+                        size: 0.0,
+                        timing_u_s: self.period_s,
+                        period_s: None,
+                    });
                 }
                 let period_s = (steps == 1).then(|| self.time_s[i] - self.time_s[i - 1]);
                 all.push(Event {

@@ -24,7 +24,7 @@ const SECONDS_PER_MINUTE: f64 = 60.0;
 pub fn measurement_text(measurement: &Measurement) -> String {
     let reading = &measurement.reading;
     let mut text = format!("{}\n", recording_line(&measurement.recording));
-    text.push_str(&wrapped(&format!("{}: {}", verdict_word(reading.verdict), reading.reason), "  ", "  "));
+    text.push_str(&wrapped(&verdict_line(reading), "  ", "  "));
     let mut rows = reading_rows(reading);
     rows.extend(voltage_rows(measurement));
     rows.extend(count_rows(reading));
@@ -58,12 +58,14 @@ fn row(label: &str, figure: &Figure, aside: String) -> Row {
     (label.to_owned(), figure.value_and_u(), aside)
 }
 
-fn verdict_word(verdict: Verdict) -> &'static str {
-    match verdict {
-        Verdict::Steady => "steady",
-        Verdict::Unsteady => "unsteady",
-        Verdict::Irregular => "irregular",
-        Verdict::None => "no gap heard",
+fn verdict_line(reading: &Reading) -> String {
+    let reason = &reading.reason;
+    match reading.verdict {
+        Verdict::Steady => format!("steady: {reason}"),
+        Verdict::Unsteady => format!("unsteady: {reason}"),
+        Verdict::Irregular => format!("irregular: {reason}"),
+        // The reason says that there is none.
+        Verdict::None => reason.clone(),
     }
 }
 
@@ -269,7 +271,7 @@ run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2
         measurement.gap_voltage_spread_v = None;
         measurement.reading = Reading {
             verdict: Verdict::None,
-            reason: "no clicks stand out of the noise".to_owned(),
+            reason: "no gap is heard: nothing stands out of the noise".to_owned(),
             firings: FiringCounts::default(),
             firing_rate_hz: None,
             period_s: None,
@@ -285,7 +287,7 @@ run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2
         assert_eq!(
             measurement_text(&measurement),
             "run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2\n  \
-             no gap heard: no clicks stand out of the noise\n"
+             no gap is heard: nothing stands out of the noise\n"
         );
     }
 

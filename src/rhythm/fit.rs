@@ -137,10 +137,8 @@ impl Steps {
         }
         let centre = median(&z);
         let robust = 1.4826 * median(&z.iter().map(|v| (v - centre).abs()).collect::<Vec<_>>());
-        let (sum, n) = z
-            .iter()
-            .filter(|v| v.abs() < 5.0 * robust + 1e-9)
-            .fold((0.0, 0usize), |(s, n), v| (s + v * v, n + 1));
+        let (sum, n) =
+            z.iter().filter(|v| v.abs() < 5.0 * robust + 1e-9).fold((0.0, 0usize), |(s, n), v| (s + v * v, n + 1));
         let rms = if n > 3 { (sum / n as f64).sqrt() } else { robust };
         let seen = rms.max(robust).max(3e-6 / median(&self.period)).max(5e-4);
         (1.1 * seen).max(0.3 * before).min(0.6)
@@ -180,7 +178,8 @@ fn evidence(
     }
     if median(&steps.period) < 2e-3 {
         let gaps: Vec<f64> = c.time_s.windows(2).map(|w| w[1] - w[0]).collect();
-        let off_gaps: Vec<f64> = gaps.iter().zip(on.windows(2)).filter(|(_, o)| !o[0] && !o[1]).map(|(g, _)| *g).collect();
+        let off_gaps: Vec<f64> =
+            gaps.iter().zip(on.windows(2)).filter(|(_, o)| !o[0] && !o[1]).map(|(g, _)| *g).collect();
         with += regularity(&off_gaps);
         null += regularity(&gaps);
     }
@@ -223,7 +222,8 @@ pub fn local_period(c: &Candidates, chain: &Chain, fallback_s: f64) -> Vec<f64> 
     if period.len() < 4 {
         return vec![fallback_s; c.len()];
     }
-    let smooth = if period.len() > 2 * LOCAL_HALF { smooth_periods(&period) } else { vec![median(&period); period.len()] };
+    let smooth =
+        if period.len() > 2 * LOCAL_HALF { smooth_periods(&period) } else { vec![median(&period); period.len()] };
     interpolate(&c.time_s, &when, &smooth)
 }
 
@@ -239,9 +239,8 @@ fn smooth_periods(period: &[f64]) -> Vec<f64> {
         })
         .collect();
     let width = 2 * LOCAL_HALF + 1;
-    let weight: Vec<f64> = (0..width)
-        .map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos())
-        .collect();
+    let weight: Vec<f64> =
+        (0..width).map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos()).collect();
     let total: f64 = weight.iter().sum();
     (0..held.len())
         .map(|i| {
@@ -327,7 +326,8 @@ mod tests {
             state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
             (state >> 33) as f64 / (1u64 << 31) as f64
         };
-        let mut all: Vec<(f64, f64)> = (0..400).map(|n| (0.01 * f64::from(n) + 4e-4 * (uniform() - 0.5), 2.0 + uniform())).collect();
+        let mut all: Vec<(f64, f64)> =
+            (0..400).map(|n| (0.01 * f64::from(n) + 4e-4 * (uniform() - 0.5), 2.0 + uniform())).collect();
         all.extend((0..4000).map(|_| (uniform() * 4.0, uniform())));
         all.sort_by(|a, b| a.0.total_cmp(&b.0));
         let c = Candidates { time_s: all.iter().map(|a| a.0).collect(), mark: all.iter().map(|a| a.1).collect() };

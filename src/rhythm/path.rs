@@ -149,7 +149,16 @@ struct Step {
 impl Step {
     #[allow(clippy::too_many_arguments, reason = "the innermost step of the search, called per pair of candidates")]
     #[inline]
-    fn consider(&mut self, law: &StepLaw, follow: f64, from: usize, length: f64, score: f64, period: f64, ln_period: f64) {
+    fn consider(
+        &mut self,
+        law: &StepLaw,
+        follow: f64,
+        from: usize,
+        length: f64,
+        score: f64,
+        period: f64,
+        ln_period: f64,
+    ) {
         let ratio = length / period;
         if ratio < law.shortest || ratio >= MOST_PERIODS as f64 + 0.5 {
             return;

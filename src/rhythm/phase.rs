@@ -104,7 +104,8 @@ fn periodogram(frequency: &[f64], step_s: f64, band: f64) -> Vec<Point> {
     }
     let slope = sxy / sxx;
     let fft = RealFftPlanner::<f64>::new().plan_fft_forward(n);
-    let mut input: Vec<f64> = frequency.iter().enumerate().map(|(i, f)| f - mean - slope * (i as f64 - centre)).collect();
+    let mut input: Vec<f64> =
+        frequency.iter().enumerate().map(|(i, f)| f - mean - slope * (i as f64 - centre)).collect();
     let mut output = fft.make_output_vec();
     let _ = fft.process(&mut input, &mut output);
     let duration_s = n as f64 * step_s;

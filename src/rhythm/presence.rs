@@ -34,9 +34,8 @@ pub fn tones(x: &[f32], sample_rate_hz: f64, firing_rate_hz: f64) -> Tones {
     s.power[..=low].fill(0.0);
     let p = &s.power;
     let total = p.iter().sum::<f64>() + 1e-300;
-    let mut peaks: Vec<usize> = (1..p.len() - 1)
-        .filter(|&k| p[k] > p[k - 1] && p[k] >= p[k + 1] && p[k] > 30.0 * surroundings(p, k))
-        .collect();
+    let mut peaks: Vec<usize> =
+        (1..p.len() - 1).filter(|&k| p[k] > p[k - 1] && p[k] >= p[k + 1] && p[k] > 30.0 * surroundings(p, k)).collect();
     peaks.sort_by(|&a, &b| p[b].total_cmp(&p[a]));
     let about = |k: usize, r: usize| p[k.saturating_sub(r)..(k + r + 1).min(p.len())].iter().sum::<f64>();
     let foreign = peaks.iter().take(12).filter(|&&k| is_foreign(k as f64 * s.step_hz, s.step_hz, firing_rate_hz));

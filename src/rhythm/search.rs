@@ -42,8 +42,7 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
     }
     let grid = if fast && duration_s > FAST_STRETCH_S {
         let from = 0.5 * (duration_s - FAST_STRETCH_S);
-        let part: Vec<usize> =
-            (0..c.len()).filter(|&i| (from..from + FAST_STRETCH_S).contains(&c.time_s[i])).collect();
+        let part: Vec<usize> = (0..c.len()).filter(|&i| (from..from + FAST_STRETCH_S).contains(&c.time_s[i])).collect();
         scan(&c.pick(&part), FAST_STRETCH_S, shortest, longest)
     } else {
         scan(c, duration_s, shortest, longest)
@@ -87,8 +86,7 @@ fn grid_score(c: &Candidates, duration_s: f64, period_s: f64) -> Option<f64> {
     let keep = c.pick(&c.strongest((GRID_DENSITY * expected + 60.0) as usize));
     let threshold = nth_largest(&c.mark, (0.9 * expected) as usize) + 0.7f64.ln();
     let off_rate = (keep.len() as f64 - expected).max(0.3 * expected) / duration_s;
-    let gain: Vec<f64> =
-        keep.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
+    let gain: Vec<f64> = keep.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
     let law = Law { jitter: 0.06, missed: 0.05, follow: 0.15 };
     Some(best_chain(&keep.time_s, &gain, &vec![period_s; keep.len()], law).score)
 }

@@ -123,15 +123,21 @@ impl PosteriorGrid {
                 let u = share(place);
                 let ln_share = prior[r].ln() + 0.5 * (u * (1.0 - u)).ln();
                 for k in 0..SCALES {
-                    let scale = cell.rest / self.freedom
-                        * (reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0)).exp();
+                    let scale = cell.rest / self.freedom * (reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0)).exp();
                     let mut ln = -0.5 * (self.freedom * scale.ln() + cell.rest / scale + cell.ln_det) + ln_share;
                     if let Some(noise) = noise_s {
                         let z = (0.5 * (scale * u).ln() - noise.ln()) / NOISE_PRIOR_LN_SD;
                         ln -= 0.5 * z * z;
                     }
                     top = top.max(ln);
-                    all.push(Point { ln, scale, u, rho, period_s: cell.period_s, period_variance: cell.period_variance });
+                    all.push(Point {
+                        ln,
+                        scale,
+                        u,
+                        rho,
+                        period_s: cell.period_s,
+                        period_variance: cell.period_variance,
+                    });
                 }
             }
         }

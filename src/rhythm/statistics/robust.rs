@@ -64,12 +64,8 @@ pub fn undisplaced(time_s: &[f64], number: &[i64]) -> Vec<bool> {
 /// Excess kurtosis of single-step periods about their running median.
 #[must_use]
 pub fn excess_kurtosis(time_s: &[f64], number: &[i64]) -> f64 {
-    let single: Vec<f64> = time_s
-        .windows(2)
-        .zip(number.windows(2))
-        .filter(|(_, n)| n[1] - n[0] == 1)
-        .map(|(t, _)| t[1] - t[0])
-        .collect();
+    let single: Vec<f64> =
+        time_s.windows(2).zip(number.windows(2)).filter(|(_, n)| n[1] - n[0] == 1).map(|(t, _)| t[1] - t[0]).collect();
     if single.len() < 30 {
         return 0.0;
     }
