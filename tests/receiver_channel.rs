@@ -1,6 +1,7 @@
 //! The channel filter and the burst against published figures and against a brute-force simulation.
 
-use gaptone::model::receiver::{Burst, Channel, Complex, Detector, DetectorSettings, Selectivity};
+use gaptone::bench::{Quantity, Tank};
+use gaptone::model::receiver::{Burst, Channel, Complex, Detector, DetectorSettings, Selectivity, decrement};
 use std::f64::consts::{LN_2, PI, TAU};
 
 /// Figures printed with four digits, some cut instead of rounded.
@@ -55,7 +56,7 @@ fn impulse_and_noise_bandwidths_have_the_ratios_of_filter_theory() {
     let synchronous = |circuits| Selectivity::Synchronous { circuits };
     let butterworth = |poles| Selectivity::Butterworth { poles };
     let table = [
-        (synchronous(1), PI, PI / 3f64.sqrt(), 1.5708),
+        (synchronous(1), PI, PI / 3f64.sqrt(), PI / 2.0),
         (synchronous(2), 1.796, 1.156, 1.220),
         (synchronous(3), 1.668, 1.109, 1.155),
         (synchronous(4), 1.618, 1.094, 1.128),
@@ -222,7 +223,7 @@ fn a_click_at_any_instant_between_samples_gives_samples_of_the_impulse_response(
 // it is not infinitely short.
 #[test]
 fn a_burst_of_one_volt_gives_a_click_of_thirty_millivolts() {
-    let burst = Burst::new(1e6, 10.0).unwrap();
+    let burst = Burst::ringing(1e6, PI * 1e6 / 10.0).unwrap();
     let peak = burst.strength(1e6, 1.0) * Channel::new(pairs(2), 9000.0).impulse_peak().1;
     assert!((peak / 30.0e-3 - 1.0).abs() < 0.02, "{peak}");
     for (detuned, ratio) in [(1.02, 0.920), (1.10, 0.426), (1.20, 0.221)] {
@@ -247,10 +248,10 @@ fn click_strength_off_tune_follows_the_independent_software_radio_sweep() {
     assert_eq!(rows.len(), 42);
     for row in &rows {
         let [bandwidth_hz, tank_hz, quality, offset_hz, click_peak] = row[..5] else { panic!("short row") };
-        let burst = Burst::new(tank_hz, quality).unwrap();
+        let burst = Burst::ringing(tank_hz, PI * tank_hz / quality).unwrap();
         let tuned_hz = tank_hz - offset_hz;
         // The positive-frequency part of our spectrum, in the file's unit: the ring is (e^(jωt) − e^(−jωt))/2j.
-        let negative = 1.0 / Complex::new(burst.decay_rate(), TAU * (tuned_hz + tank_hz));
+        let negative = 1.0 / Complex::new(burst.decay_per_s(), TAU * (tuned_hz + tank_hz));
         let positive = burst.spectrum(tuned_hz, 1.0) * Complex::new(0.0, 2.0) + negative;
         let impulse_bandwidth_hz = bandwidth_hz * if bandwidth_hz == 6000.0 { 0.995 } else { 0.992 };
         let got = positive.norm() * impulse_bandwidth_hz;
@@ -261,8 +262,8 @@ fn click_strength_off_tune_follows_the_independent_software_radio_sweep() {
 // The bound RC ≤ √(1 − m²)/(m·ω) is common practice (diode-detector theory).
 #[test]
 fn a_detector_clips_diagonally_beyond_the_textbook_time_constant() {
-    let (depth, omega, step_s) = (0.8, TAU * 1000.0, 1e-7);
-    let bound_s = (1.0 - depth * depth as f64).sqrt() / (depth * omega);
+    let (depth, omega, step_s) = (0.8f64, TAU * 1000.0, 1e-7);
+    let bound_s = (1.0 - depth * depth).sqrt() / (depth * omega);
     assert!((bound_s - 119.4e-6).abs() < 1e-6);
     let worst = |discharge_s: f64| {
         let mut detector = Detector::new(DetectorSettings { charge_s: 0.0, discharge_s }, step_s);
@@ -271,4 +272,39 @@ fn a_detector_clips_diagonally_beyond_the_textbook_time_constant() {
     };
     assert!(worst(0.95 * bound_s) < 1e-9, "below the bound the envelope is followed");
     assert!(worst(1.5 * bound_s) > 0.01, "above the bound it is left");
+}
+
+// Series L = 10 µH, C = 1 nF, R = 10 Ω: f0 = 1.591549 MHz, fd = 1.589559 MHz, Q = 10, λ = 0.314553; the tenth peak is 0.05896 of
+// the first (nine cycles). Textbook forms, figures computed independently.
+#[test]
+fn the_parts_and_the_peaks_of_a_tank_give_the_same_ring() {
+    let exact = |value| Some(Quantity::exact(value));
+    let parts = Tank { inductance: exact(10e-6), capacitance: exact(1e-9), resistance: exact(10.0), ..Tank::default() };
+    let from_parts = Burst::from_tank(&parts).unwrap().unwrap();
+    assert!((from_parts.ring_hz() / 1.589_559e6 - 1.0).abs() < 1e-6);
+    assert!((from_parts.quality() - 10.0).abs() < 1e-9);
+    assert!((from_parts.decay_per_s() / from_parts.ring_hz() - 0.314_553).abs() < 1e-6);
+    let heights: Vec<f64> = (0..10).map(|k| 240.0 * (-0.314_553 * f64::from(k)).exp()).collect();
+    assert!((heights[9] / heights[0] - 0.058_96).abs() < 1e-5);
+    assert!((decrement(&heights).unwrap() - 0.314_553).abs() < 1e-9, "nine cycles between ten peaks");
+    let peaks = Some(heights.into_iter().map(Quantity::exact).collect());
+    let read = Tank { peaks, peak_spacing: exact(1.0 / 1.589_559e6), ..Tank::default() };
+    let from_peaks = Burst::from_tank(&read).unwrap().unwrap();
+    assert!((from_peaks.quality() - 10.0).abs() < 1e-4);
+    assert!((from_peaks.ring_hz() / from_parts.ring_hz() - 1.0).abs() < 1e-6);
+    let stated = Tank { frequency: exact(1.591_549_43e6), quality: exact(10.0), ..Tank::default() };
+    let from_stated = Burst::from_tank(&stated).unwrap().unwrap();
+    assert!((from_stated.ring_hz() / from_parts.ring_hz() - 1.0).abs() < 1e-8);
+    assert_eq!(Burst::from_tank(&Tank::default()), Ok(None));
+}
+
+// "Amplitude on the 100th cycle is 13 % of that on the first" (published exercise): λ = 0.020608 with the 99 cycles meant.
+#[test]
+fn the_decrement_counts_the_cycles_between_peaks_and_not_the_peaks() {
+    let peaks: Vec<f64> = (0..100).map(|k| 0.13f64.powf(f64::from(k) / 99.0)).collect();
+    assert!((decrement(&peaks).unwrap() - 0.020_608).abs() < 5e-7);
+    assert_eq!(decrement(&[1.0]), None);
+    assert_eq!(decrement(&[1.0, 1.2]), None, "a ring does not grow");
+    assert_eq!(decrement(&[1.0, -0.8]), None, "peaks of the same sign only");
+    assert!(decrement(&[-5.0, -4.0, -3.0]).is_some());
 }

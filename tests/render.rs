@@ -233,14 +233,14 @@ fn a_strong_carrier_turns_noise_into_its_in_phase_part() {
     let per_click = 0.5 / isolated_peak(&receiver);
     let channel = Channel::new(receiver.selectivity, receiver.bandwidth_hz);
     let filter = AudioFilter::new(receiver.audio_band, 96_000.0);
-    let (mut passed, mut all) = (0.0, 0.0);
+    let (mut passed, mut all) = (0.0f64, 0.0f64);
     for k in 0..4000 {
         let f = 5.0 * f64::from(k);
         let power = channel.gain(f).norm_sqr();
         passed += power * filter.gain(f, 96_000.0).norm_sqr();
         all += power;
     }
-    let expected = per_click * 0.05 / 2f64.sqrt() * (passed / all as f64).sqrt();
+    let expected = per_click * 0.05 / 2f64.sqrt() * (passed / all).sqrt();
     let got = rms(&render(&settings, &[]));
     // About 4 s × 3 kHz independent values: 1 %.
     assert!((got / expected - 1.0).abs() < 0.03, "{got} against {expected}");

@@ -2,9 +2,10 @@
 //!
 //! [`charging`] holds the charging law in both directions, [`random`] the portable random numbers, [`firings`]
 //! makes trains of firings with known truth; [`receiver`] and [`render`] turn firings into audio, [`truth`] says what a
-//! clip holds.
+//! clip holds and [`clip`] joins them.
 
 pub mod charging;
+pub mod clip;
 pub mod firings;
 pub mod random;
 pub mod receiver;

@@ -1,5 +1,6 @@
 //! What a rendered clip holds: every firing, the settings, and the figures that an ideal reader would find.
 
+use super::firings::{Outage, Plan, Realised, Rhythm, Start};
 use super::render::RenderSettings;
 use crate::firing::{EventKind, Firing};
 use serde::{Deserialize, Serialize};
@@ -16,7 +17,9 @@ pub struct Truth {
     pub version: String,
     /// What the clip shows.
     pub title: Option<String>,
-    /// Seed of everything that was drawn.
+    /// Name of the generator of random numbers.
+    pub generator: String,
+    /// Seed of phases, noise and programme; each train has its own.
     pub seed: u64,
     /// A click of firing time t peaks at t plus this in the audio, s.
     pub receiver_delay_s: f64,
@@ -24,128 +27,118 @@ pub struct Truth {
     pub click_full_scale: f64,
     /// Settings of receiver and recorder, defaults filled in.
     pub settings: RenderSettings,
-    /// Figures of the firings as they came out; none where fewer than three are on the rhythm.
-    pub realised: Option<Realised>,
     /// Text of the bench file.
     pub bench: Option<String>,
-    /// Every firing of the train with the largest clicks.
-    pub firings: Vec<Firing>,
-    /// Weaker trains.
-    #[serde(default, skip_serializing_if = "Vec::is_empty")]
-    pub other_trains: Vec<TrainTruth>,
-}
-
-/// A weaker train.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct TrainTruth {
-    /// Its figures.
-    pub realised: Option<Realised>,
-    /// Its firings.
-    pub firings: Vec<Firing>,
-}
-
-impl TrainTruth {
-    /// The truth of a train.
-    #[must_use]
-    pub fn new(firings: Vec<Firing>) -> Self {
-        Self { realised: Realised::of(&firings), firings }
-    }
+    /// The trains, the one with the largest clicks first; none in a clip without a gap.
+    pub trains: Vec<TrainTruth>,
 }
 
 impl Truth {
-    /// The truth of a clip of one train; title, bench text and weaker trains are the caller's to add.
+    /// The truth of a clip; title and bench text are the caller's to add.
     #[must_use]
-    pub fn new(settings: RenderSettings, firings: Vec<Firing>, receiver_delay_s: f64, click_full_scale: f64) -> Self {
+    pub fn new(
+        settings: RenderSettings,
+        trains: Vec<TrainTruth>,
+        receiver_delay_s: f64,
+        click_full_scale: f64,
+    ) -> Self {
         Self {
             format: FORMAT.to_owned(),
             version: env!("CARGO_PKG_VERSION").to_owned(),
             title: None,
+            generator: "xoshiro256++".to_owned(),
             seed: settings.seed,
             receiver_delay_s,
             click_full_scale,
             settings,
-            realised: Realised::of(&firings),
             bench: None,
-            firings,
-            other_trains: Vec::new(),
+            trains,
         }
     }
 }
 
-/// Figures of a train, heard or not; extra strikes are left out.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
-pub struct Realised {
-    /// Firings on the rhythm, missed ones among them.
-    pub firings: u64,
-    /// How many of them are not heard.
+/// The truth of one train.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct TrainTruth {
+    /// What it was drawn from.
+    pub drawn: Option<Drawn>,
+    /// Figures as they came out, over firings heard or not.
+    pub realised: Realised,
+    /// How many firings are not heard.
     pub missed: u64,
-    /// Extra strikes beside them.
+    /// Extra strikes beside the firings.
     pub extra: u64,
-    /// (n − 1)/(last − first), Hz.
-    pub firing_rate_hz: f64,
-    /// Mean period, s.
-    pub period_s: f64,
-    /// Standard deviation of the periods about a straight line through them, s.
-    pub period_jitter_s: f64,
-    /// Standard deviation of the difference of neighbouring periods, s.
-    pub cycle_jitter_s: f64,
-    /// Relative change of the rate per second, 1/s, from the straight line at its middle.
-    pub drift_per_s: f64,
-    /// Mean firing voltage, V.
-    pub gap_voltage_v: f64,
-    /// Its standard deviation from firing to firing, V.
-    pub gap_voltage_spread_v: f64,
+    /// Every event in the order of time.
+    pub firings: Vec<Firing>,
 }
 
-impl Realised {
-    /// The figures of a list of firings in order of time; none where fewer than four are on the rhythm.
+impl TrainTruth {
+    /// The truth of a list of firings in the order of time.
     #[must_use]
-    pub fn of(firings: &[Firing]) -> Option<Self> {
+    pub fn of(firings: Vec<Firing>, outages: &[Outage]) -> Self {
         let count = |kind| firings.iter().filter(|f| f.kind == kind).count() as u64;
-        let regular: Vec<&Firing> = firings.iter().filter(|f| f.kind != EventKind::Extra).collect();
-        if regular.len() < 4 {
-            return None;
-        }
-        let periods: Vec<f64> = regular.windows(2).map(|pair| pair[1].time_s - pair[0].time_s).collect();
-        let middles: Vec<f64> = regular.windows(2).map(|pair| 0.5 * (pair[1].time_s + pair[0].time_s)).collect();
-        let voltages: Vec<f64> = regular.iter().map(|f| f.voltage_v).collect();
-        let differences: Vec<f64> = periods.windows(2).map(|pair| pair[1] - pair[0]).collect();
-        let (period_s, _) = moments(&periods);
-        let (gap_voltage_v, gap_voltage_spread_v) = moments(&voltages);
-        let (slope, period_jitter_s) = straight_line(&middles, &periods);
-        Some(Self {
-            firings: regular.len() as u64,
+        Self {
+            drawn: None,
+            realised: Realised::of(&firings, outages),
             missed: count(EventKind::Missed),
             extra: count(EventKind::Extra),
-            firing_rate_hz: 1.0 / period_s,
-            period_s,
-            period_jitter_s,
-            cycle_jitter_s: moments(&differences).1,
-            drift_per_s: -slope / period_s,
+            firings,
+        }
+    }
+
+    /// The truth of the firings that a plan gave.
+    #[must_use]
+    pub fn of_plan(firings: Vec<Firing>, plan: &Plan) -> Self {
+        Self { drawn: Some(Drawn::of(plan)), ..Self::of(firings, &plan.faults.outages) }
+    }
+}
+
+/// What a train was drawn from.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct Drawn {
+    /// Seed of the train.
+    pub seed: u64,
+    /// True if the supply was switched on at time zero, false if the gap was running already.
+    pub switched_on: bool,
+    /// Mean voltage at breakdown at time zero, V.
+    pub gap_voltage_v: f64,
+    /// Scatter: of the voltage as a fraction for a gap on a bench, of the periods as a fraction for bare statistics.
+    pub relative_scatter: f64,
+    /// True if the scatter is that of the voltage.
+    pub scatter_of_voltage: bool,
+    /// Correlation of the scatter of neighbouring firings.
+    pub memory: f64,
+    /// Relative change per second of the voltage (bench) or of the rate (bare statistics), 1/s.
+    pub drift_per_s: f64,
+    /// Rate, Hz, where it was given as such.
+    pub rate_hz: Option<f64>,
+    /// Share of the firings that are not heard.
+    pub missed: f64,
+    /// Share of the firings followed by an extra strike.
+    pub extra: f64,
+}
+
+impl Drawn {
+    /// The settings of a plan.
+    #[must_use]
+    pub fn of(plan: &Plan) -> Self {
+        let (gap_voltage_v, relative_scatter, memory, drift_per_s, rate_hz) = match &plan.rhythm {
+            Rhythm::Bench { gap, .. } => (gap.voltage_v, gap.spread, gap.memory, gap.drift_per_s, None),
+            Rhythm::Bare(bare) => {
+                (bare.voltage_v, bare.relative_jitter, bare.memory, bare.drift_per_s, Some(bare.rate_hz))
+            }
+        };
+        Self {
+            seed: plan.seed,
+            switched_on: plan.start == Start::SwitchedOn,
             gap_voltage_v,
-            gap_voltage_spread_v,
-        })
+            relative_scatter,
+            scatter_of_voltage: matches!(plan.rhythm, Rhythm::Bench { .. }),
+            memory,
+            drift_per_s,
+            rate_hz,
+            missed: plan.faults.missed,
+            extra: plan.faults.extra,
+        }
     }
-}
-
-/// Mean and standard deviation (n − 1).
-fn moments(values: &[f64]) -> (f64, f64) {
-    let n = values.len() as f64;
-    let mean = values.iter().sum::<f64>() / n;
-    let squares: f64 = values.iter().map(|v| (v - mean).powi(2)).sum();
-    (mean, (squares / (n - 1.0)).sqrt())
-}
-
-/// Slope of the least-squares line and standard deviation about it (n − 2).
-fn straight_line(x: &[f64], y: &[f64]) -> (f64, f64) {
-    let n = x.len() as f64;
-    let (mean_x, mean_y) = (x.iter().sum::<f64>() / n, y.iter().sum::<f64>() / n);
-    let (mut xx, mut xy) = (0.0, 0.0);
-    for (x, y) in x.iter().zip(y) {
-        xx += (x - mean_x).powi(2);
-        xy += (x - mean_x) * (y - mean_y);
-    }
-    let slope = if xx > 0.0 { xy / xx } else { 0.0 };
-    let squares: f64 = x.iter().zip(y).map(|(x, y)| (y - mean_y - slope * (x - mean_x)).powi(2)).sum();
-    (slope, (squares / (n - 2.0)).sqrt())
 }

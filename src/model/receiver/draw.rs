@@ -1,8 +1,7 @@
 //! Random draws of the receiver, one stream for each purpose so that switching one thing on leaves the others as they were.
 
 use super::Complex;
-use rand::rngs::Xoshiro256PlusPlus;
-use rand::{Rng, SeedableRng};
+use crate::model::random::Random;
 use std::f64::consts::TAU;
 
 /// What a stream of draws is for.
@@ -21,21 +20,20 @@ pub(crate) enum Stream {
 /// A stream of draws.
 #[derive(Debug, Clone)]
 pub(crate) struct Draw {
-    generator: Xoshiro256PlusPlus,
+    random: Random,
     /// The second of the last pair of normal numbers.
     spare: Option<f64>,
 }
 
 impl Draw {
     pub(crate) fn new(seed: u64, stream: Stream) -> Self {
-        Self { generator: Xoshiro256PlusPlus::seed_from_u64(scramble(seed ^ scramble(stream as u64))), spare: None }
+        Self { random: Random::seeded(scramble(seed ^ scramble(stream as u64))), spare: None }
     }
 
     /// Uniform in (0, 1), neither end reached.
     #[inline]
     pub(crate) fn uniform(&mut self) -> f64 {
-        const UNIT: f64 = 1.0 / (1u64 << 53) as f64;
-        ((self.generator.next_u64() >> 11) as f64 + 0.5) * UNIT
+        self.random.uniform()
     }
 
     /// A point on the unit circle.

@@ -25,7 +25,7 @@ mod settings;
 
 pub use agc::{Agc, AgcSettings};
 pub use audio_band::{AudioBand, AudioFilter};
-pub use burst::{Burst, BurstError};
+pub use burst::{Burst, BurstError, decrement};
 pub use carrier::{Carrier, CarrierSource, Programme};
 pub(crate) use chain::{Chain, oversampling};
 pub use channel::{Channel, ChannelState};

@@ -20,7 +20,7 @@ const DEFAULT_HUM_HZ: f64 = 50.0;
 #[derive(Debug, Clone, PartialEq, Error)]
 pub enum ReceiverError {
     /// The tank does not ring.
-    #[error("tank: {0}")]
+    #[error("the tank does not ring: {0}")]
     Burst(#[from] BurstError),
     /// A setting outside what the model covers.
     #[error("receiver {what} = {value} {unit} is outside {low} .. {high} {unit}")]
@@ -116,10 +116,7 @@ impl ReceiverSettings {
             frequency_hz: value(described.hum_frequency, DEFAULT_HUM_HZ),
             buzz: DEFAULT_BUZZ,
         });
-        if let (Some(frequency), Some(quality)) = (bench.tank.frequency, bench.tank.quality) {
-            let burst = Burst::new(frequency.value, quality.value)?;
-            settings.burst = Some((burst, value(described.tuned, frequency.value)));
-        }
+        settings.burst = Burst::from_tank(&bench.tank)?.map(|burst| (burst, value(described.tuned, burst.ring_hz())));
         settings.check()?;
         Ok(settings)
     }
@@ -156,7 +153,7 @@ impl ReceiverSettings {
         }
         match self.burst {
             Some((burst, tuned_hz)) if !(tuned_hz > 0.0 && burst.strength(tuned_hz, 1.0) > 0.0) => {
-                Err(ReceiverError::OffTune { tuned_hz, tank_hz: burst.frequency_hz() })
+                Err(ReceiverError::OffTune { tuned_hz, tank_hz: burst.ring_hz() })
             }
             _ => Ok(()),
         }
