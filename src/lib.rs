@@ -23,6 +23,7 @@ pub mod estimate;
 pub mod firing;
 pub mod measure;
 pub mod model;
+pub mod predict;
 pub mod report;
 pub mod rhythm;
 pub mod voltage;

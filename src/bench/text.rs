@@ -83,7 +83,7 @@ pub enum QuantityError {
         why: String,
     },
     /// Not two quantities with `..` between.
-    #[error("`{text}` is not a range; write two values with two dots between them, for example \"{}\"", range_example(*.dimension))]
+    #[error("`{text}` is not a range; two dots stand between its ends, for example \"{}\"", range_example(*.dimension))]
     NotARange {
         /// The text as given.
         text: String,
