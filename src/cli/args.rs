@@ -1,5 +1,6 @@
 //! The command line, defined once: help, usage errors and shell completions come from here.
 
+use super::files::SampleFormat;
 use crate::audio::ChannelChoice;
 use clap::{Args, Parser, Subcommand};
 
@@ -16,6 +17,9 @@ Exit status:
   1  a file could not be read or written
   2  wrong usage or a wrong bench file
   3  a recording holds no firing that can be measured";
+
+/// Longest clip, s.
+const LONGEST_CLIP_S: f64 = 86_400.0;
 
 /// Firing rate, jitter and gap voltage of a relaxation-fired spark gap, from receiver audio.
 ///
@@ -34,6 +38,10 @@ pub struct Arguments {
 pub enum Command {
     /// Rate, jitter and, with a bench, gap voltage of recordings
     Measure(MeasureArguments),
+    /// What a bench will do and sound like, before power
+    Predict(PredictArguments),
+    /// A clip of a bench with known truth
+    Render(RenderArguments),
 }
 
 /// Arguments of `measure`.
@@ -51,7 +59,8 @@ pub struct MeasureArguments {
     #[arg(long, value_name = "FILE")]
     pub bench: Option<String>,
 
-    /// Supply voltage of these recordings instead of the bench's, such as 9.2kV or "9.2 kV ± 1 %"
+    /// Supply voltage instead of the bench's, such as 9.2kV or "9.2 kV ± 1 %"; without a tolerance it keeps the
+    /// bench's
     #[arg(long, value_name = "VOLTAGE", requires = "bench")]
     pub supply: Option<String>,
 
@@ -78,6 +87,94 @@ pub struct MeasureArguments {
     /// Tell on standard error how the verdict came about
     #[arg(long)]
     pub explain: bool,
+}
+
+/// Arguments of `predict`.
+#[derive(Debug, Args)]
+pub struct PredictArguments {
+    /// Description of the bench (TOML)
+    #[arg(long, value_name = "FILE")]
+    pub bench: String,
+
+    /// Supply setting, such as 9.2kV, or a range of them, such as 6kV..12kV
+    #[arg(long, value_name = "VOLTAGE", conflicts_with = "target")]
+    pub supply: Option<String>,
+
+    /// Settings in a range
+    #[arg(long, value_name = "N", default_value_t = 7, value_parser = clap::value_parser!(u16).range(2..=1000))]
+    pub settings: u16,
+
+    /// Firing rate for which to find the supply setting, such as 440Hz
+    #[arg(long, value_name = "RATE")]
+    pub target: Option<String>,
+
+    /// Write the prediction as JSON, in SI units
+    #[arg(long)]
+    pub json: bool,
+
+    /// Write what it will sound like to a WAV or FLAC file
+    #[arg(long, value_name = "FILE")]
+    pub clip: Option<String>,
+
+    /// Play what it will sound like
+    #[cfg(feature = "sound-card")]
+    #[arg(long)]
+    pub play: bool,
+
+    /// Length of the clip, in seconds
+    #[arg(long, value_name = "SECONDS", default_value = "5", value_parser = duration)]
+    pub seconds: f64,
+}
+
+/// Arguments of `render`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+The same bench, seed and version give the same firings. The samples may differ in their last bits from
+machine to machine, for the elementary functions do.")]
+pub struct RenderArguments {
+    /// Description of the bench (TOML)
+    #[arg(long, value_name = "FILE")]
+    pub bench: String,
+
+    /// Clip to write, named .wav or .flac; - is a WAV on standard output
+    #[arg(short, long, value_name = "FILE")]
+    pub output: String,
+
+    /// Supply voltage instead of the bench's, such as 9.2kV
+    #[arg(long, value_name = "VOLTAGE")]
+    pub supply: Option<String>,
+
+    /// Length of the clip, in seconds
+    #[arg(long, value_name = "SECONDS", default_value = "10", value_parser = duration)]
+    pub seconds: f64,
+
+    /// Seed of everything that is drawn at random
+    #[arg(long, value_name = "N", default_value_t = 1)]
+    pub seed: u64,
+
+    /// Samples per second
+    #[arg(long, value_name = "HZ", default_value_t = 48_000)]
+    pub sample_rate: u32,
+
+    /// Bits of a sample
+    #[arg(long, value_name = "BITS", value_enum, default_value_t)]
+    pub bits: SampleFormat,
+
+    /// Start with the supply being switched on, instead of a gap that runs already
+    #[arg(long)]
+    pub switch_on: bool,
+
+    /// Write every firing and the figures that came out as JSON
+    #[arg(long, value_name = "FILE")]
+    pub truth: Option<String>,
+}
+
+/// Reads a length in seconds.
+fn duration(text: &str) -> Result<f64, String> {
+    match seconds(text) {
+        Ok(value) if value > 0.0 && value <= LONGEST_CLIP_S => Ok(value),
+        _ => Err(format!("write a length in seconds, above 0 and up to {LONGEST_CLIP_S}, such as 10")),
+    }
 }
 
 /// Reads a time in seconds; `s` may stand behind it.

@@ -4,14 +4,18 @@
 //! out in the order of the arguments. A recording that cannot be read does not stop the others.
 
 use super::args::MeasureArguments;
+use super::bench_file;
 use super::exit::{Exit, Failure, say, tell};
 use super::files::{self, FileError, STANDARD_STREAM};
 use super::progress::Progress;
-use crate::audio::{ChannelChoice, Heard, Intake, Span};
+use crate::audio::{AudioError, ChannelChoice, Heard, Intake, Span};
+use crate::firing::Event;
 use crate::measure::{Measurer, Options, Outcome};
 use crate::report::{self, Measurement, Recording, Report};
 use crate::rhythm::Verdict;
+use crate::voltage::VoltageMeter;
 use std::collections::BTreeMap;
+use std::io::{self, Write};
 use std::sync::atomic::{AtomicUsize, Ordering};
 use std::sync::mpsc;
 
@@ -63,6 +67,8 @@ struct Task<'a> {
     span: Span,
     events: Option<&'a str>,
     explain: bool,
+    /// A voltmeter that has seen no event yet.
+    voltage: Option<VoltageMeter>,
 }
 
 impl<'a> Task<'a> {
@@ -85,52 +91,111 @@ impl<'a> Task<'a> {
             }
             files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
         }
-        Ok(Self { channel: arguments.channel.unwrap_or_default(), span, events, explain: arguments.explain })
+        let voltage = voltmeter(arguments)?;
+        Ok(Self { channel: arguments.channel.unwrap_or_default(), span, events, explain: arguments.explain, voltage })
     }
 
+    /// Measures one recording and writes its events if they are wanted.
     fn measure(&self, name: &str, progress: &Progress) -> Result<Analysed, Failure> {
+        let Some(place) = self.events else {
+            return self.analyse(name, progress, &mut |_, _| Ok(()));
+        };
+        let mut analysed = None;
+        let written = files::write_atomically(place, |out| {
+            writeln!(out, "{}", report::EVENTS_HEADER)?;
+            let result =
+                self.analyse(name, progress, &mut |event, voltage_v| report::write_event(out, event, voltage_v));
+            let failed = result.is_err();
+            analysed = Some(result);
+            // No file of events is left behind for a recording that could not be read.
+            if failed { Err(io::Error::other("the recording was not measured")) } else { Ok(()) }
+        });
+        match (analysed, written) {
+            (Some(Err(failure)), _) => Err(failure),
+            (Some(Ok(analysed)), Ok(())) => Ok(analysed),
+            (_, Err(error)) => Err(Failure::file(place, &error)),
+            (None, Ok(())) => Err(Failure::Told(Exit::File, format!("{place}: nothing was written"))),
+        }
+    }
+
+    fn analyse(&self, name: &str, progress: &Progress, sink: &mut Sink<'_>) -> Result<Analysed, Failure> {
         let recording = files::open(name).map_err(|error| Failure::file(name, &error))?;
-        let told = |error: crate::audio::AudioError| Failure::file(name, &FileError::Broken(error.to_string()));
+        let told = |error: AudioError| Failure::file(name, &FileError::Broken(error.to_string()));
         let mut intake = Intake::new(recording, self.channel, self.span).map_err(told)?;
-        let sample_rate_hz = intake.sample_rate_hz();
-        let channels = intake.channels();
+        let (sample_rate_hz, channels) = (intake.sample_rate_hz(), intake.channels());
         let mut measurer = Measurer::new(sample_rate_hz, Options { explain: self.explain });
+        let mut voltage = self.voltage.clone();
+        let mut take = |events: Vec<Event>| self.take(events, voltage.as_mut(), sink);
         let mut mono = Vec::new();
         while intake.next(&mut mono).map_err(told)? {
             measurer.push(&mono);
+            take(measurer.take_events())?;
             progress.heard(mono.len() as f64 / f64::from(sample_rate_hz));
         }
         let heard = intake.finish();
-        let Outcome { mut reading, mut events, explanation } = measurer.finish();
-        // The analyzer counts from the first sample it hears; a person, and the CSV, count from the start of the file.
-        let from_s = self.span.from_s;
-        events.iter_mut().for_each(|event| event.time_s += from_s);
+        let Outcome { mut reading, events, mut explanation } = measurer.finish();
+        take(events)?;
         for stretch in &mut reading.stretches {
-            (stretch.from_s, stretch.to_s) = (stretch.from_s + from_s, stretch.to_s + from_s);
+            (stretch.from_s, stretch.to_s) = (stretch.from_s + self.span.from_s, stretch.to_s + self.span.from_s);
         }
+        reading.notes.splice(0..0, notes_of(&heard, self.span));
         let recording = Recording {
             file: name.to_owned(),
             duration_s: heard.duration_s,
             sample_rate_hz,
             channels,
-            channel: heard.channel.clone(),
-            from_s,
+            channel: heard.channel,
+            from_s: self.span.from_s,
         };
-        reading.notes.splice(0..0, notes_of(&heard, self.span));
-        if let Some(place) = self.events {
-            files::write_atomically(place, |out| report::write_events(out, &events, |_| None))
-                .map_err(|error| Failure::file(place, &error))?;
-        }
+        let voltage = voltage.map(|meter| meter.finish(&reading)).unwrap_or_default();
+        reading.notes.extend(voltage.notes);
+        explanation.extend(voltage.contributions.iter().map(|part| {
+            format!("gap voltage: {} brings {:.1} V, {:.0} % of the variance", part.name, part.u_v, 100.0 * part.share)
+        }));
         let measurement = Measurement {
             format: report::FORMAT.to_owned(),
             recording,
             reading,
-            gap_voltage_v: None,
-            gap_voltage_spread_v: None,
+            gap_voltage_v: voltage.gap_voltage_v,
+            gap_voltage_spread_v: voltage.gap_voltage_spread_v,
         };
         let explanation = if self.explain { explanation } else { Vec::new() };
         Ok(Analysed { measurement: report::finite(measurement), explanation })
     }
+
+    /// Hands events on to the voltmeter and to their file.
+    fn take(
+        &self,
+        events: Vec<Event>,
+        mut voltage: Option<&mut VoltageMeter>,
+        sink: &mut Sink<'_>,
+    ) -> Result<(), Failure> {
+        for mut event in events {
+            // The analyzer counts from the first sample it hears; a person counts from the start of the file.
+            event.time_s += self.span.from_s;
+            let meter = voltage.as_deref_mut();
+            let voltage_v = meter.and_then(|meter| {
+                meter.push(&event);
+                event.period_s.and_then(|period_s| meter.gap_voltage_of(period_s))
+            });
+            sink(&event, voltage_v).map_err(|error| {
+                let place = self.events.unwrap_or("standard output");
+                Failure::file(place, &FileError::from_io("writing", error))
+            })?;
+        }
+        Ok(())
+    }
+}
+
+/// Where events go, each with the gap voltage that it implies.
+type Sink<'a> = dyn FnMut(&Event, Option<f64>) -> io::Result<()> + 'a;
+
+/// The voltmeter of the bench; none without a bench.
+fn voltmeter(arguments: &MeasureArguments) -> Result<Option<VoltageMeter>, Failure> {
+    let Some(name) = &arguments.bench else { return Ok(None) };
+    let bench = bench_file::load(name)?;
+    let supply = arguments.supply.as_deref().map(|text| bench_file::supply(text, &bench)).transpose()?;
+    VoltageMeter::new(&bench, supply).map(Some).map_err(|error| Failure::usage(format!("{name}: {error}")))
 }
 
 fn notes_of(heard: &Heard, span: Span) -> Vec<String> {

@@ -3,10 +3,16 @@
 //! Results go to standard output, everything else to standard error.
 
 mod args;
+mod bench_file;
+mod clip;
 mod exit;
 pub mod files;
 mod measure;
+#[cfg(feature = "sound-card")]
+mod play;
+mod predict;
 mod progress;
+mod render;
 
 use args::{Arguments, Command};
 use clap::Parser;
@@ -26,6 +32,8 @@ pub fn main() -> ExitCode {
     };
     let ended = match &arguments.command {
         Command::Measure(arguments) => measure::run(arguments),
+        Command::Predict(arguments) => predict::run(arguments),
+        Command::Render(arguments) => render::run(arguments),
     };
     ended.unwrap_or_else(exit::Failure::end).into()
 }

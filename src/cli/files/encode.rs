@@ -37,11 +37,17 @@ impl SampleFormat {
     }
 }
 
-/// Writes a mono clip: FLAC if the name ends in `.flac`, WAV if it ends in `.wav` or is `-` (standard output).
+/// Writes a mono clip: FLAC if the name ends in `.flac`, WAV if it ends in `.wav` or is `-` (standard output). A WAV
+/// file is written as the samples come; the others are made in memory.
 ///
 /// # Errors
 /// [`FileError`] for another ending, a format that the file cannot hold, or a place that cannot be written.
-pub fn write_clip(name: &str, samples: &[f32], sample_rate_hz: u32, format: SampleFormat) -> Result<(), FileError> {
+pub fn write_clip(
+    name: &str,
+    samples: impl IntoIterator<Item = f32>,
+    sample_rate_hz: u32,
+    format: SampleFormat,
+) -> Result<(), FileError> {
     match name.rsplit_once('.').map(|(_, extension)| extension.to_ascii_lowercase()).as_deref() {
         Some("wav") => write_atomically(name, |out| write_wav(out, samples, sample_rate_hz, format)),
         Some("flac") if format == SampleFormat::Float32 => {
@@ -61,7 +67,12 @@ pub fn write_clip(name: &str, samples: &[f32], sample_rate_hz: u32, format: Samp
     }
 }
 
-fn write_wav(out: impl Write + Seek, samples: &[f32], sample_rate_hz: u32, format: SampleFormat) -> io::Result<()> {
+fn write_wav(
+    out: impl Write + Seek,
+    samples: impl IntoIterator<Item = f32>,
+    sample_rate_hz: u32,
+    format: SampleFormat,
+) -> io::Result<()> {
     let sample_format =
         if format == SampleFormat::Float32 { hound::SampleFormat::Float } else { hound::SampleFormat::Int };
     let spec =
@@ -71,7 +82,7 @@ fn write_wav(out: impl Write + Seek, samples: &[f32], sample_rate_hz: u32, forma
         other => io::Error::other(other),
     };
     let mut writer = hound::WavWriter::new(out, spec).map_err(in_io)?;
-    for &sample in samples {
+    for sample in samples {
         match format {
             SampleFormat::Float32 => writer.write_sample(sample),
             _ => writer.write_sample(format.quantize(sample)),
@@ -82,10 +93,14 @@ fn write_wav(out: impl Write + Seek, samples: &[f32], sample_rate_hz: u32, forma
     writer.finalize().map_err(in_io)
 }
 
-fn flac_bytes(samples: &[f32], sample_rate_hz: u32, format: SampleFormat) -> Result<Vec<u8>, String> {
+fn flac_bytes(
+    samples: impl IntoIterator<Item = f32>,
+    sample_rate_hz: u32,
+    format: SampleFormat,
+) -> Result<Vec<u8>, String> {
     let told = |what: &str, error: &dyn std::fmt::Debug| format!("cannot be encoded as FLAC: {what} ({error:?})");
     let config = flacenc::config::Encoder::default().into_verified().map_err(|error| told("settings", &error.1))?;
-    let integers: Vec<i32> = samples.iter().map(|&sample| format.quantize(sample)).collect();
+    let integers: Vec<i32> = samples.into_iter().map(|sample| format.quantize(sample)).collect();
     let source =
         flacenc::source::MemSource::from_samples(&integers, 1, usize::from(format.bits()), sample_rate_hz as usize);
     let mut stream = flacenc::encode_with_fixed_block_size(&config, source, config.block_size)
