@@ -326,3 +326,47 @@ fn a_receiver_that_cannot_be_built_is_named_with_its_limits() {
     settings.sample_rate_hz = 100;
     assert!(Renderer::new(&settings, []).is_err());
 }
+
+#[test]
+fn a_bench_sets_the_receiver_and_what_it_leaves_open_is_the_documented_default() {
+    let bare = ReceiverSettings::from_bench(&gaptone::bench::parse("", "b").unwrap()).unwrap();
+    assert_eq!(bare, ReceiverSettings::default());
+    let text = r#"
+[tank]
+frequency = "1.8 MHz"
+quality = 12
+
+[receiver]
+tuned = "1.81 MHz"
+bandwidth = "9 kHz"
+audio_band = "200 Hz .. 3 kHz"
+noise = "-20 dB"
+carrier = "1.5"
+carrier_offset = "-400 Hz"
+hum = "30 %"
+hum_frequency = "60 Hz"
+"#;
+    let settings = ReceiverSettings::from_bench(&gaptone::bench::parse(text, "b").unwrap()).unwrap();
+    assert_eq!(settings.bandwidth_hz, 9000.0);
+    assert_eq!((settings.audio_band.low_hz, settings.audio_band.high_hz), (200.0, 3000.0));
+    assert!((settings.noise - 0.1).abs() < 1e-12);
+    assert_eq!(settings.carrier, Some(Carrier { amplitude: 1.5, offset_hz: -400.0, programme: None }));
+    let hum = settings.hum.unwrap();
+    assert!((hum.amplitude - 0.3).abs() < 1e-12 && hum.frequency_hz == 60.0);
+    assert_eq!(settings.burst.unwrap().1, 1.81e6);
+    let too_narrow = gaptone::bench::parse("[receiver]\nbandwidth = \"1 Hz\"\n", "b").unwrap();
+    assert!(ReceiverSettings::from_bench(&too_narrow).is_err());
+}
+
+// Burst theory: the click grows with the voltage and with the impulse bandwidth.
+#[test]
+fn the_click_in_volts_is_proportional_to_firing_voltage_and_bandwidth() {
+    let bench = gaptone::bench::parse("[tank]\nfrequency = \"1 MHz\"\nquality = 10\n", "b").unwrap();
+    let mut settings = ReceiverSettings::from_bench(&bench).unwrap();
+    let peak = settings.click_peak_v(5000.0).unwrap();
+    assert!((settings.click_peak_v(10_000.0).unwrap() / peak - 2.0).abs() < 1e-9);
+    settings.bandwidth_hz *= 2.0;
+    assert!((settings.click_peak_v(5000.0).unwrap() / peak - 2.0).abs() < 1e-6);
+    settings.burst = None;
+    assert_eq!(settings.click_peak_v(5000.0), None);
+}

@@ -42,6 +42,14 @@ impl Candidates {
         }
     }
 
+    /// The candidates from one time (s) up to another.
+    #[must_use]
+    pub fn between(&self, from_s: f64, to_s: f64) -> Self {
+        let from = self.time_s.partition_point(|&t| t < from_s);
+        let to = self.time_s.partition_point(|&t| t < to_s).max(from);
+        Self { time_s: self.time_s[from..to].to_vec(), mark: self.mark[from..to].to_vec() }
+    }
+
     /// Indices of the `count` strongest, in the order of time.
     #[must_use]
     pub fn strongest(&self, count: usize) -> Vec<usize> {

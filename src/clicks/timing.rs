@@ -70,7 +70,7 @@ pub fn channels(signed: bool) -> Vec<Channel> {
 }
 
 /// Most clicks a shape is learnt from.
-const LEARN_FROM: usize = 600;
+const LEARN_FROM: usize = 200;
 /// Farthest that a time may move, s and periods.
 const REACH_S: f64 = 0.12e-3;
 const REACH_PERIODS: f64 = 0.2;

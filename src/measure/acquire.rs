@@ -1,12 +1,18 @@
 //! From one conditioned window to a train or the reason why there is none.
+//!
+//! What the clicks look like, their period and the best way to time them are learnt on the most active few seconds (on the whole
+//! window if those hold too few firings); the train is then followed through the whole window with what was learnt.
 
-use super::hypothesis::{self, Hypothesis};
-use super::refine::refine;
-use super::times;
+use super::hypothesis::{self, APART_S, DENSITY, Hypothesis};
+use super::refine::{Finder, refine};
+use super::times::{self, Timing};
 use super::train::{Train, number};
-use super::window::Window;
+use super::window::{FIND_HIGH_PASS_HZ, Window};
+use crate::clicks::candidates;
 use crate::clicks::timing::Flatness;
+use crate::rhythm::fit::Start;
 use crate::rhythm::line::{self, LineTrain};
+use crate::rhythm::search::fit_whole;
 use crate::rhythm::{phase, presence};
 
 /// Floors of the whitening tried in turn: deep first, shallow if nothing is found.
@@ -15,6 +21,10 @@ const FLOORS: [f64; 2] = [2e-3, 0.1];
 const SILENCE: f32 = 1e-4;
 /// Shortest window worth a look, s.
 const SHORTEST_S: f64 = 0.5;
+/// Length of the part that is learnt from, s, and the firings and cover that it must hold to be enough.
+const LEARN_S: f64 = 4.0;
+const LEARN_FIRINGS: usize = 100;
+const LEARN_COVER: f64 = 0.8;
 /// A line is taken if its evidence is this many times the clicks', or their period this many times the line's.
 const LINE_EVIDENCE: f64 = 2.0;
 const LINE_PERIOD: f64 = 1.4;
@@ -30,11 +40,20 @@ pub fn train(window: &Window, explanation: &mut Vec<String>) -> Result<Train, &'
     if window.duration_s() < SHORTEST_S {
         return Err("the recording is shorter than half a second");
     }
+    if window.duration_s() > 1.5 * LEARN_S {
+        explanation.push(format!("learning on the most active {LEARN_S} s"));
+        let part = window.most_active_part(LEARN_S);
+        match learn(&part, FLOORS[0], explanation) {
+            Ok(Learnt::Clicks(model)) if model.is_enough() => return follow(window, *model, explanation),
+            Ok(Learnt::Line(line)) => return by_line(window, line.line.frequency_hz, explanation),
+            _ => explanation.push("too few firings there: learning on the whole window".into()),
+        }
+    }
     let mut reason = "no clicks stand out";
     for floor in FLOORS {
-        explanation.push(format!("whitened with a floor of {floor}"));
-        match once(window, floor, explanation) {
-            Ok(train) => return Ok(train),
+        match learn(window, floor, explanation) {
+            Ok(Learnt::Clicks(model)) => return Ok(model.into_train(window)),
+            Ok(Learnt::Line(line)) => return by_line(window, line.line.frequency_hz, explanation),
             Err(why) => {
                 explanation.push(format!("refused: {why}"));
                 reason = why;
@@ -44,15 +63,42 @@ pub fn train(window: &Window, explanation: &mut Vec<String>) -> Result<Train, &'
     Err(reason)
 }
 
-fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Train, &'static str> {
-    let whitened = window.whitened(floor);
+/// What a part of the audio taught.
+enum Learnt {
+    Clicks(Box<Model>),
+    Line(Box<LineTrain>),
+}
+
+/// Separate clicks: how they are found, how they are timed, and the train in the part learnt from.
+struct Model {
+    hypothesis: Hypothesis,
+    finder: Finder,
+    timing: Timing,
+    overlaps: bool,
+}
+
+impl Model {
+    fn is_enough(&self) -> bool {
+        self.hypothesis.fit.chain.index.len() >= LEARN_FIRINGS && self.hypothesis.fit.cover > LEARN_COVER
+    }
+
+    /// The train of the window that was learnt from itself.
+    fn into_train(self, window: &Window) -> Train {
+        let flat = self.timing.reader.as_ref().map_or(&[][..], |(_, flatness)| window.flat(*flatness));
+        finish_train(window, &self.hypothesis, &self.timing, flat, self.overlaps)
+    }
+}
+
+fn learn(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Learnt, &'static str> {
+    let whitened = window.through(&window.kernel(window.spectrum.whitening(FIND_HIGH_PASS_HZ, floor)));
     let clicks = hypothesis::best(window, &whitened, explanation);
     let line = best_line(window, explanation);
-    if let Some(line) = line.as_ref().filter(|l| line_wins(l, clicks.as_ref())) {
-        return by_line(window, line, explanation);
+    if line.as_ref().is_some_and(|l| line_wins(l, clicks.as_ref())) {
+        return line.map(|l| Learnt::Line(Box::new(l))).ok_or("no line stands out");
     }
     let Some(mut h) = clicks else { return Err("no clicks stand out") };
     let first_evidence = h.fit.evidence;
+<<<<<<< HEAD
     let x = refine(window, whitened, &mut h);
     explanation.push(format!(
         "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
@@ -64,7 +110,31 @@ fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Tr
     let (numbers, stretches) = number(&chain_times, &h.fit.chain.steps, h.fit.period_s);
     let times = times::read(window, &x, &h, &numbers);
     explanation.push(format!("times read with {}, expected timing noise {:.2} µs", times.channel, 1e6 * times.noise_s));
+=======
+    let finder = refine(window, whitened, floor, &mut h);
+>>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
     h.fit.evidence = h.fit.evidence.max(first_evidence);
+    explanation.push(format!(
+        "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
+        1e3 * h.fit.period_s,
+        h.fit.chain.index.len(),
+        h.fit.evidence
+    ));
+    check_presence(window, &h, explanation)?;
+    let chain_times: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
+    let (numbers, _) = number(&chain_times, &h.fit.chain.steps, h.fit.period_s);
+    let timing = times::choose(window, &finder.whitened, &h, &numbers);
+    explanation.push(format!(
+        "times read with {}, expected timing noise {:.2} µs",
+        timing.channel,
+        1e6 * timing.noise_s
+    ));
+    let overlaps =
+        h.fit.period_s < PHASE_BELOW_S && line.is_some_and(|l| (l.fit.period_s / h.fit.period_s - 1.0).abs() < 0.03);
+    Ok(Learnt::Clicks(Box::new(Model { hypothesis: h, finder, timing, overlaps })))
+}
+
+fn check_presence(window: &Window, h: &Hypothesis, explanation: &mut Vec<String>) -> Result<(), &'static str> {
     let rate_hz = 1.0 / h.fit.period_s;
     let tones = presence::tones(&window.x, window.rate_hz, rate_hz);
     explanation.push(format!(
@@ -73,6 +143,7 @@ fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Tr
         100.0 * tones.outside,
         100.0 * tones.six
     ));
+<<<<<<< HEAD
     if let Some(why) = presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter) {
         return Err(why);
     }
@@ -86,13 +157,50 @@ fn once(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Tr
     {
         train.phase_jitter_s =
             phase::read(window.bank, &window.x, window.rate_hz, line.line.frequency_hz).map(|p| p.jitter_s);
+=======
+    presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter).map_or(Ok(()), Err)
+}
+
+/// Follows a train through a longer window than it was learnt from.
+fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Result<Train, &'static str> {
+    let Model { mut hypothesis, finder, timing, overlaps } = model;
+    let mut output = Vec::new();
+    candidates::matched_output(window.bank, &window.through(&finder.kernel), &hypothesis.shape, &mut output);
+    let found = candidates::find(&output, window.rate_hz, if hypothesis.fast { 0.0 } else { APART_S });
+    let start = Start::again(hypothesis.fit.period_s, hypothesis.fit.jitter);
+    hypothesis.fit =
+        fit_whole(&found, window.duration_s(), start, DENSITY).ok_or("the rhythm is lost after a few seconds")?;
+    hypothesis.candidates = found;
+    explanation.push(format!(
+        "followed through the window: {} firings, evidence {:.0} nats, covers {:.0} %",
+        hypothesis.fit.chain.index.len(),
+        hypothesis.fit.evidence,
+        100.0 * hypothesis.fit.cover
+    ));
+    let flat =
+        timing.reader.as_ref().map_or_else(Vec::new, |(_, flatness)| window.through(&window.flattening(*flatness)));
+    Ok(finish_train(window, &hypothesis, &timing, &flat, overlaps))
+}
+
+fn finish_train(window: &Window, h: &Hypothesis, timing: &Timing, flat: &[f32], overlaps: bool) -> Train {
+    let found: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
+    let time_s = timing.read(flat, &found);
+    let mut train = Train::of_clicks(h, time_s, timing.noise_s, window.flat(Flatness::Plain), window.rate_hz);
+    let scale = plain_scale(window);
+    train.size.iter_mut().for_each(|s| *s *= scale);
+    train.extra.iter_mut().for_each(|e| e.1 *= scale);
+    if overlaps {
+        let read = phase::read(window.bank, &window.x, window.rate_hz, 1.0 / h.fit.period_s);
+        train.phase_jitter_s = read.map(|p| p.jitter_s);
+>>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
     }
-    Ok(train)
+    train
 }
 
 /// The flattened signal for reading sizes is scaled by its gain: this takes it back to full scale.
 fn plain_scale(window: &Window) -> f32 {
-    let gain = window.spectrum.whitening(Flatness::Plain.settings().0, Flatness::Plain.settings().1);
+    let (high_pass_hz, floor) = Flatness::Plain.settings();
+    let gain = window.spectrum.whitening(high_pass_hz, floor);
     (1.0 / gain(1_000.0).max(1e-30)) as f32
 }
 
@@ -130,10 +238,13 @@ fn line_wins(line: &LineTrain, clicks: Option<&Hypothesis>) -> bool {
         })
 }
 
-fn by_line(window: &Window, line: &LineTrain, explanation: &mut Vec<String>) -> Result<Train, &'static str> {
-    let read = phase::read(window.bank, &window.x, window.rate_hz, line.line.frequency_hz)
+fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> Result<Train, &'static str> {
+    let found = line::describe_at(&window.x, window.rate_hz, line_hz);
+    let line =
+        line::count(window.bank, &window.x, window.rate_hz, found).ok_or("the line at the rate does not hold")?;
+    let read = phase::read(window.bank, &window.x, window.rate_hz, 1.0 / line.fit.period_s)
         .ok_or("the stretch is too short to follow the line's phase")?;
-    explanation.push(format!("clicks overlap: read by the line at {:.2} Hz", line.line.frequency_hz));
+    explanation.push(format!("clicks overlap: read by the line at {line_hz:.2} Hz"));
     let relative = read.jitter_s.value / line.fit.period_s;
     if relative < 4e-4 || (line.amplitude_cv < 0.025 && relative < 2e-3) {
         return Err("the sound is a steady tone, not a train of clicks");
@@ -149,6 +260,5 @@ fn by_line(window: &Window, line: &LineTrain, explanation: &mut Vec<String>) -> 
         noise_s: None,
         phase_jitter_s: Some(read.jitter_s),
         period_s: line.fit.period_s,
-        evidence: line.fit.evidence,
     })
 }

@@ -3,7 +3,7 @@
 use super::window::Window;
 use crate::clicks::candidates::{self, Candidates};
 use crate::clicks::shape::{FirstLook, Shape, first_look};
-use crate::rhythm::fit::Fit;
+use crate::rhythm::fit::{Fit, Start};
 use crate::rhythm::search;
 use rustfft::num_complex::Complex32;
 
@@ -25,6 +25,8 @@ const SIGNED: f64 = 0.93;
 const CERTAIN: f64 = 0.985;
 /// Maxima nearer than this are one click, s (slow trains only).
 pub const APART_S: f64 = 0.2e-3;
+/// Candidates per expected firing when the best is fitted to all of the window.
+pub const DENSITY: f64 = 14.0;
 /// A rhythm covering less than this share of the time counts a thousandth.
 const COVER: f64 = 0.4;
 
@@ -32,7 +34,7 @@ const COVER: f64 = 0.4;
 #[must_use]
 pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) -> Option<Hypothesis> {
     let mut envelope: Vec<Complex32> = Vec::new();
-    window.bank.apply_analytic(whitened, &window.bank.kernel_of_gain(window.rate_hz, |_| 1.0), &mut envelope);
+    window.bank.apply_analytic(whitened, &window.kernel(|_| 1.0), &mut envelope);
     let look = first_look(whitened, &envelope, window.rate_hz)?;
     explanation.push(format!(
         "click shape learnt from the strongest peaks; {:.0} % of them have one sign",
@@ -55,7 +57,11 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
             }
         }
     }
-    best
+    let mut best = best?;
+    let start = Start::again(best.fit.period_s, best.fit.jitter);
+    let whole = search::fit_whole(&best.candidates, window.duration_s(), start, DENSITY)?;
+    best.fit = Fit { evidence: whole.evidence.max(best.fit.evidence), ..whole };
+    Some(best)
 }
 
 /// The shapes tried: one signed shape, or both signs and an unsigned pair.

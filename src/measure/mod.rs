@@ -72,16 +72,17 @@ impl Measurer {
 
     /// Takes mono samples in units of full scale.
     pub fn push(&mut self, mono: &[f32]) {
-        let most = (WINDOW_S * self.rate_hz) as usize;
+        let window = (WINDOW_S * self.rate_hz) as usize;
         let mut rest = mono;
         while !rest.is_empty() {
-            let room = most - self.held.len();
-            let (now, later) = rest.split_at(room.min(rest.len()));
+            // A quarter more is held than a window takes: no recording ends in a window too short to say anything.
+            let most = window + window / 4;
+            if self.held.len() == most {
+                self.analyse_held(window);
+            }
+            let (now, later) = rest.split_at((most - self.held.len()).min(rest.len()));
             self.held.extend_from_slice(now);
             rest = later;
-            if self.held.len() == most {
-                self.analyse_held();
-            }
         }
     }
 
@@ -93,7 +94,7 @@ impl Measurer {
     /// Analyses what is held and gives the result.
     #[must_use]
     pub fn finish(mut self) -> Outcome {
-        self.analyse_held();
+        self.analyse_held(self.held.len());
         let reading = match self.sums.reading() {
             Some(mut reading) if self.trains > 0 => {
                 reading.reason = reason(&reading);
@@ -104,11 +105,12 @@ impl Measurer {
         Outcome { reading, events: self.events, explanation: self.explanation }
     }
 
-    fn analyse_held(&mut self) {
-        if self.held.is_empty() {
+    /// Analyses the first `count` samples held and forgets them.
+    fn analyse_held(&mut self, count: usize) {
+        if count == 0 {
             return;
         }
-        let window = Window::new(&self.bank, &self.held, self.rate_hz);
+        let window = Window::new(&self.bank, &self.held[..count], self.rate_hz);
         let from_s = self.held_from as f64 / self.rate_hz;
         let mut explanation = Vec::new();
         match acquire::train(&window, &mut explanation) {
@@ -124,8 +126,8 @@ impl Measurer {
             self.explanation.push(format!("window from {from_s:.1} s, {:.1} s long", window.duration_s()));
             self.explanation.append(&mut explanation);
         }
-        self.held_from += self.held.len() as u64;
-        self.held.clear();
+        self.held_from += count as u64;
+        self.held.drain(..count);
     }
 }
 

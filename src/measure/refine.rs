@@ -1,8 +1,9 @@
 //! The second pass: the shape from the clicks on the rhythm, the noise from what is left, and the rhythm fitted again.
 
-use super::hypothesis::{APART_S, Hypothesis};
-use super::window::Window;
+use super::hypothesis::{APART_S, DENSITY, Hypothesis};
+use super::window::{FIND_HIGH_PASS_HZ, Window};
 use crate::clicks::candidates;
+use crate::clicks::filter::Kernel;
 use crate::clicks::shape::{Shape, leading_vectors, median_shape, pieces};
 use crate::clicks::snippet::{dot, normalise};
 use crate::clicks::spectrum::Spectrum;
@@ -13,13 +14,12 @@ use crate::rhythm::search::fit_whole;
 const HALF_S: f64 = 1.2e-3;
 const HALF_PERIODS: f64 = 0.45;
 /// Clicks that the shape is learnt from at most.
-const LEARN_FROM: usize = 600;
+const LEARN_FROM: usize = 300;
 /// High-pass and floor of the second whitening.
 const HIGH_PASS_HZ: f64 = 180.0;
 const FLOOR: f64 = 3e-3;
-/// Candidates per expected firing.
-const DENSITY: f64 = 14.0;
 
+<<<<<<< HEAD
 /// Refines a hypothesis in place, twice; returns the whitened signal of the last pass that held.
 pub fn refine(window: &Window, whitened: Vec<f32>, h: &mut Hypothesis) -> Vec<f32> {
     let mut x = whitened;
@@ -44,9 +44,51 @@ pub fn refine(window: &Window, whitened: Vec<f32>, h: &mut Hypothesis) -> Vec<f3
                 h.shape = shape;
             }
             _ => break,
+=======
+/// How clicks are found after refining: the whitening kernel, and the signal behind it.
+pub struct Finder {
+    /// Whitening.
+    pub kernel: Kernel,
+    /// The window whitened.
+    pub whitened: Vec<f32>,
+}
+
+/// Refines a hypothesis in place, twice, starting from the whitening of floor `floor`.
+pub fn refine(window: &Window, whitened: Vec<f32>, floor: f64, h: &mut Hypothesis) -> Finder {
+    let first = window.spectrum.whitening(FIND_HIGH_PASS_HZ, floor);
+    let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
+    let shape = learn(&whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
+    let rest = without_clicks(&whitened, h, &shape, window.rate_hz);
+    let noise = Spectrum::of_noise(&rest, window.rate_hz);
+    let second = noise.whitening(HIGH_PASS_HZ, FLOOR);
+    let kernel = window.kernel(|f| first(f) * second(f));
+    let finder = Finder { whitened: window.through(&kernel), kernel };
+    for _ in 0..2 {
+        if !again(window, &finder.whitened, h) {
+            break;
+>>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
         }
     }
-    x
+    finder
+}
+
+/// One round: shape, candidates and fit; false if the fit lost half of its clicks (the hypothesis then stays as it was).
+fn again(window: &Window, whitened: &[f32], h: &mut Hypothesis) -> bool {
+    let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
+    let shape = learn(whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
+    let mut output = Vec::new();
+    candidates::matched_output(window.bank, whitened, &shape, &mut output);
+    let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
+    let start = Start::again(h.fit.period_s, h.fit.jitter);
+    match fit_whole(&found, window.duration_s(), start, DENSITY) {
+        Some(fit) if 2 * fit.chain.index.len() >= h.fit.chain.index.len() => {
+            h.fit = fit;
+            h.candidates = found;
+            h.shape = shape;
+            true
+        }
+        _ => false,
+    }
 }
 
 fn strongest_on_rhythm(h: &Hypothesis, rate_hz: f64) -> Vec<f64> {

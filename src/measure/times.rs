@@ -4,7 +4,7 @@ use super::hypothesis::Hypothesis;
 use super::window::Window;
 use crate::clicks::shape::pieces;
 use crate::clicks::snippet::dot;
-use crate::clicks::timing::{Flatness, Reader, channels};
+use crate::clicks::timing::{Channel, Flatness, Reader, channels};
 use crate::rhythm::fit::median;
 use crate::rhythm::statistics::robust;
 
@@ -16,63 +16,86 @@ const NEAR: f64 = 1.1;
 /// Timing noise that no reading goes under, s: interpolation between samples.
 const LEAST_NOISE_S: f64 = 2e-7;
 
-/// Click times read in the best channel.
-pub struct Times {
-    /// Times of the chain's clicks, s.
-    pub time_s: Vec<f64>,
+/// The way to read click times that scatters least, and the timing noise to expect of it.
+pub struct Timing {
+    /// The reader with its flattening, or none: the times as found.
+    pub reader: Option<(Reader, Flatness)>,
     /// Timing noise that the audio's noise predicts, s.
     pub noise_s: f64,
-    /// Which channel.
+    /// Which channel, in words.
     pub channel: String,
 }
 
-/// Reads the clicks of a hypothesis in the channel with the least scatter.
+impl Timing {
+    /// Reads times (s) anew in a signal flattened for this reader.
+    #[must_use]
+    pub fn read(&self, flat: &[f32], time_s: &[f64]) -> Vec<f64> {
+        match &self.reader {
+            Some((reader, _)) => reader.read(flat, &reader.read(flat, time_s)),
+            None => time_s.to_vec(),
+        }
+    }
+}
+
+/// Compares the channels on up to 500 clicks in a row of a hypothesis.
 #[must_use]
-pub fn read(window: &Window, whitened: &[f32], h: &Hypothesis, number: &[i64]) -> Times {
+pub fn choose(window: &Window, whitened: &[f32], h: &Hypothesis, number: &[i64]) -> Timing {
     let all: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
     let from = all.len().saturating_sub(TRIAL) / 2;
     let trial = from..(from + TRIAL).min(all.len());
     let (start, numbers) = (&all[trial.clone()], &number[trial]);
-    let period_s = h.fit.period_s;
-    let first = robust::scatter(start, numbers);
-    let mut best: (f64, Option<(Reader, Flatness)>, String, Vec<f64>) =
-        (first, None, "as found".into(), start.to_vec());
+    let mut best = Trial {
+        scatter: robust::scatter(start, numbers),
+        reader: None,
+        name: "as found".into(),
+        times: start.to_vec(),
+    };
     let mut tried: Vec<(f64, Vec<f64>)> = Vec::new();
     for channel in channels(h.shape.signed) {
-        let x = window.flat(channel.flatness);
-        let mut times = start.to_vec();
-        let mut reader = None;
-        for _ in 0..2 {
-            reader = channel.learn(x, window.rate_hz, &times, period_s, h.shape.signed);
-            let Some(r) = &reader else { break };
-            times = r.read(x, &times);
-        }
-        let Some(reader) = reader else { continue };
+        let Some((reader, times)) = read_by(window, channel, start, h) else { continue };
         let scatter = robust::scatter(&times, numbers);
-        if scatter < BETTER * best.0 {
-            best = (scatter, Some((reader, channel.flatness)), format!("{channel:?}"), times.clone());
+        if scatter < BETTER * best.scatter {
+            best = Trial {
+                scatter,
+                reader: Some((reader, channel.flatness)),
+                name: format!("{channel:?}"),
+                times: times.clone(),
+            };
         }
         tried.push((scatter, times));
     }
-    let time_s = match &best.1 {
-        Some((reader, flatness)) => {
-            let x = window.flat(*flatness);
-            reader.read(x, &reader.read(x, &all))
-        }
-        None => all.clone(),
-    };
     let between: Vec<f64> = tried
         .iter()
-        .filter(|(s, t)| *s < NEAR * best.0 && *t != best.3)
-        .map(|(_, t)| spread_of_difference(t, &best.3))
+        .filter(|(s, t)| *s < NEAR * best.scatter && *t != best.times)
+        .map(|(_, t)| spread_of_difference(t, &best.times))
         .collect();
-    let between_s = if between.is_empty() { 0.02 * period_s } else { median(&between) };
+    let between_s = if between.is_empty() { 0.02 * h.fit.period_s } else { median(&between) };
     let predicted = predicted_noise_s(window, whitened, h);
-    Times {
-        time_s,
+    Timing {
+        reader: best.reader,
         noise_s: (predicted * predicted + between_s * between_s + LEAST_NOISE_S * LEAST_NOISE_S).sqrt(),
-        channel: best.2,
+        channel: best.name,
     }
+}
+
+struct Trial {
+    scatter: f64,
+    reader: Option<(Reader, Flatness)>,
+    name: String,
+    times: Vec<f64>,
+}
+
+/// Learns a channel's shape and reads the times in it, twice.
+fn read_by(window: &Window, channel: Channel, start: &[f64], h: &Hypothesis) -> Option<(Reader, Vec<f64>)> {
+    let x = window.flat(channel.flatness);
+    let mut times = start.to_vec();
+    let mut reader = None;
+    for _ in 0..2 {
+        let learnt = channel.learn(x, window.rate_hz, &times, h.fit.period_s, h.shape.signed)?;
+        times = learnt.read(x, &times);
+        reader = Some(learnt);
+    }
+    reader.map(|r| (r, times))
 }
 
 fn spread_of_difference(a: &[f64], b: &[f64]) -> f64 {

@@ -1,7 +1,6 @@
 //! A train of one window: click times with firing numbers, in stretches.
 
 use super::hypothesis::Hypothesis;
-use super::times::Times;
 use crate::estimate::Estimate;
 use crate::firing::{Event, EventKind};
 use crate::rhythm::fit::median;
@@ -29,8 +28,6 @@ pub struct Train {
     pub phase_jitter_s: Option<Estimate>,
     /// Mean local period, s.
     pub period_s: f64,
-    /// Evidence, nats.
-    pub evidence: f64,
 }
 
 /// Firing numbers of a chain, and its stretches.
@@ -61,6 +58,7 @@ pub fn number(time_s: &[f64], steps: &[usize], period_s: f64) -> (Vec<i64>, Vec<
 impl Train {
     /// The train of separate clicks of a hypothesis.
     #[must_use]
+<<<<<<< HEAD
     pub fn of_clicks(
         h: &Hypothesis,
         times: Times,
@@ -69,17 +67,20 @@ impl Train {
         number: Vec<i64>,
         stretches: Vec<Range<usize>>,
     ) -> Self {
+=======
+    pub fn of_clicks(h: &Hypothesis, time_s: Vec<f64>, noise_s: f64, x: &[f32], rate_hz: f64) -> Self {
+        let (number, stretches) = number(&time_s, &h.fit.chain.steps, h.fit.period_s);
+>>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
         let extra = extras(h).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();
         Self {
-            size: times.time_s.iter().map(|t| size_at(x, t * rate_hz, rate_hz)).collect(),
-            time_s: times.time_s,
+            size: time_s.iter().map(|t| size_at(x, t * rate_hz, rate_hz)).collect(),
+            time_s,
             number,
             stretches,
             extra,
-            noise_s: Some(times.noise_s),
+            noise_s: Some(noise_s),
             phase_jitter_s: None,
             period_s: h.fit.period_s,
-            evidence: h.fit.evidence,
         }
     }
 

@@ -1,6 +1,6 @@
-//! One window of audio, conditioned, with what every later step shares.
+//! A piece of audio, conditioned, with what every later step shares.
 
-use crate::clicks::filter::FilterBank;
+use crate::clicks::filter::{FilterBank, Kernel};
 use crate::clicks::resample;
 use crate::clicks::spectrum::Spectrum;
 use crate::clicks::timing::Flatness;
@@ -8,8 +8,11 @@ use std::cell::OnceCell;
 
 /// High-pass of the whitening that finds clicks, Hz: over the mains hum, under any channel's click.
 pub const FIND_HIGH_PASS_HZ: f64 = 250.0;
+/// Block by which activity is judged, s, and step of the search for the most active part.
+const BLOCK_S: f64 = 0.05;
+const STEP_BLOCKS: usize = 10;
 
-/// A conditioned window: median removed, at an inner rate of 32 to 64 kHz.
+/// A conditioned piece of audio: median removed, at an inner rate of 32 to 64 kHz.
 pub struct Window<'a> {
     /// Transform plans.
     pub bank: &'a FilterBank,
@@ -34,7 +37,10 @@ impl<'a> Window<'a> {
             (_, 1) => resample::upsample(&centred, up),
             _ => resample::decimate(&centred, down),
         };
-        let rate_hz = rate_hz * up as f64 / down as f64;
+        Self::of(bank, x, rate_hz * up as f64 / down as f64)
+    }
+
+    fn of(bank: &'a FilterBank, x: Vec<f32>, rate_hz: f64) -> Self {
         let spectrum = Spectrum::of_noise(&x, rate_hz);
         Self { bank, x, rate_hz, spectrum, flattened: std::array::from_fn(|_| OnceCell::new()) }
     }
@@ -45,27 +51,51 @@ impl<'a> Window<'a> {
         self.x.len() as f64 / self.rate_hz
     }
 
-    /// The window whitened for finding clicks, with a given floor.
+    /// The most active part of a given length: where the median of short blocks' peaks is highest. A burst of static does not
+    /// draw it, silence between stretches of firing repels it.
     #[must_use]
-    pub fn whitened(&self, floor: f64) -> Vec<f32> {
-        self.through(&self.x, &self.spectrum, FIND_HIGH_PASS_HZ, floor)
+    pub fn most_active_part(&self, length_s: f64) -> Self {
+        let block = (BLOCK_S * self.rate_hz) as usize;
+        let peaks: Vec<f32> =
+            self.x.chunks(block).map(|c| c.windows(2).fold(0.0f32, |m, w| m.max((w[1] - w[0]).abs()))).collect();
+        let wanted = ((length_s / BLOCK_S) as usize).clamp(1, peaks.len());
+        let mut best = (f32::NEG_INFINITY, 0);
+        for from in (0..=peaks.len() - wanted).step_by(STEP_BLOCKS) {
+            let mut part = peaks[from..from + wanted].to_vec();
+            let mid = part.len() / 2;
+            let middle = *part.select_nth_unstable_by(mid, f32::total_cmp).1;
+            if middle > best.0 {
+                best = (middle, from);
+            }
+        }
+        let from = best.1 * block;
+        Self::of(self.bank, self.x[from..(from + wanted * block).min(self.x.len())].to_vec(), self.rate_hz)
     }
 
-    /// Any signal of the window through the whitening gain of a spectrum.
+    /// Kernel of a gain at the inner rate.
     #[must_use]
-    pub fn through(&self, x: &[f32], spectrum: &Spectrum, high_pass_hz: f64, floor: f64) -> Vec<f32> {
-        let kernel = self.bank.kernel_of_gain(self.rate_hz, spectrum.whitening(high_pass_hz, floor));
+    pub fn kernel(&self, gain: impl Fn(f64) -> f64) -> Kernel {
+        self.bank.kernel_of_gain(self.rate_hz, gain)
+    }
+
+    /// The samples through a kernel.
+    #[must_use]
+    pub fn through(&self, kernel: &Kernel) -> Vec<f32> {
         let mut out = Vec::new();
-        self.bank.apply(x, &kernel, &mut out);
+        self.bank.apply(&self.x, kernel, &mut out);
         out
     }
 
-    /// The window flattened for reading times; made once each.
+    /// Kernel that flattens for reading times.
+    #[must_use]
+    pub fn flattening(&self, flatness: Flatness) -> Kernel {
+        let (high_pass_hz, floor) = flatness.settings();
+        self.kernel(self.spectrum.whitening(high_pass_hz, floor))
+    }
+
+    /// The samples flattened for reading times; made once each.
     pub fn flat(&self, flatness: Flatness) -> &[f32] {
-        self.flattened[flatness as usize].get_or_init(|| {
-            let (high_pass_hz, floor) = flatness.settings();
-            self.through(&self.x, &self.spectrum, high_pass_hz, floor)
-        })
+        self.flattened[flatness as usize].get_or_init(|| self.through(&self.flattening(flatness)))
     }
 }
 

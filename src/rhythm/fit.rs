@@ -43,6 +43,15 @@ pub struct Start {
     pub rounds: usize,
 }
 
+impl Start {
+    /// A start from what an earlier fit found: tight trains follow the period, loose ones would wander.
+    #[must_use]
+    pub fn again(period_s: f64, jitter: f64) -> Self {
+        let loose = jitter > super::path::GAMMA_FROM;
+        Self { period_s, jitter, follow: if loose { 0.0 } else { 0.1 }, steep: loose, rounds: 3 }
+    }
+}
+
 /// Fewest firings of a chain that is looked at.
 const FEWEST: usize = 5;
 
@@ -58,9 +67,7 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
     let mut periods = vec![start.period_s; c.len()];
     let mut last = None;
     for round in 0..start.rounds {
-        let ln_off = off_rate.ln();
-        let net: Vec<f64> = gain.iter().map(|g| g - ln_off).collect();
-        let chain = best_chain(&c.time_s, &net, &periods, law);
+        let chain = chain_of_hopeful(c, &gain, off_rate.ln(), &periods, law, round == 0);
         if chain.index.len() < FEWEST {
             return None;
         }
@@ -74,11 +81,10 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         let densities = (binned.density(|i| on[i]), binned.density(|i| !on[i]));
         let off = (c.len() - chain.index.len()).max(1) as f64;
         gain = binned.gain(&densities.0, &densities.1);
-        let used_rate = off_rate.max((off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s));
         off_rate = (off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s);
-        last = Some((chain, steps, on, densities, used_rate));
+        last = Some((chain, steps, on, densities));
     }
-    let (chain, steps, on, densities, _) = last?;
+    let (chain, steps, on, densities) = last?;
     let evidence = evidence(c, duration_s, &binned, &chain, &on, &densities, off_rate, &steps);
     Some(Fit {
         evidence,
@@ -88,6 +94,22 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         cover: steps.span() / duration_s,
         chain,
     })
+}
+
+/// A candidate this many nats worse than leaving its firing out as missed is not looked at.
+const HOPELESS: f64 = 4.0;
+
+/// The best chain through the candidates that can be on one; indices refer to all. The first round looks at all.
+fn chain_of_hopeful(c: &Candidates, gain: &[f64], ln_off: f64, periods: &[f64], law: Law, all: bool) -> Chain {
+    // The most that a step's density can add is that of its peak, about −ln(2.5·s·T).
+    let least = law.missed.ln() + (2.5 * law.jitter).ln() - HOPELESS;
+    let keep: Vec<usize> = (0..c.len()).filter(|&i| all || gain[i] - ln_off >= least + periods[i].ln()).collect();
+    let time_s: Vec<f64> = keep.iter().map(|&i| c.time_s[i]).collect();
+    let net: Vec<f64> = keep.iter().map(|&i| gain[i] - ln_off).collect();
+    let period_s: Vec<f64> = keep.iter().map(|&i| periods[i]).collect();
+    let mut chain = best_chain(&time_s, &net, &period_s, law);
+    chain.index.iter_mut().for_each(|i| *i = keep[*i]);
+    chain
 }
 
 /// Gains before any chain is known: a soft threshold a little under the mark of rank 0.9·duration/T.

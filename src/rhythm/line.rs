@@ -43,21 +43,34 @@ impl Line {
 /// The strongest lines of a window.
 #[must_use]
 pub fn lines(x: &[f32], rate_hz: f64) -> Vec<Line> {
-    let segment = power_of_two_near(rate_hz / 8.0);
-    if x.len() < 2 * segment {
-        return Vec::new();
-    }
-    let mut s = welch(x, rate_hz, segment, true);
-    let raw = s.power.clone();
-    for k in 1..raw.len() - 1 {
-        s.power[k] = 0.25 * raw[k - 1] + 0.5 * raw[k] + 0.25 * raw[k + 1];
-    }
+    let Some(s) = smoothed(x, rate_hz) else { return Vec::new() };
     let (from, to) = (s.bin(BAND_HZ.0), s.bin(BAND_HZ.1.min(0.45 * rate_hz)));
     let mut peaks: Vec<usize> =
         (from.max(1)..to).filter(|&k| s.power[k] > s.power[k - 1] && s.power[k] >= s.power[k + 1]).collect();
     peaks.sort_by(|&a, &b| s.power[b].total_cmp(&s.power[a]));
     peaks.truncate(6);
     peaks.into_iter().map(|k| describe(&s, k as f64 * s.step_hz)).filter(|l| l.prominence_db >= 10.0).collect()
+}
+
+/// The line at a known frequency.
+#[must_use]
+pub fn describe_at(x: &[f32], rate_hz: f64, frequency_hz: f64) -> Line {
+    smoothed(x, rate_hz).map_or(Line { frequency_hz, prominence_db: 0.0, fraction_db: 0.0, low_energy: 0.0 }, |s| {
+        describe(&s, frequency_hz)
+    })
+}
+
+fn smoothed(x: &[f32], rate_hz: f64) -> Option<Spectrum> {
+    let segment = power_of_two_near(rate_hz / 8.0);
+    if x.len() < 2 * segment {
+        return None;
+    }
+    let mut s = welch(x, rate_hz, segment, true);
+    let raw = s.power.clone();
+    for k in 1..raw.len() - 1 {
+        s.power[k] = 0.25 * raw[k - 1] + 0.5 * raw[k] + 0.25 * raw[k + 1];
+    }
+    Some(s)
 }
 
 fn describe(s: &Spectrum, f: f64) -> Line {

@@ -22,8 +22,9 @@ const RESTART: f64 = 12.0;
 const TAIL: f64 = 2e-3;
 /// Relative jitter from which steps are taken as gamma distributed.
 pub const GAMMA_FROM: f64 = 0.12;
-/// A predecessor that cannot win by this many nats is not looked at: the most that a step's density can give at 5e-4 jitter.
-const HOPE: f64 = 9.0;
+/// A predecessor that cannot win even with the densest step is not looked at; this many nats of slack cover the gamma law,
+/// whose mode is denser than its Gaussian.
+const SLACK: f64 = 0.5;
 const LN_SQRT_TAU: f64 = 0.918_938_533_204_672_7;
 
 /// What the chain is to look like.
@@ -58,6 +59,8 @@ struct StepLaw {
     ln_tail: f64,
     loose: bool,
     shortest: f64,
+    /// The most that a step can add to a score, before −ln T.
+    hope: f64,
 }
 
 impl StepLaw {
@@ -70,6 +73,7 @@ impl StepLaw {
             ln_tail: TAIL.ln(),
             loose: law.jitter > GAMMA_FROM,
             shortest: (1.0 - 5.0 * law.jitter - 0.1).max(0.08),
+            hope: (-law.jitter.ln() - LN_SQRT_TAU).max(TAIL.ln()) + SLACK,
         };
         for k in 1..MOST_PERIODS + 2 {
             let kf = k as f64;
@@ -120,7 +124,7 @@ pub fn best_chain(time_s: &[f64], gain: &[f64], period_s: &[f64], law: Law) -> C
             if length > limit {
                 break;
             }
-            if score[j] - ln_period[j] + HOPE > best.score {
+            if score[j] - ln_period[j] + step_law.hope > best.score {
                 best.consider(&step_law, law.follow, j, length, score[j], period[j], ln_period[j]);
             }
         }
@@ -167,7 +171,7 @@ impl Step {
         let lowest = if law.loose && nearest > 1 { nearest - 1 } else { nearest };
         for k in lowest..=nearest {
             let base = law.ln_choice[k] + score;
-            if base - ln_period + HOPE <= self.score {
+            if base - ln_period + law.hope <= self.score {
                 continue;
             }
             let total = base + law.ln_density(length, k, period, ln_period);

@@ -15,10 +15,11 @@ pub const FAST_S: (f64, f64) = (1.0 / 4000.0, 0.7e-3);
 /// Step of the logarithmic grid.
 const GRID_STEP: f64 = 0.05;
 /// Candidates per expected firing on the grid, and in a fit.
-const GRID_DENSITY: f64 = 10.0;
-const FIT_DENSITY: f64 = 14.0;
-/// A stretch of this length is enough to find a fast rhythm, s.
-const FAST_STRETCH_S: f64 = 2.5;
+const GRID_DENSITY: f64 = 6.0;
+const FIT_DENSITY: f64 = 10.0;
+/// Length of the stretch on which a period is scored on the grid, and on which it is fitted: periods, and s at least.
+const GRID_STRETCH: (f64, f64) = (200.0, 0.5);
+const FIT_STRETCH: (f64, f64) = (400.0, 0.8);
 /// Loose starts: first period and ratio.
 const LOOSE_FIRST_S: f64 = 1.5e-3;
 const LOOSE_RATIO: f64 = 1.5;
@@ -32,7 +33,8 @@ pub fn fit_whole(c: &Candidates, duration_s: f64, start: Start, density: f64) ->
     Some(found)
 }
 
-/// Fits the promising periods of one list of candidates; each fit with its evidence, in no order.
+/// Fits the promising periods of one list of candidates, each on a stretch that holds enough firings; the evidence is
+/// brought to the whole duration. In no order; the chains are those of the stretches.
 #[must_use]
 pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
     let (shortest, longest) = if fast { FAST_S } else { (SHORTEST_SLOW_S, LONGEST_S) };
@@ -40,13 +42,7 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
     if c.len() < 8 || longest <= shortest {
         return Vec::new();
     }
-    let grid = if fast && duration_s > FAST_STRETCH_S {
-        let from = 0.5 * (duration_s - FAST_STRETCH_S);
-        let part: Vec<usize> = (0..c.len()).filter(|&i| (from..from + FAST_STRETCH_S).contains(&c.time_s[i])).collect();
-        scan(&c.pick(&part), FAST_STRETCH_S, shortest, longest)
-    } else {
-        scan(c, duration_s, shortest, longest)
-    };
+    let grid = scan(c, duration_s, shortest, longest);
     let best = local_maxima(&grid, if fast { 3 } else { 5 });
     let mut starts: Vec<Start> = best.iter().map(|&period_s| tight(period_s)).collect();
     if !fast {
@@ -59,28 +55,48 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
     starts
         .into_iter()
         .filter(|s| s.period_s <= duration_s / 4.0 && s.period_s >= 1.0 / 4200.0)
-        .filter_map(|s| fit_whole(c, duration_s, s, FIT_DENSITY))
+        .filter_map(|s| fit_stretch(c, duration_s, s, FIT_DENSITY))
         // A loose train at a very short period is what noise looks like.
         .filter(|f| f.period_s >= 0.7e-3 || f.jitter <= 0.12)
         .collect()
 }
 
-fn tight(period_s: f64) -> Start {
-    Start { period_s, jitter: 0.07, follow: 0.15, steep: false, rounds: 6 }
+/// The candidates of the middle stretch for a period, with its length.
+fn middle(c: &Candidates, duration_s: f64, period_s: f64, (periods, least_s): (f64, f64)) -> (Candidates, f64) {
+    let length = (periods * period_s).max(least_s);
+    if length >= 0.8 * duration_s {
+        return (c.clone(), duration_s);
+    }
+    let from = 0.5 * (duration_s - length);
+    (c.between(from, from + length), length)
 }
 
-/// Score of the best chain for each period of the grid.
+fn fit_stretch(c: &Candidates, duration_s: f64, start: Start, density: f64) -> Option<Fit> {
+    let (part, length) = middle(c, duration_s, start.period_s, FIT_STRETCH);
+    let mut found = fit_whole(&part, length, start, density)?;
+    found.evidence *= duration_s / length;
+    Some(found)
+}
+
+fn tight(period_s: f64) -> Start {
+    Start { period_s, jitter: 0.07, follow: 0.15, steep: false, rounds: 5 }
+}
+
+/// Score of the best chain for each period of the grid, for the whole duration.
 fn scan(c: &Candidates, duration_s: f64, shortest_s: f64, longest_s: f64) -> Vec<(f64, f64)> {
     let count = ((longest_s / shortest_s).ln() / GRID_STEP).floor() as usize + 1;
     (0..count)
         .map(|q| shortest_s * (GRID_STEP * q as f64).exp())
-        .filter_map(|period_s| Some((period_s, grid_score(c, duration_s, period_s)?)))
+        .filter_map(|period_s| {
+            let (part, length) = middle(c, duration_s, period_s, GRID_STRETCH);
+            Some((period_s, grid_score(&part, length, period_s)? * duration_s / length))
+        })
         .collect()
 }
 
 fn grid_score(c: &Candidates, duration_s: f64, period_s: f64) -> Option<f64> {
     let expected = duration_s / period_s;
-    if 0.7 * expected > c.len() as f64 {
+    if c.is_empty() || 0.7 * expected > c.len() as f64 {
         return None;
     }
     let keep = c.pick(&c.strongest((GRID_DENSITY * expected + 60.0) as usize));
@@ -111,7 +127,7 @@ fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
         .take_while(|t| *t <= duration_s / 10.0)
         .filter_map(|period_s| {
             let start = Start { period_s, jitter: 0.3, follow: 0.0, steep: true, rounds: 3 };
-            let fitted = fit_whole(c, duration_s, start, 6.0)?;
+            let fitted = fit_stretch(c, duration_s, start, 6.0)?;
             Some((fitted.evidence, fitted.period_s))
         })
         .collect();
