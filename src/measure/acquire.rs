@@ -98,21 +98,7 @@ fn learn(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<L
     }
     let Some(mut h) = clicks else { return Err("no clicks stand out") };
     let first_evidence = h.fit.evidence;
-<<<<<<< HEAD
-    let x = refine(window, whitened, &mut h);
-    explanation.push(format!(
-        "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
-        1e3 * h.fit.period_s,
-        h.fit.chain.index.len(),
-        h.fit.evidence
-    ));
-    let chain_times: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
-    let (numbers, stretches) = number(&chain_times, &h.fit.chain.steps, h.fit.period_s);
-    let times = times::read(window, &x, &h, &numbers);
-    explanation.push(format!("times read with {}, expected timing noise {:.2} µs", times.channel, 1e6 * times.noise_s));
-=======
     let finder = refine(window, whitened, floor, &mut h);
->>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
     h.fit.evidence = h.fit.evidence.max(first_evidence);
     explanation.push(format!(
         "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
@@ -143,21 +129,6 @@ fn check_presence(window: &Window, h: &Hypothesis, explanation: &mut Vec<String>
         100.0 * tones.outside,
         100.0 * tones.six
     ));
-<<<<<<< HEAD
-    if let Some(why) = presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter) {
-        return Err(why);
-    }
-    let mut train = Train::of_clicks(&h, times, window.flat(Flatness::Plain), window.rate_hz, numbers, stretches);
-    let scale = plain_scale(window);
-    train.size.iter_mut().for_each(|s| *s *= scale);
-    train.extra.iter_mut().for_each(|e| e.1 *= scale);
-    if h.fit.period_s < PHASE_BELOW_S
-        && let Some(line) = &line
-        && (line.fit.period_s / h.fit.period_s - 1.0).abs() < 0.03
-    {
-        train.phase_jitter_s =
-            phase::read(window.bank, &window.x, window.rate_hz, line.line.frequency_hz).map(|p| p.jitter_s);
-=======
     presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter).map_or(Ok(()), Err)
 }
 
@@ -192,7 +163,6 @@ fn finish_train(window: &Window, h: &Hypothesis, timing: &Timing, flat: &[f32], 
     if overlaps {
         let read = phase::read(window.bank, &window.x, window.rate_hz, 1.0 / h.fit.period_s);
         train.phase_jitter_s = read.map(|p| p.jitter_s);
->>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
     }
     train
 }

@@ -19,32 +19,6 @@ const LEARN_FROM: usize = 300;
 const HIGH_PASS_HZ: f64 = 180.0;
 const FLOOR: f64 = 3e-3;
 
-<<<<<<< HEAD
-/// Refines a hypothesis in place, twice; returns the whitened signal of the last pass that held.
-pub fn refine(window: &Window, whitened: Vec<f32>, h: &mut Hypothesis) -> Vec<f32> {
-    let mut x = whitened;
-    let mut output = Vec::new();
-    for pass in 0..2 {
-        let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
-        let positions = strongest_on_rhythm(h, window.rate_hz);
-        let mut shape = learn(&x, &positions, half, h.shape.signed);
-        if pass == 0 {
-            let rest = without_clicks(&x, h, &shape, window.rate_hz);
-            let noise = Spectrum::of_noise(&rest, window.rate_hz);
-            x = window.through(&x, &noise, HIGH_PASS_HZ, FLOOR);
-            shape = learn(&x, &positions, half, h.shape.signed);
-        }
-        candidates::matched_output(window.bank, &x, &shape, &mut output);
-        let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
-        let start = Start { period_s: h.fit.period_s, jitter: h.fit.jitter, follow: 0.1, steep: false, rounds: 6 };
-        match fit_whole(&found, window.duration_s(), start, DENSITY) {
-            Some(fit) if 2 * fit.chain.index.len() >= h.fit.chain.index.len() => {
-                h.fit = fit;
-                h.candidates = found;
-                h.shape = shape;
-            }
-            _ => break,
-=======
 /// How clicks are found after refining: the whitening kernel, and the signal behind it.
 pub struct Finder {
     /// Whitening.
@@ -66,7 +40,6 @@ pub fn refine(window: &Window, whitened: Vec<f32>, floor: f64, h: &mut Hypothesi
     for _ in 0..2 {
         if !again(window, &finder.whitened, h) {
             break;
->>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
         }
     }
     finder

@@ -58,19 +58,8 @@ pub fn number(time_s: &[f64], steps: &[usize], period_s: f64) -> (Vec<i64>, Vec<
 impl Train {
     /// The train of separate clicks of a hypothesis.
     #[must_use]
-<<<<<<< HEAD
-    pub fn of_clicks(
-        h: &Hypothesis,
-        times: Times,
-        x: &[f32],
-        rate_hz: f64,
-        number: Vec<i64>,
-        stretches: Vec<Range<usize>>,
-    ) -> Self {
-=======
     pub fn of_clicks(h: &Hypothesis, time_s: Vec<f64>, noise_s: f64, x: &[f32], rate_hz: f64) -> Self {
         let (number, stretches) = number(&time_s, &h.fit.chain.steps, h.fit.period_s);
->>>>>>> de17aa5b498d7b9e6064e6f8cd558ee4534f9bdb
         let extra = extras(h).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();
         Self {
             size: time_s.iter().map(|t| size_at(x, t * rate_hz, rate_hz)).collect(),
