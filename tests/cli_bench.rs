@@ -200,6 +200,29 @@ fn a_clip_can_go_down_a_pipe() {
 }
 
 #[test]
+fn a_damaged_or_cut_flac_keeps_its_rate_and_says_what_is_missing() {
+    let folder = Folder::new();
+    let whole = std::fs::read(render(&folder, "clip.flac", &["--seconds", "6"])).expect("a clip");
+    let result = |name: &str, bytes: &[u8]| {
+        let (status, stdout, stderr) = measure(&folder.file(name, bytes), &["--json"]);
+        assert_eq!(status, 0, "{name}: {stderr}{stdout}");
+        serde_json::from_str::<Value>(&stdout).expect("JSON")
+    };
+    let mut flipped = whole.clone();
+    flipped[whole.len() / 2] ^= 0xff;
+    let damaged = result("damaged.flac", &flipped);
+    // Five standard uncertainties of 500 periods with a scatter of 1.1 %.
+    let rate_hz = damaged["firing_rate_hz"]["value"].as_f64().expect("a rate");
+    assert!((rate_hz * period_s() - 1.0).abs() < 0.0025, "{rate_hz}");
+    assert_eq!(damaged["recording"]["duration_s"], 6.0);
+    let note = damaged["notes"][0].as_str().unwrap_or_default();
+    assert!(note.starts_with("a stretch of 85 ms at ") && note.contains("could not be decoded"), "{damaged}");
+    let cut = result("cut.flac", &whole[..whole.len() / 2]);
+    let note = cut["notes"][0].as_str().unwrap_or_default();
+    assert!(note.starts_with("the recording is cut off: the header promises 6.00 s"), "{cut}");
+}
+
+#[test]
 fn a_clip_that_cannot_be_made_is_told_with_what_would_be_right() {
     let folder = Folder::new();
     let bench = bench(&folder);

@@ -48,7 +48,8 @@ pub enum Command {
 #[derive(Debug, Args)]
 #[command(after_help = "\
 With several recordings the exit status is 1 if one of them could not be read, else 3 if one
-of them holds nothing that can be measured, else 0.
+of them holds nothing that can be measured, else 0. In JSON a recording that could not be read
+stands in its place with its error.
 WAV, FLAC, Ogg Vorbis, MP3, M4A (AAC, ALAC), AIFF and CAF can be read.")]
 pub struct MeasureArguments {
     /// Recordings to measure; - is a recording on standard input
