@@ -46,6 +46,9 @@ fn compressed_recordings_are_read() {
         let (_, stdout, stderr) = measure(&path, &["--json"]);
         let result: Value = serde_json::from_str(&stdout).unwrap_or_else(|_| panic!("{name}: {stderr}"));
         let duration_s = result["recording"]["duration_s"].as_f64().expect("a duration");
+        // The clicks stand 25 ms apart; a sample of 62.5 µs at either end of 37 periods is 0.014 %.
+        let rate_hz = result["firing_rate_hz"]["value"].as_f64().unwrap_or_else(|| panic!("{name}: {result}"));
+        assert!((rate_hz / 40.0 - 1.0).abs() < 1.4e-4, "{name}: {rate_hz} /s");
         // An encoder without a table of its padding adds up to two frames of 1024 samples.
         assert!((1.5..1.5 + 2.0 * 1024.0 / 16_000.0).contains(&duration_s), "{name}: {duration_s} s");
         assert!(!has_note(&result, "a stretch"), "{name}: {result}");
@@ -67,6 +70,15 @@ fn standard_input_gives_the_same_as_the_file_whatever_length_its_head_states() {
         assert_eq!(result["firing_rate_hz"], from_file["firing_rate_hz"], "length {length}");
         assert_eq!(result["recording"]["file"], "-");
     }
+}
+
+#[test]
+fn a_kind_that_needs_a_file_is_told_so_on_standard_input() {
+    let bytes = std::fs::read("tests/data/audio/clicks.m4a").expect("the recording");
+    let output = gaptone().args(["measure", "-"]).write_stdin(bytes).output().expect("it runs");
+    assert_eq!(output.status.code(), Some(1));
+    let told = String::from_utf8_lossy(&output.stderr).into_owned();
+    assert!(told.contains("a stream must be WAV, FLAC, Ogg Vorbis or MP3, others need a file"), "{told}");
 }
 
 #[test]

@@ -53,7 +53,14 @@ fn open_stream(mut input: Bytes, name: &str, file_bytes: Option<u64>) -> Result<
     let head = read_head(&mut input)?;
     match kind(&head, name) {
         Kind::Other(looks) => Err(FileError::NotSound(looks)),
-        Kind::Sound => probe(read_only(Cursor::new(head).chain(input)), Promise::default()),
+        Kind::Sound => {
+            probe(read_only(Cursor::new(head).chain(input)), Promise::default()).map_err(|error| match error {
+                FileError::Broken(what) => FileError::Broken(format!(
+                    "{what}; a stream must be WAV, FLAC, Ogg Vorbis or MP3, others need a file"
+                )),
+                other => other,
+            })
+        }
         Kind::Wav => {
             let mut whole = Cursor::new(head).chain(input);
             let head = read_wav_head(&mut whole, file_bytes)?;

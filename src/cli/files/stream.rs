@@ -221,7 +221,7 @@ impl Source for Recording {
         }
         if let Some(frame) = self.placer.disordered_at() {
             let time_s = self.seconds(frame);
-            notes.push(format!("time stamps make no sense at {time_s:.2} s; samples were joined as they came"));
+            notes.push(format!("time stamps break at {time_s:.2} s; samples were joined as they came"));
         }
         notes
     }
