@@ -49,14 +49,12 @@ fn main() -> ExitCode {
 
 fn run(arguments: &Arguments) -> Result<(), String> {
     let kinds = kinds::select(&arguments.kinds)?;
+    if let Some(directory) = &arguments.write {
+        let write = |case: &Case| write::write(case, directory).map_err(|e| format!("{}: {e}", directory.display()));
+        return kinds.iter().flat_map(|kind| on_threads(kind, arguments, write)).collect();
+    }
     let mut table = Table::new(!arguments.verbose);
     for kind in kinds {
-        if let Some(directory) = &arguments.write {
-            let write =
-                |case: &Case| write::write(case, directory).map_err(|e| format!("{}: {e}", directory.display()));
-            on_threads(kind, arguments, write).into_iter().collect::<Result<(), String>>()?;
-            continue;
-        }
         let scores = on_threads(kind, arguments, |case| score::score(case, arguments.explain));
         if arguments.verbose {
             table::print_cases(&scores);

@@ -38,7 +38,7 @@ pub fn write(case: &Case, directory: &Path) -> Result<(), Box<dyn Error>> {
 
 fn nothing(case: &Case) -> Map<String, Value> {
     let kind = case.kind.strip_prefix("no-").unwrap_or(case.kind);
-    let category = if matches!(case.answer, Answer::OtherRhythm) { "other-rhythm" } else { "notgap" };
+    let category = if matches!(case.answer, Answer::OtherRhythm) { "notgap-other" } else { "notgap" };
     Map::from_iter([
         ("not_gap".into(), json!(true)),
         ("kind".into(), json!(kind)),

@@ -23,7 +23,7 @@ const SILENCE: f32 = 1e-4;
 const SHORTEST_S: f64 = 0.5;
 /// Length of the part that is learnt from, s, and the firings and cover that it must hold to be enough.
 const LEARN_S: f64 = 4.0;
-const LEARN_FIRINGS: usize = 100;
+const LEARN_FIRINGS: usize = 40;
 const LEARN_COVER: f64 = 0.8;
 /// A line is taken if its evidence is this many times the clicks', or their period this many times the line's.
 const LINE_EVIDENCE: f64 = 2.0;

@@ -20,6 +20,8 @@ const FIT_DENSITY: f64 = 10.0;
 /// Length of the stretch on which a period is scored on the grid, and on which it is fitted: periods, and s at least.
 const GRID_STRETCH: (f64, f64) = (200.0, 0.5);
 const FIT_STRETCH: (f64, f64) = (400.0, 0.8);
+/// Below this period the distance that maxima of noise keep looks like a rhythm, s.
+const NOISE_BELOW_S: f64 = 2e-3;
 /// Loose starts: first period and ratio.
 const LOOSE_FIRST_S: f64 = 1.5e-3;
 const LOOSE_RATIO: f64 = 1.5;
@@ -43,17 +45,36 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
         return Vec::new();
     }
     let grid = scan(c, duration_s, shortest, longest);
-    let best = local_maxima(&grid, if fast { 3 } else { 5 });
-    let mut starts: Vec<Start> = best.iter().map(|&period_s| tight(period_s)).collect();
+    let starts: Vec<Start> = local_maxima(&grid, fast).into_iter().map(tight).collect();
+    let mut found: Vec<Fit> = fit_all(c, duration_s, &starts);
     if !fast {
-        if let Some(&first) = best.first() {
-            starts.push(tight(first / 2.0));
-            starts.push(tight(first * 2.0));
+        if let Some(first) = strongest(&found).map(|f| f.period_s) {
+            found.extend(fit_all(c, duration_s, &[tight(first / 2.0), tight(first * 2.0)]));
         }
-        starts.extend(loose_starts(c, duration_s));
+        if !strongest(&found).is_some_and(beyond_doubt) {
+            found.extend(fit_all(c, duration_s, &loose_starts(c, duration_s)));
+        }
     }
+    found
+}
+
+fn strongest(fits: &[Fit]) -> Option<&Fit> {
+    fits.iter().max_by(|a, b| a.evidence.total_cmp(&b.evidence))
+}
+
+/// A tight rhythm that explains nearly everything: no loose one is looked for beside it.
+fn beyond_doubt(f: &Fit) -> bool {
+    f.jitter < 0.06
+        && f.cover > 0.9
+        && f.missed < 0.2
+        && f.evidence > 1.5 * f.chain.index.len() as f64
+        && f.evidence > 60.0
+}
+
+fn fit_all(c: &Candidates, duration_s: f64, starts: &[Start]) -> Vec<Fit> {
     starts
-        .into_iter()
+        .iter()
+        .copied()
         .filter(|s| s.period_s <= duration_s / 4.0 && s.period_s >= 1.0 / 4200.0)
         .filter_map(|s| fit_stretch(c, duration_s, s, FIT_DENSITY))
         // A loose train at a very short period is what noise looks like.
@@ -82,7 +103,7 @@ fn tight(period_s: f64) -> Start {
     Start { period_s, jitter: 0.07, follow: 0.15, steep: false, rounds: 5 }
 }
 
-/// Score of the best chain for each period of the grid, for the whole duration.
+/// Evidence of the best chain for each period of the grid, brought to the whole duration.
 fn scan(c: &Candidates, duration_s: f64, shortest_s: f64, longest_s: f64) -> Vec<(f64, f64)> {
     let count = ((longest_s / shortest_s).ln() / GRID_STEP).floor() as usize + 1;
     (0..count)
@@ -104,20 +125,28 @@ fn grid_score(c: &Candidates, duration_s: f64, period_s: f64) -> Option<f64> {
     let off_rate = (keep.len() as f64 - expected).max(0.3 * expected) / duration_s;
     let gain: Vec<f64> = keep.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
     let law = Law { jitter: 0.06, missed: 0.05, follow: 0.15 };
-    Some(best_chain(&keep.time_s, &gain, &vec![period_s; keep.len()], law).score)
+    let chain = best_chain(&keep.time_s, &gain, &vec![period_s; keep.len()], law);
+    // Against the same candidates with the same two kinds of marks and no rhythm.
+    let on = chain.index.len() as f64;
+    let odds = on / duration_s / off_rate;
+    let null: f64 = gain.iter().map(|g| (1.0 + odds * (g + off_rate.ln()).exp()).ln()).sum();
+    Some(chain.score - null + on)
 }
 
-/// The periods of the best local maxima, best first.
-fn local_maxima(grid: &[(f64, f64)], most: usize) -> Vec<f64> {
-    let mut peaks: Vec<usize> = (0..grid.len())
+/// The periods of the best local maxima: of each side of 2 ms a few, since noise keeps a distance at short periods and its
+/// evidence there is settled only by a fit.
+fn local_maxima(grid: &[(f64, f64)], fast: bool) -> Vec<f64> {
+    let mut peaks: Vec<(f64, f64)> = (0..grid.len())
         .filter(|&i| {
             let near = &grid[i.saturating_sub(2)..(i + 3).min(grid.len())];
             near.iter().all(|g| g.1 <= grid[i].1)
         })
+        .map(|i| grid[i])
         .collect();
-    peaks.sort_by(|&a, &b| grid[b].1.total_cmp(&grid[a].1));
-    peaks.truncate(most);
-    peaks.into_iter().map(|i| grid[i].0).collect()
+    peaks.sort_by(|a, b| b.1.total_cmp(&a.1));
+    let side =
+        |short: bool, most: usize| peaks.iter().filter(move |p| (p.0 < NOISE_BELOW_S) == short).take(most).map(|p| p.0);
+    if fast { side(true, 3).collect() } else { side(true, 2).chain(side(false, 4)).collect() }
 }
 
 /// The two best starts for trains with 15 to 40 % jitter, by short fits over a coarse row of periods.
