@@ -119,8 +119,8 @@ fn damaged_samples_do_not_hide_the_rate_and_are_said() {
 #[test]
 fn the_channel_with_the_clicks_is_found_and_can_be_chosen() {
     let folder = Folder::new();
-    let speech_like = (0..144_000).map(|k| 0.3 * (k as f32 * 0.02).sin());
-    let stereo: Vec<f32> = speech_like.zip(clicks(3.0, 48_000)).flat_map(|(left, right)| [left, right]).collect();
+    let tone = (0..144_000).map(|k| 0.3 * (k as f32 * 0.02).sin());
+    let stereo: Vec<f32> = tone.zip(clicks(3.0, 48_000)).flat_map(|(left, right)| [left, right]).collect();
     let path = folder.wav("a.wav", &stereo, 2, 48_000, 16);
     let found = measured(&path, &[]);
     assert_rate(&found, "found");

@@ -16,6 +16,9 @@ const WIDTH: usize = 88;
 const LABEL: usize = 16;
 const VALUE: usize = 26;
 
+/// Stretches shown one by one; a recording full of breaks would hide its figures behind them.
+const SHOWN_STRETCHES: usize = 6;
+
 /// Minutes are what a person watches a drift over.
 const SECONDS_PER_MINUTE: f64 = 60.0;
 
@@ -134,8 +137,12 @@ fn count_rows(reading: &Reading) -> Vec<Row> {
         rows.push(plain("firings", value));
     }
     if reading.stretches.len() > 1 {
-        for stretch in &reading.stretches {
+        for stretch in reading.stretches.iter().take(SHOWN_STRETCHES) {
             rows.push(plain("fires", format!("{:.2} s .. {:.2} s", stretch.from_s, stretch.to_s)));
+        }
+        let more = reading.stretches.len().saturating_sub(SHOWN_STRETCHES);
+        if more > 0 {
+            rows.push(plain("fires", format!("and in {more} more stretches")));
         }
     }
     for train in &reading.other_trains {
@@ -289,6 +296,15 @@ run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2
             "run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2\n  \
              no gap is heard: nothing stands out of the noise\n"
         );
+    }
+
+    #[test]
+    fn many_stretches_are_summed_up() {
+        let mut measurement = measured();
+        measurement.reading.stretches = (0..20).map(|k| Stretch { from_s: f64::from(k), to_s: 0.5 }).collect();
+        let text = measurement_text(&measurement);
+        assert_eq!(text.matches("fires  ").count(), SHOWN_STRETCHES + 1);
+        assert!(text.contains("and in 14 more stretches"), "{text}");
     }
 
     #[test]
