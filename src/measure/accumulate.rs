@@ -52,9 +52,7 @@ impl Accumulator {
             if time_s.len() < 2 {
                 continue;
             }
-            if self.stretches.len() < MOST_STRETCHES {
-                self.stretches.push(Stretch { from_s: time_s[0], to_s: time_s[time_s.len() - 1] });
-            }
+            self.add_time(time_s[0], time_s[time_s.len() - 1], train.period_s);
             self.steps += (number[number.len() - 1] - number[0]) as f64;
             self.duration_s += time_s[time_s.len() - 1] - time_s[0];
             self.add_stretch(time_s, number);
@@ -69,6 +67,17 @@ impl Accumulator {
         }
         if let Some(phase) = train.phase_jitter_s {
             self.phase.push((phase, n));
+        }
+    }
+
+    /// Lists a stretch; one that begins where the last ended (the next window) goes on with it.
+    fn add_time(&mut self, from_s: f64, to_s: f64, period_s: f64) {
+        if let Some(last) = self.stretches.last_mut()
+            && from_s - last.to_s < super::train::LONGEST_MISS * period_s
+        {
+            last.to_s = to_s;
+        } else if self.stretches.len() < MOST_STRETCHES {
+            self.stretches.push(Stretch { from_s, to_s });
         }
     }
 
@@ -140,7 +149,7 @@ impl Accumulator {
 
     /// The random part: by intervals, or by the phase of the line where clicks overlap and intervals see memory that may not be.
     fn random_jitter(&self, posterior: &Posterior, period_s: f64, notes: &mut Vec<String>) -> Estimate {
-        let Some(phase) = self.phase_jitter() else { return posterior.jitter_s };
+        let Some(phase) = self.phase_jitter().map(overlapping) else { return posterior.jitter_s };
         let no_clicks = self.noise_ln_sum.1 == 0.0;
         let hidden = posterior.memory_probability > 0.5 || posterior.timing_noise_s.value > posterior.jitter_s.value;
         let part = (phase.value / posterior.jitter_s.value).ln();
@@ -157,7 +166,7 @@ impl Accumulator {
                 100.0 * posterior.jitter_s.value / period_s
             ));
         }
-        posterior.jitter_s
+        overlapping(posterior.jitter_s)
     }
 
     fn phase_jitter(&self) -> Option<Estimate> {
@@ -249,6 +258,21 @@ impl Accumulator {
                 "the rate sits on the mains ({line_hz:.0} Hz) with almost no scatter: the gap is locked to the supply's ripple, or it is no gap; a voltage read from it may be off by 1 %"
             ));
         }
+    }
+}
+
+/// Relative standard deviation that overlap adds to any reading of the jitter: random carrier phases between neighbours move
+/// the peaks and bend the line's phase in a way that neither model holds (150 generated recordings at 1800 to 3500 /s).
+const OVERLAP_MODEL: f64 = 0.022;
+
+fn overlapping(e: Estimate) -> Estimate {
+    let (up, down) = ((e.high / e.value).ln(), (e.value / e.low).ln());
+    let wider = |x: f64| x.hypot(COVERAGE_95 * OVERLAP_MODEL);
+    Estimate {
+        value: e.value,
+        u: e.u.hypot(OVERLAP_MODEL * e.value),
+        low: e.value * (-wider(down)).exp(),
+        high: e.value * wider(up).exp(),
     }
 }
 

@@ -6,6 +6,7 @@
 mod accumulate;
 mod acquire;
 mod hypothesis;
+mod irregular;
 mod refine;
 mod times;
 mod train;
@@ -13,6 +14,7 @@ mod trains;
 mod window;
 
 use crate::clicks::filter::FilterBank;
+use crate::estimate::Estimate;
 use crate::firing::Event;
 use crate::rhythm::{FiringCounts, Reading, Verdict};
 use accumulate::Accumulator;
@@ -49,6 +51,8 @@ pub struct Measurer {
     sums: Accumulator,
     trains: usize,
     refused: Option<&'static str>,
+    loose_clicks: u64,
+    loose_time_s: f64,
     events: Vec<Event>,
     explanation: Vec<String>,
 }
@@ -66,6 +70,8 @@ impl Measurer {
             sums: Accumulator::default(),
             trains: 0,
             refused: None,
+            loose_clicks: 0,
+            loose_time_s: 0.0,
             events: Vec::new(),
             explanation: Vec::new(),
         }
@@ -101,6 +107,7 @@ impl Measurer {
                 reading.reason = reason(&reading);
                 reading
             }
+            _ if self.loose_clicks > 0 => clicks_alone(self.loose_clicks, self.loose_time_s),
             _ => nothing(self.refused.unwrap_or("there is no audio to analyse")),
         };
         Outcome { reading, events: self.events, explanation: self.explanation }
@@ -121,7 +128,14 @@ impl Measurer {
                 self.trains += 1;
                 self.events.extend(train.events(train.noise_s.unwrap_or(0.05 * train.period_s)));
             }
-            Err(why) => self.refused = Some(why),
+            Err(why) => {
+                self.refused = Some(why);
+                if let Some(times) = irregular::clicks(&window) {
+                    self.loose_clicks += times.len() as u64;
+                    self.loose_time_s += window.duration_s();
+                    explanation.push(format!("{} clicks without a rhythm", times.len()));
+                }
+            }
         }
         if self.options.explain {
             self.explanation.push(format!("window from {from_s:.1} s, {:.1} s long", window.duration_s()));
@@ -139,6 +153,18 @@ fn reason(reading: &Reading) -> String {
             format!("the gap fires on a steady rhythm; single periods scatter by {:.2} %", 100.0 * jitter)
         }
         _ => format!("the gap keeps a rhythm but loosely; single periods scatter by {:.1} %", 100.0 * jitter),
+    }
+}
+
+/// Clicks without a rhythm: the mean count rate, with the statistics of independent arrivals.
+fn clicks_alone(count: u64, duration_s: f64) -> Reading {
+    let n = count as f64;
+    Reading {
+        verdict: Verdict::Irregular,
+        reason: "clicks are heard, but they keep no rhythm: static, or a gap that fires by chance".into(),
+        firings: FiringCounts { on_rhythm: 0, missed: 0, extra: count },
+        firing_rate_hz: Some(Estimate::normal(n / duration_s, n.sqrt() / duration_s)),
+        ..nothing("")
     }
 }
 

@@ -8,7 +8,7 @@ use crate::rhythm::fit::median;
 use std::ops::Range;
 
 /// A drop-out of more periods than this ends a stretch; a shorter one counts as missed clicks.
-const LONGEST_MISS: f64 = 8.5;
+pub const LONGEST_MISS: f64 = 8.5;
 
 /// A train found in one window.
 #[derive(Debug, Clone)]

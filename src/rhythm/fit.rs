@@ -360,16 +360,23 @@ fn reflect(i: isize, n: usize) -> usize {
     k.clamp(0, last) as usize
 }
 
-/// Median of each value's neighbourhood of ± `half`, reflected at the ends.
+/// Median of each value's neighbourhood of ± `half`, reflected at the ends. A sorted window slides along: one value leaves,
+/// one comes in.
 #[must_use]
 pub fn running_median(x: &[f64], half: usize) -> Vec<f64> {
-    let mut window = vec![0.0; 2 * half + 1];
-    (0..x.len())
+    let at = |i: isize| x[reflect(i, x.len())];
+    let reach = half as isize;
+    let mut window: Vec<f64> = (-reach..=reach).map(at).collect();
+    window.sort_by(f64::total_cmp);
+    (0..x.len() as isize)
         .map(|i| {
-            for (j, w) in window.iter_mut().enumerate() {
-                *w = x[reflect(i as isize + j as isize - half as isize, x.len())];
-            }
-            *window.select_nth_unstable_by(half, f64::total_cmp).1
+            let middle = window[half];
+            let (leaves, comes) = (at(i - reach), at(i + 1 + reach));
+            let from = window.partition_point(|v| v.total_cmp(&leaves).is_lt());
+            window.remove(from);
+            let to = window.partition_point(|v| v.total_cmp(&comes).is_lt());
+            window.insert(to, comes);
+            middle
         })
         .collect()
 }
@@ -412,6 +419,15 @@ pub fn median(x: &[f64]) -> f64 {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn the_sliding_median_equals_the_plain_one() {
+        let x: Vec<f64> = (0..200).map(|n| f64::from(n * 7919 % 61)).collect();
+        for (i, &m) in running_median(&x, 15).iter().enumerate() {
+            let around: Vec<f64> = (-15..=15).map(|d| x[reflect(i as isize + d, x.len())]).collect();
+            assert_eq!(m, median(&around), "at {i}");
+        }
+    }
 
     #[test]
     fn a_jittered_clock_among_noise_is_fitted() {

@@ -13,13 +13,13 @@ pub const SHORTEST_SLOW_S: f64 = 0.55e-3;
 /// The search for fast trains, s.
 pub const FAST_S: (f64, f64) = (1.0 / 4000.0, 0.7e-3);
 /// Step of the logarithmic grid.
-const GRID_STEP: f64 = 0.05;
+const GRID_STEP: f64 = 0.06;
 /// Candidates per expected firing on the grid, and in a fit.
 const GRID_DENSITY: f64 = 6.0;
 const FIT_DENSITY: f64 = 10.0;
 /// Length of the stretch on which a period is scored on the grid, and on which it is fitted: periods, and s at least.
-const GRID_STRETCH: (f64, f64) = (200.0, 0.5);
-const FIT_STRETCH: (f64, f64) = (400.0, 0.8);
+const GRID_STRETCH: (f64, f64) = (150.0, 0.35);
+const FIT_STRETCH: (f64, f64) = (300.0, 0.7);
 /// Below this period the distance that maxima of noise keep looks like a rhythm, s.
 const NOISE_BELOW_S: f64 = 2e-3;
 /// Loose starts: first period and ratio.

@@ -16,6 +16,10 @@ const NONE: usize = 1;
 /// Shares on the grid: logit from −8 to 8.
 const SHARES: usize = 41;
 const LOGIT_MOST: f64 = 8.0;
+/// Clicks of a first block from which far-off cells are ruled out, step of the coarse look, and nats below the best.
+const SCREEN_FROM: usize = 300;
+const SCREEN_STEP: usize = 5;
+const SCREEN_OUT: f64 = 18.0;
 /// Finer shares between them for the integral.
 const FINE: usize = 8;
 /// Scales about the residual one, and their reach in standard deviations of ln s².
@@ -36,6 +40,8 @@ pub struct PosteriorGrid {
 
 #[derive(Debug, Clone, Copy, Default)]
 struct Cell {
+    /// False if the first block ruled it out.
+    live: bool,
     rest: f64,
     ln_det: f64,
     /// Of the last block: period and its variance at unit scale.
@@ -66,7 +72,7 @@ pub struct Posterior {
 
 impl Default for PosteriorGrid {
     fn default() -> Self {
-        Self { freedom: 0.0, blocks: 0, cells: vec![Cell::default(); MEMORY.len() * SHARES] }
+        Self { freedom: 0.0, blocks: 0, cells: vec![Cell { live: true, ..Cell::default() }; MEMORY.len() * SHARES] }
     }
 }
 
@@ -82,10 +88,16 @@ impl PosteriorGrid {
             return;
         }
         let block = Block::new(time_s, number);
+        if self.blocks == 0 && time_s.len() >= SCREEN_FROM {
+            self.screen(&block);
+        }
         for (r, &rho) in MEMORY.iter().enumerate() {
             for s in 0..SHARES {
-                let pass = block.pass(share(s as f64), rho);
                 let cell = &mut self.cells[r * SHARES + s];
+                if !cell.live {
+                    continue;
+                }
+                let pass = block.pass(share(s as f64), rho);
                 cell.rest += pass.rest;
                 cell.ln_det += pass.ln_det;
                 cell.period_s = pass.beta[0] / block.span;
@@ -94,6 +106,25 @@ impl PosteriorGrid {
         }
         self.freedom += block.freedom();
         self.blocks += 1;
+    }
+
+    /// Rules out cells that lie far below the best on a coarse grid: most of the time goes where something is to be told.
+    fn screen(&mut self, block: &Block) {
+        let coarse: Vec<usize> = (0..SHARES).step_by(SCREEN_STEP).collect();
+        let ln = |rho: f64, s: usize| {
+            let pass = block.pass(share(s as f64), rho);
+            -0.5 * (block.freedom() * pass.rest.ln() + pass.ln_det)
+        };
+        let table: Vec<Vec<f64>> = MEMORY.iter().map(|&rho| coarse.iter().map(|&s| ln(rho, s)).collect()).collect();
+        let top = table.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max);
+        for (r, row) in table.iter().enumerate() {
+            for s in 0..SHARES {
+                let (left, right) = (s / SCREEN_STEP, s.div_ceil(SCREEN_STEP));
+                // One coarse cell more on each side: the interpolation of the fine grid reaches there.
+                let near = &row[left.saturating_sub(1)..(right + 2).min(row.len())];
+                self.cells[r * SHARES + s].live = near.iter().any(|v| *v > top - SCREEN_OUT);
+            }
+        }
     }
 
     /// Degrees of freedom gathered.
@@ -110,8 +141,8 @@ impl PosteriorGrid {
             return None;
         }
         // The grid ends at a share of 3e-4: a prior beyond it would pull the scale instead of the share.
-        let scale = self.cells[NONE * SHARES].rest / self.freedom;
-        let least = LEAST_NOISE_SHARE * (scale * share(0.0)).sqrt();
+        let smallest = self.cells.iter().filter(|c| c.live).map(|c| c.rest).fold(f64::INFINITY, f64::min);
+        let least = LEAST_NOISE_SHARE * (smallest / self.freedom * share(0.0)).sqrt();
         let weighted = self.weigh(noise_s.map(|n| n.max(least)));
         Some(weighted.summary(self.freedom, excess))
     }
@@ -124,7 +155,7 @@ impl PosteriorGrid {
         for (r, &rho) in MEMORY.iter().enumerate() {
             for f in 0..=(SHARES - 1) * FINE {
                 let place = f as f64 / FINE as f64;
-                let cell = self.between(r, place);
+                let Some(cell) = self.between(r, place) else { continue };
                 let u = share(place);
                 let ln_share = prior[r].ln() + 0.5 * (u * (1.0 - u)).ln();
                 for k in 0..SCALES {
@@ -154,25 +185,30 @@ impl PosteriorGrid {
         Weighted { points: all }
     }
 
-    /// Cubic interpolation of ln S and L between shares.
-    fn between(&self, r: usize, place: f64) -> Cell {
+    /// Cubic interpolation of ln S and L between shares; none where a cell was ruled out.
+    fn between(&self, r: usize, place: f64) -> Option<Cell> {
         let row = &self.cells[r * SHARES..(r + 1) * SHARES];
         let i = (place as usize).min(SHARES - 2);
         let a = place - i as f64;
+        let needed = &row[i.saturating_sub(1)..(i + 3).min(SHARES)];
+        if needed.iter().any(|c| !c.live) {
+            return None;
+        }
         if a == 0.0 {
-            return row[i];
+            return Some(row[i]);
         }
         let at = |d: isize| &row[(i as isize + d).clamp(0, SHARES as isize - 1) as usize];
         let cubic = |f: &dyn Fn(&Cell) -> f64| {
             let (y0, y1, y2, y3) = (f(at(-1)), f(at(0)), f(at(1)), f(at(2)));
             y1 + 0.5 * a * (y2 - y0 + a * (2.0 * y0 - 5.0 * y1 + 4.0 * y2 - y3 + a * (3.0 * (y1 - y2) + y3 - y0)))
         };
-        Cell {
+        Some(Cell {
+            live: true,
             rest: cubic(&|c| c.rest.ln()).exp(),
             ln_det: cubic(&|c| c.ln_det),
             period_s: cubic(&|c| c.period_s),
             period_variance: cubic(&|c| c.period_variance.ln()).exp(),
-        }
+        })
     }
 }
 
