@@ -16,10 +16,11 @@ const MOST_STRETCHES: usize = 1000;
 /// Mean period of a piece of train, for the line through the recording.
 #[derive(Debug, Clone, Copy)]
 struct Piece {
-    middle_s: f64,
+    /// Firing number of its middle, counted over all pieces.
+    middle: f64,
     period_s: f64,
     firings: f64,
-    /// Σ(t − middle)·(period − mean), Σ(t − middle)² inside the piece.
+    /// Σ(n − middle)·(period − mean), Σ(n − middle)² inside the piece.
     inner: (f64, f64),
 }
 
@@ -53,9 +54,9 @@ impl Accumulator {
                 continue;
             }
             self.add_time(time_s[0], time_s[time_s.len() - 1], train.period_s);
+            self.add_stretch(time_s, number);
             self.steps += (number[number.len() - 1] - number[0]) as f64;
             self.duration_s += time_s[time_s.len() - 1] - time_s[0];
-            self.add_stretch(time_s, number);
         }
         if self.others.is_empty() {
             self.others.clone_from(&train.others);
@@ -106,7 +107,7 @@ impl Accumulator {
                 break;
             }
         }
-        self.pieces.push(piece(&times, &numbers));
+        self.pieces.push(piece(&times, &numbers, self.steps));
     }
 
     /// The figures of everything added.
@@ -200,13 +201,13 @@ impl Accumulator {
     /// Straight line through the periods of the recording.
     fn line(&self, period_s: f64, posterior: &Posterior) -> Line {
         let weight: f64 = self.pieces.iter().map(|p| p.firings).sum();
-        let mean_t = self.pieces.iter().map(|p| p.firings * p.middle_s).sum::<f64>() / weight;
+        let mean_n = self.pieces.iter().map(|p| p.firings * p.middle).sum::<f64>() / weight;
         let mean_p = self.pieces.iter().map(|p| p.firings * p.period_s).sum::<f64>() / weight;
         let (mut sxy, mut sxx) = (0.0, 0.0);
         for p in &self.pieces {
-            let t = p.middle_s - mean_t;
-            sxy += p.firings * t * (p.period_s - mean_p) + p.inner.0;
-            sxx += p.firings * t * t + p.inner.1;
+            let n = p.middle - mean_n;
+            sxy += p.firings * n * (p.period_s - mean_p) + p.inner.0;
+            sxx += p.firings * n * n + p.inner.1;
         }
         if sxx <= 0.0 || weight < 8.0 {
             return Line { drift_per_s: None, curved_variance: 0.0 };
@@ -216,13 +217,13 @@ impl Accumulator {
         let off: f64 = self
             .pieces
             .iter()
-            .map(|p| p.firings * (p.period_s - mean_p - slope * (p.middle_s - mean_t)).powi(2))
+            .map(|p| p.firings * (p.period_s - mean_p - slope * (p.middle - mean_n)).powi(2))
             .sum::<f64>()
             / weight;
         // What the random part alone lets the pieces scatter.
         let by_chance = posterior.long_run_variance_s2 * (self.pieces.len() as f64 - 2.0).max(0.0) / weight;
         Line {
-            drift_per_s: Some(Estimate::normal(-slope / period_s, u / period_s)),
+            drift_per_s: Some(Estimate::normal(-slope / period_s.powi(2), u / period_s.powi(2))),
             curved_variance: (off - by_chance).max(0.0),
         }
     }
@@ -301,19 +302,19 @@ fn without(time_s: &[f64], number: &[i64], found: &Structure) -> Vec<f64> {
     out
 }
 
-fn piece(time_s: &[f64], number: &[i64]) -> Piece {
+fn piece(time_s: &[f64], number: &[i64], before: f64) -> Piece {
     let last = time_s.len() - 1;
     let firings = (number[last] - number[0]).max(1) as f64;
     let period_s = (time_s[last] - time_s[0]) / firings;
-    let middle_s = 0.5 * (time_s[last] + time_s[0]);
+    let centre = 0.5 * (number[last] + number[0]) as f64;
     let mut inner = (0.0, 0.0);
     for (t, n) in time_s.windows(2).zip(number.windows(2)) {
         let k = (n[1] - n[0]).max(1) as f64;
-        let x = 0.5 * (t[0] + t[1]) - middle_s;
+        let x = 0.5 * (n[0] + n[1]) as f64 - centre;
         inner.0 += k * x * ((t[1] - t[0]) / k - period_s);
         inner.1 += k * x * x;
     }
-    Piece { middle_s, period_s, firings, inner }
+    Piece { middle: before + 0.5 * firings, period_s, firings, inner }
 }
 
 fn with_structure(random: Estimate, variance: f64) -> Estimate {

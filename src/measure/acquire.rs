@@ -32,6 +32,8 @@ const LEARN_COVER: f64 = 0.8;
 /// A line is taken if its evidence is this many times the clicks', or their period this many times the line's.
 const LINE_EVIDENCE: f64 = 2.0;
 const LINE_PERIOD: f64 = 1.4;
+/// Evidence of separate clicks below which a slow line is looked at all the same, nats.
+const LINE_ONLY_EVIDENCE: f64 = 60.0;
 /// Natural log of the ratio from which clicks count as larger.
 const LARGER: f64 = 0.05;
 /// Rate to which a train read by its line alone is raised for the judgement of the line, Hz.
@@ -105,6 +107,11 @@ fn learn(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<L
     let line = best_line(window, explanation);
     if line.as_ref().is_some_and(|l| line_wins(l, clicks.as_ref())) {
         return line.map(|l| Learnt::Line(Box::new(l))).ok_or("no line stands out");
+    }
+    if let (Some(l), Some(h)) = (&line, &clicks)
+        && contradicts(l, h)
+    {
+        return Err("the clicks and the line at the rate tell different rates");
     }
     let Some(mut h) = clicks else { return Err("no clicks stand out") };
     let first_evidence = h.fit.evidence;
@@ -250,11 +257,24 @@ fn best_line(window: &Window, explanation: &mut Vec<String>) -> Option<LineTrain
 }
 
 fn line_wins(line: &LineTrain, clicks: Option<&Hypothesis>) -> bool {
+    // Slower than this clicks stand apart in any channel: a line is then the tone of a whistle, or clicks say it better.
+    let overlaps = line.fit.period_s < PHASE_BELOW_S;
     line.fit.cover > 0.6
         && line.fit.jitter < 0.15
+        && (overlaps || clicks.is_none_or(|h| h.fit.evidence < LINE_ONLY_EVIDENCE))
         && clicks.is_none_or(|h| {
             LINE_EVIDENCE * h.fit.evidence < line.fit.evidence || h.fit.period_s > LINE_PERIOD * line.fit.period_s
         })
+}
+
+/// A line with far more evidence at a multiple of the rate of the clicks: half of the clicks may be lost in noise.
+fn contradicts(line: &LineTrain, h: &Hypothesis) -> bool {
+    let ratio = h.fit.period_s / line.fit.period_s;
+    line.fit.cover > 0.6
+        && line.fit.jitter < 0.15
+        && line.fit.evidence > LINE_EVIDENCE * h.fit.evidence
+        && ratio > LINE_PERIOD
+        && (ratio - ratio.round()).abs() < 0.03
 }
 
 fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> Result<Train, &'static str> {

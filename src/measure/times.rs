@@ -69,11 +69,13 @@ pub fn choose(window: &Window, whitened: &[f32], h: &Hypothesis, number: &[i64])
         .filter(|(s, t)| *s < NEAR * best.scatter && *t != best.times)
         .map(|(_, t)| spread_of_difference(t, &best.times))
         .collect();
-    let between_s = if between.is_empty() { 0.02 * h.fit.period_s } else { median(&between) };
-    let predicted = predicted_noise_s(window, whitened, h);
+    // The best channel is no worse than its closest relative says.
+    let between_s = between.iter().copied().fold(f64::INFINITY, f64::min);
+    let (by_noise, by_misfit) = predicted_noise_s(window, whitened, h);
+    let between_s = between_s.min(by_misfit);
     Timing {
         reader: best.reader,
-        noise_s: (predicted * predicted + between_s * between_s + LEAST_NOISE_S * LEAST_NOISE_S).sqrt(),
+        noise_s: (by_noise * by_noise + between_s * between_s + LEAST_NOISE_S * LEAST_NOISE_S).sqrt(),
         channel: best.name,
     }
 }
@@ -104,9 +106,9 @@ fn spread_of_difference(a: &[f64], b: &[f64]) -> f64 {
     1.4826 * median(&d.iter().map(|v| (v - centre).abs()).collect::<Vec<_>>())
 }
 
-/// Arrival-time bound for the median click (Woodward 1953: 1/(mark · slope of the unit shape)), with the misfit of single
-/// clicks to the shape added.
-fn predicted_noise_s(window: &Window, whitened: &[f32], h: &Hypothesis) -> f64 {
+/// Arrival-time bound for the median click (Woodward 1953: 1/(mark · slope of the unit shape)), and what the misfit of single
+/// clicks to the shape would add.
+fn predicted_noise_s(window: &Window, whitened: &[f32], h: &Hypothesis) -> (f64, f64) {
     let shape = &h.shape.vectors[0];
     let slope =
         (1..shape.len() - 1).map(|i| f64::from(0.5 * (shape[i + 1] - shape[i - 1])).powi(2)).sum::<f64>().sqrt()
@@ -126,5 +128,5 @@ fn predicted_noise_s(window: &Window, whitened: &[f32], h: &Hypothesis) -> f64 {
         .collect();
     let freedom = (2.0 * slope / std::f64::consts::TAU * shape.len() as f64 / window.rate_hz - 2.0).max(3.0);
     let by_misfit = median(&misfit) / freedom.sqrt() / slope;
-    by_noise.hypot(by_misfit)
+    (by_noise, by_misfit)
 }

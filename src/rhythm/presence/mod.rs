@@ -29,6 +29,10 @@ const CLEAR_ANYWAY: f64 = 15.0;
 /// Rate from which neighbours lie within the window of a click's shape, Hz; the line must then hold.
 const CROWDED_HZ: f64 = 500.0;
 const CROWDED_CORE: f64 = 0.5;
+/// Crowded clicks without jitter hardly move the line's surroundings: they must be alike, clear and most in the core instead.
+const CROWDED_CLICKS: (f64, f64, f64, f64) = (0.9, 1.8, 0.7, 1.0e-3);
+/// Clicks in noise: alike from here on if they are this narrow (s), this much in the core and this clear.
+const NOISY: (f64, f64, f64, f64) = (0.55, 0.45e-3, 0.85, 3.0);
 /// Rate from which the line alone decides, Hz.
 const OVERLAP_HZ: f64 = 1_200.0;
 /// The line is the train's: share of time on it, coherence of its surroundings with it, growth of its phase variance.
@@ -40,7 +44,7 @@ const SIX_LINES: f64 = 0.9;
 const CLEAR_OF_TONES: f64 = 1.2;
 /// A rate on a mains multiple, within this, with this share of the energy in mains lines is buzz unless clicks stand out by
 /// this factor …
-const ON_MAINS: f64 = 2e-3;
+const ON_MAINS: f64 = 5e-4;
 const MAINS_ENERGY: f64 = 0.6;
 const CLEAR_OF_MAINS: f64 = 2.5;
 /// … and one without scatter needs more.
@@ -187,10 +191,16 @@ impl Heard {
     fn refusal_of_clicks(&self) -> Option<&'static str> {
         let Some(c) = &self.character else { return Some("too few clicks to tell what they look like") };
         let each = self.evidence / self.firings.max(1) as f64;
-        let alike =
-            c.alike >= ALIKE || (c.alike >= BARELY_ALIKE.0 && each >= BARELY_ALIKE.1 && c.core >= BARELY_ALIKE.2);
+        let noisy = c.alike >= NOISY.0 && c.width_s <= NOISY.1 && c.core >= NOISY.2 && c.clear >= NOISY.3;
+        let alike = c.alike >= ALIKE
+            || noisy
+            || (c.alike >= BARELY_ALIKE.0 && each >= BARELY_ALIKE.1 && c.core >= BARELY_ALIKE.2);
         let short = c.width_s <= WIDTH_S && c.core >= CORE;
-        let crowded = self.rate_hz > CROWDED_HZ && c.core >= CROWDED_CORE && self.line_holds();
+        let clean = c.alike >= CROWDED_CLICKS.0
+            && c.clear >= CROWDED_CLICKS.1
+            && c.core >= CROWDED_CLICKS.2
+            && c.width_s <= CROWDED_CLICKS.3;
+        let crowded = self.rate_hz > CROWDED_HZ && (clean || (c.core >= CROWDED_CORE && self.line_holds()));
         let on_mains = [50.0, 60.0].iter().any(|unit| {
             let multiple = (self.rate_hz / unit).round();
             multiple >= 1.0 && (self.rate_hz / (unit * multiple) - 1.0).abs() < ON_MAINS

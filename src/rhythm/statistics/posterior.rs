@@ -27,8 +27,8 @@ const SCALES: usize = 41;
 const SCALE_REACH: f64 = 4.5;
 /// Least centre of the prior of the timing noise, in units of the least on the grid.
 const LEAST_NOISE_SHARE: f64 = 1.5;
-/// Log standard deviation of the prior of the timing noise: a factor 1.6.
-const NOISE_PRIOR_LN_SD: f64 = 0.470;
+/// Log standard deviation of the prior of the timing noise below and above the prediction, which is rather too high.
+const NOISE_PRIOR_LN_SD: (f64, f64) = (0.7, 0.5);
 
 /// Sums over blocks on the grid of memory and share.
 #[derive(Debug, Clone)]
@@ -162,7 +162,8 @@ impl PosteriorGrid {
                     let scale = cell.rest / self.freedom * (reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0)).exp();
                     let mut ln = -0.5 * (self.freedom * scale.ln() + cell.rest / scale + cell.ln_det) + ln_share;
                     if let Some(noise) = noise_s {
-                        let z = (0.5 * (scale * u).ln() - noise.ln()) / NOISE_PRIOR_LN_SD;
+                        let off = 0.5 * (scale * u).ln() - noise.ln();
+                        let z = off / if off < 0.0 { NOISE_PRIOR_LN_SD.0 } else { NOISE_PRIOR_LN_SD.1 };
                         ln -= 0.5 * z * z;
                     }
                     top = top.max(ln);

@@ -34,8 +34,10 @@ pub fn find(time_s: &[f64], number: &[i64]) -> Structure {
         return found;
     }
     let middle: Vec<f64> = time_s.windows(2).map(|w| 0.5 * (w[0] + w[1])).collect();
-    let rest = held_residual(&period, &middle);
-    add_drift(&mut found, &rest, &middle);
+    // Drift is judged along the firings, as the straight line of the jitter's definition is; the mains along the time.
+    let along: Vec<f64> = number.windows(2).map(|w| 0.5 * (w[0] + w[1]) as f64).collect();
+    let rest = held_residual(&period, &along);
+    add_drift(&mut found, &rest, &along);
     add_mains(&mut found, &rest, &middle);
     let mean = found.deviation_s.iter().sum::<f64>() / n as f64;
     found.deviation_s.iter_mut().for_each(|d| *d -= mean);
