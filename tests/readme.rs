@@ -209,3 +209,17 @@ fn the_json_and_the_events_shown_have_the_format_of_the_program() {
     let csv = of_language("csv");
     assert_eq!(csv[0].lines[0], gaptone::report::EVENTS_HEADER);
 }
+
+#[test]
+fn every_file_that_the_pages_name_is_there() {
+    const ROOTS: [&str; 6] = ["src/", "tests/", "examples/", "benches/", "sounds/", ".ci/"];
+    let pages = [README, include_str!("../DEVELOPERS.md"), include_str!("../CHANGELOG.md")];
+    let mut named = 0;
+    for name in pages.iter().flat_map(|page| page.split('`').skip(1).step_by(2)) {
+        if ROOTS.iter().any(|root| name.starts_with(root)) && !name.contains(' ') {
+            named += 1;
+            assert!(Path::new(env!("CARGO_MANIFEST_DIR")).join(name).exists(), "{name} is named but not there");
+        }
+    }
+    assert!(named > 30, "only {named} files are named");
+}
