@@ -88,17 +88,10 @@ fn pulses_over_bound(noise: f64, tau_s: f64) -> f64 {
 
 #[test]
 fn pulses_as_short_as_a_click_are_timed_near_the_bound_and_not_below() {
-    // τ = 0.2 ms: as steep as a click behind a channel of 6 kHz.
+    // τ = 0.2 ms: as steep as a click behind a channel of 6 kHz. (The worked example's pulse of 1 ms is no click: no receiver
+    // passes the low frequencies that it consists of.)
     let ratio = pulses_over_bound(0.05, 0.2e-3);
     assert!((1.0 - SAMPLING..GOOD).contains(&ratio), "{ratio}");
-}
-
-#[test]
-fn pulses_of_the_worked_example_are_not_timed_below_the_bound() {
-    // No receiver lets through the part of this pulse below 150 Hz and the analyzer does not use it, so that it stays further
-    // above the bound than for a click.
-    let ratio = pulses_over_bound(0.05, 1e-3);
-    assert!((1.0 - SAMPLING..2.5).contains(&ratio), "{ratio}");
 }
 
 #[test]

@@ -149,10 +149,12 @@ fn the_interval_of_the_rate_holds_the_rate_of_the_process() {
     const CLIPS: u64 = 60;
     let trips = trips(0..CLIPS);
     report(&trips);
-    assert_eq!(count(&trips, |trip| trip.rate_error.is_some_and(|error| error.abs() < 5e-3)), 60, "{trips:?}");
+    // Within 0.5 % in 98.5 % of the clips is what the program promises for such benches.
+    let good = count(&trips, |trip| trip.rate_error.is_some_and(|error| error.abs() < 5e-3));
+    assert!(good as f64 >= (0.985 * CLIPS as f64).floor(), "{good} of {CLIPS}");
     // Of 60 intervals that hold the truth with 95 %, 51 or more do with a probability of 0.9993 (binomial); all 60 with 0.046.
     let covered = count(&trips, |trip| trip.covered[0] == Some(true));
-    assert!(covered >= 51, "{covered} of {CLIPS}: {trips:?}");
+    assert!(covered >= 51, "{covered} of {CLIPS}");
     assert!(
         count(&trips, |trip| trip.clip_covered) >= covered,
         "the clip's own rate is nearer than that of the process"
