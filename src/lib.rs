@@ -8,7 +8,7 @@
 //!  report ◄── voltage ◄── rhythm ◄── clicks
 //! ```
 //!
-//! The rooms, in the order the data takes: [`bench`] reads the description of a bench; [`model`] holds the
+//! The rooms, in the order the data takes: [`mod@bench`] reads the description of a bench; [`model`] holds the
 //! laws (charging, breakdown, receiver) and goes forward; [`audio`] carries samples; [`clicks`] finds clicks;
 //! [`rhythm`] finds the trains among them and their statistics; [`voltage`] inverts the charging law;
 //! [`report`] says it to people and machines. [`cli`] is the only room that knows files, terminals and devices.

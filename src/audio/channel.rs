@@ -1,6 +1,7 @@
 //! Which channel of a recording is heard.
 
 use super::AudioError;
+use dasp::Sample;
 use std::fmt;
 use std::str::FromStr;
 
@@ -73,8 +74,11 @@ impl Pick {
     /// One mono sample of a frame.
     pub(super) fn of(self, frame: &[f32]) -> f32 {
         match self {
-            Self::One(channel) => frame.get(channel).copied().unwrap_or(0.0),
-            Self::Mix => frame.iter().sum::<f32>() / frame.len() as f32,
+            Self::One(channel) => frame.get(channel).copied().unwrap_or(f32::EQUILIBRIUM),
+            Self::Mix => {
+                let sum = frame.iter().fold(f32::EQUILIBRIUM, |sum, &sample| sum.add_amp(sample));
+                sum.mul_amp(1.0 / frame.len() as f32)
+            }
         }
     }
 

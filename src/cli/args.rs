@@ -168,6 +168,11 @@ pub struct RenderArguments {
     /// Write every firing and the figures that came out as JSON
     #[arg(long, value_name = "FILE")]
     pub truth: Option<String>,
+
+    /// Play the clip
+    #[cfg(feature = "sound-card")]
+    #[arg(long)]
+    pub play: bool,
 }
 
 /// Reads a length in seconds.

@@ -4,6 +4,7 @@
 
 use cpal::traits::{DeviceTrait, HostTrait, StreamTrait};
 use cpal::{BufferSize, Stream, StreamConfig};
+use dasp::Sample;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 use std::sync::mpsc::{self, Receiver, Sender};
@@ -22,12 +23,10 @@ const PATIENCE: Duration = Duration::from_secs(5);
 #[derive(Debug, thiserror::Error)]
 pub(super) enum PlayError {
     /// There is no output.
-    #[error("no sound output was found; write the clip to a file with --clip instead")]
+    #[error("no sound output was found; write the clip to a file and play that elsewhere")]
     NoDevice,
     /// The output cannot be opened.
-    #[error(
-        "the sound output cannot be opened at {sample_rate_hz} Hz ({reason}); write the clip to a file with --clip"
-    )]
+    #[error("the sound output cannot be opened at {sample_rate_hz} Hz ({reason}); write the clip to a file instead")]
     Open {
         /// Sample rate asked for, Hz.
         sample_rate_hz: u32,
@@ -41,6 +40,9 @@ pub(super) enum PlayError {
 
 /// Plays the clip to its end.
 pub(super) fn play(samples: Vec<f32>, sample_rate_hz: u32) -> Result<(), PlayError> {
+    // The sound library tells a dozen lines of its own about a missing device; ours says it in one.
+    #[cfg(target_os = "linux")]
+    let _kept_quiet = alsa::Output::local_error_handler();
     let device = cpal::default_host().default_output_device().ok_or(PlayError::NoDevice)?;
     let total = samples.len();
     let samples: Arc<[f32]> = samples.into();
@@ -66,7 +68,7 @@ fn open(
     let fill = move |out: &mut [f32], _: &cpal::OutputCallbackInfo| {
         let mut next = played.load(Ordering::Relaxed);
         for frame in out.chunks_mut(usize::from(channels)) {
-            frame.fill(samples.get(next).copied().unwrap_or(0.0));
+            frame.fill(samples.get(next).copied().unwrap_or(f32::EQUILIBRIUM));
             next += 1;
         }
         played.store(next, Ordering::Release);

@@ -36,7 +36,7 @@ pub(super) fn run(arguments: &RenderArguments) -> Result<Exit, Failure> {
     let mut truth = clip.truth;
     truth.title = bench.title;
     truth.bench = files::read_text(&arguments.bench).ok();
-    files::write_clip(output, clip.renderer, arguments.sample_rate, arguments.bits)
+    files::write_clip(output, clip.renderer.clone(), arguments.sample_rate, arguments.bits)
         .map_err(|error| Failure::file(output, &error))?;
     if let Some(place) = &arguments.truth {
         files::write_atomically(place, |out| {
@@ -47,6 +47,11 @@ pub(super) fn run(arguments: &RenderArguments) -> Result<Exit, Failure> {
     }
     if output != STANDARD_STREAM {
         say(&summary(output, arguments.seconds, &truth))?;
+    }
+    #[cfg(feature = "sound-card")]
+    if arguments.play {
+        super::play::play(clip.renderer.collect(), arguments.sample_rate)
+            .map_err(|error| Failure::Told(Exit::File, error.to_string()))?;
     }
     Ok(Exit::Done)
 }

@@ -43,7 +43,7 @@ impl FilterBank {
         }
     }
 
-    /// Zero-phase kernel of a given gain over frequency (Hz) at a sample rate (Hz), cut to [`MAX_TAPS`] by a Hann window.
+    /// Zero-phase kernel of a given gain over frequency (Hz) at a sample rate (Hz), cut to `MAX_TAPS` by a Hann window.
     #[must_use]
     pub fn kernel_of_gain(&self, rate_hz: f64, gain: impl Fn(f64) -> f64) -> Kernel {
         let step = rate_hz / BLOCK as f64;
@@ -80,7 +80,7 @@ impl FilterBank {
         Kernel { spectrum }
     }
 
-    /// Correlator with a click shape whose origin is sample `centre`: output `n` = Σ x[n + k − centre]·shape[k].
+    /// Correlator with a click shape whose origin is sample `centre`: output `n` = `Σ x[n + k − centre]·shape[k]`.
     #[must_use]
     pub fn correlator(&self, shape: &[f32], centre: usize) -> Kernel {
         let reversed: Vec<f32> = shape.iter().rev().copied().collect();
@@ -160,7 +160,8 @@ mod tests {
         let shape = [0.1f32, -0.4, 1.0, 0.3, -0.2];
         let mut out = Vec::new();
         bank.apply(&x, &bank.correlator(&shape, 2), &mut out);
-        for n in 0..x.len() {
+        assert_eq!(out.len(), x.len());
+        for (n, &found) in out.iter().enumerate() {
             let mut plain = 0.0f64;
             for (k, &s) in shape.iter().enumerate() {
                 let i = n as isize + k as isize - 2;
@@ -169,7 +170,7 @@ mod tests {
                 }
             }
             // Single-precision transform of 8192 points: a few 1e-7 of the largest value.
-            assert!((plain - f64::from(out[n])).abs() < 5e-6, "sample {n}: {plain} against {}", out[n]);
+            assert!((plain - f64::from(found)).abs() < 5e-6, "sample {n}: {plain} against {found}");
         }
     }
 

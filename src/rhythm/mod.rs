@@ -3,6 +3,7 @@
 pub mod fit;
 pub mod line;
 pub mod marks;
+pub mod pairs;
 pub mod path;
 pub mod phase;
 pub mod presence;

@@ -10,7 +10,7 @@
 //!
 //! with gain_i = ln(density of the mark on the rhythm / off it) − ln(rate of candidates off the rhythm). Candidates that the
 //! chain skips are off the rhythm and cost nothing: that is what the gain already counts. A chain may begin anywhere for
-//! −ln T and begin anew (drop-out) for [`RESTART`] more.
+//! −ln T and begin anew (drop-out) for `RESTART` more.
 
 use statrs::function::gamma::ln_gamma;
 

@@ -2,6 +2,8 @@
 
 use super::write::write_atomically;
 use super::{FileError, STANDARD_STREAM};
+use dasp::Sample;
+use dasp::sample::{FromSample, I24};
 use flacenc::component::BitRepr;
 use flacenc::error::Verify;
 use std::io::{self, Cursor, Seek, Write};
@@ -25,16 +27,29 @@ impl SampleFormat {
     fn bits(self) -> u16 {
         match self {
             Self::Int16 => 16,
-            Self::Int24 => 24,
+            Self::Int24 => I24_BITS,
             Self::Float32 => 32,
         }
     }
 
     /// The nearest integer sample.
     fn quantize(self, sample: f32) -> i32 {
-        let full_scale = 2f64.powi(i32::from(self.bits()) - 1);
-        (f64::from(sample) * full_scale).round().clamp(-full_scale, full_scale - 1.0) as i32
+        match self {
+            Self::Int16 => i32::from(nearest::<i16>(sample, self.bits())),
+            Self::Int24 | Self::Float32 => nearest::<I24>(sample, I24_BITS).inner(),
+        }
     }
+}
+
+/// Bits of the type [`I24`].
+const I24_BITS: u16 = 24;
+
+/// The nearest sample of an integer type of so many bits; what is beyond full scale is cut. The conversion itself cuts
+/// towards zero, so half a step is added first.
+fn nearest<S: FromSample<f64>>(sample: f32, bits: u16) -> S {
+    let step = 0.5f64.powi(i32::from(bits) - 1);
+    let held = sample.to_sample::<f64>().clamp(-1.0, 1.0 - step);
+    S::from_sample_(held + (0.5 * step).copysign(held))
 }
 
 /// Writes a mono clip: FLAC if the name ends in `.flac`, WAV if it ends in `.wav` or is `-` (standard output). A WAV
@@ -114,4 +129,30 @@ fn flac_bytes(
     let mut sink = flacenc::bitsink::ByteSink::new();
     stream.write(&mut sink).map_err(|error| told("output", &error))?;
     Ok(sink.into_inner())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn samples_go_to_the_nearest_step_and_full_scale_is_kept() {
+        let step = 1.0 / 32_768.0;
+        for (sample, stored) in [
+            (0.0, 0),
+            (0.49 * step, 0),
+            (0.51 * step, 1),
+            (-0.51 * step, -1),
+            (1.0, 32_767),
+            (7.0, 32_767),
+            (-1.0, -32_768),
+            (-7.0, -32_768),
+        ] {
+            assert_eq!(SampleFormat::Int16.quantize(sample), stored, "{sample}");
+        }
+        assert_eq!(SampleFormat::Int24.quantize(0.5), 1 << 22);
+        assert_eq!(SampleFormat::Int24.quantize(1.0), (1 << 23) - 1);
+        assert_eq!(SampleFormat::Int24.quantize(-2.0), -(1 << 23));
+        assert_eq!(SampleFormat::Int24.quantize(f32::NAN), 0);
+    }
 }
