@@ -42,6 +42,11 @@ const GROWTH: (f64, f64) = (0.4, 2.0);
 /// Six lines with this share of the energy are tones unless clicks stand out by this factor.
 const SIX_LINES: f64 = 0.9;
 const CLEAR_OF_TONES: f64 = 1.2;
+/// Clicks that stand out by less than this must not have more than this share of the energy in six lines, nor a line that is
+/// off its frequency in more than this share of the time at less than this scatter.
+const UNCLEAR: f64 = 2.0;
+const MANY_TONES: f64 = 0.5;
+const WANDERING: (f64, f64) = (0.12, 0.7);
 /// A rate on a mains multiple, within this, with this share of the energy in mains lines is buzz unless clicks stand out by
 /// this factor …
 const ON_MAINS: f64 = 5e-4;
@@ -214,11 +219,19 @@ impl Heard {
             Some("what repeats is longer than a click")
         } else if buzz {
             Some("what is heard keeps step with the mains and does not stand out like clicks: hum or buzz")
+        } else if c.clear < UNCLEAR && self.rate_hz < CROWDED_HZ && (self.tones.six > MANY_TONES || self.line_wanders())
+        {
+            Some("what repeats hardly stands out of tones or a voice")
         } else if self.tones.six > SIX_LINES && c.clear < CLEAR_OF_TONES && !crowded {
             Some("the sound is a handful of tones")
         } else {
             None
         }
+    }
+
+    /// True if a tight rhythm goes with a line that is elsewhere most of the time, as in speech.
+    fn line_wanders(&self) -> bool {
+        self.scatter < WANDERING.0 && self.line.is_some_and(|l| l.stable < WANDERING.1)
     }
 
     fn line_holds(&self) -> bool {
