@@ -1,9 +1,12 @@
 //! The laws, and the way forward: from a bench to firings and to the audio a receiver would give.
 //!
-//! [`charging`] holds the charging law in both directions, [`random`] the portable random numbers, [`firings`]
+//! [`breakdown`] gives the gap voltage of electrodes in [`air`], [`charging`] holds the charging law in both directions,
+//! [`random`] the portable random numbers, [`firings`]
 //! makes trains of firings with known truth; [`receiver`] and [`render`] turn firings into audio, [`truth`] says what a
 //! clip holds and [`clip`] joins them.
 
+pub mod air;
+pub mod breakdown;
 pub mod charging;
 pub mod clip;
 pub mod firings;

@@ -1,8 +1,9 @@
 //! The sentences of a prediction: why it fires or not, what is stored, what is missing or doubtful.
 
+use super::figures::{self, capacitance_f, resistance_ohm, short_circuit_a};
 use super::hazard;
 use super::propagate::Propagated;
-use super::{Setting, bleed_time_s, period};
+use super::{Setting, bleed_time_s};
 use crate::bench::si;
 
 /// From this current on the supply may keep a glow or an arc in the gap burning, A (published glow-to-arc transitions
@@ -10,15 +11,23 @@ use crate::bench::si;
 const MAY_KEEP_BURNING_A: f64 = 2e-3;
 /// Least arc current of copper and silver contacts in air, A (Holm: from memory).
 const LEAST_ARC_A: f64 = 0.4;
+/// Voltage rating of an ordinary film resistor, V (common practice: 250 V to 500 V).
+const ORDINARY_RESISTOR_V: f64 = 500.0;
 /// Recovery times within a period below which the strength of the gap is not back (exp(−5) is under 1 %).
 const RECOVERED_AFTER: f64 = 5.0;
 
 /// Why the gap fires or not.
 pub(super) fn reason(setting: &Setting<'_>) -> String {
-    let (Some(reach), Some(gap)) = (setting.reach_v, setting.gap) else {
+    let (Some(reach), Some(gap_v)) = (setting.reach_v, setting.gap_v()) else {
         return "cannot say whether the gap fires; the notes name what is missing".to_owned();
     };
-    let gap_text = si(gap.value, "V", 3);
+    let gap_text = si(gap_v, "V", 3);
+    if gap_v <= setting.parts.residual_v {
+        return format!(
+            "does not fire again: {} are left after a spark and the gap breaks down at {gap_text}",
+            si(setting.parts.residual_v, "V", 3)
+        );
+    }
     if setting.fires == Some(true) {
         let reach_text = if reach.is_finite() {
             format!("would reach {}", si(reach, "V", 3))
@@ -39,11 +48,11 @@ pub(super) fn reason(setting: &Setting<'_>) -> String {
 
 /// What is stored at the highest voltage that the capacitor can take.
 pub(super) fn hazards(setting: &Setting<'_>) -> Vec<String> {
-    let (Some(c), Some(worst_v)) = (setting.parts.capacitance_f, setting.worst_v()) else {
+    let (Some(c), Some(worst_v)) = (capacitance_f(&setting.parts), setting.worst_v()) else {
         return vec!["The stored energy is not known from this bench; treat the capacitor as dangerous.".to_owned()];
     };
     let mut said = hazard::sentences(c, worst_v);
-    if setting.fires == Some(true) && setting.gap.is_some_and(|gap| worst_v > gap.value) {
+    if setting.fires == Some(true) && setting.gap_v().is_some_and(|gap_v| worst_v > gap_v) {
         said.insert(0, "If the gap fails to fire, the capacitor charges further:".to_owned());
     }
     said.push(match setting.parts.leakage_ohm {
@@ -56,7 +65,7 @@ pub(super) fn hazards(setting: &Setting<'_>) -> Vec<String> {
         ),
         None => "Nothing bleeds it: no charging.leakage is stated, so it stays charged with the supply off.".to_owned(),
     });
-    if let Some(r) = setting.parts.resistance_ohm {
+    if let Some(r) = resistance_ohm(&setting.parts) {
         said.push(format!(
             "The charging resistor discharges it only if the supply's output is a short when off (then {} to {} V); do not \
              count on it.",
@@ -70,6 +79,7 @@ pub(super) fn hazards(setting: &Setting<'_>) -> Vec<String> {
 /// What is missing, assumed or doubtful.
 pub(super) fn notes(setting: &Setting<'_>, period_s: Option<Propagated>) -> Vec<String> {
     let mut said = missing(setting);
+    said.extend(setting.gap.iter().flat_map(|gap| gap.notes.iter().cloned()));
     said.extend(assumed(setting, period_s));
     if let Some(period_s) = period_s {
         said.extend(ripple(setting, period_s.value));
@@ -82,7 +92,36 @@ pub(super) fn notes(setting: &Setting<'_>, period_s: Option<Propagated>) -> Vec<
         }
     }
     said.extend(burning(setting));
+    said.extend(ratings(setting));
     said
+}
+
+/// What the parts have to stand.
+fn ratings(setting: &Setting<'_>) -> Vec<String> {
+    let mut said = Vec::new();
+    if let Some(volts) = setting.resistor_voltage_v() {
+        let watts = setting.means().and_then(|means| means.resistor_w);
+        let power = watts.map_or_else(String::new, |watts| format!(" and dissipates {} on average", si(watts, "W", 2)));
+        said.push(format!(
+            "the charging resistor has to stand {}{power}, and all of the supply voltage for good if the gap stays lit or is \
+             shorted ({}); an ordinary resistor is rated for {ORDINARY_RESISTOR_V} V or less (common practice): use a \
+             high-voltage type or a string",
+            si(volts, "V", 3),
+            shorted(setting).map_or_else(|| "its power then is not known".to_owned(), |watts| si(watts, "W", 2))
+        ));
+    }
+    if let Some(volts) = setting.worst_v() {
+        said.push(format!(
+            "the capacitor has to stand {} if the gap fails to fire, and the ring after every spark",
+            si(volts, "V", 3)
+        ));
+    }
+    said
+}
+
+/// Power in the charging resistor while the gap is a short, W.
+fn shorted(setting: &Setting<'_>) -> Option<f64> {
+    Some(resistance_ohm(&setting.parts)? * short_circuit_a(&setting.parts)?.powi(2))
 }
 
 fn missing(setting: &Setting<'_>) -> Vec<String> {
@@ -99,14 +138,10 @@ fn missing(setting: &Setting<'_>) -> Vec<String> {
         setting.supply.is_none() && by_current,
         "supply.voltage is needed to know how far the current source can go; it is taken as unlimited",
     );
-    let from_shape = setting.bench.gap.electrodes.is_some() || setting.bench.gap.spacing.is_some();
     need(
-        setting.gap.is_none() && from_shape,
-        "gap.voltage is needed for now: the breakdown voltage is not computed from electrodes, spacing and air",
-    );
-    need(
-        setting.gap.is_none() && !from_shape,
-        "gap.voltage is needed for firing, rate, period and energy at breakdown",
+        setting.gap.is_none(),
+        "gap.voltage, or gap.electrodes with gap.spacing (and gap.diameter for spheres), is needed for firing, rate, period \
+         and energy at breakdown",
     );
     let no_law = !by_current && charging.resistance.is_none() && charging.time_constant.is_none();
     need(
@@ -139,7 +174,8 @@ fn assumed(setting: &Setting<'_>, period_s: Option<Propagated>) -> Vec<String> {
     for (key, _) in unused.into_iter().filter(|(_, given)| *given && only_time_constant) {
         said.push(format!("{key} is left out: with a time constant it needs charging.capacitance too"));
     }
-    let exact = setting.supply.is_some_and(|supply| supply.u() == 0.0) || setting.gap.is_some_and(|gap| gap.u() == 0.0);
+    let exact = setting.supply.is_some_and(|supply| supply.u() == 0.0)
+        || setting.gap.as_ref().is_some_and(|gap| gap.u_v == 0.0);
     if period_s.is_some() && exact {
         said.push(
             "supply.voltage or gap.voltage is stated without a tolerance and taken as exact; the real uncertainty is larger"
@@ -151,31 +187,18 @@ fn assumed(setting: &Setting<'_>, period_s: Option<Propagated>) -> Vec<String> {
 
 fn ripple(setting: &Setting<'_>, period_s: f64) -> Option<String> {
     let ripple = setting.bench.supply.ripple.filter(|ripple| ripple.value > 0.0)?.value;
-    let (supply, gap) = (setting.supply?.value, setting.gap?.value);
-    let at = |part: f64| period::period(setting.bench, supply * (1.0 + part * ripple), gap);
+    if setting.parts.ripple.is_none() {
+        return Some("supply.ripple_frequency is needed to know what the ripple does to the firing".to_owned());
+    }
+    let at = |part: f64| {
+        let supply_v = setting.supply_v().map(|supply| supply * (1.0 + part * ripple));
+        figures::period(setting.bench, supply_v, setting.gap_v()?)
+    };
     let (Some(slow), Some(fast)) = (at(-1.0), at(1.0)) else {
-        return Some(
-            "the ripple decides whether the gap fires: it stops in the troughs; it is not in these figures".to_owned(),
-        );
+        return Some("the ripple decides whether the gap fires: it pauses in the troughs".to_owned());
     };
     let part = (slow - fast) / (2.0 * period_s);
-    let mut text = format!(
-        "supply.ripple is not in these figures; it moves single periods by up to {:.1} % in step with the mains",
-        100.0 * part
-    );
-    if let Some(frequency) = setting.bench.supply.ripple_frequency {
-        let cycles = period_s * frequency.value;
-        let whole = cycles.round();
-        if whole >= 1.0 && (cycles / whole - 1.0).abs() <= part {
-            text.push_str(&format!(
-                "; the period is near {whole} periods of the ripple, where the gap locks to it and the rate stands at {:.4} /s",
-                frequency.value / whole
-            ));
-        }
-    } else {
-        text.push_str("; supply.ripple_frequency is needed to know whether the gap locks to it");
-    }
-    Some(text)
+    Some(format!("supply.ripple moves single periods by up to {:.1} % in step with the mains", 100.0 * part))
 }
 
 fn recovery(setting: &Setting<'_>, period_s: f64) -> Option<String> {
@@ -189,7 +212,7 @@ fn recovery(setting: &Setting<'_>, period_s: f64) -> Option<String> {
 }
 
 fn burning(setting: &Setting<'_>) -> Option<String> {
-    let current = setting.parts.short_circuit_a(setting.drive_v().filter(|volts| volts.is_finite()).unwrap_or(0.0))?;
+    let current = short_circuit_a(&setting.parts)?;
     let fed = si(current, "A", 2);
     if current >= LEAST_ARC_A {
         Some(format!("the supply can feed {fed} into the gap: a steady arc is likely instead of separate sparks"))

@@ -1,6 +1,6 @@
 //! A range of settings, and the setting that gives a rate.
 
-use super::{FORMAT, PredictError, Prediction, Setting, notes, period, predict};
+use super::{FORMAT, PredictError, Prediction, Setting, figures, notes, predict};
 use crate::bench::Bench;
 use serde::{Deserialize, Serialize};
 use std::cmp::Ordering;
@@ -44,10 +44,10 @@ pub fn supply_for_rate(bench: &Bench, rate_hz: f64) -> Result<f64, PredictError>
     }
     // Any setting will do to ask for the least one.
     let setting = Setting::new(bench, Some(1.0))?;
-    let (Some(least_v), Some(gap)) = (setting.least_supply_v(), setting.gap) else {
+    let (Some(least_v), Some(gap_v)) = (setting.least_supply_v(), setting.gap_v()) else {
         return Err(PredictError::Missing(notes::notes(&setting, None).join("; ")));
     };
-    let rate = |supply_v: f64| period::period(bench, supply_v, gap.value).map_or(0.0, f64::recip);
+    let rate = |supply_v: f64| figures::period(bench, Some(supply_v), gap_v).map_or(0.0, f64::recip);
     let (mut low_v, mut high_v) = (least_v, MOST_SUPPLY_V.max(least_v));
     if rate(high_v) < rate_hz || rate(just_above(least_v)) > rate_hz {
         let (low_hz, high_hz) = (rate(just_above(least_v)), rate(high_v));

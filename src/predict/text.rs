@@ -3,6 +3,7 @@
 use super::Prediction;
 use crate::bench::{si, with_uncertainty};
 use crate::estimate::Estimate;
+use crate::model::breakdown::GapVoltage;
 use std::fmt::Write;
 
 /// The prediction as text, with a line end at the end.
@@ -31,7 +32,7 @@ pub fn text(prediction: &Prediction) -> String {
     out
 }
 
-fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 10] {
+fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 14] {
     let time = |seconds: Option<f64>| seconds.map(|seconds| si(seconds, "s", 3));
     let supply = prediction.supply_current_a.map(|current| {
         let power = prediction.supply_power_w.map_or_else(String::new, |power| format!(", {}", si(power, "W", 3)));
@@ -43,12 +44,46 @@ fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 10] {
         ("period", prediction.period_s.map(|period| with_interval(period, "s"))),
         ("period jitter", jitter(prediction)),
         ("gap voltage", prediction.gap_voltage_v.map(|gap| with_uncertainty(gap.value, gap.u, "V"))),
+        ("by", prediction.gap.as_ref().map(law)),
+        ("rule 3 kV/mm", prediction.gap.as_ref().and_then(rule)),
         ("least supply", prediction.least_supply_v.map(|volts| si(volts, "V", 4))),
         ("first firing", time(prediction.first_firing_s).map(|time| format!("{time} after switching on"))),
         ("stored energy", prediction.stored_energy_j.map(|energy| si(energy, "J", 3))),
         ("bleeds to 60 V", time(prediction.bleed_time_s).map(|time| format!("in {time}, through the leakage"))),
         ("supply gives", supply),
+        ("resistor", resistor(prediction)),
+        ("gap conducts", prediction.duty.map(|duty| format!("{} % of the time", si(100.0 * duty, "", 2)))),
     ]
+}
+
+/// The breakdown law, its band and the largest part of the uncertainty.
+fn law(gap: &GapVoltage) -> String {
+    let mut text = gap.law.words().to_owned();
+    if gap.band > 0.0 {
+        let _ = write!(text, " (band ± {:.0} %)", 100.0 * gap.band);
+    }
+    if let Some(largest) = gap.contributions.first().filter(|part| part.u_v > 0.0) {
+        let _ =
+            write!(text, "; the largest part of its uncertainty is {}, u = {}", largest.name, si(largest.u_v, "V", 2));
+    }
+    text
+}
+
+/// The rule of common practice, and how far off it is here.
+fn rule(gap: &GapVoltage) -> Option<String> {
+    let rule_v = gap.rule_v?;
+    let off = 100.0 * (rule_v / gap.voltage_v - 1.0);
+    let side = if off < 0.0 { "low" } else { "high" };
+    Some(format!(
+        "{}: {:.0} % too {side} here (common practice, for gaps of about 1 cm)",
+        si(rule_v, "V", 3),
+        off.abs()
+    ))
+}
+
+fn resistor(prediction: &Prediction) -> Option<String> {
+    let (power, voltage) = (prediction.resistor_power_w?, prediction.resistor_voltage_v?);
+    Some(format!("dissipates {}, stands {}", si(power, "W", 2), si(voltage, "V", 3)))
 }
 
 fn jitter(prediction: &Prediction) -> Option<String> {
