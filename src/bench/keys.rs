@@ -120,7 +120,7 @@ static KEYS: [Key; 43] = [
     key("gap", "recovery_time", "\"1 ms\"", Q(D::Time, NotNegative, |b| &mut b.gap.recovery_time)),
     key("gap", "recovery_depth", "\"90 %\"", Q(D::Fraction, UpToOne, |b| &mut b.gap.recovery_depth)),
     key("gap", "statistical_lag", "\"0.2 ms\"", Q(D::Time, NotNegative, |b| &mut b.gap.statistical_lag)),
-    key("gap", "resistance", "\"0.3 ohm\"", Q(D::Resistance, NotNegative, |b| &mut b.gap.resistance)),
+    key("gap", "spark_resistance", "\"0.3 ohm\"", Q(D::Resistance, NotNegative, |b| &mut b.gap.spark_resistance)),
     key("gap", "arc_drop", "\"40 V\"", Q(D::Voltage, NotNegative, |b| &mut b.gap.arc_drop)),
     key("gap", "conduction_time", "\"12 us\"", Q(D::Time, NotNegative, |b| &mut b.gap.conduction_time)),
     key("gap", "stray_capacitance", "\"2 pF\"", Q(D::Capacitance, NotNegative, |b| &mut b.gap.stray_capacitance)),

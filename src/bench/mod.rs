@@ -103,7 +103,7 @@ pub struct Gap {
     /// Mean wait for the first electron after the breakdown voltage is reached, s.
     pub statistical_lag: Option<Quantity>,
     /// Resistance of the gap while it conducts, Ω.
-    pub resistance: Option<Quantity>,
+    pub spark_resistance: Option<Quantity>,
     /// Voltage across the arc while the gap conducts, V.
     pub arc_drop: Option<Quantity>,
     /// Time for which the gap conducts, s.

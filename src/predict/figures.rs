@@ -1,10 +1,11 @@
 //! Plain figures of a setting from the charging law: period, first firing, reach, mean current and losses.
 //!
 //! Each is a function of the bench, the supply voltage and the gap voltage, so that one routine can propagate the
-//! tolerances of every input through all of them. Units: V, s, A, W. Ripple, recovery and scatter are not in them.
+//! tolerances of every input through all of them. Units: V, s, A, W. Ripple and scatter are not in them.
 
 use crate::bench::Bench;
 use crate::model::charging::{Circuit, MissingPart, Parts, Strength};
+use crate::model::firings::GapLaw;
 
 /// A figure of a bench at a supply voltage (none for a current source without a stated voltage) and a gap voltage; none
 /// if there is none (no firing).
@@ -60,9 +61,23 @@ pub(super) fn short_circuit_a(parts: &Parts) -> Option<f64> {
     Some(parts.current_limit_a.map_or(free, |limit| free.min(limit)))
 }
 
-/// Time from one firing to the next, s.
+/// Mean time from one firing to the next, s: with the recovery of the gap and the mean statistical lag.
 pub(super) fn period(bench: &Bench, supply_v: Option<f64>, gap_v: f64) -> Option<f64> {
-    circuit(bench, supply_v)?.period_s(gap_v).ok()
+    let circuit = circuit(bench, supply_v)?;
+    let law = GapLaw::from_bench(bench, gap_v);
+    let to_threshold = match law.recovery {
+        None => circuit.period_s(gap_v).ok()?,
+        Some(_) => {
+            let residual_v = circuit.residual_v();
+            let strength = law.strength(gap_v, residual_v);
+            let charging = circuit.with_ripple(None).time_to_breakdown_s(residual_v, 0.0, &strength).ok()?;
+            if charging == 0.0 {
+                return None;
+            }
+            circuit.conduction_s() + charging
+        }
+    };
+    Some(to_threshold + law.statistical_lag_s)
 }
 
 /// Time from switching on with an empty capacitor to the first firing, s.
@@ -70,7 +85,8 @@ pub(super) fn first_firing(bench: &Bench, supply_v: Option<f64>, gap_v: f64) -> 
     let circuit = circuit(bench, supply_v)?;
     // No first firing is stated for a gap that could not go on.
     circuit.period_s(gap_v).ok()?;
-    circuit.first_firing_s(gap_v).ok()
+    let lag_s = bench.gap.statistical_lag.map_or(0.0, |lag| lag.value);
+    circuit.first_firing_s(gap_v).ok().map(|time| time + lag_s)
 }
 
 /// Means over one period.

@@ -6,15 +6,19 @@
 
 mod figures;
 mod hazard;
+mod jitter;
 mod notes;
 mod pitch;
 mod propagate;
+mod ripple;
 mod setting;
 mod target;
 mod text;
 
 pub use hazard::{BLED_V, CAUTIONS, bleed_time_s, charge_c, energy_j};
+pub use jitter::{JitterForecast, Simulated};
 pub use pitch::{A4_HZ, Hearing, Pitch, pitch};
+pub use ripple::{LockRange, LockedPattern, RippleForecast};
 pub use target::{Sweep, supply_for_rate, sweep};
 pub use text::text;
 
@@ -93,7 +97,7 @@ pub struct Prediction {
     pub period_s: Option<Estimate>,
     /// Voltage across the gap at breakdown, V.
     pub gap_voltage_v: Option<Estimate>,
-    /// Standard deviation of single periods from the spread of the gap, s.
+    /// Standard deviation of single periods, s: spread of the gap, statistical lag and ripple together.
     pub period_jitter_s: Option<Estimate>,
     /// Time from switching on with an empty capacitor to the first firing, s.
     pub first_firing_s: Option<f64>,
@@ -113,6 +117,10 @@ pub struct Prediction {
     pub resistor_voltage_v: Option<f64>,
     /// Share of the time for which the gap conducts.
     pub duty: Option<f64>,
+    /// Parts of the jitter, and simulated firings beside the formulas.
+    pub jitter: Option<JitterForecast>,
+    /// What the ripple of the supply does.
+    pub ripple: Option<RippleForecast>,
     /// Where the gap voltage comes from, with its budget.
     pub gap: Option<GapVoltage>,
     /// What is stored at the highest voltage that the capacitor can take, against published thresholds.
@@ -129,10 +137,24 @@ pub struct Prediction {
 /// [`PredictError::Supply`] if the setting is not a positive finite voltage. What the bench lacks is no error: the
 /// figures that need it are absent and `notes` name the key.
 pub fn predict(bench: &Bench, supply_v: Option<f64>) -> Result<Prediction, PredictError> {
-    let setting = Setting::new(bench, supply_v)?;
-    let charged = setting.propagated(figures::period);
+    forecast(&Setting::new(bench, supply_v)?, true, &mut ripple::Locks::new())
+}
+
+/// The prediction of a setting. Without `thorough` no firings are simulated; `locks` keeps the locks of a bench from one
+/// setting to the next.
+fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) -> Result<Prediction, PredictError> {
+    let bench = setting.bench;
+    let rippled = setting.rippled();
+    let smooth = setting.propagated(figures::period);
+    // At the edge of firing there is a period only with the ripple.
+    let charged = smooth.or_else(|| setting.propagated_at_edge(ripple::rippled_period)).map(|charged| {
+        let mean_s = rippled.map_or(charged.value, |rippled| rippled.mean_period_s + setting.lag_s());
+        Propagated { value: mean_s, ..charged }
+    });
     let period_s = charged.map(Propagated::positive);
-    let jitter = setting.propagated(figures::spread_jitter);
+    let spread = setting.propagated(figures::spread_jitter);
+    let jitter =
+        charged.and_then(|_| setting.jitter_forecast(spread.map(|spread| spread.value), rippled.as_ref(), thorough));
     let firing_rate_hz = period_s.map(Estimate::reciprocal);
     let stored = figures::capacitance_f(&setting.parts).zip(setting.stored_v());
     let means = setting.means();
@@ -142,12 +164,12 @@ pub fn predict(bench: &Bench, supply_v: Option<f64>) -> Result<Prediction, Predi
         title: bench.title.clone(),
         supply_v: setting.supply.map(|supply| supply.value),
         fires: setting.fires,
-        reason: notes::reason(&setting),
+        reason: notes::reason(setting),
         least_supply_v: setting.least_supply_v(),
         firing_rate_hz,
         period_s,
         gap_voltage_v: setting.gap.as_ref().map(|gap| Estimate::normal(gap.voltage_v, gap.u_v)),
-        period_jitter_s: jitter.map(Propagated::positive),
+        period_jitter_s: jitter.as_ref().map(|jitter| jitter_estimate(jitter, spread)),
         first_firing_s: setting.figure(figures::first_firing),
         stored_energy_j: stored.map(|(c, v)| energy_j(c, v)),
         bleed_time_s: stored.zip(setting.parts.leakage_ohm).map(|((c, v), leakage)| bleed_time_s(leakage, c, v)),
@@ -157,11 +179,19 @@ pub fn predict(bench: &Bench, supply_v: Option<f64>) -> Result<Prediction, Predi
         resistor_power_w: means.and_then(|means| means.resistor_w),
         resistor_voltage_v: setting.resistor_voltage_v(),
         duty: period_s.zip(bench.gap.conduction_time).map(|(period, conducting)| conducting.value / period.value),
-        hazards: notes::hazards(&setting),
+        hazards: notes::hazards(setting),
         cautions: CAUTIONS.map(str::to_owned).to_vec(),
-        notes: notes::notes(&setting, charged),
-        gap: setting.gap,
+        notes: notes::notes(setting, charged, jitter.as_ref()),
+        ripple: rippled.and_then(|rippled| setting.ripple_forecast(&rippled, locks)),
+        jitter,
+        gap: setting.gap.clone(),
     })
+}
+
+/// The whole scatter of the periods, with the relative uncertainty of its part from the spread.
+fn jitter_estimate(jitter: &JitterForecast, spread: Option<Propagated>) -> Estimate {
+    let share = spread.map_or(0.0, |spread| if spread.value > 0.0 { spread.u / spread.value } else { 0.0 });
+    Propagated { value: jitter.total_s, u: share * jitter.total_s, at_the_edge: false }.positive()
 }
 
 #[cfg(test)]

@@ -2,9 +2,11 @@
 
 use super::figures::{self, capacitance_f, resistance_ohm, short_circuit_a};
 use super::hazard;
+use super::jitter::JitterForecast;
 use super::propagate::Propagated;
 use super::{Setting, bleed_time_s};
 use crate::bench::si;
+use crate::model::firings::GapLaw;
 
 /// From this current on the supply may keep a glow or an arc in the gap burning, A (published glow-to-arc transitions
 /// at atmospheric pressure, in argon, lie between 2 mA and 1 A).
@@ -13,8 +15,10 @@ const MAY_KEEP_BURNING_A: f64 = 2e-3;
 const LEAST_ARC_A: f64 = 0.4;
 /// Voltage rating of an ordinary film resistor, V (common practice: 250 V to 500 V).
 const ORDINARY_RESISTOR_V: f64 = 500.0;
-/// Recovery times within a period below which the strength of the gap is not back (exp(−5) is under 1 %).
-const RECOVERED_AFTER: f64 = 5.0;
+/// Share of its strength that a gap may lack before it is told.
+const LACKING: f64 = 0.002;
+/// How far the simulated jitter may be off before the formula is said not to hold.
+const FORMULA_HOLDS: f64 = 0.1;
 
 /// Why the gap fires or not.
 pub(super) fn reason(setting: &Setting<'_>) -> String {
@@ -77,7 +81,11 @@ pub(super) fn hazards(setting: &Setting<'_>) -> Vec<String> {
 }
 
 /// What is missing, assumed or doubtful.
-pub(super) fn notes(setting: &Setting<'_>, period_s: Option<Propagated>) -> Vec<String> {
+pub(super) fn notes(
+    setting: &Setting<'_>,
+    period_s: Option<Propagated>,
+    jitter: Option<&JitterForecast>,
+) -> Vec<String> {
     let mut said = missing(setting);
     said.extend(setting.gap.iter().flat_map(|gap| gap.notes.iter().cloned()));
     said.extend(assumed(setting, period_s));
@@ -91,6 +99,7 @@ pub(super) fn notes(setting: &Setting<'_>, period_s: Option<Propagated>) -> Vec<
             );
         }
     }
+    said.extend(jitter.into_iter().flat_map(jitter_notes));
     said.extend(burning(setting));
     said.extend(ratings(setting));
     said
@@ -155,7 +164,10 @@ fn missing(setting: &Setting<'_>) -> Vec<String> {
         charging.capacitance.is_none() && !law_without_c,
         "charging.capacitance is needed for the stored energy and the supply current",
     );
-    need(setting.bench.gap.spread.is_none(), "gap.spread is needed for the period jitter");
+    need(
+        setting.bench.gap.spread.is_none() && setting.bench.gap.statistical_lag.is_none(),
+        "gap.spread is needed for the period jitter",
+    );
     said
 }
 
@@ -202,13 +214,46 @@ fn ripple(setting: &Setting<'_>, period_s: f64) -> Option<String> {
 }
 
 fn recovery(setting: &Setting<'_>, period_s: f64) -> Option<String> {
-    let recovery_s = setting.bench.gap.recovery_time?.value;
-    (period_s < RECOVERED_AFTER * recovery_s).then(|| {
+    let gap = &setting.bench.gap;
+    let recovery_s = gap.recovery_time.filter(|recovery| recovery.value > 0.0)?.value;
+    let charging_s = period_s - gap.conduction_time.map_or(0.0, |time| time.value) - setting.lag_s();
+    let strength =
+        GapLaw::from_bench(setting.bench, setting.gap_v()?).strength(setting.gap_v()?, setting.parts.residual_v);
+    let lacking = 1.0 - strength.at(charging_s) / strength.settled_v;
+    (lacking > LACKING).then(|| {
         format!(
-            "the period is less than {RECOVERED_AFTER} times gap.recovery_time ({}); the gap will fire earlier than stated",
-            si(recovery_s, "s", 2)
+            "driven too fast: after {} the gap has not recovered (gap.recovery_time is {}) and fires at {}, {:.1} % below its \
+             own voltage",
+            si(charging_s, "s", 3),
+            si(recovery_s, "s", 2),
+            si(strength.at(charging_s), "V", 3),
+            100.0 * lacking
         )
     })
+}
+
+/// Where formula and simulation part.
+fn jitter_notes(jitter: &JitterForecast) -> Vec<String> {
+    let mut said = Vec::new();
+    if jitter.lag_s > 0.0 {
+        said.push(
+            "the statistical lag is exponential: single periods are skewed to the long side, and the voltage rises above the \
+             gap voltage while the gap waits"
+                .to_owned(),
+        );
+    }
+    let Some(simulated) = jitter.simulated else { return said };
+    // Statistical error of a standard deviation of normal values.
+    let chance = 4.0 / (2.0 * simulated.periods as f64).sqrt();
+    let off = simulated.period_jitter_s / jitter.total_s - 1.0;
+    if jitter.total_s > 0.0 && off.abs() > chance.max(FORMULA_HOLDS) {
+        said.push(format!(
+            "the formula for the jitter does not hold here: {} simulated firings scatter by {}",
+            simulated.periods + 1,
+            si(simulated.period_jitter_s, "s", 3)
+        ));
+    }
+    said
 }
 
 fn burning(setting: &Setting<'_>) -> Option<String> {

@@ -19,7 +19,7 @@ pub(super) struct Propagated {
 type Slot = fn(&mut Bench) -> &mut Option<Quantity>;
 
 /// Every input beside supply and gap voltage.
-const INPUTS: [Slot; 10] = [
+const INPUTS: [Slot; 13] = [
     |bench| &mut bench.charging.resistance,
     |bench| &mut bench.charging.current,
     |bench| &mut bench.charging.time_constant,
@@ -30,6 +30,9 @@ const INPUTS: [Slot; 10] = [
     |bench| &mut bench.gap.conduction_time,
     |bench| &mut bench.gap.stray_capacitance,
     |bench| &mut bench.gap.spread,
+    |bench| &mut bench.gap.statistical_lag,
+    |bench| &mut bench.gap.recovery_time,
+    |bench| &mut bench.gap.recovery_depth,
 ];
 
 /// The figure at the values of the bench, with the uncertainty that the tolerances make.
@@ -41,13 +44,17 @@ pub(super) fn propagate(bench: &Bench, supply: Option<Quantity>, gap: Quantity, 
         let at = |side: f64| figure(bench, Some(supply.value + side * supply.u()), gap.value);
         moved.push((supply.u(), [1.0, -1.0].map(at)));
     }
+    let mut other = bench.clone();
     for slot in INPUTS {
-        let mut other = bench.clone();
         let Some(input) = *slot(&mut other) else { continue };
+        if input.u() == 0.0 {
+            continue;
+        }
         let ends = [1.0, -1.0].map(|side| {
             *slot(&mut other) = Some(Quantity::exact(input.value + side * input.u()));
             figure(&other, supply_v, gap.value)
         });
+        *slot(&mut other) = Some(input);
         moved.push((input.u(), ends));
     }
     let mut variance = 0.0;

@@ -36,8 +36,11 @@ impl<'a> Setting<'a> {
         let supply = supply_v.map(|volts| set_to(bench.supply.voltage, volts)).or(bench.supply.voltage);
         let charging = figures::charging(bench, supply.map(|supply| supply.value)).ok();
         let reach_v = charging.map(|charging| charging.circuit.crest_v());
+        let supply_set = supply.map(|supply| supply.value);
         let fires = charging.zip(gap.as_ref()).map(|(charging, gap)| {
-            gap.voltage_v < charging.circuit.crest_v() && gap.voltage_v > charging.circuit.residual_v()
+            let at_crests = gap.voltage_v < charging.circuit.crest_v() && charging.circuit.ripple().is_some();
+            gap.voltage_v > charging.circuit.residual_v()
+                && (at_crests || figures::period(bench, supply_set, gap.voltage_v).is_some())
         });
         let parts = figures::parts(bench, supply.map(|supply| supply.value));
         Ok(Self { bench, parts, charging, supply, gap, reach_v, fires })
@@ -58,6 +61,24 @@ impl<'a> Setting<'a> {
     pub(super) fn propagated(&self, figure: Figure) -> Option<Propagated> {
         let gap = self.gap.as_ref()?.quantity();
         propagate(self.bench, self.supply, gap, figure).filter(|found| found.value.is_finite() && found.u.is_finite())
+    }
+
+    /// The same with the tolerances of supply and gap alone, for figures that take long.
+    pub(super) fn propagated_at_edge(&self, figure: Figure) -> Option<Propagated> {
+        let (supply, gap) = (self.supply?, self.gap.as_ref()?.quantity());
+        let value = figure(self.bench, Some(supply.value), gap.value)?;
+        let ends = [
+            (figure(self.bench, Some(supply.value + supply.u()), gap.value), supply.u()),
+            (figure(self.bench, Some(supply.value), gap.value - gap.u()), gap.u()),
+        ];
+        // One side only: on the other it may not fire.
+        let part = |end: &(Option<f64>, f64)| if end.1 > 0.0 { end.0.map_or(0.0, |end| end - value) } else { 0.0 };
+        Some(Propagated { value, u: part(&ends[0]).hypot(part(&ends[1])), at_the_edge: true })
+    }
+
+    /// Mean statistical lag, s.
+    pub(super) fn lag_s(&self) -> f64 {
+        self.bench.gap.statistical_lag.map_or(0.0, |lag| lag.value)
     }
 
     pub(super) fn means(&self) -> Option<Means> {

@@ -1,6 +1,7 @@
 //! A range of settings, and the setting that gives a rate.
 
-use super::{FORMAT, PredictError, Prediction, Setting, figures, notes, predict};
+use super::ripple::Locks;
+use super::{FORMAT, PredictError, Prediction, Setting, figures, forecast, notes};
 use crate::bench::Bench;
 use serde::{Deserialize, Serialize};
 use std::cmp::Ordering;
@@ -27,8 +28,10 @@ pub fn sweep(bench: &Bench, low_v: f64, high_v: f64, count: usize) -> Result<Swe
         return Err(PredictError::Range { low: low_v, high: high_v, count });
     }
     let step_v = (high_v - low_v) / (count - 1) as f64;
-    let settings =
-        (0..count).map(|k| predict(bench, Some(low_v + step_v * k as f64))).collect::<Result<Vec<_>, _>>()?;
+    let mut locks = Locks::new();
+    let settings = (0..count)
+        .map(|k| forecast(&Setting::new(bench, Some(low_v + step_v * k as f64))?, false, &mut locks))
+        .collect::<Result<Vec<_>, _>>()?;
     Ok(Sweep { format: FORMAT.to_owned(), settings })
 }
 
@@ -45,7 +48,7 @@ pub fn supply_for_rate(bench: &Bench, rate_hz: f64) -> Result<f64, PredictError>
     // Any setting will do to ask for the least one.
     let setting = Setting::new(bench, Some(1.0))?;
     let (Some(least_v), Some(gap_v)) = (setting.least_supply_v(), setting.gap_v()) else {
-        return Err(PredictError::Missing(notes::notes(&setting, None).join("; ")));
+        return Err(PredictError::Missing(notes::notes(&setting, None, None).join("; ")));
     };
     let rate = |supply_v: f64| figures::period(bench, Some(supply_v), gap_v).map_or(0.0, f64::recip);
     let (mut low_v, mut high_v) = (least_v, MOST_SUPPLY_V.max(least_v));

@@ -19,9 +19,13 @@ pub fn text(prediction: &Prediction) -> String {
             let _ = writeln!(out, "  {name:<16}{figure}");
         }
     }
-    for (heading, lines) in
-        [("Stored energy", &prediction.hazards), ("Cautions", &prediction.cautions), ("Notes", &prediction.notes)]
-    {
+    let ripple = prediction.ripple.as_ref().map_or_else(Vec::new, super::RippleForecast::words);
+    for (heading, lines) in [
+        ("Ripple", &ripple),
+        ("Stored energy", &prediction.hazards),
+        ("Cautions", &prediction.cautions),
+        ("Notes", &prediction.notes),
+    ] {
         if !lines.is_empty() {
             let _ = writeln!(out, "\n{heading}");
         }
