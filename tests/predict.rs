@@ -212,8 +212,8 @@ proptest! {
 
     #[test]
     fn the_least_supply_that_fires_moves_without_jumps(
-        gap_v in 1e3..20e3f64, leakage in 20e6..1e12f64, ripple in 0.0001..0.1f64, frequency in 20.0..1e3f64,
-        r in 1e5..1e7f64, c in 1e-10..1e-8f64, which in 0..6usize,
+        gap_v in 1e3..20e3f64, leakage in 20e6..1e12f64, ripple in 0.0001..0.1f64, frequency in 50.0..400.0f64,
+        r in 1e5..3e6f64, c in 1e-10..3e-9f64, which in 0..6usize,
     ) {
         let least = |values: [f64; 6]| {
             let mut bench = kilovolts();

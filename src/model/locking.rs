@@ -17,6 +17,10 @@ const SETTLE: usize = 96;
 /// Firings over which means are taken. The weights of the mean vanish smoothly at both ends, which makes the mean of a
 /// quasi-periodic series converge faster than any power of this.
 const COUNT: usize = 160;
+/// Periods of the ripple in one period of the gap beyond which locks are so narrow that no supply holds one.
+const FAR_APART: f64 = 200.0;
+/// Firings over which means are then taken.
+const COUNT_FAR_APART: usize = 30;
 /// Most firings in one pattern that is looked for.
 const LONGEST_PATTERN: usize = 12;
 /// Turns by which a pattern may fail to repeat.
@@ -90,6 +94,9 @@ impl<'a> PhaseMap<'a> {
     /// # Errors
     /// [`NoFiring`] if the gap does not fire, or stops.
     pub fn settled(&self) -> Result<Rippled, NoFiring> {
+        if self.turned(0.0)? > FAR_APART {
+            return self.run(0, COUNT_FAR_APART);
+        }
         let samples = self.samples()?;
         if let Some(lock) = self.single_lock(&samples) {
             let period_s = f64::from(lock.cycles) / self.ripple.frequency_hz;
@@ -101,13 +108,18 @@ impl<'a> PhaseMap<'a> {
                 lock: Some(lock),
             });
         }
+        self.run(SETTLE, COUNT)
+    }
+
+    /// Follows the map over `count` firings after `settle` others.
+    fn run(&self, settle: usize, count: usize) -> Result<Rippled, NoFiring> {
         let mut turns = 0.0f64;
-        for _ in 0..SETTLE {
+        for _ in 0..settle {
             turns = (turns + self.turned(turns)?).fract();
         }
-        let mut periods = Vec::with_capacity(COUNT);
-        let mut phases = Vec::with_capacity(COUNT);
-        for _ in 0..COUNT {
+        let mut periods = Vec::with_capacity(count);
+        let mut phases = Vec::with_capacity(count);
+        for _ in 0..count {
             let next = self.turned(turns)?;
             phases.push(turns);
             periods.push(next);
@@ -149,12 +161,13 @@ impl<'a> PhaseMap<'a> {
 
     fn summary(&self, phases: &[f64], turned: &[f64]) -> Rippled {
         let lock = pattern(phases, turned);
+        let count = turned.len();
         let weights: Vec<f64> = match lock {
             Some(lock) => {
-                let last = COUNT - COUNT % lock.firings as usize;
-                (0..COUNT).map(|k| if k < last { 1.0 } else { 0.0 }).collect()
+                let last = count - count % lock.firings as usize;
+                (0..count).map(|k| if k < last { 1.0 } else { 0.0 }).collect()
             }
-            None => (0..COUNT).map(|k| smooth((k as f64 + 0.5) / COUNT as f64)).collect(),
+            None => (0..count).map(|k| smooth((k as f64 + 0.5) / count as f64)).collect(),
         };
         let total: f64 = weights.iter().sum();
         let mean = turned.iter().zip(&weights).map(|(turned, weight)| turned * weight).sum::<f64>() / total;

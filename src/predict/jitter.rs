@@ -15,6 +15,9 @@ use serde::{Deserialize, Serialize};
 const PERIODS: f64 = 4000.0;
 /// Simulated periods where every one of them takes a walk through the recovery.
 const PERIODS_RECOVERING: f64 = 800.0;
+/// Most periods of the ripple that are simulated, and the least number of firings all the same.
+const RIPPLES: f64 = 20_000.0;
+const LEAST_PERIODS: f64 = 100.0;
 /// Seed of the simulation: any will do, and the same bench gives the same figures.
 const SEED: u64 = 1;
 
@@ -89,7 +92,11 @@ impl Setting<'_> {
     fn simulated(&self, law: &GapLaw) -> Option<Simulated> {
         let circuit = self.charging.as_ref()?.circuit;
         let about_s = self.figure(super::figures::period).or_else(|| self.figure(super::ripple::rippled_period))?;
-        let periods = if law.recovery.is_some() { PERIODS_RECOVERING } else { PERIODS };
+        let mut periods = if law.recovery.is_some() { PERIODS_RECOVERING } else { PERIODS };
+        if let Some(ripple) = circuit.ripple() {
+            // Every period may take a walk through all of its ripple.
+            periods = periods.min(RIPPLES / (about_s * ripple.frequency_hz)).max(LEAST_PERIODS);
+        }
         let plan = Plan {
             rhythm: Rhythm::Bench { circuit, gap: *law },
             faults: Faults::none(),

@@ -9,7 +9,9 @@ mod hazard;
 mod jitter;
 mod notes;
 mod pitch;
+mod plot;
 mod propagate;
+mod remarks;
 mod ripple;
 mod setting;
 mod target;
@@ -17,10 +19,11 @@ mod text;
 
 pub use hazard::{BLED_V, CAUTIONS, bleed_time_s, charge_c, energy_j};
 pub use jitter::{JitterForecast, Simulated};
-pub use pitch::{A4_HZ, Hearing, Pitch, pitch};
+pub use pitch::{A4_HZ, Hearing, NotATarget, Pitch, parse_target, pitch};
+pub use plot::plot_svg;
 pub use ripple::{LockRange, LockedPattern, RippleForecast};
-pub use target::{Sweep, supply_for_rate, sweep};
-pub use text::text;
+pub use target::{Alternative, Sweep, Target, supply_for_rate, sweep, target};
+pub use text::{sweep_text, target_text, text};
 
 use crate::bench::Bench;
 use crate::estimate::Estimate;
@@ -107,6 +110,10 @@ pub struct Prediction {
     pub bleed_time_s: Option<f64>,
     /// How the rate is heard.
     pub pitch: Option<Pitch>,
+    /// Pitch at the low and at the high end of the interval of the rate.
+    pub pitch_band: Option<(Pitch, Pitch)>,
+    /// What a volt of supply does to the rate, Hz/V; ripple left out.
+    pub slope_hz_per_v: Option<f64>,
     /// Mean current out of the supply, A.
     pub supply_current_a: Option<f64>,
     /// Mean power out of the supply, W.
@@ -174,6 +181,8 @@ fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) ->
         stored_energy_j: stored.map(|(c, v)| energy_j(c, v)),
         bleed_time_s: stored.zip(setting.parts.leakage_ohm).map(|((c, v), leakage)| bleed_time_s(leakage, c, v)),
         pitch: firing_rate_hz.and_then(|rate| pitch(rate.value)),
+        pitch_band: firing_rate_hz.and_then(|rate| pitch(rate.low).zip(pitch(rate.high))),
+        slope_hz_per_v: setting.slope_hz_per_v(),
         supply_current_a,
         supply_power_w: supply_current_a.zip(setting.supply).map(|(current, supply)| current * supply.value),
         resistor_power_w: means.and_then(|means| means.resistor_w),

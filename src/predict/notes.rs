@@ -5,14 +5,19 @@ use super::hazard;
 use super::jitter::JitterForecast;
 use super::propagate::Propagated;
 use super::{Setting, bleed_time_s};
-use crate::bench::si;
+use crate::bench::{Bench, si};
 use crate::model::firings::GapLaw;
+use crate::model::receiver::DEFAULT_BANDWIDTH_HZ;
 
 /// From this current on the supply may keep a glow or an arc in the gap burning, A (published glow-to-arc transitions
 /// at atmospheric pressure, in argon, lie between 2 mA and 1 A).
 const MAY_KEEP_BURNING_A: f64 = 2e-3;
 /// Least arc current of copper and silver contacts in air, A (Holm: from memory).
 const LEAST_ARC_A: f64 = 0.4;
+/// Jitter from which on a tone is rough, as a share of the period (common practice).
+const ROUGH_JITTER: f64 = 0.05;
+/// Least rate that is heard as a tone, Hz (published: a clear pitch of click trains from 43 Hz).
+const HEARD_AS_TONE_HZ: f64 = 40.0;
 /// Voltage rating of an ordinary film resistor, V (common practice: 250 V to 500 V).
 const ORDINARY_RESISTOR_V: f64 = 500.0;
 /// Share of its strength that a gap may lack before it is told.
@@ -90,6 +95,7 @@ pub(super) fn notes(
     said.extend(setting.gap.iter().flat_map(|gap| gap.notes.iter().cloned()));
     said.extend(assumed(setting, period_s));
     if let Some(period_s) = period_s {
+        said.extend(hearing(setting, period_s.value, jitter));
         said.extend(ripple(setting, period_s.value));
         said.extend(recovery(setting, period_s.value));
         if period_s.at_the_edge {
@@ -133,7 +139,7 @@ fn shorted(setting: &Setting<'_>) -> Option<f64> {
     Some(resistance_ohm(&setting.parts)? * short_circuit_a(&setting.parts)?.powi(2))
 }
 
-fn missing(setting: &Setting<'_>) -> Vec<String> {
+pub(super) fn missing(setting: &Setting<'_>) -> Vec<String> {
     let charging = &setting.bench.charging;
     let mut said = Vec::new();
     let mut need = |absent: bool, text: &str| {
@@ -230,6 +236,57 @@ fn recovery(setting: &Setting<'_>, period_s: f64) -> Option<String> {
             100.0 * lacking
         )
     })
+}
+
+/// Rate from which on clicks overlap in the receiver of the bench, Hz: one third of its bandwidth. (With spacing times
+/// bandwidth below 3 the random carrier phase moves the peaks of neighbours; below 2 they merge.)
+pub(super) fn clicks_overlap_hz(bench: &Bench) -> f64 {
+    bench.receiver.bandwidth.map_or(DEFAULT_BANDWIDTH_HZ, |bandwidth| bandwidth.value) / 3.0
+}
+
+/// Jitter, as a share of the period, from which on no pitch is left: the spectrum of a train of firings with independent
+/// periods stands by (1 + R)/(1 − R), R = exp(−2π²·jitter²), above its mean at the rate (renewal process); where that is
+/// less than two, 3 dB, nothing rings out of the noise.
+pub(super) fn pitch_lost_jitter() -> f64 {
+    (3f64.ln() / 2.0).sqrt() / std::f64::consts::PI
+}
+
+/// What the receiver and the ear make of it.
+fn hearing(setting: &Setting<'_>, period_s: f64, jitter: Option<&JitterForecast>) -> Vec<String> {
+    let mut said = Vec::new();
+    let limit_hz = clicks_overlap_hz(setting.bench);
+    if 1.0 / period_s > limit_hz {
+        let whose = if setting.bench.receiver.bandwidth.is_some() { "this" } else { "an ordinary AM" };
+        said.push(format!(
+            "above {} clicks overlap in {whose} receiver: single clicks are lost, the tone at the rate is not",
+            si(limit_hz, "/s", 3)
+        ));
+    }
+    if let Some((low, high)) = setting.bench.receiver.audio_band {
+        let rate_hz = 1.0 / period_s;
+        if rate_hz > high.value {
+            said.push("the rate lies above the audio band of the receiver: no tone is heard".to_owned());
+        } else if rate_hz < low.value && rate_hz > HEARD_AS_TONE_HZ {
+            said.push(
+                "the rate lies below the audio band of the receiver; the ear hears its pitch from the harmonics all the same"
+                    .to_owned(),
+            );
+        }
+    }
+    if let Some(share) = jitter.map(|jitter| jitter.total_s / period_s) {
+        if share > pitch_lost_jitter() {
+            said.push(format!(
+                "a jitter of {:.0} % of the period leaves no pitch: it is heard as noise",
+                100.0 * share
+            ));
+        } else if share > ROUGH_JITTER {
+            said.push(format!(
+                "a jitter of {:.0} % of the period makes the tone rough (common practice: a clean tone needs less than 5 %)",
+                100.0 * share
+            ));
+        }
+    }
+    said
 }
 
 /// Where formula and simulation part.

@@ -10,7 +10,7 @@ use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
 
 /// Most periods of the ripple in one period of the gap for which the lock is looked for.
-const MOST_CYCLES: f64 = 1000.0;
+const MOST_CYCLES: f64 = 200.0;
 /// Distance from a lock, in widths of it, within which it is told.
 const NEAR: f64 = 4.0;
 

@@ -76,6 +76,15 @@ impl<'a> Setting<'a> {
         Some(Propagated { value, u: part(&ends[0]).hypot(part(&ends[1])), at_the_edge: true })
     }
 
+    /// Change of the rate with the supply voltage, Hz/V, ripple left out.
+    pub(super) fn slope_hz_per_v(&self) -> Option<f64> {
+        /// Half step of the difference, relative.
+        const STEP: f64 = 1e-5;
+        let (supply_v, gap_v) = (self.supply_v()?, self.gap_v()?);
+        let rate = |side: f64| figures::period(self.bench, Some(supply_v * (1.0 + side * STEP)), gap_v).map(f64::recip);
+        Some((rate(1.0)? - rate(-1.0)?) / (2.0 * STEP * supply_v))
+    }
+
     /// Mean statistical lag, s.
     pub(super) fn lag_s(&self) -> f64 {
         self.bench.gap.statistical_lag.map_or(0.0, |lag| lag.value)
