@@ -16,7 +16,7 @@ const PERIODS: f64 = 4000.0;
 /// Simulated periods where every one of them takes a walk through the recovery.
 const PERIODS_RECOVERING: f64 = 800.0;
 /// Most periods of the ripple that are simulated, and the least number of firings all the same.
-const RIPPLES: f64 = 20_000.0;
+const RIPPLES: f64 = 6000.0;
 const LEAST_PERIODS: f64 = 100.0;
 /// Seed of the simulation: any will do, and the same bench gives the same figures.
 const SEED: u64 = 1;

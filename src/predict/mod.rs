@@ -4,6 +4,7 @@
 //! Works from what the bench states; a figure for which a key is missing is absent and a note names the key. Everything in
 //! SI units.
 
+mod burst;
 mod figures;
 mod hazard;
 mod jitter;
@@ -17,13 +18,14 @@ mod setting;
 mod target;
 mod text;
 
+pub use burst::{BurstForecast, ModeForecast, PeakReadings};
 pub use hazard::{BLED_V, CAUTIONS, bleed_time_s, charge_c, energy_j};
 pub use jitter::{JitterForecast, Simulated};
 pub use pitch::{A4_HZ, Hearing, NotATarget, Pitch, parse_target, pitch};
 pub use plot::plot_svg;
 pub use ripple::{LockRange, LockedPattern, RippleForecast};
 pub use target::{Alternative, Sweep, Target, supply_for_rate, sweep, target};
-pub use text::{sweep_text, target_text, text};
+pub use text::{sweep_text, text};
 
 use crate::bench::Bench;
 use crate::estimate::Estimate;
@@ -128,8 +130,13 @@ pub struct Prediction {
     pub jitter: Option<JitterForecast>,
     /// What the ripple of the supply does.
     pub ripple: Option<RippleForecast>,
+    /// The ring of every spark.
+    pub burst: Option<BurstForecast>,
     /// Where the gap voltage comes from, with its budget.
     pub gap: Option<GapVoltage>,
+    /// How to get the rate that was asked for, if one was.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub target: Option<Target>,
     /// What is stored at the highest voltage that the capacitor can take, against published thresholds.
     pub hazards: Vec<String>,
     /// Always shown.
@@ -166,6 +173,11 @@ fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) ->
     let stored = figures::capacitance_f(&setting.parts).zip(setting.stored_v());
     let means = setting.means();
     let supply_current_a = means.map(|means| means.supply_a);
+    let mut notes = notes::notes(setting, charged, jitter.as_ref());
+    let burst = setting.burst_forecast().unwrap_or_else(|refused| {
+        notes.push(refused);
+        None
+    });
     Ok(Prediction {
         format: FORMAT.to_owned(),
         title: bench.title.clone(),
@@ -188,11 +200,13 @@ fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) ->
         resistor_power_w: means.and_then(|means| means.resistor_w),
         resistor_voltage_v: setting.resistor_voltage_v(),
         duty: period_s.zip(bench.gap.conduction_time).map(|(period, conducting)| conducting.value / period.value),
+        target: None,
         hazards: notes::hazards(setting),
         cautions: CAUTIONS.map(str::to_owned).to_vec(),
-        notes: notes::notes(setting, charged, jitter.as_ref()),
+        notes,
         ripple: rippled.and_then(|rippled| setting.ripple_forecast(&rippled, locks)),
         jitter,
+        burst,
         gap: setting.gap.clone(),
     })
 }

@@ -174,6 +174,11 @@ pub(super) fn missing(setting: &Setting<'_>) -> Vec<String> {
         setting.bench.gap.spread.is_none() && setting.bench.gap.statistical_lag.is_none(),
         "gap.spread is needed for the period jitter",
     );
+    need(
+        super::burst::missing(setting.bench),
+        "tank.frequency with tank.quality, or tank.inductance with tank.resistance, or tank.peaks with tank.peak_spacing is \
+         needed for the ring",
+    );
     said
 }
 

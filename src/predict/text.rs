@@ -14,6 +14,10 @@ pub fn text(prediction: &Prediction) -> String {
     let setting = prediction.supply_v.map_or_else(String::new, |volts| format!(" at {}", si(volts, "V", 4)));
     // Writing to a String cannot fail.
     let _ = writeln!(out, "{title}{setting}\n  {}\n", prediction.reason);
+    if let Some(target) = &prediction.target {
+        let _ = writeln!(out, "  {}", target_text(target).replace('\n', "\n  ").trim_end());
+        out.push('\n');
+    }
     for (name, figure) in figures(prediction) {
         if let Some(figure) = figure {
             let _ = writeln!(out, "  {name:<16}{figure}");
@@ -185,8 +189,7 @@ fn row(setting: &Prediction) -> String {
 }
 
 /// How to get a rate, as text.
-#[must_use]
-pub fn target_text(target: &Target) -> String {
+fn target_text(target: &Target) -> String {
     let supply = with_uncertainty(target.supply_v.value, target.supply_v.u, "V");
     let mut out = format!("{} needs a supply of {supply}", si(target.firing_rate_hz, "Hz", 5));
     if target.supply_v.u > 0.0 {
