@@ -75,9 +75,9 @@ fn frequency_and_quality_from_the_parts_are_those_of_the_simulated_ring() {
     for name in PLAIN {
         let (case, modes) = (case(name), case(name).network().closed());
         let mode = modes[0];
-        // The table's Q of the eigenvalues is π over the decrement.
+        // The table's Q of the eigenvalues is π over the decrement; its network has the stray capacitance of the gap too.
         assert!(near(mode.ring_hz, 1e6 * case.get("f_eig_MHz"), EIGENVALUES), "{name}: {mode:?}");
-        assert!(near(PI / mode.decrement(), case.get("Q_eig"), 3e-4), "{name}: {mode:?}");
+        assert!(near(PI / mode.decrement(), case.get("Q_eig"), 5e-4), "{name}: {mode:?}");
         assert!(near(mode.ring_hz, 1e6 * case.get("f_closed_MHz"), FREQUENCY), "{name}: {mode:?}");
         assert!(near(mode.quality(), case.get("Q_all"), QUALITY), "{name}: {mode:?}");
         assert_eq!(modes.len(), if name.starts_with('p') { 2 } else { 1 }, "{name}: {modes:?}");

@@ -30,7 +30,7 @@ pub struct JitterForecast {
     pub lag_s: f64,
     /// In step with the ripple, from the phase map, s.
     pub ripple_s: f64,
-    /// Standard deviation of single periods, by formula, s.
+    /// Standard deviation of single periods, by formula (at the edge of firing from the simulated ones), s.
     pub total_s: f64,
     /// Standard deviation of the difference of neighbouring periods, by formula, ripple left out, s.
     pub cycle_to_cycle_s: f64,
@@ -73,6 +73,19 @@ impl Setting<'_> {
         if spread_s.is_none() && lag_s == 0.0 && rippled.is_none() {
             return None;
         }
+        let simulated = if thorough { self.simulated(&law) } else { None };
+        if spread_s.is_none() && law.spread > 0.0 {
+            // At the edge of firing the charging law has no slope to divide by; only simulated firings tell.
+            let simulated = simulated?;
+            return Some(JitterForecast {
+                spread_s,
+                lag_s,
+                ripple_s: rippled.map_or(0.0, |rippled| rippled.period_sd_s),
+                total_s: simulated.period_jitter_s,
+                cycle_to_cycle_s: simulated.cycle_to_cycle_s,
+                simulated: Some(simulated),
+            });
+        }
         let spread = spread_s.unwrap_or(0.0);
         let single = spread.hypot(lag_s);
         let slope = rippled.and_then(|rippled| rippled.lock?.slope);
@@ -85,7 +98,7 @@ impl Setting<'_> {
             ripple_s,
             total_s: (single * in_lock).hypot(ripple_s),
             cycle_to_cycle_s: neighbours,
-            simulated: if thorough { self.simulated(&law) } else { None },
+            simulated,
         })
     }
 

@@ -24,8 +24,10 @@ pub fn text(prediction: &Prediction) -> String {
         }
     }
     let ripple = prediction.ripple.as_ref().map_or_else(Vec::new, super::RippleForecast::words);
+    let ring = prediction.burst.as_ref().map_or_else(Vec::new, super::BurstForecast::words);
     for (heading, lines) in [
         ("Ripple", &ripple),
+        ("Ring", &ring),
         ("Stored energy", &prediction.hazards),
         ("Cautions", &prediction.cautions),
         ("Notes", &prediction.notes),

@@ -4,7 +4,7 @@
 //! is a rectangular distribution (4.3.7).
 
 use super::{Law, Level, NoGapVoltage, level};
-use crate::bench::{Bench, Electrodes, Quantity, Tolerance};
+use crate::bench::{Bench, Electrodes, Quantity, Tolerance, si};
 use crate::model::air::Air;
 use serde::{Deserialize, Serialize};
 
@@ -77,7 +77,7 @@ pub fn gap_voltage(bench: &Bench) -> Result<GapVoltage, NoGapVoltage> {
             band: 0.0,
             contributions,
             rule_v,
-            notes: Vec::new(),
+            notes: beside(bench, voltage_v).into_iter().collect(),
         });
     }
     let electrodes = gap.electrodes.ok_or(NoGapVoltage::Missing("gap.electrodes"))?;
@@ -113,6 +113,20 @@ pub fn gap_voltage(bench: &Bench) -> Result<GapVoltage, NoGapVoltage> {
     let u_v = contributions.iter().map(|part| part.u_v * part.u_v).sum::<f64>().sqrt();
     let notes = notes(bench, electrodes, &found, &air);
     Ok(GapVoltage { voltage_v: found.voltage_v, u_v, law: found.law, band: found.band, contributions, rule_v, notes })
+}
+
+/// What the breakdown law gives for the electrodes of a bench whose gap voltage is stated.
+fn beside(bench: &Bench, stated_v: f64) -> Option<String> {
+    let gap = &bench.gap;
+    let air = Air::of_bench(&bench.air);
+    let found = level(gap.electrodes?, gap.diameter.map(|d| d.value), gap.spacing?.value, &air).ok()?;
+    Some(format!(
+        "gap.voltage is taken as stated; for these electrodes the {} gives {} ± {:.0} %, {:+.0} % off",
+        found.law.words(),
+        si(found.voltage_v, "V", 3),
+        100.0 * found.band,
+        100.0 * (found.voltage_v / stated_v - 1.0)
+    ))
 }
 
 fn evaluate(electrodes: Electrodes, has_diameter: bool, inputs: &Inputs) -> Result<Level, NoGapVoltage> {
