@@ -194,6 +194,7 @@ const DIMENSIONS: [Dimension; 14] = [
     Dimension::Pressure,
     Dimension::Length,
     Dimension::Fraction,
+    Dimension::Drift,
     Dimension::Level,
     Dimension::Ratio,
     Dimension::Number,

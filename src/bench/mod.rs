@@ -94,6 +94,8 @@ pub struct Gap {
     pub spread: Option<Quantity>,
     /// First-order memory of the breakdown voltage from firing to firing, −1..1.
     pub memory: Option<Quantity>,
+    /// Relative change of the breakdown voltage with time, 1/s.
+    pub drift: Option<Quantity>,
     /// Voltage left on the capacitor after a spark, V (either sign).
     pub residual_voltage: Option<Quantity>,
     /// Time constant of recovery after a spark, s.

@@ -138,17 +138,50 @@ fn simpson(from: f64, to: f64, f: &dyn Fn(f64) -> f64) -> f64 {
     (f(from) + inner + f(to)) * step / 3.0
 }
 
-/// Standard deviation of single periods that the spread of the gap makes, s: half the change of the period between one
-/// spread below and one above, the first order σ_T = σ_Vb/(dv/dt) where the spread is small. Memory from firing to
-/// firing does not change it.
+/// Mean period of a gap that scatters, s: the charging law is curved, so that the mean of the periods lies above the period
+/// of the mean voltage by half of d²T/dVb² times the variance. Near the edge of firing, where the scattered voltages are out
+/// of reach, no more of the spread counts than half of what is left to the reach.
+pub(super) fn mean_period(bench: &Bench, supply_v: Option<f64>, gap_v: f64) -> Option<f64> {
+    let centre = period(bench, supply_v, gap_v)?;
+    let spread = bench.gap.spread.map_or(0.0, |spread| spread.value);
+    if spread == 0.0 {
+        return Some(centre);
+    }
+    let left = circuit(bench, supply_v)?.reach_v() / gap_v - 1.0;
+    let step = if left > 0.0 { spread.min(0.5 * left) } else { spread };
+    let ends = [1.0 + step, 1.0 - step].map(|part| period(bench, supply_v, gap_v * part));
+    match ends {
+        [Some(above), Some(below)] => Some(centre + 0.5 * (above + below - 2.0 * centre)),
+        _ => Some(centre),
+    }
+}
+
+/// Points and weights of the five-point Gauss–Hermite rule for a standard normal variable (Abramowitz & Stegun, table 25.10):
+/// exact up to the ninth power.
+const NORMAL_RULE: [(f64, f64); 5] = [
+    (-2.856_970_013_872_806, 0.011_257_411_327_720_69),
+    (-1.355_626_179_974_266, 0.222_075_922_005_612_6),
+    (0.0, 0.533_333_333_333_333_3),
+    (1.355_626_179_974_266, 0.222_075_922_005_612_6),
+    (2.856_970_013_872_806, 0.011_257_411_327_720_69),
+];
+
+/// Standard deviation of single periods that the spread of the gap makes, s: that of the period over normally distributed
+/// gap voltages, σ_T = σ_Vb/(dv/dt) in the first order. Where some of them are out of reach, half the change between one
+/// spread below and one above. Memory from firing to firing does not change it.
 pub(super) fn spread_jitter(bench: &Bench, supply_v: Option<f64>, gap_v: f64) -> Option<f64> {
     let spread = bench.gap.spread?.value;
     let centre = period(bench, supply_v, gap_v)?;
-    let ends = [1.0 + spread, 1.0 - spread].map(|part| period(bench, supply_v, gap_v * part));
-    match ends {
+    let at = |z: f64| period(bench, supply_v, gap_v * (1.0 + spread * z)).map(|found| found - centre);
+    let points: Option<Vec<(f64, f64)>> = NORMAL_RULE.iter().map(|(z, weight)| Some((at(*z)?, *weight))).collect();
+    if let Some(points) = points {
+        let mean: f64 = points.iter().map(|(change, weight)| change * weight).sum();
+        return Some(points.iter().map(|(change, weight)| (change - mean).powi(2) * weight).sum::<f64>().sqrt());
+    }
+    match [at(1.0), at(-1.0)] {
         [Some(above), Some(below)] => Some((above - below) / 2.0),
-        [None, Some(below)] => Some(centre - below),
-        [Some(above), None] => Some(above - centre),
+        [None, Some(below)] => Some(-below),
+        [Some(above), None] => Some(above),
         [None, None] => None,
     }
 }

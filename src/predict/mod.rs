@@ -128,6 +128,8 @@ pub struct Prediction {
     pub duty: Option<f64>,
     /// Parts of the jitter, and simulated firings beside the formulas.
     pub jitter: Option<JitterForecast>,
+    /// Relative change of the rate per second that the drift of the gap makes, 1/s.
+    pub rate_drift_per_s: Option<f64>,
     /// What the ripple of the supply does.
     pub ripple: Option<RippleForecast>,
     /// The ring of every spark.
@@ -159,10 +161,11 @@ pub fn predict(bench: &Bench, supply_v: Option<f64>) -> Result<Prediction, Predi
 fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) -> Result<Prediction, PredictError> {
     let bench = setting.bench;
     let rippled = setting.rippled();
-    let smooth = setting.propagated(figures::period);
+    let smooth = setting.propagated(figures::mean_period);
+    let curvature_s = setting.curvature_s();
     // At the edge of firing there is a period only with the ripple.
     let charged = smooth.or_else(|| setting.propagated_at_edge(ripple::rippled_period)).map(|charged| {
-        let mean_s = rippled.map_or(charged.value, |rippled| rippled.mean_period_s + setting.lag_s());
+        let mean_s = rippled.map_or(charged.value, |rippled| rippled.mean_period_s + setting.lag_s() + curvature_s);
         Propagated { value: mean_s, ..charged }
     });
     let period_s = charged.map(Propagated::positive);
@@ -205,6 +208,7 @@ fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) ->
         cautions: CAUTIONS.map(str::to_owned).to_vec(),
         notes,
         ripple: rippled.and_then(|rippled| setting.ripple_forecast(&rippled, locks)),
+        rate_drift_per_s: setting.rate_drift_per_s(),
         jitter,
         burst,
         gap: setting.gap.clone(),

@@ -85,6 +85,22 @@ impl<'a> Setting<'a> {
         Some((rate(1.0)? - rate(-1.0)?) / (2.0 * STEP * supply_v))
     }
 
+    /// What the curvature of the charging law adds to the mean period of a gap that scatters, s.
+    pub(super) fn curvature_s(&self) -> f64 {
+        let both = self.figure(figures::mean_period).zip(self.figure(figures::period));
+        both.map_or(0.0, |(mean_s, period_s)| mean_s - period_s)
+    }
+
+    /// Relative change of the rate that the drift of the gap makes, 1/s: −(dT/dVb)·(Vb/T) times the drift.
+    pub(super) fn rate_drift_per_s(&self) -> Option<f64> {
+        /// Half step of the difference, relative.
+        const STEP: f64 = 1e-5;
+        let (drift, gap_v) = (self.bench.gap.drift?.value, self.gap_v()?);
+        let at = |side: f64| figures::period(self.bench, self.supply_v(), gap_v * (1.0 + side * STEP));
+        let (above, below) = (at(1.0)?, at(-1.0)?);
+        Some(-drift * (above - below) / (STEP * (above + below)))
+    }
+
     /// Mean statistical lag, s.
     pub(super) fn lag_s(&self) -> f64 {
         self.bench.gap.statistical_lag.map_or(0.0, |lag| lag.value)

@@ -63,7 +63,7 @@ pub fn supply_for_rate(bench: &Bench, rate_hz: f64) -> Result<f64, PredictError>
     let (Some(least_v), Some(gap_v)) = (setting.least_supply_v(), setting.gap_v()) else {
         return Err(PredictError::Missing(notes::missing(&setting).join("; ")));
     };
-    let rate = |supply_v: f64| figures::period(&smooth, Some(supply_v), gap_v).map_or(0.0, f64::recip);
+    let rate = |supply_v: f64| figures::mean_period(&smooth, Some(supply_v), gap_v).map_or(0.0, f64::recip);
     // A gap that has not recovered fires below the least setting too; that is not what is asked for.
     let (low_v, high_v) = (just_above(least_v), MOST_SUPPLY_V.max(2.0 * least_v));
     let (low_hz, high_hz) = (rate(low_v), rate(high_v));
@@ -117,7 +117,7 @@ pub fn target(bench: &Bench, rate_hz: f64) -> Result<Target, PredictError> {
     let setting = Setting::new(bench, Some(supply_v))?;
     let gap = setting.gap.as_ref().map(|gap| gap.quantity());
     let slope = setting.slope_hz_per_v().unwrap_or(f64::INFINITY);
-    let period = gap.and_then(|gap| propagate(bench, Some(Quantity::exact(supply_v)), gap, figures::period));
+    let period = gap.and_then(|gap| propagate(bench, Some(Quantity::exact(supply_v)), gap, figures::mean_period));
     let u_v = period.map_or(0.0, |period| period.u * rate_hz * rate_hz / slope);
     Ok(Target {
         firing_rate_hz: rate_hz,
@@ -154,7 +154,7 @@ fn alternatives(bench: &Bench, rate_hz: f64) -> Vec<Alternative> {
             let mut other = bench.clone();
             *slot(&mut other) = Some(Quantity::exact(now.value * factor));
             let gap_v = crate::model::breakdown::gap_voltage(&other).ok()?.voltage_v;
-            let period: Figure = figures::period;
+            let period: Figure = figures::mean_period;
             period(&other, supply_v, gap_v).map(f64::recip)
         };
         if let Some(factor) = factor_for(rate_hz, &rate) {

@@ -42,7 +42,7 @@ pub fn text(prediction: &Prediction) -> String {
     out
 }
 
-fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 15] {
+fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 16] {
     let time = |seconds: Option<f64>| seconds.map(|seconds| si(seconds, "s", 3));
     let supply = prediction.supply_current_a.map(|current| {
         let power = prediction.supply_power_w.map_or_else(String::new, |power| format!(", {}", si(power, "W", 3)));
@@ -54,6 +54,7 @@ fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 15] {
         ("slope", prediction.slope_hz_per_v.map(|slope| format!("{} of supply", si(1e3 * slope, "Hz/kV", 3)))),
         ("period", prediction.period_s.map(|period| with_interval(period, "s"))),
         ("period jitter", jitter(prediction)),
+        ("rate drifts", prediction.rate_drift_per_s.map(|drift| format!("{:+.3} % per minute", 6000.0 * drift))),
         ("gap voltage", prediction.gap_voltage_v.map(|gap| with_uncertainty(gap.value, gap.u, "V"))),
         ("by", prediction.gap.as_ref().map(law)),
         ("rule 3 kV/mm", prediction.gap.as_ref().and_then(rule)),

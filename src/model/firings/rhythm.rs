@@ -53,7 +53,7 @@ impl GapLaw {
         gap_voltage(bench).map(|gap| Self::from_bench(bench, gap.voltage_v))
     }
 
-    /// The gap of a bench that breaks down at `voltage_v`: takes `gap.spread`, `gap.memory`,
+    /// The gap of a bench that breaks down at `voltage_v`: takes `gap.spread`, `gap.memory`, `gap.drift`,
     /// `gap.statistical_lag`, `gap.recovery_time` and `gap.recovery_depth`.
     #[must_use]
     pub fn from_bench(bench: &Bench, voltage_v: f64) -> Self {
@@ -65,6 +65,7 @@ impl GapLaw {
                 time_constant_s: q.value,
                 depth: gap.recovery_depth.map_or(RECOVERY_DEPTH, |depth| depth.value),
             }),
+            drift_per_s: gap.drift.map_or(0.0, |q| q.value),
             statistical_lag_s: gap.statistical_lag.map_or(0.0, |q| q.value),
             ..Self::steady(voltage_v)
         }
