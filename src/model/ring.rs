@@ -53,7 +53,7 @@ pub fn burst(bench: &Bench) -> Result<Option<Burst>, BurstError> {
         let mode = mode.ok_or(BurstError::Quality(network.simple_quality()))?;
         return Burst::ringing(mode.ring_hz, mode.decay_per_s).map(Some);
     }
-    Ok(readings(bench).transpose()?.map(|readings| readings.burst()).transpose()?)
+    readings(bench).transpose()?.map(|readings| readings.burst()).transpose()
 }
 
 /// What the peaks of a bench say; none if it holds none.

@@ -29,7 +29,7 @@ pub(super) fn remarks(bench: &Bench, settings: &[Prediction], locks: &Locks) -> 
     };
     let count = settings.iter().filter(firing).filter(lost).count();
     if count > 0 {
-        let last = settings.iter().filter(firing).filter(lost).next_back().map(volts).unwrap_or_default();
+        let last = settings.iter().filter(firing).rfind(lost).map(volts).unwrap_or_default();
         let first = settings.iter().filter(firing).find(lost).map(volts).unwrap_or_default();
         said.push(format!(
             "from {first} to {last} the jitter is so large that no pitch is left ({count} of the settings)"
