@@ -282,6 +282,31 @@ mod tests {
     }
 
     #[test]
+    fn a_blunt_gap_lies_above_a_published_student_measurement_and_a_needle_gap_below() {
+        // Electrodes not stated; 2 mm to 6 mm, direct voltage, negative: 6.4, 9.5, 12, 13, 14.5 kV. An order check.
+        for (millimetres, volts) in [(2, 6.4e3), (3, 9.5e3), (4, 12e3), (5, 13e3), (6, 14.5e3)] {
+            let spaced =
+                |shape: &str| of(&format!("gap.electrodes = {shape}\ngap.spacing = \"{millimetres} mm\"")).unwrap();
+            assert!(spaced("\"spheres\"\ngap.diameter = \"20 mm\"").voltage_v > volts, "{millimetres}");
+            assert!(spaced("\"points\"").voltage_v < volts, "{millimetres}");
+        }
+    }
+
+    #[test]
+    fn large_smooth_electrodes_lie_near_the_uniform_field() {
+        // Between 0.95 and 1.12 times 24.22·x + 6.08·√x from 1 mm to 10 mm.
+        let air = Air::default();
+        for diameter in [0.05, 0.0625, 0.08, 0.1, 0.15, 0.25] {
+            for millimetres in 1..=10 {
+                let spacing = 1e-3 * f64::from(millimetres);
+                let found = level(Electrodes::Spheres, Some(diameter), spacing, &air).unwrap().voltage_v;
+                let ratio = found / (1e3 * crate::model::breakdown::uniform_kv(100.0 * spacing));
+                assert!((0.95..1.12).contains(&ratio), "{diameter} {millimetres}: {ratio}");
+            }
+        }
+    }
+
+    #[test]
     fn a_stated_voltage_is_taken_as_it_is() {
         let found = of("gap.voltage = \"7.1 kV (u 50 V)\"\ngap.spacing = \"2 mm\"").unwrap();
         assert_eq!((found.voltage_v, found.law), (7100.0, Law::Stated));

@@ -112,13 +112,42 @@ mod tests {
         }
     }
 
+    /// Field factor at the first of two spheres of radius 1 at given potentials, by image charges.
+    fn by_images(x: f64, first_v: f64, second_v: f64) -> f64 {
+        let apart = 2.0 + x;
+        let facing = |charge: f64, from_centre: f64| charge / (1.0 - from_centre) / (1.0 - from_centre).abs();
+        let mut field = 0.0;
+        for (mut charge, mut at, mut in_first) in [(first_v, 0.0, true), (second_v, 0.0, false)] {
+            for _ in 0..4000 {
+                // `at` is the distance from the centre of the sphere that holds the charge, towards the other one.
+                field += facing(charge, if in_first { at } else { apart - at });
+                let distance = apart - at;
+                charge = -charge / distance;
+                at = 1.0 / distance;
+                in_first = !in_first;
+            }
+        }
+        field.abs() * x / (first_v - second_v)
+    }
+
     #[test]
     fn the_field_of_spheres_is_uniform_when_they_nearly_touch() {
         for x in [1e-4, 1e-3, 1e-2] {
             // f − 1 = x/3 to first order.
             assert!(((sphere_field_factor(x) - 1.0) / (x / 3.0) - 1.0).abs() < 0.01, "{x}");
         }
-        // The image-charge solution of equal spheres at opposite voltages.
+        // Peek's expression against image charges; the printed digits of that solution, and those with one sphere earthed.
+        for (x, symmetric, earthed) in [
+            (0.1, 1.0336, 1.0336),
+            (0.2, 1.0676, 1.0683),
+            (0.5, 1.1726, 1.1991),
+            (1.0, 1.3590, 1.5170),
+            (2.0, 1.7703, 2.338),
+        ] {
+            assert!((by_images(x, 0.5, -0.5) / symmetric - 1.0).abs() < 1e-4, "{x}");
+            assert!((by_images(x, 1.0, 0.0) / earthed - 1.0).abs() < 2e-4, "{x}");
+            assert!((sphere_field_factor(x) / by_images(x, 0.5, -0.5) - 1.0).abs() < 0.0061, "{x}");
+        }
         for (x, exact) in [(0.1, 1.0336), (0.2, 1.0676), (0.5, 1.1726), (1.0, 1.3590), (2.0, 1.7703)] {
             assert!((sphere_field_factor(x) / exact - 1.0).abs() < 0.0061, "{x}");
         }
