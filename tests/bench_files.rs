@@ -182,7 +182,7 @@ fn a_limit_becomes_a_standard_uncertainty_by_the_root_of_three() {
     assert!((standard.u() - 92.0).abs() < 1e-9);
 }
 
-const DIMENSIONS: [Dimension; 14] = [
+const DIMENSIONS: [Dimension; 15] = [
     Dimension::Voltage,
     Dimension::Current,
     Dimension::Resistance,
@@ -194,6 +194,7 @@ const DIMENSIONS: [Dimension; 14] = [
     Dimension::Pressure,
     Dimension::Length,
     Dimension::Fraction,
+    Dimension::Drift,
     Dimension::Level,
     Dimension::Ratio,
     Dimension::Number,
@@ -217,7 +218,7 @@ fn any_tolerance() -> impl Strategy<Value = Tolerance> {
 proptest! {
     #[test]
     fn a_quantity_written_and_read_again_is_the_same(
-        mantissa in -1.0..1.0f64, power in -14i32..12, tolerance in any_tolerance(), kind in 0usize..14,
+        mantissa in -1.0..1.0f64, power in -14i32..12, tolerance in any_tolerance(), kind in 0usize..15,
     ) {
         let quantity = Quantity { value: mantissa * 10f64.powi(power), tolerance };
         let written = quantity_text(&quantity, DIMENSIONS[kind]);

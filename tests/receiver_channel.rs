@@ -1,6 +1,6 @@
 //! The channel filter and the burst against published figures and against a brute-force simulation.
 
-use gaptone::bench::{Quantity, Tank};
+use gaptone::bench::{Bench, Quantity, Tank};
 use gaptone::model::receiver::{Burst, Channel, Complex, Detector, DetectorSettings, Selectivity, decrement};
 use std::f64::consts::{LN_2, PI, TAU};
 
@@ -274,13 +274,17 @@ fn a_detector_clips_diagonally_beyond_the_textbook_time_constant() {
     assert!(worst(1.5 * bound_s) > 0.01, "above the bound it is left");
 }
 
+fn burst_of(tank: Tank) -> Option<Burst> {
+    gaptone::model::ring::burst(&Bench { tank, ..Bench::default() }).expect("it rings")
+}
+
 // Series L = 10 µH, C = 1 nF, R = 10 Ω: f0 = 1.591549 MHz, fd = 1.589559 MHz, Q = 10, λ = 0.314553; the tenth peak is 0.05896 of
 // the first (nine cycles). Textbook forms, figures computed independently.
 #[test]
 fn the_parts_and_the_peaks_of_a_tank_give_the_same_ring() {
     let exact = |value| Some(Quantity::exact(value));
     let parts = Tank { inductance: exact(10e-6), capacitance: exact(1e-9), resistance: exact(10.0), ..Tank::default() };
-    let from_parts = Burst::from_tank(&parts).unwrap().unwrap();
+    let from_parts = burst_of(parts).unwrap();
     assert!((from_parts.ring_hz() / 1.589_559e6 - 1.0).abs() < 1e-6);
     assert!((from_parts.quality() - 10.0).abs() < 1e-9);
     assert!((from_parts.decay_per_s() / from_parts.ring_hz() - 0.314_553).abs() < 1e-6);
@@ -289,13 +293,13 @@ fn the_parts_and_the_peaks_of_a_tank_give_the_same_ring() {
     assert!((decrement(&heights).unwrap() - 0.314_553).abs() < 1e-9, "nine cycles between ten peaks");
     let peaks = Some(heights.into_iter().map(Quantity::exact).collect());
     let read = Tank { peaks, peak_spacing: exact(1.0 / 1.589_559e6), ..Tank::default() };
-    let from_peaks = Burst::from_tank(&read).unwrap().unwrap();
+    let from_peaks = burst_of(read).unwrap();
     assert!((from_peaks.quality() - 10.0).abs() < 1e-4);
     assert!((from_peaks.ring_hz() / from_parts.ring_hz() - 1.0).abs() < 1e-6);
     let stated = Tank { frequency: exact(1.591_549_43e6), quality: exact(10.0), ..Tank::default() };
-    let from_stated = Burst::from_tank(&stated).unwrap().unwrap();
+    let from_stated = burst_of(stated).unwrap();
     assert!((from_stated.ring_hz() / from_parts.ring_hz() - 1.0).abs() < 1e-8);
-    assert_eq!(Burst::from_tank(&Tank::default()), Ok(None));
+    assert_eq!(burst_of(Tank::default()), None);
 }
 
 // "Amplitude on the 100th cycle is 13 % of that on the first" (published exercise): λ = 0.020608 with the 99 cycles meant.

@@ -25,6 +25,8 @@ pub enum Dimension {
     Length,
     /// Fraction, written in percent; 1 % is 0.01.
     Fraction,
+    /// Relative change with time, written in percent per second, minute or hour; 1/s.
+    Drift,
     /// Amplitude ratio that needs its unit, dB or percent; −20 dB is 0.1.
     Level,
     /// Amplitude ratio, written bare, in dB or in percent.
@@ -49,6 +51,7 @@ impl Dimension {
             Self::Pressure => "a pressure",
             Self::Length => "a length",
             Self::Fraction => "a percentage",
+            Self::Drift => "a drift",
             Self::Level => "a level",
             Self::Ratio => "an amplitude ratio",
             Self::Number => "a number without a unit",
@@ -69,6 +72,7 @@ impl Dimension {
             Self::Temperature => "K",
             Self::Pressure => "Pa",
             Self::Length => "m",
+            Self::Drift => "/s",
             Self::Fraction | Self::Level | Self::Ratio | Self::Number => "",
         }
     }
@@ -88,6 +92,7 @@ impl Dimension {
             Self::Pressure => &["hPa", "kPa", "Pa", "mbar", "bar", "mmHg"],
             Self::Length => &["mm", "cm", "m", "µm", "in", "um"],
             Self::Fraction => &["%"],
+            Self::Drift => &["%/min", "%/h", "%/s"],
             Self::Level => &["dB", "%"],
             Self::Ratio => &["dB", "%"],
             Self::Number => &[],
@@ -109,6 +114,7 @@ impl Dimension {
             Self::Pressure => "1002 hPa",
             Self::Length => "2.2 mm",
             Self::Fraction => "1.5 %",
+            Self::Drift => "0.5 %/min",
             Self::Level => "-30 dB",
             Self::Ratio => "-3 dB",
             Self::Number => "12",

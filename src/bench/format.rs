@@ -48,6 +48,7 @@ pub fn with_uncertainty(value: f64, u: f64, unit: &str) -> String {
 pub fn quantity_text(quantity: &Quantity, dimension: Dimension) -> String {
     let (unit, factor) = match dimension {
         Dimension::Fraction | Dimension::Level | Dimension::Ratio => ("%", 100.0),
+        Dimension::Drift => ("%/s", 100.0),
         other => (other.symbol(), 1.0),
     };
     let amount = |si: f64| joined(&plain_or_power(si * factor), unit, "");

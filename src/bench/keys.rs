@@ -99,7 +99,7 @@ use Kind::Quantity as Q;
 
 /// Every key that a bench file may hold.
 #[rustfmt::skip]
-static KEYS: [Key; 39] = [
+static KEYS: [Key; 44] = [
     key("", "title", "\"North bench\"", Kind::Title),
     key("supply", "voltage", "\"9.2 kV ± 1 %\"", Q(D::Voltage, Positive, |b| &mut b.supply.voltage)),
     key("supply", "ripple", "\"1 %\"", Q(D::Fraction, BelowOne, |b| &mut b.supply.ripple)),
@@ -116,8 +116,13 @@ static KEYS: [Key; 39] = [
     key("gap", "spacing", "\"2.2 mm\"", Q(D::Length, Positive, |b| &mut b.gap.spacing)),
     key("gap", "spread", "\"1.5 %\"", Q(D::Fraction, BelowOne, |b| &mut b.gap.spread)),
     key("gap", "memory", "0.4", Q(D::Number, Memory, |b| &mut b.gap.memory)),
+    key("gap", "drift", "\"0.5 %/min\"", Q(D::Drift, Any, |b| &mut b.gap.drift)),
     key("gap", "residual_voltage", "\"150 V\"", Q(D::Voltage, Any, |b| &mut b.gap.residual_voltage)),
     key("gap", "recovery_time", "\"1 ms\"", Q(D::Time, NotNegative, |b| &mut b.gap.recovery_time)),
+    key("gap", "recovery_depth", "\"90 %\"", Q(D::Fraction, UpToOne, |b| &mut b.gap.recovery_depth)),
+    key("gap", "statistical_lag", "\"0.2 ms\"", Q(D::Time, NotNegative, |b| &mut b.gap.statistical_lag)),
+    key("gap", "spark_resistance", "\"0.3 ohm\"", Q(D::Resistance, NotNegative, |b| &mut b.gap.spark_resistance)),
+    key("gap", "arc_drop", "\"40 V\"", Q(D::Voltage, NotNegative, |b| &mut b.gap.arc_drop)),
     key("gap", "conduction_time", "\"12 us\"", Q(D::Time, NotNegative, |b| &mut b.gap.conduction_time)),
     key("gap", "stray_capacitance", "\"2 pF\"", Q(D::Capacitance, NotNegative, |b| &mut b.gap.stray_capacitance)),
     key("air", "temperature", "\"21 °C\"", Q(D::Temperature, Positive, |b| &mut b.air.temperature)),

@@ -94,10 +94,20 @@ pub struct Gap {
     pub spread: Option<Quantity>,
     /// First-order memory of the breakdown voltage from firing to firing, −1..1.
     pub memory: Option<Quantity>,
+    /// Relative change of the breakdown voltage with time, 1/s.
+    pub drift: Option<Quantity>,
     /// Voltage left on the capacitor after a spark, V (either sign).
     pub residual_voltage: Option<Quantity>,
     /// Time constant of recovery after a spark, s.
     pub recovery_time: Option<Quantity>,
+    /// Share of its strength that the gap lacks right after a spark.
+    pub recovery_depth: Option<Quantity>,
+    /// Mean wait for the first electron after the breakdown voltage is reached, s.
+    pub statistical_lag: Option<Quantity>,
+    /// Resistance of the gap while it conducts, Ω.
+    pub spark_resistance: Option<Quantity>,
+    /// Voltage across the arc while the gap conducts, V.
+    pub arc_drop: Option<Quantity>,
     /// Time for which the gap conducts, s.
     pub conduction_time: Option<Quantity>,
     /// Capacitance of the gap itself, F.

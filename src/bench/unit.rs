@@ -43,9 +43,12 @@ const PREFIXED: [(&str, Dimension, f64); 10] = [
 ];
 
 /// Units that stand alone.
-const PLAIN: [(&str, Unit); 12] = [
+const PLAIN: [(&str, Unit); 15] = [
     ("", Unit::Bare),
     ("%", Unit::Percent),
+    ("%/s", linear(Dimension::Drift, 1.0, 100.0)),
+    ("%/min", linear(Dimension::Drift, 1.0, 6000.0)),
+    ("%/h", linear(Dimension::Drift, 1.0, 360_000.0)),
     ("dB", Unit::Decibel),
     ("°C", Unit::Celsius),
     ("℃", Unit::Celsius),

@@ -105,13 +105,17 @@ pub struct PredictArguments {
     #[arg(long, value_name = "N", default_value_t = 7, value_parser = clap::value_parser!(u16).range(2..=1000))]
     pub settings: u16,
 
-    /// Firing rate for which to find the supply setting, such as 440Hz
+    /// Firing rate or note for which to find the supply setting, such as 440Hz or A4
     #[arg(long, value_name = "RATE")]
     pub target: Option<String>,
 
     /// Write the prediction as JSON, in SI units
     #[arg(long)]
     pub json: bool,
+
+    /// Draw rate, pitch and jitter against the supply voltage to an SVG file
+    #[arg(long, value_name = "FILE")]
+    pub plot: Option<String>,
 
     /// Write what it will sound like to a WAV or FLAC file
     #[arg(long, value_name = "FILE")]

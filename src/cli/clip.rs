@@ -23,11 +23,9 @@ pub(super) struct Order {
 /// # Errors
 /// Exit status 2 if the bench says too little or its gap does not fire.
 pub(super) fn clip(bench: &Bench, order: &Order) -> Result<Clip, Failure> {
-    let voltage = bench.gap.voltage.ok_or_else(|| {
-        Failure::usage("the bench does not give gap.voltage: a clip needs the voltage at which the gap breaks down")
-    })?;
+    let gap = GapLaw::of_bench(bench).map_err(Failure::usage)?;
     let circuit = Circuit::from_bench(bench, order.supply).map_err(Failure::usage)?;
-    let rhythm = Rhythm::Bench { circuit, gap: GapLaw::from_bench(bench, voltage.value) };
+    let rhythm = Rhythm::Bench { circuit, gap };
     let plan =
         Plan { rhythm, faults: Faults::none(), start: order.start, duration_s: order.duration_s, seed: order.seed };
     let train = simulate(&plan).map_err(Failure::usage)?;

@@ -7,12 +7,15 @@ use super::exit::{Exit, Failure, say};
 use super::files::{self, SampleFormat};
 use crate::bench::{self, Bench, Dimension, Quantity};
 use crate::model::firings::Start;
-use crate::predict::{self, predict, supply_for_rate, sweep};
-use crate::report;
+use crate::predict::{self, Target, parse_target, predict, sweep, target};
 use serde::Serialize;
+use std::io::Write;
 
 /// Sample rate of a clip to listen to, Hz.
 const CLIP_RATE_HZ: u32 = 48_000;
+
+/// Settings of the drawing around one setting.
+const PLOT_SETTINGS: usize = 121;
 
 /// What is asked.
 enum Question {
@@ -20,35 +23,64 @@ enum Question {
     Setting(Option<f64>),
     /// A range of settings, V.
     Range(f64, f64),
+    /// The setting that gives a rate.
+    Target(Target),
 }
 
 /// Runs the command.
 ///
 /// # Errors
-/// Wrong usage, a bench that cannot be used, a place for the clip that cannot be written.
+/// Wrong usage, a bench that cannot be used, a place for clip or drawing that cannot be written.
 pub(super) fn run(arguments: &PredictArguments) -> Result<Exit, Failure> {
-    if let Some(place) = &arguments.clip {
+    for place in [&arguments.clip, &arguments.plot].into_iter().flatten() {
         files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
     }
-    let bench = bench_file::load(&arguments.bench)?;
-    match question(arguments, &bench)? {
+    let mut bench = bench_file::load(&arguments.bench)?;
+    match question(arguments, &mut bench)? {
         Question::Range(low_v, high_v) => {
-            let sweep = sweep(&bench, low_v, high_v, usize::from(arguments.settings)).map_err(Failure::usage)?;
-            put_out(arguments.json, &sweep, || report::sweep_text(&sweep))?;
+            let count = usize::from(arguments.settings);
+            let table = sweep(&bench, low_v, high_v, count).map_err(Failure::usage)?;
+            put_out(arguments.json, &table, || predict::sweep_text(&table))?;
+            draw(arguments, &bench, low_v, high_v)?;
         }
-        Question::Setting(supply_v) => {
-            let prediction = predict(&bench, supply_v).map_err(Failure::usage)?;
-            put_out(arguments.json, &prediction, || predict::text(&prediction))?;
-            listen(arguments, &bench, supply_v)?;
-        }
+        Question::Setting(supply_v) => one(arguments, &bench, supply_v, None)?,
+        Question::Target(target) => one(arguments, &bench, Some(target.supply_v.value), Some(target))?,
     }
     Ok(Exit::Done)
 }
 
-fn question(arguments: &PredictArguments, bench: &Bench) -> Result<Question, Failure> {
+/// One setting: figures, drawing, sound.
+fn one(
+    arguments: &PredictArguments,
+    bench: &Bench,
+    supply_v: Option<f64>,
+    target: Option<Target>,
+) -> Result<(), Failure> {
+    let mut prediction = predict(bench, supply_v).map_err(Failure::usage)?;
+    prediction.target = target;
+    put_out(arguments.json, &prediction, || predict::text(&prediction))?;
+    if let Some(centre_v) = prediction.supply_v.filter(|_| arguments.plot.is_some()) {
+        let low_v = prediction.least_supply_v.map_or(0.5 * centre_v, |least_v| 0.9 * least_v.min(centre_v));
+        draw(arguments, bench, low_v, 2.0 * centre_v)?;
+    } else if arguments.plot.is_some() {
+        return Err(Failure::usage("--plot needs supply.voltage in the bench, or --supply"));
+    }
+    listen(arguments, bench, supply_v)
+}
+
+/// Draws the range of settings, if asked.
+fn draw(arguments: &PredictArguments, bench: &Bench, low_v: f64, high_v: f64) -> Result<(), Failure> {
+    let Some(place) = &arguments.plot else { return Ok(()) };
+    let fine =
+        sweep(bench, low_v, high_v, PLOT_SETTINGS.max(usize::from(arguments.settings))).map_err(Failure::usage)?;
+    files::write_atomically(place, |file| file.write_all(predict::plot_svg(&fine).as_bytes()))
+        .map_err(|error| Failure::file(place, &error))
+}
+
+fn question(arguments: &PredictArguments, bench: &mut Bench) -> Result<Question, Failure> {
     if let Some(text) = &arguments.target {
-        let rate = bench_file::quantity("--target", text, Dimension::Frequency)?;
-        return supply_for_rate(bench, rate.value).map(|volts| Question::Setting(Some(volts))).map_err(Failure::usage);
+        let rate_hz = parse_target(text).map_err(|error| Failure::usage(format!("--target: {error}")))?;
+        return target(bench, rate_hz).map(Question::Target).map_err(Failure::usage);
     }
     match &arguments.supply {
         Some(text) if text.contains("..") => {
@@ -59,7 +91,11 @@ fn question(arguments: &PredictArguments, bench: &Bench) -> Result<Question, Fai
             }
             Ok(Question::Range(low.value, high.value))
         }
-        Some(text) => Ok(Question::Setting(Some(bench_file::supply(text, bench)?.value))),
+        Some(text) => {
+            // With the tolerance that the setting has of its own, if it has one.
+            bench.supply.voltage = Some(bench_file::supply(text, bench)?);
+            Ok(Question::Setting(None))
+        }
         None => Ok(Question::Setting(None)),
     }
 }

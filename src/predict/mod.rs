@@ -1,27 +1,38 @@
 //! Before power: does the gap fire at this supply setting, how often, how steadily, what will it sound like, what is
 //! stored on the capacitor.
 //!
-//! Works from what the bench states; a figure for which a key is missing is absent and a note names the key. Ripple and
-//! recovery of the gap are not in the figures; notes say what they do. Everything in SI units.
+//! Works from what the bench states; a figure for which a key is missing is absent and a note names the key. Everything in
+//! SI units.
 
+mod burst;
+mod figures;
 mod hazard;
+mod jitter;
 mod notes;
-mod period;
 mod pitch;
+mod plot;
 mod propagate;
+mod remarks;
+mod ripple;
+mod setting;
 mod target;
 mod text;
 
+pub use burst::{BurstForecast, ModeForecast, PeakReadings};
 pub use hazard::{BLED_V, CAUTIONS, bleed_time_s, charge_c, energy_j};
-pub use pitch::{A4_HZ, Hearing, Pitch, pitch};
-pub use target::{Sweep, supply_for_rate, sweep};
-pub use text::text;
+pub use jitter::{JitterForecast, Simulated};
+pub use pitch::{A4_HZ, Hearing, NotATarget, Pitch, parse_target, pitch};
+pub use plot::plot_svg;
+pub use ripple::{LockRange, LockedPattern, RippleForecast};
+pub use target::{Alternative, Sweep, Target, supply_for_rate, sweep, target};
+pub use text::{sweep_text, text};
 
-use crate::bench::{Bench, Quantity, Tolerance};
+use crate::bench::Bench;
 use crate::estimate::Estimate;
-use period::Parts;
-use propagate::{Propagated, propagate};
+use crate::model::breakdown::{GapVoltage, NoGapVoltage};
+use propagate::Propagated;
 use serde::{Deserialize, Serialize};
+use setting::Setting;
 use thiserror::Error;
 
 /// Name of the format, in every prediction.
@@ -33,6 +44,9 @@ pub enum PredictError {
     /// A supply setting that is no voltage.
     #[error("a supply voltage of {0} V is not possible; it must be above 0 V and finite")]
     Supply(f64),
+    /// The breakdown law does not hold for this gap.
+    #[error(transparent)]
+    Gap(#[from] NoGapVoltage),
     /// A range of settings with no extent.
     #[error(
         "a range of supply voltages needs at least two settings from low to high; given are {count} from {low} V to {high} V"
@@ -88,7 +102,7 @@ pub struct Prediction {
     pub period_s: Option<Estimate>,
     /// Voltage across the gap at breakdown, V.
     pub gap_voltage_v: Option<Estimate>,
-    /// Standard deviation of single periods from the spread of the gap, s.
+    /// Standard deviation of single periods, s: spread of the gap, statistical lag and ripple together.
     pub period_jitter_s: Option<Estimate>,
     /// Time from switching on with an empty capacitor to the first firing, s.
     pub first_firing_s: Option<f64>,
@@ -98,10 +112,33 @@ pub struct Prediction {
     pub bleed_time_s: Option<f64>,
     /// How the rate is heard.
     pub pitch: Option<Pitch>,
+    /// Pitch at the low and at the high end of the interval of the rate.
+    pub pitch_band: Option<(Pitch, Pitch)>,
+    /// What a volt of supply does to the rate, Hz/V; ripple left out.
+    pub slope_hz_per_v: Option<f64>,
     /// Mean current out of the supply, A.
     pub supply_current_a: Option<f64>,
     /// Mean power out of the supply, W.
     pub supply_power_w: Option<f64>,
+    /// Mean power in the charging resistor, W.
+    pub resistor_power_w: Option<f64>,
+    /// Greatest voltage across the charging resistor, V.
+    pub resistor_voltage_v: Option<f64>,
+    /// Share of the time for which the gap conducts.
+    pub duty: Option<f64>,
+    /// Parts of the jitter, and simulated firings beside the formulas.
+    pub jitter: Option<JitterForecast>,
+    /// Relative change of the rate per second that the drift of the gap makes, 1/s.
+    pub rate_drift_per_s: Option<f64>,
+    /// What the ripple of the supply does.
+    pub ripple: Option<RippleForecast>,
+    /// The ring of every spark.
+    pub burst: Option<BurstForecast>,
+    /// Where the gap voltage comes from, with its budget.
+    pub gap: Option<GapVoltage>,
+    /// How to get the rate that was asked for, if one was.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub target: Option<Target>,
     /// What is stored at the highest voltage that the capacitor can take, against published thresholds.
     pub hazards: Vec<String>,
     /// Always shown.
@@ -110,128 +147,78 @@ pub struct Prediction {
     pub notes: Vec<String>,
 }
 
-/// What the whole prediction works from.
-struct Setting<'a> {
-    bench: &'a Bench,
-    parts: Parts,
-    /// Supply voltage as set; its tolerance is that of `supply.voltage`, relative.
-    supply: Option<Quantity>,
-    gap: Option<Quantity>,
-    /// Highest voltage of the capacitor if the gap never fires, V.
-    reach_v: Option<f64>,
-    fires: Option<bool>,
-}
-
 /// Predicts what a bench does at a supply voltage in V; without one at `supply.voltage` of the bench.
 ///
 /// # Errors
 /// [`PredictError::Supply`] if the setting is not a positive finite voltage. What the bench lacks is no error: the
 /// figures that need it are absent and `notes` name the key.
 pub fn predict(bench: &Bench, supply_v: Option<f64>) -> Result<Prediction, PredictError> {
-    let setting = Setting::new(bench, supply_v)?;
-    let charged = setting.propagated(period::period);
+    forecast(&Setting::new(bench, supply_v)?, true, &mut ripple::Locks::new())
+}
+
+/// The prediction of a setting. Without `thorough` no firings are simulated; `locks` keeps the locks of a bench from one
+/// setting to the next.
+fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) -> Result<Prediction, PredictError> {
+    let bench = setting.bench;
+    let rippled = setting.rippled();
+    let smooth = setting.propagated(figures::mean_period);
+    let curvature_s = setting.curvature_s();
+    // At the edge of firing there is a period only with the ripple.
+    let charged = smooth.or_else(|| setting.propagated_at_edge(ripple::rippled_period)).map(|charged| {
+        let mean_s = rippled.map_or(charged.value, |rippled| rippled.mean_period_s + setting.lag_s() + curvature_s);
+        Propagated { value: mean_s, ..charged }
+    });
     let period_s = charged.map(Propagated::positive);
-    let jitter = setting.propagated(propagate::jitter);
+    let spread = setting.propagated(figures::spread_jitter);
+    let jitter =
+        charged.and_then(|_| setting.jitter_forecast(spread.map(|spread| spread.value), rippled.as_ref(), thorough));
     let firing_rate_hz = period_s.map(Estimate::reciprocal);
-    let figure = |figure: propagate::Figure| setting.figure(figure);
-    let stored_v = setting.stored_v();
-    let stored = setting.parts.capacitance_f.zip(stored_v);
-    let supply_current_a = figure(period::mean_current);
+    let stored = figures::capacitance_f(&setting.parts).zip(setting.stored_v());
+    let means = setting.means();
+    let supply_current_a = means.map(|means| means.supply_a);
+    let mut notes = notes::notes(setting, charged, jitter.as_ref());
+    let burst = setting.burst_forecast().unwrap_or_else(|refused| {
+        notes.push(refused);
+        None
+    });
     Ok(Prediction {
         format: FORMAT.to_owned(),
         title: bench.title.clone(),
         supply_v: setting.supply.map(|supply| supply.value),
         fires: setting.fires,
-        reason: notes::reason(&setting),
+        reason: notes::reason(setting),
         least_supply_v: setting.least_supply_v(),
         firing_rate_hz,
         period_s,
-        gap_voltage_v: setting.gap.map(|gap| Estimate::normal(gap.value, gap.u())),
-        period_jitter_s: jitter.map(Propagated::positive),
-        first_firing_s: figure(period::first_firing),
+        gap_voltage_v: setting.gap.as_ref().map(|gap| Estimate::normal(gap.voltage_v, gap.u_v)),
+        period_jitter_s: jitter.as_ref().map(|jitter| jitter_estimate(jitter, spread)),
+        first_firing_s: setting.figure(figures::first_firing),
         stored_energy_j: stored.map(|(c, v)| energy_j(c, v)),
         bleed_time_s: stored.zip(setting.parts.leakage_ohm).map(|((c, v), leakage)| bleed_time_s(leakage, c, v)),
         pitch: firing_rate_hz.and_then(|rate| pitch(rate.value)),
+        pitch_band: firing_rate_hz.and_then(|rate| pitch(rate.low).zip(pitch(rate.high))),
+        slope_hz_per_v: setting.slope_hz_per_v(),
         supply_current_a,
         supply_power_w: supply_current_a.zip(setting.supply).map(|(current, supply)| current * supply.value),
-        hazards: notes::hazards(&setting),
+        resistor_power_w: means.and_then(|means| means.resistor_w),
+        resistor_voltage_v: setting.resistor_voltage_v(),
+        duty: period_s.zip(bench.gap.conduction_time).map(|(period, conducting)| conducting.value / period.value),
+        target: None,
+        hazards: notes::hazards(setting),
         cautions: CAUTIONS.map(str::to_owned).to_vec(),
-        notes: notes::notes(&setting, charged),
+        notes,
+        ripple: rippled.and_then(|rippled| setting.ripple_forecast(&rippled, locks)),
+        rate_drift_per_s: setting.rate_drift_per_s(),
+        jitter,
+        burst,
+        gap: setting.gap.clone(),
     })
 }
 
-impl<'a> Setting<'a> {
-    fn new(bench: &'a Bench, supply_v: Option<f64>) -> Result<Self, PredictError> {
-        if let Some(volts) = supply_v
-            && !(volts.is_finite() && volts > 0.0)
-        {
-            return Err(PredictError::Supply(volts));
-        }
-        let supply = supply_v.map(|volts| set_to(bench.supply.voltage, volts)).or(bench.supply.voltage);
-        let parts = Parts::of(bench);
-        let mut setting = Self { bench, parts, supply, gap: bench.gap.voltage, reach_v: None, fires: None };
-        setting.reach_v = setting.drive_v().and_then(|volts| period::reach(bench, volts));
-        setting.fires = setting.reach_v.zip(setting.gap).map(|(reach, gap)| gap.value < reach);
-        Ok(setting)
-    }
-
-    /// The supply voltage for the charging law: a current source without a stated voltage has no ceiling.
-    fn drive_v(&self) -> Option<f64> {
-        let ideal = self.parts.current_a.map(|_| f64::INFINITY);
-        self.supply.map(|supply| supply.value).or(ideal)
-    }
-
-    fn figure(&self, figure: propagate::Figure) -> Option<f64> {
-        figure(self.bench, self.drive_v()?, self.gap?.value).filter(|value| value.is_finite())
-    }
-
-    fn propagated(&self, figure: propagate::Figure) -> Option<Propagated> {
-        let supply = self.supply.or_else(|| self.drive_v().map(Quantity::exact))?;
-        propagate(self.bench, supply, self.gap?, figure).filter(|found| found.value.is_finite() && found.u.is_finite())
-    }
-
-    /// Voltage at which the stored energy is stated, V.
-    fn stored_v(&self) -> Option<f64> {
-        match self.fires {
-            Some(true) => self.gap.map(|gap| gap.value),
-            Some(false) => self.reach_v,
-            None => self.gap.map(|gap| gap.value).or(self.reach_v),
-        }
-        .filter(|volts| volts.is_finite())
-    }
-
-    /// Highest voltage that the capacitor can take, V: the gap may fail to fire.
-    fn worst_v(&self) -> Option<f64> {
-        let reach = self.reach_v.filter(|volts| volts.is_finite());
-        match (reach, self.gap) {
-            (Some(reach), Some(gap)) => Some(reach.max(gap.value)),
-            (reach, gap) => reach.or(gap.map(|gap| gap.value)),
-        }
-    }
-
-    /// Least supply voltage at which the gap fires, V; none if there is none or the bench does not say.
-    fn least_supply_v(&self) -> Option<f64> {
-        let gap_v = self.gap?.value;
-        // The leakage divides the supply voltage; its current must be had at the gap voltage too.
-        let divided = match (self.parts.current_a, self.parts.resistance_ohm, self.parts.leakage_ohm) {
-            (None, Some(r), Some(leakage)) => gap_v * (r + leakage) / leakage,
-            _ => gap_v,
-        };
-        let reach_v = period::reach(self.bench, 2.0 * divided)?;
-        (reach_v > gap_v).then_some(divided)
-    }
-}
-
-/// A quantity set to another value, with the same relative tolerance: the same meter reads it.
-fn set_to(stated: Option<Quantity>, value: f64) -> Quantity {
-    let Some(stated) = stated else { return Quantity::exact(value) };
-    let scale = value / stated.value;
-    let tolerance = match stated.tolerance {
-        Tolerance::Exact => Tolerance::Exact,
-        Tolerance::Limit(half_width) => Tolerance::Limit(half_width * scale),
-        Tolerance::Standard(u) => Tolerance::Standard(u * scale),
-    };
-    Quantity { value, tolerance }
+/// The whole scatter of the periods, with the relative uncertainty of its part from the spread.
+fn jitter_estimate(jitter: &JitterForecast, spread: Option<Propagated>) -> Estimate {
+    let share = spread.map_or(0.0, |spread| if spread.value > 0.0 { spread.u / spread.value } else { 0.0 });
+    Propagated { value: jitter.total_s, u: share * jitter.total_s, at_the_edge: false }.positive()
 }
 
 #[cfg(test)]

@@ -1,6 +1,8 @@
 //! How a firing rate is heard: musical pitch, or clicks.
 
+use crate::bench::{Dimension, parse_quantity};
 use serde::{Deserialize, Serialize};
+use thiserror::Error;
 
 /// Tuning note: A4 in Hz (ISO 16:1975).
 pub const A4_HZ: f64 = 440.0;
@@ -57,6 +59,50 @@ pub fn pitch(rate_hz: f64) -> Option<Pitch> {
     Some(Pitch { note: format!("{name}{octave}"), cents: 100.0 * (midi - nearest), midi, hearing })
 }
 
+/// A text that is neither a rate nor a note.
+#[derive(Debug, Clone, PartialEq, Eq, Error)]
+#[error("`{text}` is neither a rate nor a note; write for example 440Hz, A4, C#5 or Bb3 (C-1 to B9, A4 = 440 Hz)")]
+pub struct NotATarget {
+    /// The text as given.
+    pub text: String,
+}
+
+/// A firing rate in Hz from text: a frequency such as `440 Hz`, or a note of the equal-tempered scale such as `A4`, `C#5`,
+/// `Bb3`.
+///
+/// # Errors
+/// [`NotATarget`] shows what would be right.
+pub fn parse_target(text: &str) -> Result<f64, NotATarget> {
+    if let Some(rate) = note_hz(text.trim()) {
+        return Ok(rate);
+    }
+    let rate = parse_quantity(text, Dimension::Frequency).ok().map(|rate| rate.value).filter(|rate| *rate > 0.0);
+    rate.ok_or_else(|| NotATarget { text: text.trim().to_owned() })
+}
+
+/// Frequency of a note.
+fn note_hz(text: &str) -> Option<f64> {
+    let mut signs = text.chars();
+    let step = match signs.next()?.to_ascii_uppercase() {
+        'C' => 0,
+        'D' => 2,
+        'E' => 4,
+        'F' => 5,
+        'G' => 7,
+        'A' => 9,
+        'B' => 11,
+        _ => return None,
+    };
+    let rest = signs.as_str();
+    let (shift, octave) = match rest.strip_prefix(['#', '♯']) {
+        Some(octave) => (1, octave),
+        None => rest.strip_prefix(['b', '♭']).map_or((0, rest), |octave| (-1, octave)),
+    };
+    let octave: i32 = octave.parse().ok().filter(|octave| (-1..=9).contains(octave))?;
+    let midi = 12 * (octave + 1) + step + shift;
+    Some(A4_HZ * (f64::from(midi - 69) / 12.0).exp2())
+}
+
 impl Pitch {
     /// In words: `G2 +35 cents`, `flutter`, `separate clicks`.
     #[must_use]
@@ -104,6 +150,18 @@ mod tests {
         assert_eq!(pitch(19.9).unwrap().hearing, Hearing::SeparateClicks);
         assert!(pitch(25.0).unwrap().words().starts_with("flutter"));
         assert_eq!(pitch(40.0).unwrap().hearing, Hearing::Pitch);
+    }
+
+    #[test]
+    fn a_target_is_a_rate_or_a_note() {
+        let near = |text: &str, rate: f64| (parse_target(text).unwrap() / rate - 1.0).abs() < 1e-5;
+        // Equal temperament about A4 = 440 Hz (ISO 16:1975): middle C is 261.6256 Hz.
+        assert!(near("A4", 440.0) && near("440Hz", 440.0) && near("0.44 kHz", 440.0) && near("C4", 261.6256));
+        assert!(near("c#5", 554.3653) && near("Bb3", 233.0819) && near("B♭3", 233.0819) && near("C-1", 8.175_799));
+        for wrong in ["", "H4", "A", "A44", "440", "-440 Hz", "440 V", "A#b4", "A4 Hz"] {
+            let error = parse_target(wrong).expect_err(wrong).to_string();
+            assert!(error.contains("440Hz") && !error.contains('\n'), "{error}");
+        }
     }
 
     #[test]

@@ -3,12 +3,9 @@
 //! Law of propagation for independent inputs with numerical sensitivities: each input is moved by ± its standard
 //! uncertainty and half the change of the figure is its contribution (JCGM 100:2008, 5.1.3 note 2).
 
-use super::period;
+use super::figures::Figure;
 use crate::bench::{Bench, Quantity};
 use crate::estimate::{COVERAGE_95, Estimate};
-
-/// A figure of a bench at a supply voltage and a gap voltage; none if there is none (no firing).
-pub(super) type Figure = fn(&Bench, f64, f64) -> Option<f64>;
 
 /// A figure with its standard uncertainty.
 #[derive(Debug, Clone, Copy)]
@@ -22,7 +19,7 @@ pub(super) struct Propagated {
 type Slot = fn(&mut Bench) -> &mut Option<Quantity>;
 
 /// Every input beside supply and gap voltage.
-const INPUTS: [Slot; 10] = [
+const INPUTS: [Slot; 13] = [
     |bench| &mut bench.charging.resistance,
     |bench| &mut bench.charging.current,
     |bench| &mut bench.charging.time_constant,
@@ -33,22 +30,31 @@ const INPUTS: [Slot; 10] = [
     |bench| &mut bench.gap.conduction_time,
     |bench| &mut bench.gap.stray_capacitance,
     |bench| &mut bench.gap.spread,
+    |bench| &mut bench.gap.statistical_lag,
+    |bench| &mut bench.gap.recovery_time,
+    |bench| &mut bench.gap.recovery_depth,
 ];
 
 /// The figure at the values of the bench, with the uncertainty that the tolerances make.
-pub(super) fn propagate(bench: &Bench, supply: Quantity, gap: Quantity, figure: Figure) -> Option<Propagated> {
-    let value = figure(bench, supply.value, gap.value)?;
-    let mut moved = vec![
-        (supply.u(), [1.0, -1.0].map(|side| figure(bench, supply.value + side * supply.u(), gap.value))),
-        (gap.u(), [1.0, -1.0].map(|side| figure(bench, supply.value, gap.value + side * gap.u()))),
-    ];
+pub(super) fn propagate(bench: &Bench, supply: Option<Quantity>, gap: Quantity, figure: Figure) -> Option<Propagated> {
+    let supply_v = supply.map(|supply| supply.value);
+    let value = figure(bench, supply_v, gap.value)?;
+    let mut moved = vec![(gap.u(), [1.0, -1.0].map(|side| figure(bench, supply_v, gap.value + side * gap.u())))];
+    if let Some(supply) = supply {
+        let at = |side: f64| figure(bench, Some(supply.value + side * supply.u()), gap.value);
+        moved.push((supply.u(), [1.0, -1.0].map(at)));
+    }
+    let mut other = bench.clone();
     for slot in INPUTS {
-        let mut other = bench.clone();
         let Some(input) = *slot(&mut other) else { continue };
+        if input.u() == 0.0 {
+            continue;
+        }
         let ends = [1.0, -1.0].map(|side| {
             *slot(&mut other) = Some(Quantity::exact(input.value + side * input.u()));
-            figure(&other, supply.value, gap.value)
+            figure(&other, supply_v, gap.value)
         });
+        *slot(&mut other) = Some(input);
         moved.push((input.u(), ends));
     }
     let mut variance = 0.0;
@@ -74,20 +80,5 @@ impl Propagated {
         }
         let factor = (COVERAGE_95 * self.u / self.value).exp();
         Estimate { value: self.value, u: self.u, low: self.value / factor, high: self.value * factor }
-    }
-}
-
-/// Standard deviation of single periods that the spread of the gap makes, s: half the change of the period between one
-/// spread below and one above, the first order σ_T = σ_Vb/(dv/dt) where the spread is small. Memory from firing to
-/// firing does not change it.
-pub(super) fn jitter(bench: &Bench, supply_v: f64, gap_v: f64) -> Option<f64> {
-    let spread = bench.gap.spread?.value;
-    let centre = period::period(bench, supply_v, gap_v)?;
-    let ends = [1.0 + spread, 1.0 - spread].map(|part| period::period(bench, supply_v, gap_v * part));
-    match ends {
-        [Some(above), Some(below)] => Some((above - below) / 2.0),
-        [None, Some(below)] => Some(centre - below),
-        [Some(above), None] => Some(above - centre),
-        [None, None] => None,
     }
 }

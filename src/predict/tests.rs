@@ -1,7 +1,7 @@
 //! Predictions against published worked examples, closed forms and plain numerical integration.
 
 use super::*;
-use crate::bench::parse;
+use crate::bench::{Quantity, Tolerance, parse};
 use proptest::prelude::*;
 
 /// Algebra and nothing else: a few roundings.
@@ -130,8 +130,9 @@ fn a_spread_of_one_percent_makes_1_699_percent_of_jitter() {
     scattering.gap.spread = Some(Quantity::exact(0.01));
     let found = at(&scattering);
     let part = found.period_jitter_s.unwrap().value / found.period_s.unwrap().value;
-    // Third-order term of the logarithm: (σ_Vb/(Vs − Vb))²/3.
-    assert!(close(part, 0.016_992, 1.5e-4), "{part}");
+    // Terms of higher order are x² = (σ_Vb/(Vs − Vb))² = 2.8e-4 of it; the mean period rises by 0.014 %.
+    assert!(close(part, 0.016_992, 3e-4), "{part}");
+    assert!(close(found.period_s.unwrap().value, 9.808_293e-3 * 1.000_14, 1e-5));
 }
 
 #[test]
@@ -205,11 +206,14 @@ fn a_time_constant_with_a_capacitance_is_the_same_as_resistance_and_capacitance(
     );
     let mut by_constant = by_parts.clone();
     by_constant.charging.resistance = None;
-    by_constant.charging.time_constant = Some(Quantity::exact(10e-3));
+    // A stated time constant is that of the circuit as it stands, with the gap's own 3 pF.
+    by_constant.charging.time_constant = Some(Quantity::exact(10.03e-3));
+    by_constant.gap.stray_capacitance = None;
+    by_constant.charging.capacitance = Some(Quantity::exact(1.003e-9));
     assert!(close(period_of(&by_constant), period_of(&by_parts), ALGEBRA));
     by_constant.charging.capacitance = None;
     let alone = at(&by_constant);
-    assert!(close(alone.period_s.unwrap().value, 10e-3 * (8.0f64 / 3.0).ln(), ALGEBRA));
+    assert!(close(alone.period_s.unwrap().value, 10.03e-3 * (8.0f64 / 3.0).ln(), ALGEBRA));
     assert_eq!((alone.stored_energy_j, alone.bleed_time_s, alone.supply_current_a), (None, None, None));
     assert!(alone.notes.iter().any(|note| note.contains("charging.leakage is left out")));
 }
@@ -240,7 +244,7 @@ fn what_is_missing_is_named_and_the_rest_is_still_there() {
         assert!(nothing.notes.iter().any(|note| note.contains(key)), "{key}");
     }
     let shaped = at(&bench("gap.electrodes = \"spheres\"\ngap.spacing = \"2 mm\"\ncharging.capacitance = \"1 nF\"\n"));
-    assert!(shaped.notes.iter().any(|note| note.contains("gap.voltage is needed for now")));
+    assert!(shaped.notes.iter().any(|note| note.contains("gap.diameter for spheres")));
     let no_supply =
         at(&bench("gap.voltage = \"5 kV\"\ncharging.capacitance = \"1 nF\"\ncharging.leakage = \"1 GΩ\"\n"));
     assert!(close(no_supply.stored_energy_j.unwrap(), 12.5e-3, ALGEBRA));
@@ -275,19 +279,6 @@ fn a_supply_that_can_feed_an_arc_is_warned_of() {
     assert!(!warned(10e6).contains("can feed"));
     assert!(warned(1e6).contains("may go on glowing"));
     assert!(warned(10e3).contains("steady arc is likely"));
-}
-
-#[test]
-fn a_period_of_a_whole_number_of_ripple_periods_is_named_as_a_lock() {
-    // RC·ln 2 = 10 ms at Vs = 2 Vb.
-    let mut rippled = simple(10e3, 5e3, 0.0, 10e-3 / 2f64.ln() / 1e-9, 1e-9);
-    rippled.supply.ripple = Some(Quantity::exact(0.02));
-    rippled.supply.ripple_frequency = Some(Quantity::exact(100.0));
-    let notes = at(&rippled).notes.join(" ");
-    // dT/T = 1.4427·dVs/Vs: 2.9 %.
-    assert!(notes.contains("2.9 %") && notes.contains("locks to it and the rate stands at 100"), "{notes}");
-    rippled.supply.ripple_frequency = Some(Quantity::exact(150.0));
-    assert!(!at(&rippled).notes.join(" ").contains("locks"));
 }
 
 #[test]

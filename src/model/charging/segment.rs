@@ -52,9 +52,12 @@ impl Segment {
     pub fn after_with(&self, ripple: &Ripple, v0: f64, start_s: f64, t: f64) -> f64 {
         let k = self.decay_per_s;
         let omega = std::f64::consts::TAU * ripple.frequency_hz;
-        let amplitude = self.swing_v(ripple);
-        let lag = omega.atan2(k);
-        let settled = |time_s: f64| amplitude * (ripple.phase_at(time_s) - lag).sin();
+        // A·sin(φ − lag) with A·cos(lag) and A·sin(lag) in the place of amplitude and lag.
+        let scale = self.slew_v_per_s * ripple.fraction / (k * k + omega * omega);
+        let settled = |time_s: f64| {
+            let (sine, cosine) = ripple.phase_at(time_s).sin_cos();
+            scale * (k * sine - omega * cosine)
+        };
         let transient = -settled(start_s) * (-k * t).exp();
         self.after(v0, t) + settled(start_s + t) + transient
     }

@@ -32,20 +32,7 @@ impl Gap<'_> {
     fn strength(&mut self, time_s: f64) -> Strength {
         let mean = self.law.voltage_v * (1.0 + self.law.drift_per_s * time_s.max(0.0));
         let settled_v = mean * (1.0 + self.law.spread * self.scatter.draw()).max(LEAST_STRENGTH);
-        match self.law.recovery {
-            Some(recovery) => Strength {
-                settled_v,
-                depth: self.depth(recovery.depth, settled_v),
-                recovery_s: recovery.time_constant_s,
-            },
-            None => Strength::settled(settled_v),
-        }
-    }
-
-    /// Depth of recovery, made so shallow that the gap withstands what is left on the capacitor: it has just gone out.
-    fn depth(&self, depth: f64, settled_v: f64) -> f64 {
-        let hold = 1.0 - 1.1 * self.circuit.residual_v().max(0.0) / settled_v;
-        depth.min(hold).max(0.0)
+        self.law.strength(settled_v, self.circuit.residual_v())
     }
 
     /// The next breakdown of a capacitor that starts to charge at `start_s` from `v0`.

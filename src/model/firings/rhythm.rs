@@ -3,6 +3,8 @@
 use super::{MOST_FIRINGS, NoTrain, Plan, Start, check, stream};
 use crate::bench::Bench;
 use crate::firing::{EventKind, Firing};
+use crate::model::breakdown::{NoGapVoltage, gap_voltage};
+use crate::model::charging::Strength;
 use crate::model::random::{Random, gamma_quantile, normal_probability};
 
 /// Recovery of the gap after a spark: what it withstands t seconds after it stopped conducting is
@@ -43,18 +45,42 @@ impl GapLaw {
         Self { voltage_v, spread: 0.0, memory: 0.0, drift_per_s: 0.0, statistical_lag_s: 0.0, recovery: None }
     }
 
-    /// The gap of a bench that breaks down at `voltage_v`: takes `gap.spread`, `gap.memory` and `gap.recovery_time`.
+    /// The gap of a bench, at `gap.voltage` or at what its electrodes and the air give.
+    ///
+    /// # Errors
+    /// [`NoGapVoltage`] if the bench does not say enough, or leaves the range of the breakdown law.
+    pub fn of_bench(bench: &Bench) -> Result<Self, NoGapVoltage> {
+        gap_voltage(bench).map(|gap| Self::from_bench(bench, gap.voltage_v))
+    }
+
+    /// The gap of a bench that breaks down at `voltage_v`: takes `gap.spread`, `gap.memory`, `gap.drift`,
+    /// `gap.statistical_lag`, `gap.recovery_time` and `gap.recovery_depth`.
     #[must_use]
     pub fn from_bench(bench: &Bench, voltage_v: f64) -> Self {
         let gap = &bench.gap;
         Self {
             spread: gap.spread.map_or(0.0, |q| q.value),
             memory: gap.memory.map_or(0.0, |q| q.value),
-            recovery: gap
-                .recovery_time
-                .filter(|q| q.value > 0.0)
-                .map(|q| Recovery { time_constant_s: q.value, depth: RECOVERY_DEPTH }),
+            recovery: gap.recovery_time.filter(|q| q.value > 0.0).map(|q| Recovery {
+                time_constant_s: q.value,
+                depth: gap.recovery_depth.map_or(RECOVERY_DEPTH, |depth| depth.value),
+            }),
+            drift_per_s: gap.drift.map_or(0.0, |q| q.value),
+            statistical_lag_s: gap.statistical_lag.map_or(0.0, |q| q.value),
             ..Self::steady(voltage_v)
+        }
+    }
+
+    /// What a gap of the given settled breakdown voltage withstands after a spark that leaves `residual_v` on the capacitor.
+    /// The depth of recovery is made so shallow that the gap withstands what is left: it has just gone out.
+    #[must_use]
+    pub fn strength(&self, settled_v: f64, residual_v: f64) -> Strength {
+        match self.recovery {
+            Some(recovery) => {
+                let hold = 1.0 - 1.1 * residual_v.max(0.0) / settled_v;
+                Strength { settled_v, depth: recovery.depth.min(hold).max(0.0), recovery_s: recovery.time_constant_s }
+            }
+            None => Strength::settled(settled_v),
         }
     }
 

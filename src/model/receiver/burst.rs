@@ -10,7 +10,6 @@
 //! Units: frequencies in Hz, spectra in V·s (V/Hz) for a ring that starts with `volts`.
 
 use super::Complex;
-use crate::bench::{Quantity, Tank};
 use serde::{Deserialize, Serialize};
 use std::f64::consts::{PI, TAU};
 use thiserror::Error;
@@ -60,31 +59,6 @@ impl Burst {
             return Err(BurstError::Quality(PI * ring_hz / decay_per_s));
         }
         Ok(Self { ring_hz, decay_per_s })
-    }
-
-    /// The ring of a tank as described: from its frequency and quality, else from its parts (lead inductance in series with
-    /// the coil), else from its peaks and their spacing. None if the description holds none of these in full.
-    ///
-    /// # Errors
-    /// If what is described does not ring.
-    pub fn from_tank(tank: &Tank) -> Result<Option<Self>, BurstError> {
-        let value = |quantity: Option<Quantity>| quantity.map(|q| q.value);
-        if let (Some(frequency), Some(quality)) = (value(tank.frequency), value(tank.quality)) {
-            return Self::new(frequency, quality).map(Some);
-        }
-        if let (Some(coil), Some(capacitance), Some(resistance)) =
-            (value(tank.inductance), value(tank.capacitance), value(tank.resistance))
-        {
-            let inductance = coil + value(tank.lead_inductance).unwrap_or(0.0);
-            let natural_hz = 1.0 / (TAU * (inductance * capacitance).sqrt());
-            return Self::new(natural_hz, (inductance / capacitance).sqrt() / resistance).map(Some);
-        }
-        if let (Some(peaks), Some(spacing_s)) = (&tank.peaks, value(tank.peak_spacing)) {
-            let peaks: Vec<f64> = peaks.iter().map(|peak| peak.value).collect();
-            let decrement = decrement(&peaks).ok_or(BurstError::Peaks)?;
-            return Self::ringing(1.0 / spacing_s, decrement / spacing_s).map(Some);
-        }
-        Ok(None)
     }
 
     /// Ring frequency f₁, Hz.

@@ -2,6 +2,7 @@
 
 use super::{AgcSettings, AudioBand, Burst, BurstError, Carrier, DetectorSettings, Hum, Selectivity};
 use crate::bench::{Bench, Quantity};
+use crate::model::ring;
 use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
@@ -116,7 +117,7 @@ impl ReceiverSettings {
             frequency_hz: value(described.hum_frequency, DEFAULT_HUM_HZ),
             buzz: DEFAULT_BUZZ,
         });
-        settings.burst = Burst::from_tank(&bench.tank)?.map(|burst| (burst, value(described.tuned, burst.ring_hz())));
+        settings.burst = ring::burst(bench)?.map(|burst| (burst, value(described.tuned, burst.ring_hz())));
         settings.check()?;
         Ok(settings)
     }
