@@ -266,7 +266,7 @@ fn a_detector_clips_diagonally_beyond_the_textbook_time_constant() {
     let bound_s = (1.0 - depth * depth).sqrt() / (depth * omega);
     assert!((bound_s - 119.4e-6).abs() < 1e-6);
     let worst = |discharge_s: f64| {
-        let mut detector = Detector::new(DetectorSettings { charge_s: 0.0, discharge_s }, step_s);
+        let mut detector = Detector::new(DetectorSettings { discharge_s, ..DetectorSettings::default() }, step_s);
         let envelope = |k: i32| 1.0 + depth * (omega * f64::from(k) * step_s).cos();
         (0..30_000).map(|k| detector.step(envelope(k)) - envelope(k)).fold(0.0, f64::max)
     };

@@ -64,13 +64,17 @@ pub enum BenchFault {
         /// What is allowed.
         allowed: String,
     },
-    /// A word that is not one of the electrode shapes.
-    #[error("gap.electrodes is `{given}`{}; it must be plane, spheres or points", meant(.suggestion))]
-    Electrodes {
+    /// A word that is not one of those that the key takes.
+    #[error("{key} is `{given}`{}; it must be {allowed}", meant(.suggestion))]
+    Word {
+        /// The key.
+        key: String,
         /// The word as given.
         given: String,
         /// The one that is likely meant.
         suggestion: Option<String>,
+        /// All of them.
+        allowed: String,
     },
     /// Two values that cannot both hold.
     #[error("{key} contradicts {other} on line {other_line}: {why}")]
