@@ -107,7 +107,8 @@ fn under_a_strong_carrier_clicks_turn_the_phase_and_a_discriminator_hears_both_s
 fn every_law_of_gain_control_settles_where_the_output_is_at_the_threshold() {
     for law in [AgcLaw::Forward, AgcLaw::Feedback, AgcLaw::LevelDependent] {
         for level in [0.8, 3.0] {
-            let settings = AgcSettings { law, attack_s: 2e-3, decay_s: 0.05, threshold: 0.4, greatest_gain: 10.0 };
+            let settings =
+                AgcSettings { law, attack_s: 2e-3, decay_s: 0.05, threshold: 0.4, margin: 0.0, greatest_gain: 10.0 };
             let mut agc = Agc::new(settings, 1.0 / RATE_HZ);
             let gain = (0..96_000).map(|_| agc.gain(level)).last().unwrap();
             assert!((gain * level - 0.4).abs() < 1e-3, "{law:?} {level}: {gain}");
@@ -120,7 +121,8 @@ fn every_law_of_gain_control_settles_where_the_output_is_at_the_threshold() {
 #[test]
 fn a_loop_with_fixed_time_constants_takes_its_attack_time_and_the_other_less_as_the_level_rises() {
     let time_to = |law, level: f64| {
-        let settings = AgcSettings { law, attack_s: 10e-3, decay_s: 1.0, threshold: 0.1, greatest_gain: 1.0 };
+        let settings =
+            AgcSettings { law, attack_s: 10e-3, decay_s: 1.0, threshold: 0.1, margin: 0.0, greatest_gain: 1.0 };
         let mut agc = Agc::new(settings, 1.0 / RATE_HZ);
         let end = 0.1 / level;
         let aim = end + (1.0 - end) * (-1f64).exp();
@@ -201,6 +203,7 @@ agc = "level dependent"
 agc_attack = "1 ms"
 agc_decay = "2 s"
 agc_threshold = "-20 dB"
+agc_margin = "25 %"
 agc_gain = "20 dB"
 hum = "10 %"
 hum_frequency = "60 Hz"
@@ -229,6 +232,7 @@ fn every_key_of_the_receiver_sets_its_part() {
     );
     let agc = receiver.agc.unwrap();
     assert_eq!((agc.law, agc.attack_s, agc.decay_s), (AgcLaw::LevelDependent, 1e-3, 2.0));
+    assert_eq!(agc.margin, 0.25);
     assert!((agc.threshold - 0.1).abs() < 1e-12 && (agc.greatest_gain - 10.0).abs() < 1e-12);
     let hum = receiver.hum.unwrap();
     assert_eq!((hum.amplitude, hum.frequency_hz, hum.buzz), (0.1, 60.0, 0.25));

@@ -288,6 +288,7 @@ fn agc_turns_a_fast_train_down_and_a_slow_one_hardly() {
             attack_s: 2.6e-3,
             decay_s: 1.0,
             threshold: 0.1,
+            margin: 0.0,
             greatest_gain: 1.0,
         }),
         ..quiet()

@@ -111,11 +111,12 @@ static ELECTRODES: [Word; 3] = [
     ("points", |b| b.gap.electrodes = Some(Electrodes::Points)),
 ];
 #[rustfmt::skip]
-static SELECTIVITIES: [Word; 4] = [
+static SELECTIVITIES: [Word; 5] = [
     ("coupled pairs", |b| b.receiver.selectivity = Some(SelectivityWord::CoupledPairs)),
     ("butterworth", |b| b.receiver.selectivity = Some(SelectivityWord::Butterworth)),
     ("synchronous", |b| b.receiver.selectivity = Some(SelectivityWord::Synchronous)),
     ("gaussian", |b| b.receiver.selectivity = Some(SelectivityWord::Gaussian)),
+    ("flat", |b| b.receiver.selectivity = Some(SelectivityWord::Flat)),
 ];
 #[rustfmt::skip]
 static DETECTORS: [Word; 8] = [
@@ -149,7 +150,7 @@ static POLARITIES: [Word; 2] = [
 
 /// Every key that a bench file may hold.
 #[rustfmt::skip]
-static KEYS: [Key; 64] = [
+static KEYS: [Key; 66] = [
     key("", "title", "\"North bench\"", Kind::Title),
     key("supply", "voltage", "\"9.2 kV ± 1 %\"", Q(D::Voltage, Positive, |b| &mut b.supply.voltage)),
     key("supply", "ripple", "\"1 %\"", Q(D::Fraction, BelowOne, |b| &mut b.supply.ripple)),
@@ -185,6 +186,7 @@ static KEYS: [Key; 64] = [
     key("receiver", "bandwidth", "\"6 kHz\"", Q(D::Frequency, Positive, |b| &mut b.receiver.bandwidth)),
     key("receiver", "selectivity", "\"coupled pairs\"", Kind::Word(&SELECTIVITIES)),
     key("receiver", "filter_order", "2", Q(D::Number, Count(32), |b| &mut b.receiver.filter_order)),
+    key("receiver", "filter_edge", "\"30 %\"", Q(D::Fraction, Positive, |b| &mut b.receiver.filter_edge)),
     key("receiver", "audio_band", "\"120 Hz .. 3400 Hz\"", Kind::Band),
     key("receiver", "audio_low_poles", "2", Q(D::Number, Count(2), |b| &mut b.receiver.audio_low_poles)),
     key("receiver", "audio_high_poles", "4", Q(D::Number, Count(8), |b| &mut b.receiver.audio_high_poles)),
@@ -202,6 +204,7 @@ static KEYS: [Key; 64] = [
     key("receiver", "agc_attack", "\"3 ms\"", Q(D::Time, NotNegative, |b| &mut b.receiver.agc_attack)),
     key("receiver", "agc_decay", "\"300 ms\"", Q(D::Time, NotNegative, |b| &mut b.receiver.agc_decay)),
     key("receiver", "agc_threshold", "\"-10 dB\"", Q(D::Level, Positive, |b| &mut b.receiver.agc_threshold)),
+    key("receiver", "agc_margin", "\"25 %\"", Q(D::Level, NotNegative, |b| &mut b.receiver.agc_margin)),
     key("receiver", "agc_gain", "\"20 dB\"", Q(D::Ratio, Positive, |b| &mut b.receiver.agc_gain)),
     key("receiver", "hum", "\"30 %\"", Q(D::Level, NotNegative, |b| &mut b.receiver.hum)),
     key("receiver", "hum_frequency", "\"50 Hz\"", Q(D::Frequency, Positive, |b| &mut b.receiver.hum_frequency)),

@@ -147,6 +147,8 @@ pub enum SelectivityWord {
     Synchronous,
     /// Nearly Gaussian.
     Gaussian,
+    /// Flat with steep edges.
+    Flat,
 }
 
 /// Kind of detector.
@@ -214,6 +216,8 @@ pub struct Receiver {
     pub selectivity: Option<SelectivityWord>,
     /// Pairs, poles or circuits of the channel, by its kind.
     pub filter_order: Option<Quantity>,
+    /// Width of the edges of a flat channel, as a fraction of the bandwidth.
+    pub filter_edge: Option<Quantity>,
     /// Audio band, Hz: low and high corner.
     pub audio_band: Option<(Quantity, Quantity)>,
     /// Poles of the low cut of the audio.
@@ -248,6 +252,8 @@ pub struct Receiver {
     pub agc_decay: Option<Quantity>,
     /// Level to which the AGC regulates against the peak of a click, as an amplitude ratio.
     pub agc_threshold: Option<Quantity>,
+    /// Level above that at which the attack sets in, against the peak of a click, as an amplitude ratio.
+    pub agc_margin: Option<Quantity>,
     /// Greatest gain of the AGC, as an amplitude ratio.
     pub agc_gain: Option<Quantity>,
     /// Mains hum in the audio against the peak of a click, as an amplitude ratio.

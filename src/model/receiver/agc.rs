@@ -32,6 +32,8 @@ pub struct AgcSettings {
     pub decay_s: f64,
     /// Level to which the output is regulated, in click peaks.
     pub threshold: f64,
+    /// The attack of a loop sets in only where the level is this far above threshold/gain, in click peaks.
+    pub margin: f64,
     /// Greatest gain; at 1 nothing below the threshold is turned up.
     pub greatest_gain: f64,
 }
@@ -39,7 +41,7 @@ pub struct AgcSettings {
 impl Default for AgcSettings {
     /// Attack and decay of an ordinary broadcast receiver (common practice: 1 to 20 ms and 0.1 to 0.3 s).
     fn default() -> Self {
-        Self { law: AgcLaw::default(), attack_s: 3e-3, decay_s: 0.3, threshold: 0.3, greatest_gain: 1.0 }
+        Self { law: AgcLaw::default(), attack_s: 3e-3, decay_s: 0.3, threshold: 0.3, margin: 0.0, greatest_gain: 1.0 }
     }
 }
 
@@ -84,9 +86,13 @@ impl Agc {
         (self.settings.threshold / self.level).min(self.settings.greatest_gain)
     }
 
+    fn attacks(&self, envelope: f64) -> bool {
+        (envelope - self.settings.margin) * self.gain > self.settings.threshold
+    }
+
     fn feedback(&mut self, envelope: f64) -> f64 {
         let used = self.gain;
-        let memory = if envelope * used > self.settings.threshold { self.attack } else { self.decay };
+        let memory = if self.attacks(envelope) { self.attack } else { self.decay };
         let aim = (self.settings.threshold / envelope).min(self.settings.greatest_gain);
         self.gain = aim + (used - aim) * memory;
         used
@@ -96,7 +102,7 @@ impl Agc {
         let used = self.gain;
         let AgcSettings { threshold, attack_s, decay_s, greatest_gain, .. } = self.settings;
         let excess = envelope * used - threshold;
-        let time_constant_s = if excess > 0.0 { attack_s } else { decay_s };
+        let time_constant_s = if self.attacks(envelope) { attack_s } else { decay_s };
         // dg/dt = (threshold − level·g)/τ: at level 0 a straight line, else exponential with τ/level.
         let x = envelope * self.step_s / time_constant_s;
         let share = if x > 1e-6 { -(-x).exp_m1() / x } else { 1.0 - 0.5 * x };

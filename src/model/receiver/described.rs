@@ -19,6 +19,9 @@ fn value(quantity: Option<Quantity>, default: f64) -> f64 {
     quantity.map_or(default, |q| q.value)
 }
 
+/// Edge of a flat filter, %: a ceramic filter of the better kind (common practice).
+const DEFAULT_EDGE: f64 = 0.3;
+
 /// A count that the reading of the bench has found to be a small whole number.
 fn count(quantity: Option<Quantity>, default: u8) -> u8 {
     quantity.map_or(default, |q| q.value.round() as u8)
@@ -30,6 +33,9 @@ pub(super) fn selectivity(receiver: &Receiver) -> Selectivity {
         None | Some(SelectivityWord::CoupledPairs) => Selectivity::CoupledPairs { pairs: order(2) },
         Some(SelectivityWord::Butterworth) => Selectivity::Butterworth { poles: order(4) },
         Some(SelectivityWord::Synchronous) => Selectivity::Synchronous { circuits: order(2) },
+        Some(SelectivityWord::Flat) => {
+            Selectivity::Flat { edge_percent: (100.0 * value(receiver.filter_edge, DEFAULT_EDGE)).round() as u8 }
+        }
         Some(SelectivityWord::Gaussian) => match receiver.filter_order {
             None => Selectivity::gaussian(),
             Some(_) => Selectivity::Synchronous { circuits: order(5) },
@@ -61,7 +67,8 @@ pub(super) fn carrier(receiver: &Receiver) -> Option<Carrier> {
 }
 
 pub(super) fn agc(receiver: &Receiver) -> Option<AgcSettings> {
-    let described = [receiver.agc_attack, receiver.agc_decay, receiver.agc_threshold, receiver.agc_gain];
+    let described =
+        [receiver.agc_attack, receiver.agc_decay, receiver.agc_threshold, receiver.agc_margin, receiver.agc_gain];
     let law = match receiver.agc {
         Some(AgcWord::Off) => return None,
         None if described.iter().all(Option::is_none) => return None,
@@ -75,6 +82,7 @@ pub(super) fn agc(receiver: &Receiver) -> Option<AgcSettings> {
         attack_s: value(receiver.agc_attack, default.attack_s),
         decay_s: value(receiver.agc_decay, default.decay_s),
         threshold: value(receiver.agc_threshold, default.threshold),
+        margin: value(receiver.agc_margin, default.margin),
         greatest_gain: value(receiver.agc_gain, default.greatest_gain),
     })
 }

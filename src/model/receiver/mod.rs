@@ -22,6 +22,7 @@ mod described;
 mod detector;
 mod draw;
 mod hum;
+mod linear_phase;
 mod recorder;
 mod selectivity;
 mod settings;

@@ -125,6 +125,9 @@ impl ReceiverSettings {
     pub fn check(&self) -> Result<(), ReceiverError> {
         within("bandwidth", self.bandwidth_hz, "Hz", 100.0, 200_000.0)?;
         within("filter order", self.selectivity.order() as f64, "", 1.0, Selectivity::MAX_ORDER as f64)?;
+        if let Selectivity::Flat { edge_percent } = self.selectivity {
+            within("filter edge", f64::from(edge_percent), "% of the bandwidth", 2.0, 100.0)?;
+        }
         within("noise", self.noise, "of a click peak", 0.0, 1000.0)?;
         let band = self.audio_band;
         within("audio band, high corner", band.high_hz, "Hz", 100.0, 100_000.0)?;
@@ -146,6 +149,7 @@ impl ReceiverSettings {
             within("AGC attack", agc.attack_s, "s", 0.0, 60.0)?;
             within("AGC decay", agc.decay_s, "s", 0.0, 60.0)?;
             within("AGC threshold", agc.threshold, "of a click peak", 1e-3, 1000.0)?;
+            within("AGC margin", agc.margin, "of a click peak", 0.0, 1000.0)?;
             within("AGC gain", agc.greatest_gain, "", 1e-3, 1e6)?;
         }
         if let Some(hum) = self.hum {
