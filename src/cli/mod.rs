@@ -1,6 +1,39 @@
-//! The command line.
+//! The command line: the only room that knows files, terminals and devices.
+//!
+//! Results go to standard output, everything else to standard error.
+
+mod args;
+mod bench_file;
+mod clip;
+mod exit;
+pub mod files;
+mod measure;
+#[cfg(feature = "sound-card")]
+mod play;
+mod predict;
+mod progress;
+mod render;
+
+use args::{Arguments, Command};
+use clap::Parser;
+use exit::Exit;
+use std::process::ExitCode;
 
 /// Runs the program with the arguments of the process.
-pub fn main() -> std::process::ExitCode {
-    std::process::ExitCode::SUCCESS
+#[must_use]
+pub fn main() -> ExitCode {
+    let arguments = match Arguments::try_parse() {
+        Ok(arguments) => arguments,
+        Err(message) => {
+            // Help asked for is printed to standard output and is no failure. A closed pipe is none either.
+            let _ = message.print();
+            return if message.use_stderr() { Exit::Usage.into() } else { Exit::Done.into() };
+        }
+    };
+    let ended = match &arguments.command {
+        Command::Measure(arguments) => measure::run(arguments),
+        Command::Predict(arguments) => predict::run(arguments),
+        Command::Render(arguments) => render::run(arguments),
+    };
+    ended.unwrap_or_else(exit::Failure::end).into()
 }

@@ -129,6 +129,19 @@ fn check_presence(window: &Window, h: &Hypothesis, explanation: &mut Vec<String>
         100.0 * tones.outside,
         100.0 * tones.six
     ));
+    let times: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
+    let plain = window.through(&window.kernel(|f| ((f - 200.0) / 100.0).clamp(0.0, 1.0)));
+    if let Some(c) = presence::character::of_clicks(&plain, window.rate_hz, &times) {
+        explanation.push(format!("CHAR rate {:.1} alike {:.3} width {:.3} core {:.3} clear {:.2} jit {:.4} ev/n {:.2} n {} cover {:.2} foreign {:.2} outside {:.3} six {:.2}", rate_hz, c.alike, 1e3*c.width_s, c.core, c.clear, h.fit.jitter, h.fit.evidence / h.fit.chain.index.len() as f64, h.fit.chain.index.len(), h.fit.cover, tones.foreign, tones.outside, tones.six));
+    }
+    if rate_hz > 300.0
+        && let Some(l) = presence::coherence::of_line(window.bank, &window.x, window.rate_hz, rate_hz)
+    {
+        explanation.push(format!(
+            "LINE rate {:.1} f {:.1} stable {:.3} sig {:.4} grow {:.2} cv {:.3} coh {:.3}",
+            rate_hz, l.frequency_hz, l.stable, l.jitter, l.growth, l.amplitude_cv, l.coherence
+        ));
+    }
     presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter).map_or(Ok(()), Err)
 }
 
@@ -138,7 +151,7 @@ fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Resul
     let mut output = Vec::new();
     candidates::matched_output(window.bank, &window.through(&finder.kernel), &hypothesis.shape, &mut output);
     let found = candidates::find(&output, window.rate_hz, if hypothesis.fast { 0.0 } else { APART_S });
-    let start = Start::again(hypothesis.fit.period_s, hypothesis.fit.jitter);
+    let start = Start::again(&hypothesis.fit);
     hypothesis.fit =
         fit_whole(&found, window.duration_s(), start, DENSITY).ok_or("the rhythm is lost after a few seconds")?;
     hypothesis.candidates = found;
@@ -214,6 +227,12 @@ fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> Resu
         line::count(window.bank, &window.x, window.rate_hz, found).ok_or("the line at the rate does not hold")?;
     let read = phase::read(window.bank, &window.x, window.rate_hz, 1.0 / line.fit.period_s)
         .ok_or("the stretch is too short to follow the line's phase")?;
+    if let Some(l) = presence::coherence::of_line(window.bank, &window.x, window.rate_hz, line_hz) {
+        explanation.push(format!(
+            "LINEBY rate {:.1} f {:.1} stable {:.3} sig {:.4} grow {:.2} cv {:.3} coh {:.3}",
+            line_hz, l.frequency_hz, l.stable, l.jitter, l.growth, l.amplitude_cv, l.coherence
+        ));
+    }
     explanation.push(format!("clicks overlap: read by the line at {line_hz:.2} Hz"));
     let relative = read.jitter_s.value / line.fit.period_s;
     if relative < 4e-4 || (line.amplitude_cv < 0.025 && relative < 2e-3) {

@@ -58,7 +58,7 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
         }
     }
     let mut best = best?;
-    let start = Start::again(best.fit.period_s, best.fit.jitter);
+    let start = Start::again(&best.fit);
     let whole = search::fit_whole(&best.candidates, window.duration_s(), start, DENSITY)?;
     best.fit = Fit { evidence: whole.evidence.max(best.fit.evidence), ..whole };
     Some(best)

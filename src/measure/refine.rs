@@ -52,7 +52,7 @@ fn again(window: &Window, whitened: &[f32], h: &mut Hypothesis) -> bool {
     let mut output = Vec::new();
     candidates::matched_output(window.bank, whitened, &shape, &mut output);
     let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
-    let start = Start::again(h.fit.period_s, h.fit.jitter);
+    let start = Start::again(&h.fit);
     match fit_whole(&found, window.duration_s(), start, DENSITY) {
         Some(fit) if 2 * fit.chain.index.len() >= h.fit.chain.index.len() => {
             h.fit = fit;

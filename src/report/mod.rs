@@ -1,5 +1,15 @@
-//! Results as text, JSON and CSV. Computes nothing.
+//! Results as text, JSON and CSV. Computes nothing: it rounds, names units and leaves out what is not finite.
 
+mod events;
+mod figure;
+mod json;
 mod measurement;
+mod sweep;
+mod text;
 
+pub use events::{EVENTS_HEADER, write_event};
+pub use figure::Figure;
+pub use json::{Failure, Report, finite, to_json};
 pub use measurement::{FORMAT, Measurement, Recording};
+pub use sweep::sweep_text;
+pub use text::{HIGH_VOLTAGE_CAUTION, measurement_text, wrapped};

@@ -26,6 +26,42 @@ pub struct Fit {
     pub missed: f64,
     /// Share of the window's time that the chain covers.
     pub cover: f64,
+    /// Where the marks of candidates on and off the rhythm lie.
+    pub marks: MarkLaw,
+}
+
+/// Mean and standard deviation of the marks on and off a rhythm.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct MarkLaw {
+    /// On the rhythm.
+    pub on: (f64, f64),
+    /// Off it.
+    pub off: (f64, f64),
+}
+
+/// Least standard deviation of marks, so that a narrow class does not shut out what comes with another whitening.
+const LEAST_MARK_SD: f64 = 0.15;
+
+impl MarkLaw {
+    fn of(marks: &[f64], on: &[bool]) -> Self {
+        let class = |wanted: bool| {
+            let (mut n, mut sum, mut square) = (0.0, 0.0, 0.0);
+            for (m, _) in marks.iter().zip(on).filter(|(_, o)| **o == wanted) {
+                n += 1.0;
+                sum += m;
+                square += m * m;
+            }
+            let n = f64::max(n, 1.0);
+            (sum / n, (square / n - (sum / n).powi(2)).max(0.0).sqrt().max(LEAST_MARK_SD))
+        };
+        Self { on: class(true), off: class(false) }
+    }
+
+    /// Log ratio of the two normal densities; beyond the means the nearer class stays as likely as at its mean.
+    fn gain(&self, mark: f64) -> f64 {
+        let ln = |(mean, sd): (f64, f64), m: f64| -0.5 * ((m - mean) / sd).powi(2) - sd.ln();
+        (ln(self.on, mark.min(self.on.0)) - ln(self.off, mark.max(self.off.0))).clamp(-8.0, 12.0)
+    }
 }
 
 /// Where a fit starts.
@@ -37,18 +73,35 @@ pub struct Start {
     pub jitter: f64,
     /// How fast the period follows in the first round.
     pub follow: f64,
-    /// First gains by a steep threshold (loose trains) instead of a soft one.
-    pub steep: bool,
+    /// Where the first gains come from.
+    pub gains: FirstGains,
     /// Rounds.
     pub rounds: usize,
+}
+
+/// Gains of candidates before a chain is known.
+#[derive(Debug, Clone, Copy)]
+pub enum FirstGains {
+    /// A soft threshold a little under the mark of rank 0.9·duration/T.
+    Soft,
+    /// A steep threshold at the mark of rank duration/T (loose trains).
+    Steep,
+    /// From the marks of an earlier fit.
+    Known(MarkLaw),
 }
 
 impl Start {
     /// A start from what an earlier fit found: tight trains follow the period, loose ones would wander.
     #[must_use]
-    pub fn again(period_s: f64, jitter: f64) -> Self {
-        let loose = jitter > super::path::GAMMA_FROM;
-        Self { period_s, jitter, follow: if loose { 0.0 } else { 0.1 }, steep: loose, rounds: 3 }
+    pub fn again(fit: &Fit) -> Self {
+        let loose = fit.jitter > super::path::GAMMA_FROM;
+        Self {
+            period_s: fit.period_s,
+            jitter: fit.jitter,
+            follow: if loose { 0.0 } else { 0.1 },
+            gains: FirstGains::Known(fit.marks),
+            rounds: 3,
+        }
     }
 }
 
@@ -92,6 +145,7 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         jitter: law.jitter,
         missed: law.missed,
         cover: steps.span() / duration_s,
+        marks: MarkLaw::of(&c.mark, &on),
         chain,
     })
 }
@@ -112,18 +166,21 @@ fn chain_of_hopeful(c: &Candidates, gain: &[f64], ln_off: f64, periods: &[f64], 
     chain
 }
 
-/// Gains before any chain is known: a soft threshold a little under the mark of rank 0.9·duration/T.
+/// Gains before any chain is known, and the rate of candidates off the rhythm.
 fn first_gain(c: &Candidates, duration_s: f64, start: Start) -> (Vec<f64>, f64) {
     let expected = duration_s / start.period_s;
     let n = c.len() as f64;
-    if start.steep {
-        let threshold = nth_largest(&c.mark, expected as usize);
-        let gain = c.mark.iter().map(|m| (6.0 * (m - threshold)).clamp(-6.0, 12.0)).collect();
-        (gain, (n - expected).max(0.2 * expected) / duration_s)
-    } else {
-        let threshold = nth_largest(&c.mark, (0.9 * expected) as usize) + 0.7f64.ln();
-        let gain = c.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0)).collect();
-        (gain, (n - expected).max(0.3 * expected) / duration_s)
+    let soft = |share: f64| (n - expected).max(share * expected) / duration_s;
+    match start.gains {
+        FirstGains::Steep => {
+            let threshold = nth_largest(&c.mark, expected as usize);
+            (c.mark.iter().map(|m| (6.0 * (m - threshold)).clamp(-6.0, 12.0)).collect(), soft(0.2))
+        }
+        FirstGains::Soft => {
+            let threshold = nth_largest(&c.mark, (0.9 * expected) as usize) + 0.7f64.ln();
+            (c.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0)).collect(), soft(0.3))
+        }
+        FirstGains::Known(marks) => (c.mark.iter().map(|m| marks.gain(*m)).collect(), soft(0.2)),
     }
 }
 
@@ -353,7 +410,7 @@ mod tests {
         all.extend((0..4000).map(|_| (uniform() * 4.0, uniform())));
         all.sort_by(|a, b| a.0.total_cmp(&b.0));
         let c = Candidates { time_s: all.iter().map(|a| a.0).collect(), mark: all.iter().map(|a| a.1).collect() };
-        let start = Start { period_s: 0.0103, jitter: 0.07, follow: 0.15, steep: false, rounds: 6 };
+        let start = Start { period_s: 0.0103, jitter: 0.07, follow: 0.15, gains: FirstGains::Soft, rounds: 6 };
         let fitted = fit(&c, 4.0, start).unwrap();
         assert!((fitted.period_s / 0.01 - 1.0).abs() < 0.003 && fitted.evidence > 1_000.0);
         assert!(fitted.chain.index.len().abs_diff(400) < 4, "{}", fitted.chain.index.len());

@@ -3,7 +3,7 @@
 //! The line's phase counts firings. The maxima of the real part of its analytic signal are candidates like clicks, so phase
 //! slips become missed or extra ones; the jitter comes from the spectrum of its instantaneous frequency (see [`super::phase`]).
 
-use super::fit::{Fit, Start, fit};
+use super::fit::{FirstGains, Fit, Start, fit};
 use crate::clicks::Candidates;
 use crate::clicks::filter::FilterBank;
 use crate::clicks::spectrum::{Spectrum, power_of_two_near, welch};
@@ -126,7 +126,7 @@ pub fn count(bank: &FilterBank, x: &[f32], rate_hz: f64, line: Line) -> Option<L
     let kernel = bank.kernel_of_gain(rate_hz, |f| (-0.5 * ((f - f0) / (BAND * f0)).powi(2)).exp());
     bank.apply_analytic(x, &kernel, &mut z);
     let candidates = maxima(&z, rate_hz);
-    let start = Start { period_s: 1.0 / f0, jitter: 0.04, follow: 0.05, steep: false, rounds: 6 };
+    let start = Start { period_s: 1.0 / f0, jitter: 0.04, follow: 0.05, gains: FirstGains::Soft, rounds: 6 };
     let fit = fit(&candidates, x.len() as f64 / rate_hz, start)?;
     let n = z.len() as f64;
     let mean = z.iter().map(|v| f64::from(v.norm())).sum::<f64>() / n;

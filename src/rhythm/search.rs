@@ -1,7 +1,7 @@
 //! Which periods are worth a fit: the rhythm model itself is scored on a grid of periods (not autocorrelation, which likes
 //! multiples), the best few are fitted, with half and twice the best and two loose starts beside them.
 
-use super::fit::{Fit, Start, fit};
+use super::fit::{FirstGains, Fit, Start, fit};
 use super::path::{Law, best_chain};
 use crate::clicks::Candidates;
 use crate::clicks::candidates::nth_largest;
@@ -100,7 +100,7 @@ fn fit_stretch(c: &Candidates, duration_s: f64, start: Start, density: f64) -> O
 }
 
 fn tight(period_s: f64) -> Start {
-    Start { period_s, jitter: 0.07, follow: 0.15, steep: false, rounds: 5 }
+    Start { period_s, jitter: 0.07, follow: 0.15, gains: FirstGains::Soft, rounds: 5 }
 }
 
 /// Evidence of the best chain for each period of the grid, brought to the whole duration.
@@ -155,7 +155,7 @@ fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
         .map(|k| LOOSE_FIRST_S * LOOSE_RATIO.powi(k as i32))
         .take_while(|t| *t <= duration_s / 10.0)
         .filter_map(|period_s| {
-            let start = Start { period_s, jitter: 0.3, follow: 0.0, steep: true, rounds: 3 };
+            let start = Start { period_s, jitter: 0.3, follow: 0.0, gains: FirstGains::Steep, rounds: 3 };
             let fitted = fit_stretch(c, duration_s, start, 6.0)?;
             Some((fitted.evidence, fitted.period_s))
         })
@@ -164,6 +164,6 @@ fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
     found.truncate(2);
     found
         .into_iter()
-        .map(|(_, period_s)| Start { period_s, jitter: 0.3, follow: 0.0, steep: true, rounds: 6 })
+        .map(|(_, period_s)| Start { period_s, jitter: 0.3, follow: 0.0, gains: FirstGains::Steep, rounds: 6 })
         .collect()
 }

@@ -21,6 +21,8 @@ const FINE: usize = 8;
 /// Scales about the residual one, and their reach in standard deviations of ln s².
 const SCALES: usize = 41;
 const SCALE_REACH: f64 = 4.5;
+/// Least centre of the prior of the timing noise, in units of the least on the grid.
+const LEAST_NOISE_SHARE: f64 = 1.5;
 /// Log standard deviation of the prior of the timing noise: a factor 1.6.
 const NOISE_PRIOR_LN_SD: f64 = 0.470;
 
@@ -107,7 +109,10 @@ impl PosteriorGrid {
         if self.freedom < 2.0 {
             return None;
         }
-        let weighted = self.weigh(noise_s);
+        // The grid ends at a share of 3e-4: a prior beyond it would pull the scale instead of the share.
+        let scale = self.cells[NONE * SHARES].rest / self.freedom;
+        let least = LEAST_NOISE_SHARE * (scale * share(0.0)).sqrt();
+        let weighted = self.weigh(noise_s.map(|n| n.max(least)));
         Some(weighted.summary(self.freedom, excess))
     }
 

@@ -1,5 +1,8 @@
 //! Is it a gap at all? Rules that refuse tones, noise and speech. A wrong number is worse than none.
 
+pub mod character;
+pub mod coherence;
+
 use super::fit::{Fit, median};
 use crate::clicks::spectrum::{power_of_two_near, welch};
 

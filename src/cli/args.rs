@@ -1,0 +1,207 @@
+//! The command line, defined once: help, usage errors and shell completions come from here.
+
+use super::files::SampleFormat;
+use crate::audio::ChannelChoice;
+use clap::{Args, Parser, Subcommand};
+
+const EXAMPLES: &str = "\
+Examples:
+  gaptone measure run.wav                          rate and jitter of a recording
+  gaptone measure run.wav --bench bench.toml       and the voltage at which the gap fires
+  gaptone predict --bench bench.toml               what a bench will sound like, before power
+  gaptone render --bench bench.toml -o clip.wav    a clip with known truth
+  arecord -f S16_LE -r 48000 -d 10 | gaptone measure -
+
+Exit status:
+  0  done
+  1  a file could not be read or written
+  2  wrong usage or a wrong bench file
+  3  a recording holds no firing that can be measured";
+
+/// Longest clip, s.
+const LONGEST_CLIP_S: f64 = 86_400.0;
+
+/// Firing rate, jitter and gap voltage of a relaxation-fired spark gap, from receiver audio.
+///
+/// Each firing of the gap is a click in an AM receiver; gaptone turns a recording of the clicks back into figures
+/// with their uncertainty, and goes forward from the settings of a bench to the sound.
+#[derive(Debug, Parser)]
+#[command(name = "gaptone", version, after_help = EXAMPLES, max_term_width = 100)]
+pub struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+/// The commands.
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// Rate, jitter and, with a bench, gap voltage of recordings
+    Measure(MeasureArguments),
+    /// What a bench will do and sound like, before power
+    Predict(PredictArguments),
+    /// A clip of a bench with known truth
+    Render(RenderArguments),
+}
+
+/// Arguments of `measure`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+With several recordings the exit status is 1 if one of them could not be read, else 3 if one
+of them holds nothing that can be measured, else 0. In JSON a recording that could not be read
+stands in its place with its error.
+WAV, FLAC, Ogg Vorbis, MP3, M4A (AAC, ALAC), AIFF and CAF can be read.")]
+pub struct MeasureArguments {
+    /// Recordings to measure; - is a recording on standard input
+    #[arg(required = true, value_name = "RECORDING")]
+    pub recordings: Vec<String>,
+
+    /// Description of the bench (TOML); without it there is no voltage
+    #[arg(long, value_name = "FILE")]
+    pub bench: Option<String>,
+
+    /// Supply voltage instead of the bench's, such as 9.2kV or "9.2 kV ± 1 %"; without a tolerance it keeps the
+    /// bench's
+    #[arg(long, value_name = "VOLTAGE", requires = "bench")]
+    pub supply: Option<String>,
+
+    /// Channel to analyse: left, right, mix or a number from 1 [default: the one with the clearest clicks]
+    #[arg(long, value_name = "CHANNEL")]
+    pub channel: Option<ChannelChoice>,
+
+    /// Analyse from this time on, in seconds
+    #[arg(long, value_name = "SECONDS", value_parser = seconds, allow_negative_numbers = true)]
+    pub from: Option<f64>,
+
+    /// Analyse up to this time, in seconds
+    #[arg(long, value_name = "SECONDS", value_parser = seconds, allow_negative_numbers = true)]
+    pub to: Option<f64>,
+
+    /// Write the result as JSON, in SI units: one object for one recording, an array for several
+    #[arg(long)]
+    pub json: bool,
+
+    /// Write every click to a CSV file (one recording only)
+    #[arg(long, value_name = "FILE")]
+    pub events: Option<String>,
+
+    /// Tell on standard error how the verdict came about
+    #[arg(long)]
+    pub explain: bool,
+}
+
+/// Arguments of `predict`.
+#[derive(Debug, Args)]
+pub struct PredictArguments {
+    /// Description of the bench (TOML)
+    #[arg(long, value_name = "FILE")]
+    pub bench: String,
+
+    /// Supply setting, such as 9.2kV, or a range of them, such as 6kV..12kV
+    #[arg(long, value_name = "VOLTAGE", conflicts_with = "target")]
+    pub supply: Option<String>,
+
+    /// Settings in a range
+    #[arg(long, value_name = "N", default_value_t = 7, value_parser = clap::value_parser!(u16).range(2..=1000))]
+    pub settings: u16,
+
+    /// Firing rate for which to find the supply setting, such as 440Hz
+    #[arg(long, value_name = "RATE")]
+    pub target: Option<String>,
+
+    /// Write the prediction as JSON, in SI units
+    #[arg(long)]
+    pub json: bool,
+
+    /// Write what it will sound like to a WAV or FLAC file
+    #[arg(long, value_name = "FILE")]
+    pub clip: Option<String>,
+
+    /// Play what it will sound like
+    #[cfg(feature = "sound-card")]
+    #[arg(long)]
+    pub play: bool,
+
+    /// Length of the clip, in seconds
+    #[arg(long, value_name = "SECONDS", default_value = "5", value_parser = duration)]
+    pub seconds: f64,
+}
+
+/// Arguments of `render`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+The same bench, seed and version give the same firings. The samples may differ in their last bits from
+machine to machine, for the elementary functions do.")]
+pub struct RenderArguments {
+    /// Description of the bench (TOML)
+    #[arg(long, value_name = "FILE")]
+    pub bench: String,
+
+    /// Clip to write, named .wav or .flac; - is a WAV on standard output
+    #[arg(short, long, value_name = "FILE")]
+    pub output: String,
+
+    /// Supply voltage instead of the bench's, such as 9.2kV
+    #[arg(long, value_name = "VOLTAGE")]
+    pub supply: Option<String>,
+
+    /// Length of the clip, in seconds
+    #[arg(long, value_name = "SECONDS", default_value = "10", value_parser = duration)]
+    pub seconds: f64,
+
+    /// Seed of everything that is drawn at random
+    #[arg(long, value_name = "N", default_value_t = 1)]
+    pub seed: u64,
+
+    /// Samples per second
+    #[arg(long, value_name = "HZ", default_value_t = 48_000)]
+    pub sample_rate: u32,
+
+    /// Bits of a sample
+    #[arg(long, value_name = "BITS", value_enum, default_value_t)]
+    pub bits: SampleFormat,
+
+    /// Start with the supply being switched on, instead of a gap that runs already
+    #[arg(long)]
+    pub switch_on: bool,
+
+    /// Write every firing and the figures that came out as JSON
+    #[arg(long, value_name = "FILE")]
+    pub truth: Option<String>,
+}
+
+/// Reads a length in seconds.
+fn duration(text: &str) -> Result<f64, String> {
+    match seconds(text) {
+        Ok(value) if value > 0.0 && value <= LONGEST_CLIP_S => Ok(value),
+        _ => Err(format!("write a length in seconds, above 0 and up to {LONGEST_CLIP_S}, such as 10")),
+    }
+}
+
+/// Reads a time in seconds; `s` may stand behind it.
+fn seconds(text: &str) -> Result<f64, String> {
+    match text.trim().trim_end_matches('s').trim_end().parse::<f64>() {
+        Ok(value) if value.is_finite() && value >= 0.0 => Ok(value),
+        _ => Err("write a time in seconds, 0 or more, such as 2.5".to_owned()),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use clap::CommandFactory;
+
+    #[test]
+    fn the_definitions_fit_together() {
+        Arguments::command().debug_assert();
+    }
+
+    #[test]
+    fn times_are_seconds_from_zero_up() {
+        assert_eq!(seconds("2.5"), Ok(2.5));
+        assert_eq!(seconds("2.5 s"), Ok(2.5));
+        for wrong in ["-1", "nan", "inf", "2 min", ""] {
+            assert!(seconds(wrong).is_err(), "{wrong}");
+        }
+    }
+}

@@ -1,0 +1,22 @@
+//! Files and standard input: reading recordings of any common kind, writing results whole or not at all.
+
+mod decode;
+mod encode;
+mod error;
+mod kind;
+mod place;
+mod stream;
+mod wav_head;
+mod write;
+
+pub use decode::open;
+pub use encode::{SampleFormat, write_clip};
+pub use error::FileError;
+pub use stream::Recording;
+pub use write::{check_writable, read_text, write_atomically};
+
+/// Name that stands for standard input or output.
+pub const STANDARD_STREAM: &str = "-";
+
+#[cfg(test)]
+mod tests;

@@ -1,0 +1,278 @@
+//! `gaptone measure`: recordings to figures.
+//!
+//! Recordings are analysed in parallel, one per core at a time, so that memory is bounded by the cores; results come
+//! out in the order of the arguments. A recording that cannot be read does not stop the others.
+
+use super::args::MeasureArguments;
+use super::bench_file;
+use super::exit::{Exit, Failure, say, tell};
+use super::files::{self, FileError, STANDARD_STREAM};
+use super::progress::Progress;
+use crate::audio::{AudioError, ChannelChoice, Heard, Intake, Span};
+use crate::firing::Event;
+use crate::measure::{Measurer, Options, Outcome};
+use crate::report::{self, Measurement, Recording, Report};
+use crate::rhythm::Verdict;
+use crate::voltage::VoltageMeter;
+use std::collections::BTreeMap;
+use std::io::{self, Write};
+use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::mpsc;
+
+/// Runs the command.
+///
+/// # Errors
+/// Wrong usage, a bench that cannot be used, a place for events that cannot be written.
+pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
+    let task = Task::new(arguments)?;
+    let mut results = Results { json: arguments.json, ..Results::default() };
+    let recordings = &arguments.recordings;
+    let progress = Progress::new(recordings.len());
+    let next = AtomicUsize::new(0);
+    let cores = std::thread::available_parallelism().map_or(1, usize::from);
+    let (sender, receiver) = mpsc::channel();
+    std::thread::scope(|scope| {
+        for _ in 0..cores.min(recordings.len()) {
+            let (sender, next, task, progress) = (sender.clone(), &next, &task, &progress);
+            scope.spawn(move || {
+                loop {
+                    let index = next.fetch_add(1, Ordering::Relaxed);
+                    let Some(name) = recordings.get(index) else { return };
+                    let result = task.measure(name, progress);
+                    progress.done();
+                    if sender.send((index, result)).is_err() {
+                        return;
+                    }
+                }
+            });
+        }
+        drop(sender);
+        let ended = results.take_in_order(receiver, recordings, &progress);
+        // Nobody reads on: the workers stop after the recording they are at.
+        next.store(recordings.len(), Ordering::Relaxed);
+        ended
+    })?;
+    results.finish()
+}
+
+/// One analysed recording.
+struct Analysed {
+    measurement: Measurement,
+    explanation: Vec<String>,
+}
+
+/// What is to be done with each recording.
+struct Task<'a> {
+    channel: ChannelChoice,
+    span: Span,
+    events: Option<&'a str>,
+    explain: bool,
+    /// A voltmeter that has seen no event yet.
+    voltage: Option<VoltageMeter>,
+}
+
+impl<'a> Task<'a> {
+    /// Checks everything that can be checked before any audio is read.
+    fn new(arguments: &'a MeasureArguments) -> Result<Self, Failure> {
+        let recordings = &arguments.recordings;
+        let span = Span { from_s: arguments.from.unwrap_or(0.0), to_s: arguments.to };
+        if span.to_s.is_some_and(|to_s| to_s <= span.from_s) {
+            let message =
+                format!("--to {} s lies before --from {} s; it must be later", span.to_s.unwrap_or(0.0), span.from_s);
+            return Err(Failure::usage(message));
+        }
+        if recordings.iter().filter(|name| *name == STANDARD_STREAM).count() > 1 {
+            return Err(Failure::usage("- is named more than once; standard input can be read only once"));
+        }
+        let events = arguments.events.as_deref();
+        if let Some(place) = events {
+            if recordings.len() > 1 {
+                return Err(Failure::usage("--events takes the clicks of one recording; name a single one"));
+            }
+            files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
+        }
+        let voltage = voltmeter(arguments)?;
+        Ok(Self { channel: arguments.channel.unwrap_or_default(), span, events, explain: arguments.explain, voltage })
+    }
+
+    /// Measures one recording and writes its events if they are wanted.
+    fn measure(&self, name: &str, progress: &Progress) -> Result<Analysed, Failure> {
+        let Some(place) = self.events else {
+            return self.analyse(name, progress, &mut |_, _| Ok(()));
+        };
+        let mut analysed = None;
+        let written = files::write_atomically(place, |out| {
+            writeln!(out, "{}", report::EVENTS_HEADER)?;
+            let result =
+                self.analyse(name, progress, &mut |event, voltage_v| report::write_event(out, event, voltage_v));
+            let failed = result.is_err();
+            analysed = Some(result);
+            // No file of events is left behind for a recording that could not be read.
+            if failed { Err(io::Error::other("the recording was not measured")) } else { Ok(()) }
+        });
+        match (analysed, written) {
+            (Some(Err(failure)), _) => Err(failure),
+            (Some(Ok(analysed)), Ok(())) => Ok(analysed),
+            (_, Err(error)) => Err(Failure::file(place, &error)),
+            (None, Ok(())) => Err(Failure::Told(Exit::File, format!("{place}: nothing was written"))),
+        }
+    }
+
+    fn analyse(&self, name: &str, progress: &Progress, sink: &mut Sink<'_>) -> Result<Analysed, Failure> {
+        let recording = files::open(name).map_err(|error| Failure::file(name, &error))?;
+        let told = |error: AudioError| Failure::file(name, &FileError::Broken(error.to_string()));
+        let mut intake = Intake::new(recording, self.channel, self.span).map_err(told)?;
+        let (sample_rate_hz, channels) = (intake.sample_rate_hz(), intake.channels());
+        let mut measurer = Measurer::new(sample_rate_hz, Options { explain: self.explain });
+        let mut voltage = self.voltage.clone();
+        let mut take = |events: Vec<Event>| self.take(events, voltage.as_mut(), sink);
+        let mut mono = Vec::new();
+        while intake.next(&mut mono).map_err(told)? {
+            measurer.push(&mono);
+            take(measurer.take_events())?;
+            progress.heard(mono.len() as f64 / f64::from(sample_rate_hz));
+        }
+        let heard = intake.finish();
+        let Outcome { mut reading, events, mut explanation } = measurer.finish();
+        take(events)?;
+        for stretch in &mut reading.stretches {
+            (stretch.from_s, stretch.to_s) = (stretch.from_s + self.span.from_s, stretch.to_s + self.span.from_s);
+        }
+        reading.notes.splice(0..0, notes_of(&heard, self.span));
+        let recording = Recording {
+            file: name.to_owned(),
+            duration_s: heard.duration_s,
+            sample_rate_hz,
+            channels,
+            channel: heard.channel,
+            from_s: self.span.from_s,
+        };
+        let voltage = voltage.map(|meter| meter.finish(&reading)).unwrap_or_default();
+        reading.notes.extend(voltage.notes);
+        explanation.extend(voltage.contributions.iter().map(|part| {
+            format!("gap voltage: {} brings {:.1} V, {:.0} % of the variance", part.name, part.u_v, 100.0 * part.share)
+        }));
+        let measurement = Measurement {
+            format: report::FORMAT.to_owned(),
+            recording,
+            reading,
+            gap_voltage_v: voltage.gap_voltage_v,
+            gap_voltage_spread_v: voltage.gap_voltage_spread_v,
+        };
+        let explanation = if self.explain { explanation } else { Vec::new() };
+        Ok(Analysed { measurement: report::finite(measurement), explanation })
+    }
+
+    /// Hands events on to the voltmeter and to their file.
+    fn take(
+        &self,
+        events: Vec<Event>,
+        mut voltage: Option<&mut VoltageMeter>,
+        sink: &mut Sink<'_>,
+    ) -> Result<(), Failure> {
+        for mut event in events {
+            // The analyzer counts from the first sample it hears; a person counts from the start of the file.
+            event.time_s += self.span.from_s;
+            let meter = voltage.as_deref_mut();
+            let voltage_v = meter.and_then(|meter| {
+                meter.push(&event);
+                event.period_s.and_then(|period_s| meter.gap_voltage_of(period_s))
+            });
+            sink(&event, voltage_v).map_err(|error| {
+                let place = self.events.unwrap_or("standard output");
+                Failure::file(place, &FileError::from_io("writing", error))
+            })?;
+        }
+        Ok(())
+    }
+}
+
+/// Where events go, each with the gap voltage that it implies.
+type Sink<'a> = dyn FnMut(&Event, Option<f64>) -> io::Result<()> + 'a;
+
+/// The voltmeter of the bench; none without a bench.
+fn voltmeter(arguments: &MeasureArguments) -> Result<Option<VoltageMeter>, Failure> {
+    let Some(name) = &arguments.bench else { return Ok(None) };
+    let bench = bench_file::load(name)?;
+    let supply = arguments.supply.as_deref().map(|text| bench_file::supply(text, &bench)).transpose()?;
+    VoltageMeter::new(&bench, supply).map(Some).map_err(|error| Failure::usage(format!("{name}: {error}")))
+}
+
+fn notes_of(heard: &Heard, span: Span) -> Vec<String> {
+    let mut notes = heard.notes.clone();
+    if heard.frames == 0 && span.from_s > 0.0 {
+        notes.push(format!("the recording ends before {} s, where the analysis was to start", span.from_s));
+    }
+    notes
+}
+
+/// Results as they come in, put out in the order of the arguments.
+#[derive(Default)]
+struct Results {
+    json: bool,
+    reports: Vec<Report>,
+    texts: usize,
+    failed: bool,
+    not_measurable: bool,
+}
+
+impl Results {
+    fn take_in_order(
+        &mut self,
+        receiver: mpsc::Receiver<(usize, Result<Analysed, Failure>)>,
+        names: &[String],
+        progress: &Progress,
+    ) -> Result<(), Failure> {
+        let mut early = BTreeMap::new();
+        let mut turn = 0;
+        for (index, result) in receiver {
+            early.insert(index, result);
+            while let Some(result) = early.remove(&turn) {
+                progress.clear();
+                self.take(&names[turn], result)?;
+                turn += 1;
+            }
+        }
+        progress.clear();
+        Ok(())
+    }
+
+    fn take(&mut self, name: &str, result: Result<Analysed, Failure>) -> Result<(), Failure> {
+        match result {
+            Ok(Analysed { measurement, explanation }) => {
+                explanation.iter().for_each(|line| tell(&format!("{name}: {line}")));
+                self.not_measurable |= measurement.reading.verdict == Verdict::None;
+                if self.json {
+                    self.reports.push(Report::Measured(Box::new(measurement)));
+                    return Ok(());
+                }
+                let gap = if self.texts > 0 { "\n" } else { "" };
+                self.texts += 1;
+                say(&format!("{gap}{}", report::measurement_text(&measurement)))
+            }
+            Err(Failure::Told(Exit::File, message)) => {
+                self.failed = true;
+                tell(&message);
+                if self.json {
+                    let error = message.strip_prefix(&format!("{name}: ")).unwrap_or(&message);
+                    self.reports.push(Report::Failed(report::Failure::new(name, error)));
+                }
+                Ok(())
+            }
+            Err(other) => Err(other),
+        }
+    }
+
+    fn finish(self) -> Result<Exit, Failure> {
+        if self.json {
+            let text = report::to_json(&self.reports)
+                .map_err(|error| Failure::Told(Exit::File, format!("the result cannot be written as JSON: {error}")))?;
+            say(&(text + "\n"))?;
+        }
+        Ok(match (self.failed, self.not_measurable) {
+            (true, _) => Exit::File,
+            (false, true) => Exit::NotMeasurable,
+            (false, false) => Exit::Done,
+        })
+    }
+}
