@@ -147,6 +147,12 @@ impl Source<'_> {
         self.text.as_bytes().iter().take(byte).filter(|sign| **sign == b'\n').count() + 1
     }
 
+    /// First byte of a line counted from 1; the end of the text if there are fewer.
+    pub(super) fn start_of_line(&self, line: usize) -> usize {
+        let ends = self.text.bytes().enumerate().filter(|(_, sign)| *sign == b'\n').map(|(at, _)| at + 1);
+        std::iter::once(0).chain(ends).nth(line.saturating_sub(1)).unwrap_or(self.text.len())
+    }
+
     /// The text of a byte range; empty if it is none.
     pub(super) fn slice(&self, span: &Range<usize>) -> &str {
         self.text.get(span.clone()).unwrap_or("")

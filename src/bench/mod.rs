@@ -9,6 +9,8 @@ mod format;
 mod keys;
 mod quantity;
 mod read;
+mod series;
+mod set;
 mod suggest;
 mod syntax;
 mod text;
@@ -19,6 +21,8 @@ pub use error::{BenchError, BenchFault};
 pub use format::{quantity_text, si, with_uncertainty};
 pub use quantity::{Quantity, Tolerance};
 pub use read::parse;
+pub use series::{LayoutWord, Motion, Outage, RATE, SeriesDescription, SeriesEntry, SeriesFaults, parse_series};
+pub use set::{dimension_of, example_of, set, set_quantity};
 pub use text::{QuantityError, parse_quantity, parse_range};
 
 /// A bench as described; a part that the text does not mention is absent.

@@ -218,7 +218,7 @@ fn help(key: &Key) -> Option<String> {
     Some(format!("{} = {}", key.name, key.example))
 }
 
-fn type_name(value: &DeValue<'_>) -> &'static str {
+pub(super) fn type_name(value: &DeValue<'_>) -> &'static str {
     match value {
         DeValue::String(_) => "a text",
         DeValue::Integer(number) if number.radix() != 10 => "a number in hexadecimal, octal or binary digits",
