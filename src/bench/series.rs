@@ -158,7 +158,11 @@ pub fn parse_series(text: &str, file_name: &str) -> Result<SeriesDescription, Be
             ("defaults", DeValue::Table(table)) => defaults = reader.fields(table, defaults)?,
             ("clip", DeValue::Array(items)) => clips = Some(items),
             ("clip" | "defaults", _) => {
-                return Err(reader.wrong(name, value, "a section: write [defaults] once and [[clip]] before each clip"));
+                return Err(reader.wrong(
+                    name,
+                    value,
+                    "a section: write [defaults] once and [[clip]] before each clip",
+                ));
             }
             _ => return Err(reader.unknown(name, "at the top of a series file", &["title", "defaults", "clip"])),
         }

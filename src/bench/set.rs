@@ -1,12 +1,12 @@
 //! Setting one key of a bench from text, for scales and changes that a series lays over a bench file.
 
+use super::Bench;
 use super::dimension::Dimension;
 use super::error::BenchFault;
 use super::keys::{self, Key, Kind, SECTIONS};
 use super::quantity::Quantity;
 use super::suggest::nearest;
 use super::text::{parse_quantity, parse_range};
-use super::Bench;
 
 /// Finds the key of a path such as `gap.spread`.
 fn find(path: &str) -> Result<&'static Key, BenchFault> {
@@ -59,13 +59,12 @@ pub fn set(bench: &mut Bench, path: &str, text: &str) -> Result<(), BenchFault> 
     match key.kind {
         Kind::Word(words) => {
             let names = || words.iter().map(|(name, _)| *name);
-            let (_, store) =
-                words.iter().find(|(name, _)| *name == text.trim()).ok_or_else(|| BenchFault::Word {
-                    key: path.to_owned(),
-                    given: text.to_owned(),
-                    suggestion: nearest(text, names()).map(|near| format!("`{near}`")),
-                    allowed: names().collect::<Vec<_>>().join(", "),
-                })?;
+            let (_, store) = words.iter().find(|(name, _)| *name == text.trim()).ok_or_else(|| BenchFault::Word {
+                key: path.to_owned(),
+                given: text.to_owned(),
+                suggestion: nearest(text, names()).map(|near| format!("`{near}`")),
+                allowed: names().collect::<Vec<_>>().join(", "),
+            })?;
             store(bench);
         }
         Kind::Band => {

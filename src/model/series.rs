@@ -2,7 +2,7 @@
 //!
 //! Reading files is the caller's: benches and sounds come in as values.
 
-use super::charging::{Circuit, NoFiring};
+use super::charging::{Circuit, MissingPart, NoFiring};
 use super::clip::Clip;
 use super::finish::{FinishError, FinishSettings, Finished, Layout};
 use super::firings::{Dust, Faults, GapLaw, Moment, NoTrain, Outage, Plan, Rhythm, Start, simulate};
@@ -30,6 +30,9 @@ pub enum SeriesError {
     /// No gap voltage.
     #[error("the bench gives no gap.voltage: a clip needs the voltage at which the gap breaks down")]
     NoGapVoltage,
+    /// The bench says too little.
+    #[error("{0}")]
+    Missing(#[from] MissingPart),
     /// A change that the bench does not take.
     #[error("{0}")]
     Change(#[from] BenchFault),
@@ -74,6 +77,20 @@ pub struct Ingredients {
 /// # Errors
 /// [`SeriesError`]: what is wrong and what would be right.
 pub fn make(entry: &SeriesEntry, ingredients: &Ingredients) -> Result<(Finished, Truth), SeriesError> {
+    let finish = FinishSettings {
+        loudness_lufs: entry.loudness_lufs,
+        true_peak_dbtp: entry.true_peak_dbtp,
+        fade_s: entry.fade_s,
+        layout: if entry.layout == LayoutWord::Marker { Layout::Marker } else { Layout::Mono },
+    };
+    Ok(Finished::new(clip(entry, ingredients)?, finish)?)
+}
+
+/// The clip of an entry before its finish: everything that can be wrong with an entry shows here, without rendering it.
+///
+/// # Errors
+/// [`SeriesError`]: what is wrong and what would be right.
+pub fn clip(entry: &SeriesEntry, ingredients: &Ingredients) -> Result<Clip, SeriesError> {
     let mut bench = ingredients.bench.clone();
     entry.lay_over(&mut bench)?;
     if let Some((key, rate)) = &entry.varied
@@ -99,13 +116,7 @@ pub fn make(entry: &SeriesEntry, ingredients: &Ingredients) -> Result<(Finished,
     clip.truth.title = entry.title.clone().or(bench.title);
     clip.truth.bench = Some(ingredients.bench_text.clone());
     clip.truth.changes = changes(entry);
-    let finish = FinishSettings {
-        loudness_lufs: entry.loudness_lufs,
-        true_peak_dbtp: entry.true_peak_dbtp,
-        fade_s: entry.fade_s,
-        layout: if entry.layout == LayoutWord::Marker { Layout::Marker } else { Layout::Mono },
-    };
-    Ok(Finished::new(clip, finish)?)
+    Ok(clip)
 }
 
 /// What was laid over the bench, for the truth.
@@ -132,12 +143,7 @@ fn moment(bench: &Bench, from_s: f64) -> Result<Moment, SeriesError> {
     Ok(Moment { from_s, circuit: Circuit::from_bench(bench, None)?, gap })
 }
 
-fn train(
-    entry: &SeriesEntry,
-    bench: &Bench,
-    motion: Option<&Motion>,
-    seed: u64,
-) -> Result<TrainTruth, SeriesError> {
+fn train(entry: &SeriesEntry, bench: &Bench, motion: Option<&Motion>, seed: u64) -> Result<TrainTruth, SeriesError> {
     let Moment { circuit, gap, .. } = moment(bench, 0.0)?;
     let period_s = circuit.period_s(gap.voltage_v).ok();
     let rhythm = match motion {

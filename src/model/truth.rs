@@ -1,7 +1,7 @@
 //! What a rendered clip holds: every firing, the settings, and the figures that an ideal reader would find.
 
-use super::firings::{GapLaw, Outage, Plan, Realised, Rhythm, Start};
 use super::finish::FinishTruth;
+use super::firings::{GapLaw, Outage, Plan, Realised, Rhythm, Start};
 use super::render::RenderSettings;
 use crate::firing::{EventKind, Firing};
 use serde::{Deserialize, Serialize};

@@ -39,7 +39,9 @@ impl Reader<'_> {
             (Some((key, span)), Some(values), None) => Some(self.motion(key, span, values)?),
             (None, None, None) | (Some(_), None, Some(_)) => None,
             (None, ..) => return Err(fault("vary must say what over or through runs along")),
-            (Some(_), None, None) => return Err(fault("vary needs over (a clip for each value) or through (one clip)")),
+            (Some(_), None, None) => {
+                return Err(fault("vary needs over (a clip for each value) or through (one clip)"));
+            }
         };
         let scale = match (&fields.vary, &fields.over) {
             (Some((key, _)), Some(over)) => self.scale(key, over, &fields)?.into_iter().map(Some).collect(),
@@ -80,9 +82,8 @@ impl Reader<'_> {
     fn value(&self, key: &str, text: &str, span: &Range<usize>) -> Result<Quantity, BenchError> {
         let dimension = self.dimension(key);
         let help = || example_of(key).map(|example| format!("{key} = {example}"));
-        let quantity = parse_quantity(text, dimension).map_err(|cause| {
-            self.source.error(span, BenchFault::Quantity { key: key.to_owned(), cause }, help())
-        })?;
+        let quantity = parse_quantity(text, dimension)
+            .map_err(|cause| self.source.error(span, BenchFault::Quantity { key: key.to_owned(), cause }, help()))?;
         self.makes_sense(key, quantity, span)?;
         Ok(quantity)
     }
@@ -133,7 +134,8 @@ impl Reader<'_> {
                     self.source.error(span, BenchFault::Quantity { key: key.to_owned(), cause }, None)
                 })?;
                 let ratio = matches!(dimension, Dimension::Level | Dimension::Ratio) && low.value > 0.0;
-                let values = spread(low.value, high.value, fields.steps.unwrap_or(STEPS), fields.by_ratio.unwrap_or(ratio));
+                let values =
+                    spread(low.value, high.value, fields.steps.unwrap_or(STEPS), fields.by_ratio.unwrap_or(ratio));
                 values.iter().try_for_each(|value| self.makes_sense(key, Quantity::exact(*value), span))?;
                 Ok(values.into_iter().map(Quantity::exact).collect())
             }
@@ -150,7 +152,5 @@ impl Reader<'_> {
 fn spread(low: f64, high: f64, steps: usize, by_ratio: bool) -> Vec<f64> {
     let part = |k: usize| k as f64 / (steps - 1) as f64;
     let by_ratio = by_ratio && low > 0.0;
-    (0..steps)
-        .map(|k| if by_ratio { low * (high / low).powf(part(k)) } else { low + (high - low) * part(k) })
-        .collect()
+    (0..steps).map(|k| if by_ratio { low * (high / low).powf(part(k)) } else { low + (high - low) * part(k) }).collect()
 }

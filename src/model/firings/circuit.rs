@@ -101,7 +101,9 @@ impl<'a> Gap<'a> {
 /// Firings of a gap across a circuit, both as they are from moment to moment.
 pub(super) fn fire(plan: &Plan, moments: &[Moment]) -> Result<Vec<Firing>, NoTrain> {
     let Some(Moment { circuit, gap: law, .. }) = moments.first() else {
-        return Err(check("the number of moments", 0.0, false, "it must be 1 or more").err().unwrap_or(NoTrain::TooMany));
+        return Err(check("the number of moments", 0.0, false, "it must be 1 or more")
+            .err()
+            .unwrap_or(NoTrain::TooMany));
     };
     moments.iter().try_for_each(|moment| moment.gap.check())?;
     let scatter = Scatter::new(Random::stream(plan.seed, stream::RHYTHM), law.memory);
