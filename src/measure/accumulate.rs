@@ -4,7 +4,7 @@ use super::train::Train;
 use crate::estimate::{COVERAGE_95, Estimate};
 use crate::rhythm::statistics::structure::{self, Structure};
 use crate::rhythm::statistics::{Posterior, PosteriorGrid, robust};
-use crate::rhythm::{FiringCounts, MainsJitter, Reading, Stretch, Verdict};
+use crate::rhythm::{FiringCounts, MainsJitter, OtherTrain, Reading, Stretch, Verdict};
 
 /// Clicks per block of the posterior: long enough for memory of 0.97, short enough that a slow wander is taken by the line.
 const BLOCK: usize = 3000;
@@ -38,6 +38,7 @@ pub struct Accumulator {
     phase: Vec<(Estimate, f64)>,
     removed: u64,
     stretches: Vec<Stretch>,
+    others: Vec<OtherTrain>,
 }
 
 impl Accumulator {
@@ -57,6 +58,9 @@ impl Accumulator {
             self.steps += (number[number.len() - 1] - number[0]) as f64;
             self.duration_s += time_s[time_s.len() - 1] - time_s[0];
             self.add_stretch(time_s, number);
+        }
+        if self.others.is_empty() {
+            self.others.clone_from(&train.others);
         }
         let n = train.time_s.len() as f64;
         if let Some(noise) = train.noise_s {
@@ -128,7 +132,7 @@ impl Accumulator {
             mains_locked_jitter_s: mains,
             drift_per_s: line.drift_per_s,
             timing_noise_s: Some(posterior.timing_noise_s),
-            other_trains: Vec::new(),
+            other_trains: self.others.clone(),
             stretches: self.stretches.clone(),
             notes,
         })
@@ -258,12 +262,7 @@ const LOCK_WITHIN: f64 = 5e-4;
 const LOCK_JITTER: f64 = 3e-3;
 
 fn locked_to(rate_hz: f64, jitter: f64) -> Option<f64> {
-    if jitter > LOCK_JITTER {
-        return None;
-    }
-    [100.0, 120.0, 50.0, 60.0].into_iter().find(|line_hz| {
-        [1.0, 2.0, 3.0, 4.0, 0.5, 1.0 / 3.0, 0.25].iter().any(|q| (rate_hz / (line_hz * q) - 1.0).abs() < LOCK_WITHIN)
-    })
+    if jitter > LOCK_JITTER { None } else { crate::rhythm::mains_multiple(rate_hz, LOCK_WITHIN) }
 }
 
 /// Click times with the structure taken out.

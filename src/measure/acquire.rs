@@ -7,13 +7,17 @@ use super::hypothesis::{self, APART_S, DENSITY, Hypothesis};
 use super::refine::{Finder, refine};
 use super::times::{self, Timing};
 use super::train::{Train, number};
+use super::trains;
 use super::window::{FIND_HIGH_PASS_HZ, Window};
 use crate::clicks::candidates;
 use crate::clicks::timing::Flatness;
-use crate::rhythm::fit::Start;
+use crate::rhythm::OtherTrain;
+use crate::rhythm::fit::{Fit, Start};
 use crate::rhythm::line::{self, LineTrain};
+use crate::rhythm::phase;
+use crate::rhythm::presence::coherence::LineCharacter;
+use crate::rhythm::presence::{self, Heard};
 use crate::rhythm::search::fit_whole;
-use crate::rhythm::{phase, presence};
 
 /// Floors of the whitening tried in turn: deep first, shallow if nothing is found.
 const FLOORS: [f64; 2] = [2e-3, 0.1];
@@ -28,6 +32,10 @@ const LEARN_COVER: f64 = 0.8;
 /// A line is taken if its evidence is this many times the clicks', or their period this many times the line's.
 const LINE_EVIDENCE: f64 = 2.0;
 const LINE_PERIOD: f64 = 1.4;
+/// Natural log of the ratio from which clicks count as larger.
+const LARGER: f64 = 0.05;
+/// Rate to which a train read by its line alone is raised for the judgement of the line, Hz.
+const LINE_ONLY_HZ: f64 = 1_300.0;
 /// Periods below which a line at the same rate is asked for its phase, s.
 const PHASE_BELOW_S: f64 = 0.8e-3;
 
@@ -75,6 +83,7 @@ struct Model {
     finder: Finder,
     timing: Timing,
     overlaps: bool,
+    others: Vec<OtherTrain>,
 }
 
 impl Model {
@@ -85,7 +94,8 @@ impl Model {
     /// The train of the window that was learnt from itself.
     fn into_train(self, window: &Window) -> Train {
         let flat = self.timing.reader.as_ref().map_or(&[][..], |(_, flatness)| window.flat(*flatness));
-        finish_train(window, &self.hypothesis, &self.timing, flat, self.overlaps)
+        let train = finish_train(window, &self.hypothesis, &self.timing, flat, self.overlaps);
+        Train { others: self.others, ..train }
     }
 }
 
@@ -98,8 +108,28 @@ fn learn(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<L
     }
     let Some(mut h) = clicks else { return Err("no clicks stand out") };
     let first_evidence = h.fit.evidence;
-    let finder = refine(window, whitened, floor, &mut h);
+    let mut finder = refine(window, &whitened, floor, &mut h);
     h.fit.evidence = h.fit.evidence.max(first_evidence);
+    let mut others = trains::beside(&h, window.duration_s());
+    if let Some(larger) = largest(&h, &others) {
+        // The figures are those of the train with the largest clicks, whichever was found first.
+        let first = std::mem::replace(&mut h.fit, others.swap_remove(larger));
+        explanation.push(format!(
+            "a train of {:.3} ms has larger clicks than that of {:.3} ms",
+            1e3 * h.fit.period_s,
+            1e3 * first.period_s
+        ));
+        finder = refine(window, &whitened, floor, &mut h);
+        others = trains::beside(&h, window.duration_s());
+    }
+    let mark = trains::median_mark(&h.candidates, &h.fit);
+    let others: Vec<OtherTrain> = others.iter().filter_map(|f| trains::figures(&h.candidates, f, mark)).collect();
+    for other in &others {
+        explanation.push(format!(
+            "beside it a train of {:.3} /s, {:.2} times as large",
+            other.firing_rate_hz.value, other.relative_size
+        ));
+    }
     explanation.push(format!(
         "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
         1e3 * h.fit.period_s,
@@ -117,37 +147,43 @@ fn learn(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<L
     ));
     let overlaps =
         h.fit.period_s < PHASE_BELOW_S && line.is_some_and(|l| (l.fit.period_s / h.fit.period_s - 1.0).abs() < 0.03);
-    Ok(Learnt::Clicks(Box::new(Model { hypothesis: h, finder, timing, overlaps })))
+    Ok(Learnt::Clicks(Box::new(Model { hypothesis: h, finder, timing, overlaps, others })))
+}
+
+/// Which of the other trains has clearly larger clicks than the hypothesis, if any.
+fn largest(h: &Hypothesis, others: &[Fit]) -> Option<usize> {
+    let own = trains::median_mark(&h.candidates, &h.fit) + LARGER;
+    (0..others.len())
+        .map(|i| (i, trains::median_mark(&h.candidates, &others[i])))
+        .filter(|(_, m)| *m > own)
+        .max_by(|a, b| a.1.total_cmp(&b.1))
+        .map(|(i, _)| i)
 }
 
 fn check_presence(window: &Window, h: &Hypothesis, explanation: &mut Vec<String>) -> Result<(), &'static str> {
     let rate_hz = 1.0 / h.fit.period_s;
     let tones = presence::tones(&window.x, window.rate_hz, rate_hz);
-    explanation.push(format!(
-        "energy: {:.0} % in tones foreign to the rate, {:.0} % outside the line at the rate, {:.0} % in six lines",
-        100.0 * tones.foreign,
-        100.0 * tones.outside,
-        100.0 * tones.six
-    ));
     let times: Vec<f64> = h.fit.chain.index.iter().map(|&i| h.candidates.time_s[i]).collect();
-    let plain = window.through(&window.kernel(|f| ((f - 200.0) / 100.0).clamp(0.0, 1.0)));
-    if let Some(c) = presence::character::of_clicks(&plain, window.rate_hz, &times) {
-        explanation.push(format!("CHAR rate {:.1} alike {:.3} width {:.3} core {:.3} clear {:.2} jit {:.4} ev/n {:.2} n {} cover {:.2} foreign {:.2} outside {:.3} six {:.2}", rate_hz, c.alike, 1e3*c.width_s, c.core, c.clear, h.fit.jitter, h.fit.evidence / h.fit.chain.index.len() as f64, h.fit.chain.index.len(), h.fit.cover, tones.foreign, tones.outside, tones.six));
+    let high = window.through(&window.kernel(|f| ((f - 200.0) / 100.0).clamp(0.0, 1.0)));
+    let character = presence::character::of_clicks(&high, window.rate_hz, &times);
+    let heard = Heard::of(&h.fit, tones, character, line_character(window, rate_hz));
+    explanation.push(heard.describe());
+    heard.refusal().map_or(Ok(()), Err)
+}
+
+/// Rates from which a line at the rate is looked at, Hz.
+const LINE_FROM_HZ: f64 = 300.0;
+
+fn line_character(window: &Window, rate_hz: f64) -> Option<LineCharacter> {
+    if rate_hz < LINE_FROM_HZ {
+        return None;
     }
-    if rate_hz > 300.0
-        && let Some(l) = presence::coherence::of_line(window.bank, &window.x, window.rate_hz, rate_hz)
-    {
-        explanation.push(format!(
-            "LINE rate {:.1} f {:.1} stable {:.3} sig {:.4} grow {:.2} cv {:.3} coh {:.3}",
-            rate_hz, l.frequency_hz, l.stable, l.jitter, l.growth, l.amplitude_cv, l.coherence
-        ));
-    }
-    presence::refuse(&h.fit, &tones, rate_hz, h.fit.jitter).map_or(Ok(()), Err)
+    presence::coherence::of_line(window.bank, &window.x, window.rate_hz, rate_hz)
 }
 
 /// Follows a train through a longer window than it was learnt from.
 fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Result<Train, &'static str> {
-    let Model { mut hypothesis, finder, timing, overlaps } = model;
+    let Model { mut hypothesis, finder, timing, overlaps, others } = model;
     let mut output = Vec::new();
     candidates::matched_output(window.bank, &window.through(&finder.kernel), &hypothesis.shape, &mut output);
     let found = candidates::find(&output, window.rate_hz, if hypothesis.fast { 0.0 } else { APART_S });
@@ -163,7 +199,7 @@ fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Resul
     ));
     let flat =
         timing.reader.as_ref().map_or_else(Vec::new, |(_, flatness)| window.through(&window.flattening(*flatness)));
-    Ok(finish_train(window, &hypothesis, &timing, &flat, overlaps))
+    Ok(Train { others, ..finish_train(window, &hypothesis, &timing, &flat, overlaps) })
 }
 
 fn finish_train(window: &Window, h: &Hypothesis, timing: &Timing, flat: &[f32], overlaps: bool) -> Train {
@@ -227,11 +263,13 @@ fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> Resu
         line::count(window.bank, &window.x, window.rate_hz, found).ok_or("the line at the rate does not hold")?;
     let read = phase::read(window.bank, &window.x, window.rate_hz, 1.0 / line.fit.period_s)
         .ok_or("the stretch is too short to follow the line's phase")?;
-    if let Some(l) = presence::coherence::of_line(window.bank, &window.x, window.rate_hz, line_hz) {
-        explanation.push(format!(
-            "LINEBY rate {:.1} f {:.1} stable {:.3} sig {:.4} grow {:.2} cv {:.3} coh {:.3}",
-            line_hz, l.frequency_hz, l.stable, l.jitter, l.growth, l.amplitude_cv, l.coherence
-        ));
+    let tones = presence::tones(&window.x, window.rate_hz, line_hz);
+    let mut heard = Heard::of(&line.fit, tones, None, line_character(window, line_hz));
+    // Below the rate at which clicks must overlap they would have been found one by one: the line alone is not believed.
+    heard.rate_hz = heard.rate_hz.max(LINE_ONLY_HZ);
+    explanation.push(heard.describe());
+    if let Some(why) = heard.refusal() {
+        return Err(why);
     }
     explanation.push(format!("clicks overlap: read by the line at {line_hz:.2} Hz"));
     let relative = read.jitter_s.value / line.fit.period_s;
@@ -249,5 +287,6 @@ fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> Resu
         noise_s: None,
         phase_jitter_s: Some(read.jitter_s),
         period_s: line.fit.period_s,
+        others: Vec::new(),
     })
 }

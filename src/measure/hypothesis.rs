@@ -27,9 +27,6 @@ const CERTAIN: f64 = 0.985;
 pub const APART_S: f64 = 0.2e-3;
 /// Candidates per expected firing when the best is fitted to all of the window.
 pub const DENSITY: f64 = 14.0;
-/// A rhythm covering less than this share of the time counts a thousandth.
-const COVER: f64 = 0.4;
-
 /// Looks for the best rhythm; lines of the explanation are appended.
 #[must_use]
 pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) -> Option<Hypothesis> {
@@ -47,7 +44,7 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
         for fast in [false, true] {
             let found = candidates::find(&output, window.rate_hz, if fast { 0.0 } else { APART_S });
             for mut fit in search::rhythms(&found, window.duration_s(), fast) {
-                if fit.cover < COVER {
+                if !fit.fills_its_time() {
                     fit.evidence = fit.evidence.min(1e-3 * fit.evidence);
                 }
                 explanation.push(describe(&fit, &shape, fast));

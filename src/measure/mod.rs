@@ -9,6 +9,7 @@ mod hypothesis;
 mod refine;
 mod times;
 mod train;
+mod trains;
 mod window;
 
 use crate::clicks::filter::FilterBank;

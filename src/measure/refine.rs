@@ -28,11 +28,11 @@ pub struct Finder {
 }
 
 /// Refines a hypothesis in place, twice, starting from the whitening of floor `floor`.
-pub fn refine(window: &Window, whitened: Vec<f32>, floor: f64, h: &mut Hypothesis) -> Finder {
+pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis) -> Finder {
     let first = window.spectrum.whitening(FIND_HIGH_PASS_HZ, floor);
     let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
-    let shape = learn(&whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
-    let rest = without_clicks(&whitened, h, &shape, window.rate_hz);
+    let shape = learn(whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
+    let rest = without_clicks(whitened, h, &shape, window.rate_hz);
     let noise = Spectrum::of_noise(&rest, window.rate_hz);
     let second = noise.whitening(HIGH_PASS_HZ, FLOOR);
     let kernel = window.kernel(|f| first(f) * second(f));

@@ -3,6 +3,7 @@
 use super::hypothesis::Hypothesis;
 use crate::estimate::Estimate;
 use crate::firing::{Event, EventKind};
+use crate::rhythm::OtherTrain;
 use crate::rhythm::fit::median;
 use std::ops::Range;
 
@@ -28,6 +29,8 @@ pub struct Train {
     pub phase_jitter_s: Option<Estimate>,
     /// Mean local period, s.
     pub period_s: f64,
+    /// Weaker trains beside it.
+    pub others: Vec<OtherTrain>,
 }
 
 /// Firing numbers of a chain, and its stretches.
@@ -70,6 +73,7 @@ impl Train {
             noise_s: Some(noise_s),
             phase_jitter_s: None,
             period_s: h.fit.period_s,
+            others: Vec::new(),
         }
     }
 

@@ -30,6 +30,21 @@ pub struct Fit {
     pub marks: MarkLaw,
 }
 
+/// Firings per stretch, evidence per firing (nats) and cover from which a train is believed though it is silent most of the time.
+const SOLID: (f64, f64, f64) = (25.0, 2.0, 0.08);
+/// Cover from which it needs no such excuse.
+const COVER: f64 = 0.4;
+
+impl Fit {
+    /// True if the train fills the time, or fires in long stretches of strong evidence with silence between.
+    #[must_use]
+    pub fn fills_its_time(&self) -> bool {
+        let n = self.chain.index.len() as f64;
+        let stretches = self.chain.steps.iter().filter(|k| **k == 0).count().max(1) as f64;
+        self.cover >= COVER || (n / stretches >= SOLID.0 && self.evidence >= SOLID.1 * n && self.cover >= SOLID.2)
+    }
+}
+
 /// Mean and standard deviation of the marks on and off a rhythm.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct MarkLaw {
