@@ -81,6 +81,10 @@ pub struct MeasureArguments {
     #[arg(long)]
     pub json: bool,
 
+    /// Truth file of a rendered clip: tell how far the figures are from it, in intervals (one recording only)
+    #[arg(long, value_name = "FILE")]
+    pub truth: Option<String>,
+
     /// Write every click to a CSV file (one recording only)
     #[arg(long, value_name = "FILE")]
     pub events: Option<String>,

@@ -134,7 +134,7 @@ pub struct Finished {
 }
 
 impl Finished {
-    /// Finishes a clip and completes its truth. The clip is rendered twice: once to measure it.
+    /// Finishes a clip and completes its truth. Where a loudness is aimed at the clip is rendered twice: once to measure it.
     ///
     /// # Errors
     /// A setting out of range.
@@ -147,7 +147,10 @@ impl Finished {
         let rate_hz = truth.settings.sample_rate_hz;
         let fade = (settings.fade_s * f64::from(rate_hz)).min(0.5 * total as f64);
         let mut finished = Self { renderer, gain: 1.0, fade, total, next: 0, marker: None, pending: None };
-        let (lufs, dbtp) = loudness(finished.clone(), 1, rate_hz)?;
+        let (lufs, dbtp) = match settings.loudness_lufs {
+            Some(_) => loudness(finished.clone(), 1, rate_hz)?,
+            None => (f64::NAN, f64::NAN),
+        };
         let (gain_db, level_set_by) = gain(settings, lufs, dbtp);
         finished.gain = 10f64.powf(gain_db / 20.0);
         if settings.layout == Layout::Marker {

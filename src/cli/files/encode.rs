@@ -211,3 +211,99 @@ fn push_text(block: &mut Vec<u8>, text: &str) {
     block.extend_from_slice(&(text.len() as u32).to_le_bytes());
     block.extend_from_slice(text.as_bytes());
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// A disk with room for some bytes.
+    struct Disk {
+        bytes: Cursor<Vec<u8>>,
+        room: u64,
+    }
+
+    impl Write for Disk {
+        fn write(&mut self, data: &[u8]) -> io::Result<usize> {
+            if self.bytes.position() + data.len() as u64 > self.room {
+                return Err(io::Error::new(io::ErrorKind::StorageFull, "no space left"));
+            }
+            self.bytes.write(data)
+        }
+
+        fn flush(&mut self) -> io::Result<()> {
+            Ok(())
+        }
+    }
+
+    impl Seek for Disk {
+        fn seek(&mut self, to: SeekFrom) -> io::Result<u64> {
+            self.bytes.seek(to)
+        }
+    }
+
+    fn facts(format: SampleFormat) -> ClipFacts {
+        ClipFacts {
+            channels: 1,
+            sample_rate_hz: 8000,
+            format,
+            title: Some("Ünseen".to_owned()),
+            comment: Some("Synthetic".to_owned()),
+        }
+    }
+
+    #[test]
+    fn a_full_disk_is_an_error_wherever_it_strikes() {
+        let write = |room| {
+            let disk = Disk { bytes: Cursor::new(Vec::new()), room };
+            write_wav(disk, std::iter::repeat_n(0.25, 1001), &facts(SampleFormat::Int24))
+        };
+        let needed = 44 + 3 * 1001 + 200;
+        assert!(write(needed).is_ok());
+        // In the head, among the samples, in their last bytes, in the tags.
+        for room in [10, 1000, 44 + 3 * 1001 - 1, 44 + 3 * 1001 + 30] {
+            assert_eq!(write(room).expect_err("no room").kind(), io::ErrorKind::StorageFull, "{room}");
+        }
+    }
+
+    #[test]
+    fn tags_stand_behind_the_samples_and_the_lengths_are_right() {
+        for (format, count) in [(SampleFormat::Int24, 1001), (SampleFormat::Int16, 10), (SampleFormat::Float32, 7)] {
+            let mut bytes = Cursor::new(Vec::new());
+            write_wav(&mut bytes, std::iter::repeat_n(0.25, count), &facts(format)).expect("written");
+            let bytes = bytes.into_inner();
+            let word =
+                |at: usize| u32::from_le_bytes([bytes[at], bytes[at + 1], bytes[at + 2], bytes[at + 3]]) as usize;
+            assert_eq!(word(4) + 8, bytes.len());
+            let mut at = 12;
+            let mut chunks = Vec::new();
+            while at < bytes.len() {
+                chunks.push(bytes[at..at + 4].to_vec());
+                at += 8 + word(at + 4).next_multiple_of(2);
+            }
+            assert_eq!(at, bytes.len());
+            assert_eq!(chunks.last().map(Vec::as_slice), Some(&b"LIST"[..]));
+            let text = String::from_utf8_lossy(&bytes);
+            assert!(text.contains("Ünseen") && text.contains("Synthetic") && text.contains("gaptone "));
+            let reader = hound::WavReader::new(Cursor::new(&bytes)).expect("a WAV file");
+            assert_eq!(reader.duration() as usize, count);
+        }
+    }
+
+    #[test]
+    fn a_flac_keeps_its_tags_and_both_channels() {
+        let folder = tempfile::tempdir().expect("a folder");
+        let path = folder.path().join("a.flac");
+        let name = path.to_str().expect("UTF-8");
+        let facts = ClipFacts { channels: 2, ..facts(SampleFormat::Int16) };
+        write_frames(name, (0..20_000).map(|n| if n % 2 == 0 { 0.5 } else { -0.25 }), &facts).expect("written");
+        let bytes = std::fs::read(&path).expect("read");
+        let text = String::from_utf8_lossy(&bytes);
+        assert!(text.contains("TITLE=Ünseen") && text.contains("COMMENT=Synthetic"));
+        let mut recording = super::super::open(name).expect("a recording");
+        let mut block = Vec::new();
+        use crate::audio::Source;
+        assert_eq!(recording.channels(), 2);
+        let read = recording.next(&mut block).expect("samples").expect("a block");
+        assert!(read.frames > 0 && block[..2] == [0.5, -0.25]);
+    }
+}

@@ -13,6 +13,9 @@ const PATIENCE: usize = 1000;
 /// Time constants that a full capacitor waits before the strength is drawn anew.
 const WAIT_TIME_CONSTANTS: f64 = 5.0;
 
+/// Periods before time zero for which a running gap has been running: after these it has settled on a ripple.
+const RUNNING_PERIODS: f64 = 100.0;
+
 /// Least strength of a scattered gap as a share of its mean; keeps a wild draw above the residual voltage.
 const LEAST_STRENGTH: f64 = 0.05;
 
@@ -114,7 +117,8 @@ pub(super) fn fire(plan: &Plan, moments: &[Moment]) -> Result<Vec<Firing>, NoTra
         Start::Running => {
             // Where the mean law has no period (recovery, ripple at the edge) the train starts with a full charge.
             let period_s = circuit.period_s(law.voltage_v).unwrap_or(0.0);
-            gap.next(-Random::stream(plan.seed, stream::START).uniform() * period_s, circuit.residual_v())?
+            let phase = Random::stream(plan.seed, stream::START).uniform();
+            gap.next(-(phase + RUNNING_PERIODS) * period_s, circuit.residual_v())?
         }
     };
     let mut firings = Vec::new();
