@@ -198,9 +198,9 @@ fn truth(arguments: &MeasureArguments) -> Result<Option<Truth>, Failure> {
         return Err(Failure::usage("--truth belongs to one clip; name a single one"));
     }
     let file = std::fs::File::open(name).map_err(|error| Failure::file(name, &FileError::from_io("reading", error)))?;
-    serde_json::from_reader(io::BufReader::new(file)).map(Some).map_err(|error| {
-        Failure::Told(Exit::File, format!("{name}: is no truth file of a rendered clip ({error})"))
-    })
+    serde_json::from_reader(io::BufReader::new(file))
+        .map(Some)
+        .map_err(|error| Failure::Told(Exit::File, format!("{name}: is no truth file of a rendered clip ({error})")))
 }
 
 /// The voltmeter of the bench; none without a bench.

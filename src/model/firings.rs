@@ -129,9 +129,7 @@ pub fn simulate(plan: &Plan) -> Result<Train, NoTrain> {
     check("the duration", plan.duration_s, plan.duration_s > 0.0, "it must be above 0 s")?;
     plan.faults.check()?;
     let rhythm = match &plan.rhythm {
-        Rhythm::Bench { circuit, gap } => {
-            circuit::fire(plan, &[Moment { from_s: 0.0, circuit: circuit.clone(), gap: *gap }])?
-        }
+        Rhythm::Bench { circuit, gap } => circuit::fire(plan, &[Moment { from_s: 0.0, circuit: *circuit, gap: *gap }])?,
         Rhythm::Moving(moments) => circuit::fire(plan, moments)?,
         Rhythm::Bare(bare) => rhythm::fire(plan, bare)?,
     };
