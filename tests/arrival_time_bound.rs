@@ -103,7 +103,7 @@ fn clicks_of_the_receiver_are_timed_near_the_bound_and_not_below() {
     let clip = |firings: Vec<Firing>, noise: f64, duration_s: f64| {
         let receiver = ReceiverSettings { noise: 0.0, ..ReceiverSettings::default() };
         let mut settings = RenderSettings::new(receiver, duration_s, 6);
-        settings.recorder_noise = noise;
+        settings.recorder.noise = noise;
         settings.level = Level::PerClick(0.5);
         Clip::new(settings, vec![TrainTruth::of(firings, &[])]).expect("a clip").renderer.collect::<Vec<f32>>()
     };

@@ -119,7 +119,7 @@ fn the_same_seed_gives_the_same_firing_times() {
 fn a_fault_does_not_move_the_firings() {
     let rhythm = || bench(kilovolt_circuit(), GapLaw { spread: 0.02, ..GapLaw::steady(5e3) });
     let clean = simulate(&plan(rhythm(), 20.0, 5)).unwrap();
-    let faults = Faults { missed: 0.1, extra: 0.08, extra_delay_s: 2e-3, extra_size: 0.4, outages: vec![] };
+    let faults = Faults { missed: 0.1, extra: 0.08, extra_delay_s: 2e-3, extra_size: 0.4, ..Faults::none() };
     let faulty = simulate(&Plan { faults, ..plan(rhythm(), 20.0, 5) }).unwrap();
     let times = |train: &Train| -> Vec<f64> {
         train.firings.iter().filter(|f| f.kind != EventKind::Extra).map(|f| f.time_s).collect()

@@ -2,7 +2,7 @@
 
 use gaptone::firing::{EventKind, Firing};
 use gaptone::model::receiver::{
-    AgcSettings, AudioBand, AudioFilter, Carrier, Channel, DetectorSettings, Hum, Programme, ReceiverSettings,
+    AgcLaw, AgcSettings, AudioBand, AudioFilter, Carrier, Channel, DetectorSettings, Hum, Programme, ReceiverSettings,
 };
 use gaptone::model::render::{Level, RenderSettings, Renderer};
 
@@ -45,8 +45,8 @@ fn busy() -> ReceiverSettings {
     ReceiverSettings {
         noise: 0.05,
         carrier: Some(Carrier { amplitude: 0.7, offset_hz: 150.0, programme: Some(Programme::Speech { depth: 0.8 }) }),
-        agc: Some(AgcSettings { attack_s: 2e-3, decay_s: 0.1, threshold: 0.3 }),
-        detector: DetectorSettings { charge_s: 1e-6, discharge_s: 50e-6 },
+        agc: Some(AgcSettings { law: AgcLaw::Forward, attack_s: 2e-3, decay_s: 0.1, ..AgcSettings::default() }),
+        detector: DetectorSettings { charge_s: 1e-6, discharge_s: 50e-6, ..DetectorSettings::default() },
         hum: Some(Hum { amplitude: 0.2, frequency_hz: 50.0, buzz: 0.5 }),
         inverted: true,
         ..ReceiverSettings::default()
@@ -57,7 +57,7 @@ fn busy() -> ReceiverSettings {
 fn the_size_of_the_blocks_changes_no_bit() {
     let firings = train(437.0, 1.0);
     let mut settings = RenderSettings::new(busy(), 1.0, 5).for_firings(&firings);
-    settings.recorder_noise = 1e-3;
+    settings.recorder.noise = 1e-3;
     let whole = render(&settings, &firings);
     assert_eq!(whole.len(), 48_000);
     for size in [1, 7, 480, 4096, 100_000] {
@@ -214,7 +214,7 @@ fn hum_is_a_line_of_the_stated_size_against_a_click() {
 #[test]
 fn recorder_noise_has_the_stated_size() {
     let mut settings = RenderSettings::new(quiet(), 2.0, 2);
-    settings.recorder_noise = 0.01;
+    settings.recorder.noise = 0.01;
     let audio = render(&settings, &[]);
     // 96 000 draws: the rms is known to 1/√(2n) = 0.23 %.
     assert!((rms(&audio) / 0.01 - 1.0).abs() < 0.01, "{}", rms(&audio));
@@ -282,8 +282,17 @@ fn under_a_carrier_clicks_flip_sign_with_their_random_phase() {
 
 #[test]
 fn agc_turns_a_fast_train_down_and_a_slow_one_hardly() {
-    let receiver =
-        ReceiverSettings { agc: Some(AgcSettings { attack_s: 2.6e-3, decay_s: 1.0, threshold: 0.1 }), ..quiet() };
+    let receiver = ReceiverSettings {
+        agc: Some(AgcSettings {
+            law: AgcLaw::Forward,
+            attack_s: 2.6e-3,
+            decay_s: 1.0,
+            threshold: 0.1,
+            margin: 0.0,
+            greatest_gain: 1.0,
+        }),
+        ..quiet()
+    };
     let settled = |rate_hz: f64| {
         let firings = train(rate_hz, 4.0);
         let mut settings = RenderSettings::new(receiver.clone(), 4.0, 1).for_firings(&firings);
@@ -369,4 +378,37 @@ fn the_click_in_volts_is_proportional_to_firing_voltage_and_bandwidth() {
     assert!((settings.click_peak_v(5000.0).unwrap() / peak - 2.0).abs() < 1e-6);
     settings.burst = None;
     assert_eq!(settings.click_peak_v(5000.0), None);
+}
+
+/// Spectrum of a piece of audio, tapered at its ends.
+fn spectrum(audio: &[f32]) -> Vec<rustfft::num_complex::Complex<f64>> {
+    let mut buffer: Vec<_> = audio.iter().map(|&x| rustfft::num_complex::Complex::from(f64::from(x))).collect();
+    rustfft::FftPlanner::new().plan_fft_forward(buffer.len()).process(&mut buffer);
+    buffer
+}
+
+#[test]
+fn a_click_at_any_instant_comes_back_from_a_matched_filter_within_a_thousandth_of_a_sample() {
+    const SAMPLES: f64 = 1e-3;
+    let at = |time_s: f64| {
+        let mut settings = RenderSettings::new(quiet(), 0.2, 1);
+        settings.level = Level::PerClick(0.9);
+        settings.reference_voltage_v = 5000.0;
+        spectrum(&render(&settings, &[firing(time_s, 5000.0)])[..8192])
+    };
+    let start_s = 0.05;
+    let template = at(start_s);
+    for shift in [0.0, 0.1, 0.25, 1.0 / 3.0, 0.5, 0.77, 0.999, 3.3] {
+        let click = at(start_s + shift / 48_000.0);
+        // The largest output of the filter matched to the template in white noise is where its slope is zero; near the truth
+        // one step of Newton from the truth finds it: slope over bend of the cross-correlation.
+        let (mut slope, mut bend) = (0.0, 0.0);
+        for (k, (a, b)) in template.iter().zip(&click).enumerate().take(4096) {
+            let omega = std::f64::consts::TAU * k as f64 / 8192.0;
+            let turned = b * a.conj() * rustfft::num_complex::Complex::from_polar(1.0, omega * shift);
+            slope += omega * turned.im;
+            bend += omega * omega * turned.re;
+        }
+        assert!((slope / bend).abs() < SAMPLES, "{shift}: {} samples off", slope / bend);
+    }
 }

@@ -4,7 +4,6 @@ use gaptone::bench;
 use gaptone::model::charging::Circuit;
 use gaptone::model::clip::Clip;
 use gaptone::model::firings::{Faults, GapLaw, Plan, Rhythm, Start, simulate};
-use gaptone::model::receiver::{Programme, ReceiverSettings};
 use gaptone::model::render::RenderSettings;
 use gaptone::model::truth::TrainTruth;
 use std::error::Error;
@@ -26,22 +25,11 @@ pub struct Recipe {
     pub seed: u64,
     /// Share of the firings that are not heard.
     pub missed: f64,
-    /// Programme on the carrier.
-    pub programme: Option<Programme>,
 }
 
 impl Recipe {
     const fn plain(name: &'static str, seed: u64) -> Self {
-        Self {
-            name,
-            further: &[],
-            fires: true,
-            seconds: 5.0,
-            sample_rate_hz: 24_000,
-            seed,
-            missed: 0.0,
-            programme: None,
-        }
+        Self { name, further: &[], fires: true, seconds: 5.0, sample_rate_hz: 24_000, seed, missed: 0.0 }
     }
 }
 
@@ -54,11 +42,7 @@ pub const RECIPES: [Recipe; 8] = [
     Recipe { missed: 1.0 / 12.0, ..Recipe::plain("missing", 105) },
     Recipe { further: &["two-trains-second"], ..Recipe::plain("two-trains", 106) },
     Recipe { seconds: 4.0, ..Recipe::plain("fast-overlapping", 107) },
-    Recipe {
-        fires: false,
-        programme: Some(Programme::Tone { frequency_hz: 1130.0, depth: 0.6 }),
-        ..Recipe::plain("no-gap", 108)
-    },
+    Recipe { fires: false, ..Recipe::plain("no-gap", 108) },
 ];
 
 /// Directory of the clips.
@@ -70,11 +54,7 @@ pub fn directory() -> PathBuf {
 pub fn make(recipe: &Recipe) -> Result<Clip, Box<dyn Error>> {
     let text = read_bench(recipe.name)?;
     let described = bench::parse(&text, recipe.name)?;
-    let mut receiver = ReceiverSettings::from_bench(&described)?;
-    if let Some(carrier) = &mut receiver.carrier {
-        carrier.programme = recipe.programme;
-    }
-    let mut settings = RenderSettings::new(receiver, recipe.seconds, recipe.seed);
+    let mut settings = RenderSettings::from_bench(&described, recipe.seconds, recipe.seed)?;
     settings.sample_rate_hz = recipe.sample_rate_hz;
     let mut trains = Vec::new();
     if recipe.fires {

@@ -7,6 +7,7 @@ use super::read::Places;
 const CHARGED_TWICE: &str =
     "only one of resistance, current and time_constant describes how the capacitor is charged; keep one";
 const RESIDUAL_TOO_HIGH: &str = "what is left on the capacitor must lie below the voltage at which the gap fires";
+const TWO_LEVELS: &str = "the level is set either for the loudest peak or for one click; keep one";
 
 /// The first pair of values that cannot both hold.
 pub(super) fn contradictions(bench: &Bench, places: &Places, source: &Source<'_>) -> Result<(), BenchError> {
@@ -25,6 +26,11 @@ pub(super) fn contradictions(bench: &Bench, places: &Places, source: &Source<'_>
     {
         let (gap, residual) = (("gap", "voltage"), ("gap", "residual_voltage"));
         return Err(contradiction(gap, residual, RESIDUAL_TOO_HIGH, places, source));
+    }
+    if bench.receiver.recorder_level.is_some() && bench.receiver.click_level.is_some() {
+        let mut keys = [("receiver", "recorder_level"), ("receiver", "click_level")];
+        keys.sort_by_key(|place| places.get(place).map_or(0, |span| span.start));
+        return Err(contradiction(keys[0], keys[1], TWO_LEVELS, places, source));
     }
     Ok(())
 }

@@ -64,13 +64,17 @@ pub enum BenchFault {
         /// What is allowed.
         allowed: String,
     },
-    /// A word that is not one of the electrode shapes.
-    #[error("gap.electrodes is `{given}`{}; it must be plane, spheres or points", meant(.suggestion))]
-    Electrodes {
+    /// A word that is not one of those that the key takes.
+    #[error("{key} is `{given}`{}; it must be {allowed}", meant(.suggestion))]
+    Word {
+        /// The key.
+        key: String,
         /// The word as given.
         given: String,
         /// The one that is likely meant.
         suggestion: Option<String>,
+        /// All of them.
+        allowed: String,
     },
     /// Two values that cannot both hold.
     #[error("{key} contradicts {other} on line {other_line}: {why}")]
@@ -141,6 +145,12 @@ impl Source<'_> {
     /// Line of a byte, from 1.
     pub(super) fn line(&self, byte: usize) -> usize {
         self.text.as_bytes().iter().take(byte).filter(|sign| **sign == b'\n').count() + 1
+    }
+
+    /// First byte of a line counted from 1; the end of the text if there are fewer.
+    pub(super) fn start_of_line(&self, line: usize) -> usize {
+        let ends = self.text.bytes().enumerate().filter(|(_, sign)| *sign == b'\n').map(|(at, _)| at + 1);
+        std::iter::once(0).chain(ends).nth(line.saturating_sub(1)).unwrap_or(self.text.len())
     }
 
     /// The text of a byte range; empty if it is none.

@@ -3,11 +3,11 @@
 use super::check;
 use super::dimension::Dimension;
 use super::error::{BenchError, BenchFault, Source};
-use super::keys::{self, Allowed, Key, Kind, SECTIONS};
+use super::keys::{self, Allowed, Key, Kind, SECTIONS, Word};
 use super::quantity::Quantity;
 use super::suggest::nearest;
 use super::text::{QuantityError, parse_quantity, parse_range};
-use super::{Bench, Electrodes, syntax};
+use super::{Bench, syntax};
 use std::collections::BTreeMap;
 use std::ops::Range;
 use toml::Spanned;
@@ -71,7 +71,7 @@ impl Reader<'_> {
         self.places.insert((section, key.name), value.span());
         match key.kind {
             Kind::Title => self.bench.title = Some(self.string(key, value, "a text in quotes")?.to_owned()),
-            Kind::Electrodes => self.bench.gap.electrodes = Some(self.electrodes(key, value)?),
+            Kind::Word(words) => self.word(key, value, words)?(&mut self.bench),
             Kind::Peaks => self.bench.tank.peaks = Some(self.peaks(key, value)?),
             Kind::Band => self.bench.receiver.audio_band = Some(self.band(key, value)?),
             Kind::Quantity(dimension, allowed, slot) => {
@@ -113,18 +113,18 @@ impl Reader<'_> {
         })
     }
 
-    fn electrodes(&self, key: &Key, value: &Value<'_>) -> Result<Electrodes, BenchError> {
-        let word = self.string(key, value, "a word in quotes")?;
-        match word.trim() {
-            "plane" => Ok(Electrodes::Plane),
-            "spheres" => Ok(Electrodes::Spheres),
-            "points" => Ok(Electrodes::Points),
-            other => {
-                let suggestion = nearest(other, ["plane", "spheres", "points"]).map(|near| format!("`{near}`"));
-                let fault = BenchFault::Electrodes { given: other.to_owned(), suggestion };
-                Err(self.source.error(&value.span(), fault, help(key)))
-            }
-        }
+    fn word(&self, key: &Key, value: &Value<'_>, words: &'static [Word]) -> Result<fn(&mut Bench), BenchError> {
+        let given = self.string(key, value, "a word in quotes")?.trim();
+        let names = || words.iter().map(|(name, _)| *name);
+        words.iter().find(|(name, _)| *name == given).map(|(_, store)| *store).ok_or_else(|| {
+            let fault = BenchFault::Word {
+                key: full_name(key),
+                given: given.to_owned(),
+                suggestion: nearest(given, names()).map(|near| format!("`{near}`")),
+                allowed: listed(&names().collect::<Vec<_>>()),
+            };
+            self.source.error(&value.span(), fault, help(key))
+        })
     }
 
     fn peaks(&self, key: &Key, value: &Value<'_>) -> Result<Vec<Quantity>, BenchError> {
@@ -206,11 +206,19 @@ fn full_name(key: &Key) -> String {
     if key.section.is_empty() { key.name.to_owned() } else { format!("{}.{}", key.section, key.name) }
 }
 
+/// `a, b or c`.
+fn listed(words: &[&str]) -> String {
+    match words {
+        [first @ .., last] if !first.is_empty() => format!("{} or {last}", first.join(", ")),
+        _ => words.concat(),
+    }
+}
+
 fn help(key: &Key) -> Option<String> {
     Some(format!("{} = {}", key.name, key.example))
 }
 
-fn type_name(value: &DeValue<'_>) -> &'static str {
+pub(super) fn type_name(value: &DeValue<'_>) -> &'static str {
     match value {
         DeValue::String(_) => "a text",
         DeValue::Integer(number) if number.radix() != 10 => "a number in hexadecimal, octal or binary digits",

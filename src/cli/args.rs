@@ -81,6 +81,10 @@ pub struct MeasureArguments {
     #[arg(long)]
     pub json: bool,
 
+    /// Truth file of a rendered clip: tell how far the figures are from it, in intervals (one recording only)
+    #[arg(long, value_name = "FILE")]
+    pub truth: Option<String>,
+
     /// Write every click to a CSV file (one recording only)
     #[arg(long, value_name = "FILE")]
     pub events: Option<String>,
@@ -138,10 +142,15 @@ The same bench, seed and version give the same firings. The samples may differ i
 machine to machine, for the elementary functions do.")]
 pub struct RenderArguments {
     /// Description of the bench (TOML)
-    #[arg(long, value_name = "FILE")]
-    pub bench: String,
+    #[arg(long, value_name = "FILE", required_unless_present = "series")]
+    pub bench: Option<String>,
 
-    /// Clip to write, named .wav or .flac; - is a WAV on standard output
+    /// Description of a series of clips (TOML); an interrupted series goes on where it stopped
+    #[arg(long, value_name = "FILE", conflicts_with_all = ["bench", "supply", "seconds", "sample_rate", "bits",
+        "switch_on", "truth", "loudness", "fade", "marker", "under"])]
+    pub series: Option<String>,
+
+    /// Clip to write, named .wav or .flac; - is a WAV on standard output. Of a series: the folder for its clips
     #[arg(short, long, value_name = "FILE")]
     pub output: String,
 
@@ -153,13 +162,13 @@ pub struct RenderArguments {
     #[arg(long, value_name = "SECONDS", default_value = "10", value_parser = duration)]
     pub seconds: f64,
 
-    /// Seed of everything that is drawn at random
-    #[arg(long, value_name = "N", default_value_t = 1)]
-    pub seed: u64,
+    /// Seed of everything that is drawn at random [default: 1]; of a series: instead of that of its defaults
+    #[arg(long, value_name = "N")]
+    pub seed: Option<u64>,
 
-    /// Samples per second
-    #[arg(long, value_name = "HZ", default_value_t = 48_000)]
-    pub sample_rate: u32,
+    /// Samples per second [default: those of the bench's recorder, else 48000]
+    #[arg(long, value_name = "HZ")]
+    pub sample_rate: Option<u32>,
 
     /// Bits of a sample
     #[arg(long, value_name = "BITS", value_enum, default_value_t)]
@@ -168,6 +177,22 @@ pub struct RenderArguments {
     /// Start with the supply being switched on, instead of a gap that runs already
     #[arg(long)]
     pub switch_on: bool,
+
+    /// Loudness to bring the clip to, as far as a true peak of -1 dBTP allows, such as -23
+    #[arg(long, value_name = "LUFS", allow_negative_numbers = true)]
+    pub loudness: Option<f64>,
+
+    /// Fade in and out, in seconds
+    #[arg(long, value_name = "SECONDS", default_value = "0", value_parser = seconds)]
+    pub fade: f64,
+
+    /// A second channel with a tick where each click peaks
+    #[arg(long)]
+    pub marker: bool,
+
+    /// Recording to be heard on the bench's carrier, over and over
+    #[arg(long, value_name = "RECORDING")]
+    pub under: Option<String>,
 
     /// Write every firing and the figures that came out as JSON
     #[arg(long, value_name = "FILE")]

@@ -11,7 +11,8 @@ use super::progress::Progress;
 use crate::audio::{AudioError, ChannelChoice, Heard, Intake, Span};
 use crate::firing::Event;
 use crate::measure::{Measurer, Options, Outcome};
-use crate::report::{self, Measurement, Recording, Report};
+use crate::model::truth::Truth;
+use crate::report::{self, Measurement, Recording, Report, WithTruth};
 use crate::rhythm::Verdict;
 use crate::voltage::VoltageMeter;
 use std::collections::BTreeMap;
@@ -25,7 +26,7 @@ use std::sync::mpsc;
 /// Wrong usage, a bench that cannot be used, a place for events that cannot be written.
 pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
     let task = Task::new(arguments)?;
-    let mut results = Results { json: arguments.json, ..Results::default() };
+    let mut results = Results { json: arguments.json, truth: truth(arguments)?, ..Results::default() };
     let recordings = &arguments.recordings;
     let progress = Progress::new(recordings.len());
     let next = AtomicUsize::new(0);
@@ -190,6 +191,18 @@ impl<'a> Task<'a> {
 /// Where events go, each with the gap voltage that it implies.
 type Sink<'a> = dyn FnMut(&Event, Option<f64>) -> io::Result<()> + 'a;
 
+/// The truth of a rendered clip, if the answer is to be compared with it.
+fn truth(arguments: &MeasureArguments) -> Result<Option<Truth>, Failure> {
+    let Some(name) = &arguments.truth else { return Ok(None) };
+    if arguments.recordings.len() > 1 {
+        return Err(Failure::usage("--truth belongs to one clip; name a single one"));
+    }
+    let file = std::fs::File::open(name).map_err(|error| Failure::file(name, &FileError::from_io("reading", error)))?;
+    serde_json::from_reader(io::BufReader::new(file))
+        .map(Some)
+        .map_err(|error| Failure::Told(Exit::File, format!("{name}: is no truth file of a rendered clip ({error})")))
+}
+
 /// The voltmeter of the bench; none without a bench.
 fn voltmeter(arguments: &MeasureArguments) -> Result<Option<VoltageMeter>, Failure> {
     let Some(name) = &arguments.bench else { return Ok(None) };
@@ -210,6 +223,7 @@ fn notes_of(heard: &Heard, span: Span) -> Vec<String> {
 #[derive(Default)]
 struct Results {
     json: bool,
+    truth: Option<Truth>,
     reports: Vec<Report>,
     texts: usize,
     failed: bool,
@@ -242,13 +256,18 @@ impl Results {
             Ok(Analysed { measurement, explanation }) => {
                 explanation.iter().for_each(|line| tell(&format!("{name}: {line}")));
                 self.not_measurable |= measurement.reading.verdict == Verdict::None;
+                let comparison = self.truth.as_ref().map(|truth| report::compare(&measurement, truth));
                 if self.json {
-                    self.reports.push(Report::Measured(Box::new(measurement)));
+                    self.reports.push(match comparison {
+                        None => Report::Measured(Box::new(measurement)),
+                        Some(comparison) => Report::Compared(Box::new(WithTruth { measurement, comparison })),
+                    });
                     return Ok(());
                 }
                 let gap = if self.texts > 0 { "\n" } else { "" };
                 self.texts += 1;
-                say(&format!("{gap}{}", report::measurement_text(&measurement)))
+                let compared = comparison.map(|comparison| report::comparison_text(&comparison)).unwrap_or_default();
+                say(&format!("{gap}{}{compared}", report::measurement_text(&measurement)))
             }
             Err(Failure::Told(Exit::File, message)) => {
                 self.failed = true;

@@ -13,6 +13,7 @@ mod play;
 mod predict;
 mod progress;
 mod render;
+mod render_series;
 
 use args::{Arguments, Command};
 use clap::Parser;

@@ -128,8 +128,9 @@ fn listen(arguments: &PredictArguments, bench: &Bench, supply_v: Option<f64>) ->
         supply: supply_v.map(Quantity::exact),
         start: Start::Running,
         duration_s: arguments.seconds,
-        sample_rate_hz: CLIP_RATE_HZ,
+        sample_rate_hz: Some(CLIP_RATE_HZ),
         seed: 1,
+        programme: None,
     };
     let clip = clip(bench, &order)?;
     if let Some(place) = &arguments.clip {

@@ -14,7 +14,7 @@ mod faults;
 mod realised;
 mod rhythm;
 
-pub use faults::{Faults, Outage};
+pub use faults::{Dust, Faults, Outage};
 pub use realised::Realised;
 pub use rhythm::{BareRhythm, GapLaw, PeriodLaw, Recovery};
 
@@ -35,8 +35,21 @@ pub enum Rhythm {
         /// The gap.
         gap: GapLaw,
     },
+    /// A gap and a circuit that change as time goes on: each moment holds from its time until the next.
+    Moving(Vec<Moment>),
     /// Bare statistics, without voltages.
     Bare(BareRhythm),
+}
+
+/// Circuit and gap from a time on.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Moment {
+    /// From when on, s.
+    pub from_s: f64,
+    /// The charging circuit.
+    pub circuit: Circuit,
+    /// The gap.
+    pub gap: GapLaw,
 }
 
 /// How a train begins.
@@ -105,6 +118,7 @@ mod stream {
     pub const MISSED: u64 = 2;
     pub const EXTRA: u64 = 3;
     pub const START: u64 = 4;
+    pub const DUST: u64 = 5;
 }
 
 /// Makes the train of a plan.
@@ -115,7 +129,8 @@ pub fn simulate(plan: &Plan) -> Result<Train, NoTrain> {
     check("the duration", plan.duration_s, plan.duration_s > 0.0, "it must be above 0 s")?;
     plan.faults.check()?;
     let rhythm = match &plan.rhythm {
-        Rhythm::Bench { circuit, gap } => circuit::fire(plan, circuit, gap)?,
+        Rhythm::Bench { circuit, gap } => circuit::fire(plan, &[Moment { from_s: 0.0, circuit: *circuit, gap: *gap }])?,
+        Rhythm::Moving(moments) => circuit::fire(plan, moments)?,
         Rhythm::Bare(bare) => rhythm::fire(plan, bare)?,
     };
     let realised = Realised::of(&rhythm, &plan.faults.outages);

@@ -31,8 +31,9 @@ impl Random {
     /// is added must not move the firings.
     #[must_use]
     pub fn stream(seed: u64, number: u64) -> Self {
-        // The golden ratio spreads neighbouring stream numbers over all bits (as in SplitMix64).
-        Self::seeded(seed ^ number.wrapping_mul(0x9E37_79B9_7F4A_7C15))
+        // Seeding steps on by a constant for each word of state. Without mixing first, a seed and its stream could
+        // be another such pair some words on.
+        Self::seeded(mix(mix(seed) ^ number))
     }
 
     /// Uniform between 0 and 1, both excluded; 53 bits.
@@ -54,4 +55,12 @@ impl Random {
     pub fn gamma(&mut self, shape: f64) -> f64 {
         gamma_quantile(shape, self.uniform()) / shape
     }
+}
+
+/// Bijective mixing of 64 bits (finalizer of MurmurHash3), so that neighbouring seeds and streams have unrelated states.
+pub(crate) fn mix(value: u64) -> u64 {
+    let mut z = value.wrapping_add(0x2545_f491_4f6c_dd1d);
+    z = (z ^ (z >> 33)).wrapping_mul(0xff51_afd7_ed55_8ccd);
+    z = (z ^ (z >> 33)).wrapping_mul(0xc4ce_b9fe_1a85_ec53);
+    z ^ (z >> 33)
 }

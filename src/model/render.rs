@@ -4,8 +4,10 @@
 //! the time n/rate from the start of the clip; a click of firing time t peaks at t + [`Renderer::delay_s`].
 
 use super::receiver::{
-    Chain, Channel, Decimator, Draw, HumSource, ReceiverError, ReceiverSettings, Stream, oversampling, within,
+    Chain, Channel, Decimator, DetectorKind, HumSource, ReceiverError, ReceiverSettings, Recorder, RecorderSettings,
+    oversampling, within,
 };
+use crate::bench::Bench;
 use crate::firing::{EventKind, Firing};
 use serde::{Deserialize, Serialize};
 use std::iter::Peekable;
@@ -20,6 +22,13 @@ const LONGEST_PROBE_S: f64 = 2.0;
 const SHORTEST_PROBE_S: f64 = 1.0;
 /// Seed of that stretch: the level does not hang on the seed of the clip.
 const PROBE_SEED: u64 = 1;
+
+/// Sample rates, Hz.
+const LEAST_RATE_HZ: f64 = 4000.0;
+const GREATEST_RATE_HZ: f64 = 768_000.0;
+/// Lengths of a clip, s: from a millisecond to a day, whose firings still fit into the memory of an ordinary machine.
+const SHORTEST_S: f64 = 1e-3;
+const LONGEST_S: f64 = 86_400.0;
 
 /// How the recording level is set.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
@@ -44,8 +53,8 @@ pub struct RenderSettings {
     pub seed: u64,
     /// Recording level.
     pub level: Level,
-    /// Rms noise of the recorder, in full scale.
-    pub recorder_noise: f64,
+    /// The recorder.
+    pub recorder: RecorderSettings,
     /// Firing voltage whose click has peak 1, V.
     pub reference_voltage_v: f64,
     /// Firing rate for which the level is set, Hz; 0 for isolated clicks.
@@ -62,10 +71,30 @@ impl RenderSettings {
             duration_s,
             seed,
             level: Level::Peak(DEFAULT_PEAK),
-            recorder_noise: 0.0,
+            recorder: RecorderSettings::default(),
             reference_voltage_v: 1.0,
             expected_rate_hz: 0.0,
         }
+    }
+
+    /// A clip through the receiver and recorder of a bench.
+    ///
+    /// # Errors
+    /// If what the bench describes cannot be built.
+    pub fn from_bench(bench: &Bench, duration_s: f64, seed: u64) -> Result<Self, ReceiverError> {
+        let mut settings = Self::new(ReceiverSettings::from_bench(bench)?, duration_s, seed);
+        settings.recorder = RecorderSettings::from_bench(bench);
+        if let Some(rate) = bench.receiver.recorder_rate {
+            within("recorder rate", rate.value, "Hz", LEAST_RATE_HZ, GREATEST_RATE_HZ)?;
+            settings.sample_rate_hz = rate.value.round() as u32;
+        }
+        match (bench.receiver.recorder_level, bench.receiver.click_level) {
+            (_, Some(click)) => settings.level = Level::PerClick(click.value),
+            (Some(peak), None) => settings.level = Level::Peak(peak.value),
+            (None, None) => {}
+        }
+        settings.check()?;
+        Ok(settings)
     }
 
     /// The same with the reference voltage and the expected rate of a list of firings (those on the rhythm).
@@ -90,11 +119,13 @@ impl RenderSettings {
     /// Names the first setting that is out of range.
     pub fn check(&self) -> Result<(), ReceiverError> {
         self.receiver.check()?;
-        within("sample rate", f64::from(self.sample_rate_hz), "Hz", 4000.0, 768_000.0)?;
-        within("duration", self.duration_s, "s", 0.0, 86_400.0)?;
+        let sample_rate_hz = f64::from(self.sample_rate_hz);
+        within("sample rate", sample_rate_hz, "Hz", LEAST_RATE_HZ, GREATEST_RATE_HZ)?;
+        within("bandwidth", self.receiver.bandwidth_hz, "Hz", 0.0, sample_rate_hz)?;
+        within("clip length", self.duration_s, "s", SHORTEST_S, LONGEST_S)?;
         let (Level::Peak(level) | Level::PerClick(level)) = self.level;
         within("level", level, "of full scale", 1e-5, 1000.0)?;
-        within("recorder noise", self.recorder_noise, "of full scale", 0.0, 1.0)?;
+        self.recorder.check()?;
         within("reference voltage", self.reference_voltage_v, "V", 1e-9, 1e9)?;
         within("expected rate", self.expected_rate_hz, "Hz", 0.0, 1e6)
     }
@@ -113,7 +144,7 @@ pub struct Renderer<I: Iterator<Item = Firing>> {
     chain: Chain,
     decimator: Decimator,
     hum: Option<HumSource>,
-    recorder: Option<(Draw, f64)>,
+    recorder: Recorder,
     reference_voltage_v: f64,
     scale: f64,
     click: IsolatedClick,
@@ -141,8 +172,7 @@ impl<I: Iterator<Item = Firing>> Renderer<I> {
             hum.amplitude *= click.peak;
             HumSource::new(hum, output_rate_hz)
         });
-        let recorder = (settings.recorder_noise > 0.0)
-            .then(|| (Draw::new(settings.seed, Stream::Recorder), settings.recorder_noise));
+        let recorder = Recorder::new(settings.recorder, output_rate_hz, settings.seed);
         let run_in = (run_in_s(receiver) * output_rate_hz).ceil() as i64;
         let mut renderer = Self {
             firings: firings.into_iter().peekable(),
@@ -210,12 +240,9 @@ impl<I: Iterator<Item = Firing>> Renderer<I> {
         if let Some(hum) = &self.hum {
             audio += hum.at(self.next as i64);
         }
-        audio *= self.scale;
-        if let Some((draw, rms)) = &mut self.recorder {
-            audio += draw.normal() * *rms;
-        }
+        let written = self.recorder.write(audio * self.scale, self.next);
         self.next += 1;
-        audio.clamp(-1.0, 1.0) as f32
+        written as f32
     }
 }
 
@@ -260,9 +287,14 @@ impl IsolatedClick {
     }
 }
 
-/// The receiver without anything that is not the click's own way.
+/// The receiver without anything that is not the click's own way. A click alone leaves a frequency discriminator silent and in
+/// a measuring detector it is a slow swell, so these are timed and scaled as if the envelope were heard.
 fn bare(receiver: &ReceiverSettings) -> ReceiverSettings {
-    ReceiverSettings { noise: 0.0, carrier: None, agc: None, hum: None, ..receiver.clone() }
+    let mut bare = ReceiverSettings { noise: 0.0, carrier: None, agc: None, hum: None, ..receiver.clone() };
+    if !matches!(bare.detector.kind, DetectorKind::Envelope | DetectorKind::SquareLaw) {
+        bare.detector.kind = DetectorKind::Envelope;
+    }
+    bare
 }
 
 /// Time after which the receiver has forgotten being switched on, s.

@@ -1,6 +1,7 @@
 //! What a rendered clip holds: every firing, the settings, and the figures that an ideal reader would find.
 
-use super::firings::{Outage, Plan, Realised, Rhythm, Start};
+use super::finish::FinishTruth;
+use super::firings::{GapLaw, Outage, Plan, Realised, Rhythm, Start};
 use super::render::RenderSettings;
 use crate::firing::{EventKind, Firing};
 use serde::{Deserialize, Serialize};
@@ -29,6 +30,12 @@ pub struct Truth {
     pub settings: RenderSettings,
     /// Text of the bench file.
     pub bench: Option<String>,
+    /// What was laid over that bench: keys and values, SI or as written.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub changes: Vec<(String, String)>,
+    /// Level, fades and second channel of the file; none where the samples are as they came from the recorder.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub finish: Option<FinishTruth>,
     /// The trains, the one with the largest clicks first; none in a clip without a gap.
     pub trains: Vec<TrainTruth>,
 }
@@ -52,6 +59,8 @@ impl Truth {
             click_full_scale,
             settings,
             bench: None,
+            changes: Vec::new(),
+            finish: None,
             trains,
         }
     }
@@ -122,8 +131,11 @@ impl Drawn {
     /// The settings of a plan.
     #[must_use]
     pub fn of(plan: &Plan) -> Self {
+        let of_gap = |gap: &GapLaw| (gap.voltage_v, gap.spread, gap.memory, gap.drift_per_s, None);
         let (gap_voltage_v, relative_scatter, memory, drift_per_s, rate_hz) = match &plan.rhythm {
-            Rhythm::Bench { gap, .. } => (gap.voltage_v, gap.spread, gap.memory, gap.drift_per_s, None),
+            Rhythm::Bench { gap, .. } => of_gap(gap),
+            // The figures at time zero, as for a drift.
+            Rhythm::Moving(moments) => moments.first().map_or((0.0, 0.0, 0.0, 0.0, None), |moment| of_gap(&moment.gap)),
             Rhythm::Bare(bare) => {
                 (bare.voltage_v, bare.relative_jitter, bare.memory, bare.drift_per_s, Some(bare.rate_hz))
             }
@@ -133,7 +145,7 @@ impl Drawn {
             switched_on: plan.start == Start::SwitchedOn,
             gap_voltage_v,
             relative_scatter,
-            scatter_of_voltage: matches!(plan.rhythm, Rhythm::Bench { .. }),
+            scatter_of_voltage: !matches!(plan.rhythm, Rhythm::Bare(_)),
             memory,
             drift_per_s,
             rate_hz,

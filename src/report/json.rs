@@ -1,5 +1,6 @@
 //! Results as JSON, in SI base units. JSON knows no infinity: a figure that is not finite becomes null with a note.
 
+use super::comparison::Comparison;
 use super::measurement::{FORMAT, Measurement};
 use crate::estimate::Estimate;
 use serde::Serialize;
@@ -31,8 +32,20 @@ impl Failure {
 pub enum Report {
     /// It was measured, or found to hold nothing.
     Measured(Box<Measurement>),
+    /// It was measured and compared with the truth of a rendered clip.
+    Compared(Box<WithTruth>),
     /// It could not be read.
     Failed(Failure),
+}
+
+/// A measurement with its distance from the truth.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct WithTruth {
+    /// The measurement.
+    #[serde(flatten)]
+    pub measurement: Measurement,
+    /// The comparison.
+    pub comparison: Comparison,
 }
 
 /// One object for one recording, an array for several.

@@ -1,13 +1,15 @@
 //! Results as text, JSON and CSV. Computes nothing: it rounds, names units and leaves out what is not finite.
 
+mod comparison;
 mod events;
 mod figure;
 mod json;
 mod measurement;
 mod text;
 
+pub use comparison::{COMPARISON_FORMAT, Compared, Comparison, compare, comparison_text};
 pub use events::{EVENTS_HEADER, write_event};
 pub use figure::Figure;
-pub use json::{Failure, Report, finite, to_json};
+pub use json::{Failure, Report, WithTruth, finite, to_json};
 pub use measurement::{FORMAT, Measurement, Recording};
 pub use text::{HIGH_VOLTAGE_CAUTION, measurement_text, wrapped};

@@ -10,7 +10,7 @@ mod wav_head;
 mod write;
 
 pub use decode::open;
-pub use encode::{SampleFormat, write_clip};
+pub use encode::{ClipFacts, SampleFormat, write_clip, write_frames};
 pub use error::FileError;
 pub use stream::Recording;
 pub use write::{check_writable, read_text, write_atomically};

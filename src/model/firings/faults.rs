@@ -13,6 +13,40 @@ pub struct Outage {
     pub to_s: f64,
 }
 
+/// Bursts in which the gap breaks down early, as dust or a fibre between the electrodes makes it (common practice: single low
+/// values that come in groups).
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Dust {
+    /// Bursts per second, Hz.
+    pub rate_hz: f64,
+    /// Length of a burst, s.
+    pub length_s: f64,
+    /// Greatest loss of strength in a burst; each breakdown loses a uniform share of it, 0..1.
+    pub depth: f64,
+}
+
+/// Dust at work.
+pub(super) struct DustSource {
+    dust: Dust,
+    random: Random,
+    from_s: f64,
+}
+
+impl DustSource {
+    pub(super) fn new(dust: Dust, mut random: Random) -> Self {
+        let from_s = random.exponential() / dust.rate_hz;
+        Self { dust, random, from_s }
+    }
+
+    /// What is left of the strength for a breakdown that begins to charge at this time.
+    pub(super) fn strength(&mut self, time_s: f64) -> f64 {
+        while time_s >= self.from_s + self.dust.length_s {
+            self.from_s += self.dust.length_s + self.random.exponential() / self.dust.rate_hz;
+        }
+        if time_s >= self.from_s { 1.0 - self.dust.depth * self.random.uniform() } else { 1.0 }
+    }
+}
+
 /// Faults of a train.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct Faults {
@@ -26,6 +60,8 @@ pub struct Faults {
     pub extra_size: f64,
     /// Outages.
     pub outages: Vec<Outage>,
+    /// Early breakdown in bursts; of a gap across a circuit only.
+    pub dust: Option<Dust>,
 }
 
 /// Half width of the scatter of the delay of an extra strike.
@@ -46,6 +82,11 @@ impl Faults {
         check("the delay of extra strikes", self.extra_delay_s, delay_ok, "it must be above 0 s")?;
         let size_ok = self.extra == 0.0 || self.extra_size > 0.0;
         check("the size of extra strikes", self.extra_size, size_ok, "it must be above 0")?;
+        if let Some(Dust { rate_hz, length_s, depth }) = self.dust {
+            check("the rate of bursts of dust", rate_hz, rate_hz > 0.0, "it must be above 0 Hz")?;
+            check("the length of a burst of dust", length_s, length_s > 0.0, "it must be above 0 s")?;
+            check("the depth of dust", depth, (0.0..1.0).contains(&depth), "it must be 0 to below 1")?;
+        }
         for outage in &self.outages {
             check("the end of an outage", outage.to_s, outage.to_s > outage.from_s, "it must come after its start")?;
         }

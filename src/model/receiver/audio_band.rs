@@ -102,6 +102,16 @@ impl AudioFilter {
         Self { sections }
     }
 
+    /// The same with a de-emphasis behind it: one pole of the given time constant, s; 0 for none.
+    #[must_use]
+    pub fn with_de_emphasis(mut self, time_constant_s: f64, rate_hz: f64) -> Self {
+        if time_constant_s > 0.0 {
+            let k = (0.5 / (time_constant_s * rate_hz)).tan();
+            self.sections.push(Section::first_order(Cut::High, k));
+        }
+        self
+    }
+
     /// Next output.
     #[inline]
     pub fn step(&mut self, input: f64) -> f64 {

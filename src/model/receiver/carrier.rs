@@ -6,9 +6,10 @@
 use super::{AudioBand, AudioFilter, Complex, Draw};
 use serde::{Deserialize, Serialize};
 use std::f64::consts::TAU;
+use std::sync::Arc;
 
 /// What the carrier is modulated with.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(rename_all = "snake_case", tag = "kind")]
 pub enum Programme {
     /// A tone.
@@ -23,20 +24,37 @@ pub enum Programme {
         /// Depth of modulation at the loudest, 0..=1.
         depth: f64,
     },
+    /// Sound that the caller supplies, over and over again.
+    Sound {
+        /// Depth of modulation at the loudest, 0..=1.
+        depth: f64,
+        /// The sound; it is not written into a truth, so that what is read back from there is silent.
+        #[serde(skip)]
+        sound: Option<Sound>,
+    },
+}
+
+/// Mono sound for a carrier.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Sound {
+    /// Samples, of any scale: the loudest modulates to the full depth.
+    pub samples: Arc<[f32]>,
+    /// Samples per second, Hz.
+    pub sample_rate_hz: f64,
 }
 
 impl Programme {
     /// Depth of modulation at the loudest.
     #[must_use]
-    pub fn depth(self) -> f64 {
+    pub fn depth(&self) -> f64 {
         match self {
-            Self::Tone { depth, .. } | Self::Speech { depth } => depth,
+            Self::Tone { depth, .. } | Self::Speech { depth } | Self::Sound { depth, .. } => *depth,
         }
     }
 }
 
 /// A co-channel carrier.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Carrier {
     /// Amplitude behind the channel filter, in click peaks.
     pub amplitude: f64,
@@ -79,6 +97,7 @@ enum Modulation {
     None,
     Tone { depth: f64, tone: Turning },
     Speech { depth: f64, filter: AudioFilter, scale: f64, syllables: [Turning; 3], draw: Draw },
+    Sound { scale: f64, sound: Sound, place: f64, pace: f64 },
 }
 
 /// A carrier at work.
@@ -87,32 +106,57 @@ pub struct CarrierSource {
     /// Strength of the impulse of one step of the unmodulated carrier.
     strength: f64,
     carrier: Turning,
+    /// Unit phasor of this step.
+    phase: Complex,
     modulation: Modulation,
 }
 
 impl CarrierSource {
     /// A carrier stepped by `step_s`, for a channel whose gain at the carrier's offset is `gain`.
-    pub(crate) fn new(settings: Carrier, gain: f64, step_s: f64, mut draw: Draw) -> Self {
+    pub(crate) fn new(settings: &Carrier, gain: f64, step_s: f64, mut draw: Draw) -> Self {
         let carrier = Turning::new(draw.phase(), settings.offset_hz, step_s);
-        let modulation = match settings.programme {
+        let modulation = match &settings.programme {
             None => Modulation::None,
             Some(Programme::Tone { frequency_hz, depth }) => {
-                Modulation::Tone { depth, tone: Turning::new(draw.phase(), frequency_hz, step_s) }
+                Modulation::Tone { depth: *depth, tone: Turning::new(draw.phase(), *frequency_hz, step_s) }
             }
             Some(Programme::Speech { depth }) => {
                 let filter = AudioFilter::new(SPEECH_BAND, 1.0 / step_s);
                 let scale = SPEECH_RMS / noise_gain(filter.clone(), 1.0 / step_s);
                 let syllables = SYLLABLES_HZ.map(|f| Turning::new(draw.phase(), f, step_s));
-                Modulation::Speech { depth, filter, scale, syllables, draw }
+                Modulation::Speech { depth: *depth, filter, scale, syllables, draw }
             }
+            Some(Programme::Sound { depth, sound }) => sounding(*depth, sound.as_ref(), step_s),
         };
-        Self { strength: settings.amplitude * step_s / gain, carrier, modulation }
+        Self { strength: settings.amplitude * step_s / gain, phase: carrier.now, carrier, modulation }
     }
 
     /// Strength of the impulse of this step.
     #[inline]
     pub fn next_impulse(&mut self) -> Complex {
-        self.carrier.next() * (self.strength * (1.0 + self.modulation.next()))
+        self.phase = self.carrier.next();
+        self.phase * (self.strength * (1.0 + self.modulation.next()))
+    }
+
+    /// Unit phasor of the carrier in this step, ahead of the channel.
+    #[inline]
+    #[must_use]
+    pub fn phase(&self) -> Complex {
+        self.phase
+    }
+}
+
+/// Modulation with a sound: silent if there is none.
+fn sounding(depth: f64, sound: Option<&Sound>, step_s: f64) -> Modulation {
+    let loudest = sound.map_or(0.0, |sound| sound.samples.iter().fold(0.0f32, |top, x| top.max(x.abs())));
+    match sound {
+        Some(sound) if loudest > 0.0 && loudest.is_finite() && sound.sample_rate_hz > 0.0 => Modulation::Sound {
+            scale: depth / f64::from(loudest),
+            sound: sound.clone(),
+            place: 0.0,
+            pace: sound.sample_rate_hz * step_s,
+        },
+        _ => Modulation::None,
     }
 }
 
@@ -126,6 +170,13 @@ impl Modulation {
                 let swell = syllables.iter_mut().map(Turning::next).sum::<Complex>().norm();
                 let voice = filter.step(draw.normal()) * *scale * swell;
                 *depth * voice.clamp(-1.0, 1.0)
+            }
+            Self::Sound { scale, sound, place, pace } => {
+                let count = sound.samples.len();
+                let (at, part) = (*place as usize, place.fract());
+                let [now, next] = [at, at + 1].map(|n| f64::from(sound.samples[n % count]));
+                *place = (*place + *pace) % count as f64;
+                *scale * (now + (next - now) * part)
             }
         }
     }

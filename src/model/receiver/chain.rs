@@ -5,7 +5,7 @@
 //! into the audio, and at least twelve times the high corner of the audio.
 
 use super::{
-    Agc, AudioFilter, CarrierSource, Channel, ChannelState, Complex, Detector, Draw, ReceiverSettings, Stream,
+    Agc, AudioFilter, CarrierSource, Channel, ChannelState, Complex, Demodulator, Draw, ReceiverSettings, Stream,
 };
 
 /// Least internal rate in bandwidths of the channel.
@@ -34,7 +34,9 @@ pub(crate) struct Chain {
     noise: Option<(Draw, f64)>,
     carrier: Option<CarrierSource>,
     agc: Option<Agc>,
-    detector: Option<Detector>,
+    detector: Demodulator,
+    /// Phase that the channel adds to the carrier, for the detector that is locked to it.
+    carrier_turn: Complex,
     audio: AudioFilter,
 }
 
@@ -47,11 +49,12 @@ impl Chain {
             let strength = settings.noise / sampled_energy(&channel, step_s).sqrt();
             (Draw::new(seed, Stream::ChannelNoise), strength)
         });
-        let carrier = settings.carrier.filter(|carrier| carrier.amplitude > 0.0).map(|carrier| {
-            let gain = channel.gain(carrier.offset_hz).norm();
-            CarrierSource::new(carrier, gain, step_s, Draw::new(seed, Stream::Carrier))
+        let mut carrier_turn = Complex::from(1.0);
+        let carrier = settings.carrier.as_ref().filter(|carrier| carrier.amplitude > 0.0).map(|carrier| {
+            let gain = channel.gain(carrier.offset_hz);
+            carrier_turn = gain / gain.norm();
+            CarrierSource::new(carrier, gain.norm(), step_s, Draw::new(seed, Stream::Carrier))
         });
-        let timed = settings.detector.charge_s > 0.0 || settings.detector.discharge_s > 0.0;
         Self {
             rate_hz,
             index: first - 1,
@@ -61,8 +64,9 @@ impl Chain {
             noise,
             carrier,
             agc: settings.agc.map(|agc| Agc::new(agc, step_s)),
-            detector: timed.then(|| Detector::new(settings.detector, step_s)),
-            audio: AudioFilter::new(settings.audio_band, rate_hz),
+            detector: Demodulator::new(settings.detector, settings.bandwidth_hz, step_s),
+            carrier_turn,
+            audio: AudioFilter::new(settings.audio_band, rate_hz).with_de_emphasis(settings.de_emphasis_s, rate_hz),
         }
     }
 
@@ -97,13 +101,12 @@ impl Chain {
     /// Audio at the sample last advanced to; to be asked for once in each step.
     #[inline]
     pub(crate) fn audio(&mut self) -> f64 {
-        let mut level = self.envelope().norm_sqr().sqrt();
+        let mut envelope = self.envelope();
         if let Some(agc) = &mut self.agc {
-            level *= agc.gain(level);
+            envelope *= agc.gain(envelope.norm_sqr().sqrt());
         }
-        if let Some(detector) = &mut self.detector {
-            level = detector.step(level);
-        }
+        let reference = self.carrier.as_ref().map_or(Complex::from(1.0), |carrier| carrier.phase() * self.carrier_turn);
+        let level = self.detector.step(envelope, reference);
         if self.index % SETTLE_EVERY == 0 {
             self.channel.settle();
             self.audio.settle();

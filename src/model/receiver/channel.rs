@@ -2,10 +2,12 @@
 //!
 //! The transfer function is split into partial fractions, Σ g/(s − p)^k. A pole p of multiplicity m holds a chain of m states,
 //! z₁' = p·z₁ + u, z_k' = p·z_k + |p|·z_(k−1), whose step over a time t is exact: z_k(t) = e^(pt)·Σ (|p|t)^j/j!·z_(k−j).
-//! A click between two samples therefore enters with its exact age, and a sample costs only the order of the filter.
+//! A click between two samples therefore enters with its exact age, and a sample costs only the order of the filter. The flat
+//! filter of linear phase has no poles; it adds the samples of its impulse response for each click.
 //!
 //! Times in s, frequencies in Hz from the tuned frequency. Gain 1 at the tuned frequency.
 
+use super::linear_phase::{LinearPhase, LinearState};
 use super::selectivity::Pole;
 use super::{Complex, Selectivity};
 
@@ -46,21 +48,30 @@ pub struct Channel {
     modes: Vec<Mode>,
     /// Time constant of the slowest pole, s.
     slowest_s: f64,
+    /// The filter without poles, which then has no modes.
+    flat: Option<LinearPhase>,
 }
 
 impl Channel {
     /// The filter of a `selectivity` with a 6 dB bandwidth in Hz.
     #[must_use]
     pub fn new(selectivity: Selectivity, bandwidth_hz: f64) -> Self {
+        if let Selectivity::Flat { edge_percent } = selectivity {
+            let flat = LinearPhase::new(bandwidth_hz, bandwidth_hz * f64::from(edge_percent) / 100.0);
+            return Self { modes: Vec::new(), slowest_s: 0.0, flat: Some(flat) };
+        }
         let poles = selectivity.poles(bandwidth_hz);
         let slowest_s = poles.iter().map(|p| -1.0 / p.at.re).fold(0.0, f64::max);
         let modes = (0..poles.len()).map(|i| Mode { pole: poles[i].at, weights: weights(&poles, i) }).collect();
-        Self { modes, slowest_s }
+        Self { modes, slowest_s, flat: None }
     }
 
     /// Complex gain at a distance of `offset_hz` from the tuned frequency.
     #[must_use]
     pub fn gain(&self, offset_hz: f64) -> Complex {
+        if let Some(flat) = &self.flat {
+            return flat.gain(offset_hz);
+        }
         let s = Complex::new(0.0, std::f64::consts::TAU * offset_hz);
         self.modes
             .iter()
@@ -83,6 +94,9 @@ impl Channel {
         if time_s < 0.0 {
             return Complex::default();
         }
+        if let Some(flat) = &self.flat {
+            return Complex::from(flat.impulse_response(time_s));
+        }
         self.modes
             .iter()
             .map(|mode| mode.step(time_s).iter().zip(&mode.weights).map(|(z, weight)| z * weight).sum::<Complex>())
@@ -94,6 +108,9 @@ impl Channel {
     #[must_use]
     pub fn impulse_peak(&self) -> (f64, f64) {
         let height = |t: f64| self.impulse_response(t).norm();
+        if let Some(flat) = &self.flat {
+            return (0.5 * flat.length_s(), height(0.5 * flat.length_s()));
+        }
         let mut step = self.slowest_s / 32.0;
         let mut best = 0.0;
         // The peak of an n-th order filter lies near n − 1 time constants.
@@ -118,6 +135,9 @@ impl Channel {
     /// Time after which what an impulse left is under 10⁻⁷ of its peak, s.
     #[must_use]
     pub fn memory_s(&self) -> f64 {
+        if let Some(flat) = &self.flat {
+            return flat.length_s();
+        }
         let (peak_s, height) = self.impulse_peak();
         let mut t = peak_s + self.slowest_s;
         // A ringing tail crosses zero: look at two instants a quarter of a ring apart.
@@ -139,7 +159,7 @@ impl Channel {
                 states: vec![Complex::default(); mode.weights.len()],
             })
             .collect();
-        ChannelState { chains }
+        ChannelState { chains, flat: self.flat.as_ref().map(|flat| flat.state(step_s)) }
     }
 }
 
@@ -189,12 +209,16 @@ struct Chain {
 #[derive(Debug, Clone, PartialEq)]
 pub struct ChannelState {
     chains: Vec<Chain>,
+    flat: Option<LinearState>,
 }
 
 impl ChannelState {
     /// Carries the state on by one sample.
     #[inline]
     pub fn advance(&mut self) {
+        if let Some(flat) = &mut self.flat {
+            flat.advance();
+        }
         for chain in &mut self.chains {
             match (&mut chain.states[..], &chain.step[..]) {
                 // The usual filters have single and double poles.
@@ -210,6 +234,9 @@ impl ChannelState {
 
     /// Adds what an impulse of the given strength has become `age_s` after it.
     pub fn add_impulse(&mut self, strength: Complex, age_s: f64) {
+        if let Some(flat) = &mut self.flat {
+            flat.add_impulse(strength, age_s);
+        }
         for chain in &mut self.chains {
             for (z, term) in chain.states.iter_mut().zip(chain.mode.step(age_s)) {
                 *z += strength * term;
@@ -220,6 +247,9 @@ impl ChannelState {
     /// Adds an impulse at this very instant.
     #[inline]
     pub fn add_impulse_now(&mut self, strength: Complex) {
+        if let Some(flat) = &mut self.flat {
+            flat.add_impulse_now(strength);
+        }
         for chain in &mut self.chains {
             chain.states[0] += strength;
         }
@@ -238,7 +268,7 @@ impl ChannelState {
     #[inline]
     #[must_use]
     pub fn output(&self) -> Complex {
-        let mut sum = Complex::default();
+        let mut sum = self.flat.as_ref().map_or(Complex::default(), LinearState::output);
         for chain in &self.chains {
             for (z, weight) in chain.states.iter().zip(&chain.mode.weights) {
                 sum += z * weight;

@@ -1,7 +1,7 @@
 //! Random draws of the receiver, one stream for each purpose so that switching one thing on leaves the others as they were.
 
 use super::Complex;
-use crate::model::random::Random;
+use crate::model::random::{Random, mix};
 use std::f64::consts::TAU;
 
 /// What a stream of draws is for.
@@ -15,6 +15,8 @@ pub(crate) enum Stream {
     Carrier = 3,
     /// Noise of the recorder.
     Recorder = 4,
+    /// Drop-outs of the recorder.
+    DropOuts = 5,
 }
 
 /// A stream of draws.
@@ -27,7 +29,7 @@ pub(crate) struct Draw {
 
 impl Draw {
     pub(crate) fn new(seed: u64, stream: Stream) -> Self {
-        Self { random: Random::seeded(scramble(seed ^ scramble(stream as u64))), spare: None }
+        Self { random: Random::seeded(mix(seed ^ mix(stream as u64))), spare: None }
     }
 
     /// Uniform in (0, 1), neither end reached.
@@ -64,14 +66,6 @@ impl Draw {
         self.spare = Some(pair.im);
         pair.re
     }
-}
-
-/// Bijective mixing of 64 bits (finalizer of MurmurHash3), so that neighbouring seeds and streams have unrelated states.
-fn scramble(value: u64) -> u64 {
-    let mut z = value.wrapping_add(0x2545_f491_4f6c_dd1d);
-    z = (z ^ (z >> 33)).wrapping_mul(0xff51_afd7_ed55_8ccd);
-    z = (z ^ (z >> 33)).wrapping_mul(0xc4ce_b9fe_1a85_ec53);
-    z ^ (z >> 33)
 }
 
 #[cfg(test)]

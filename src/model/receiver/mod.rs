@@ -1,7 +1,7 @@
 //! The receiver, from the damped wave of a spark to the audio.
 //!
 //! ```text
-//!  firing ─► burst ─► selectivity ─► AGC ─► envelope detector ─► audio band ─► decimation ─► recorder
+//!  firing ─► burst ─► selectivity ─► AGC ─► detector ─► audio band ─► decimation ─► recorder
 //!                         ▲
 //!           noise, carrier with programme
 //! ```
@@ -17,27 +17,36 @@ mod carrier;
 mod chain;
 mod channel;
 mod decimator;
+mod demodulator;
+mod described;
 mod detector;
 mod draw;
 mod hum;
+mod linear_phase;
+mod recorder;
 mod selectivity;
 mod settings;
+mod weighting;
 
-pub use agc::{Agc, AgcSettings};
+pub use agc::{Agc, AgcLaw, AgcSettings};
 pub use audio_band::{AudioBand, AudioFilter};
 pub use burst::{Burst, BurstError, decrement};
-pub use carrier::{Carrier, CarrierSource, Programme};
+pub use carrier::{Carrier, CarrierSource, Programme, Sound};
 pub(crate) use chain::{Chain, oversampling};
 pub use channel::{Channel, ChannelState};
 pub use decimator::Decimator;
-pub use detector::{Detector, DetectorSettings};
+pub use demodulator::Demodulator;
+pub use detector::{Detector, DetectorKind, DetectorSettings};
 pub(crate) use draw::{Draw, Stream};
 pub use hum::{Hum, HumSource};
+pub(crate) use recorder::Recorder;
+pub use recorder::{DropOuts, RecorderSettings};
 pub use selectivity::Selectivity;
 pub(crate) use settings::within;
 pub use settings::{
     DEFAULT_AUDIO_BAND_HZ, DEFAULT_BANDWIDTH_HZ, DEFAULT_CLICK_TO_NOISE, ReceiverError, ReceiverSettings,
 };
+pub use weighting::{Band, Instrument, QuasiPeak, Weighting, reading};
 
 /// A complex number of the baseband.
 pub type Complex = rustfft::num_complex::Complex<f64>;

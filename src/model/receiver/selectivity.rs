@@ -27,6 +27,11 @@ pub enum Selectivity {
         /// Circuits in cascade.
         circuits: u8,
     },
+    /// Flat with steep edges and linear phase, as ceramic and digital filters come near.
+    Flat {
+        /// Width of each edge, from pass to stop band, in percent of the bandwidth.
+        edge_percent: u8,
+    },
 }
 
 impl Default for Selectivity {
@@ -61,6 +66,8 @@ impl Selectivity {
             Self::CoupledPairs { pairs } => 2 * usize::from(pairs),
             Self::Butterworth { poles } => usize::from(poles),
             Self::Synchronous { circuits } => usize::from(circuits),
+            // No poles; as good as the simplest filter.
+            Self::Flat { .. } => 1,
         }
     }
 
@@ -89,6 +96,7 @@ impl Selectivity {
                 let rate = edge / (2f64.powf(2.0 / f64::from(circuits)) - 1.0).sqrt();
                 vec![Pole { at: Complex::new(-rate, 0.0), multiplicity: usize::from(circuits) }]
             }
+            Self::Flat { .. } => Vec::new(),
         }
     }
 }

@@ -1,6 +1,7 @@
 //! What the receiver is set to: from a bench, with the defaults for what the bench leaves open.
 
-use super::{AgcSettings, AudioBand, Burst, BurstError, Carrier, DetectorSettings, Hum, Selectivity};
+use super::described;
+use super::{AgcSettings, AudioBand, Burst, BurstError, Carrier, DetectorSettings, Hum, Programme, Selectivity};
 use crate::bench::{Bench, Quantity};
 use crate::model::ring;
 use serde::{Deserialize, Serialize};
@@ -12,10 +13,6 @@ pub const DEFAULT_BANDWIDTH_HZ: f64 = 6000.0;
 pub const DEFAULT_AUDIO_BAND_HZ: (f64, f64) = (120.0, 3400.0);
 /// Noise in the channel against a click's peak where the bench gives none: −30 dB.
 pub const DEFAULT_CLICK_TO_NOISE: f64 = 0.031_622_776_601_683_79;
-/// Buzz that goes with hum from a bench: some second and higher harmonics, as a poorly smoothed rectifier gives.
-const DEFAULT_BUZZ: f64 = 0.5;
-/// Mains frequency of hum from a bench that gives none, Hz.
-const DEFAULT_HUM_HZ: f64 = 50.0;
 
 /// A receiver that cannot be built.
 #[derive(Debug, Clone, PartialEq, Error)]
@@ -60,10 +57,12 @@ pub struct ReceiverSettings {
     pub carrier: Option<Carrier>,
     /// Automatic gain control.
     pub agc: Option<AgcSettings>,
-    /// Time constants of the detector.
+    /// Kind and time constants of the detector.
     pub detector: DetectorSettings,
     /// Audio band.
     pub audio_band: AudioBand,
+    /// Time constant of the de-emphasis, s; 0 for none.
+    pub de_emphasis_s: f64,
     /// Mains hum.
     pub hum: Option<Hum>,
     /// True if a rise of the envelope is negative in the audio.
@@ -84,6 +83,7 @@ impl Default for ReceiverSettings {
             agc: None,
             detector: DetectorSettings::default(),
             audio_band: AudioBand { low_hz, low_poles: 2, high_hz, high_poles: 4 },
+            de_emphasis_s: 0.0,
             hum: None,
             inverted: false,
             burst: None,
@@ -92,32 +92,29 @@ impl Default for ReceiverSettings {
 }
 
 impl ReceiverSettings {
-    /// The receiver of a bench; what the bench does not say is as in [`ReceiverSettings::default`], hum without a frequency is
-    /// at 50 Hz, and a tuned frequency that is not given is the tank's.
+    /// The receiver of a bench; what the bench does not say is as in [`ReceiverSettings::default`], and a tuned frequency that
+    /// is not given is the tank's. The defaults of each key stand with the keys in the handbook.
     ///
     /// # Errors
     /// If the bench describes a tank that does not ring or a receiver outside the limits of [`ReceiverSettings::check`].
     pub fn from_bench(bench: &Bench) -> Result<Self, ReceiverError> {
         let described = &bench.receiver;
-        let mut settings = Self::default();
+        let default = Self::default();
         let value = |quantity: Option<Quantity>, default: f64| quantity.map_or(default, |q| q.value);
-        settings.bandwidth_hz = value(described.bandwidth, settings.bandwidth_hz);
-        settings.noise = value(described.noise, settings.noise);
-        if let Some((low, high)) = described.audio_band {
-            settings.audio_band.low_hz = low.value;
-            settings.audio_band.high_hz = high.value;
-        }
-        settings.carrier = described.carrier.map(|carrier| Carrier {
-            amplitude: carrier.value,
-            offset_hz: value(described.carrier_offset, 0.0),
-            programme: None,
-        });
-        settings.hum = described.hum.map(|hum| Hum {
-            amplitude: hum.value,
-            frequency_hz: value(described.hum_frequency, DEFAULT_HUM_HZ),
-            buzz: DEFAULT_BUZZ,
-        });
-        settings.burst = ring::burst(bench)?.map(|burst| (burst, value(described.tuned, burst.ring_hz())));
+        let burst = ring::burst(bench)?;
+        let settings = Self {
+            selectivity: described::selectivity(described),
+            bandwidth_hz: value(described.bandwidth, default.bandwidth_hz),
+            noise: value(described.noise, default.noise),
+            carrier: described::carrier(described),
+            agc: described::agc(described),
+            detector: described::detector(described),
+            audio_band: described::audio_band(described, default.audio_band),
+            de_emphasis_s: value(described.de_emphasis, 0.0),
+            hum: described::hum(described),
+            inverted: described::inverted(described),
+            burst: burst.map(|burst| (burst, value(described.tuned, burst.ring_hz()))),
+        };
         settings.check()?;
         Ok(settings)
     }
@@ -129,6 +126,9 @@ impl ReceiverSettings {
     pub fn check(&self) -> Result<(), ReceiverError> {
         within("bandwidth", self.bandwidth_hz, "Hz", 100.0, 200_000.0)?;
         within("filter order", self.selectivity.order() as f64, "", 1.0, Selectivity::MAX_ORDER as f64)?;
+        if let Selectivity::Flat { edge_percent } = self.selectivity {
+            within("filter edge", f64::from(edge_percent), "% of the bandwidth", 2.0, 100.0)?;
+        }
         within("noise", self.noise, "of a click peak", 0.0, 1000.0)?;
         let band = self.audio_band;
         within("audio band, high corner", band.high_hz, "Hz", 100.0, 100_000.0)?;
@@ -137,15 +137,21 @@ impl ReceiverSettings {
         within("audio high cut", f64::from(band.high_poles), "poles", 1.0, 8.0)?;
         within("detector charge time", self.detector.charge_s, "s", 0.0, 1.0)?;
         within("detector discharge time", self.detector.discharge_s, "s", 0.0, 1.0)?;
-        if let Some(carrier) = self.carrier {
+        within("de-emphasis", self.de_emphasis_s, "s", 0.0, 1.0)?;
+        if let Some(carrier) = &self.carrier {
             within("carrier", carrier.amplitude, "of a click peak", 0.0, 1000.0)?;
             within("carrier offset", carrier.offset_hz, "Hz", -self.bandwidth_hz, self.bandwidth_hz)?;
-            within("carrier modulation depth", carrier.programme.map_or(0.0, |p| p.depth()), "", 0.0, 1.0)?;
+            within("carrier modulation depth", carrier.programme.as_ref().map_or(0.0, Programme::depth), "", 0.0, 1.0)?;
+        }
+        if let Some(Carrier { programme: Some(Programme::Tone { frequency_hz, .. }), .. }) = self.carrier {
+            within("programme frequency", frequency_hz, "Hz", 1.0, self.bandwidth_hz)?;
         }
         if let Some(agc) = self.agc {
             within("AGC attack", agc.attack_s, "s", 0.0, 60.0)?;
             within("AGC decay", agc.decay_s, "s", 0.0, 60.0)?;
             within("AGC threshold", agc.threshold, "of a click peak", 1e-3, 1000.0)?;
+            within("AGC margin", agc.margin, "of a click peak", 0.0, 1000.0)?;
+            within("AGC gain", agc.greatest_gain, "", 1e-3, 1e6)?;
         }
         if let Some(hum) = self.hum {
             within("hum", hum.amplitude, "of a click peak", 0.0, 1000.0)?;

@@ -1,0 +1,149 @@
+//! How far a measurement is from the truth of a rendered clip, in intervals.
+//!
+//! The truth is what was realised in the clip. Intervals are for the process (what a longer recording would settle to), so a
+//! figure of a short clip may lie a little outside of them more often than one in twenty.
+
+use super::Measurement;
+use crate::estimate::Estimate;
+use crate::model::truth::Truth;
+use crate::rhythm::Verdict;
+use serde::{Deserialize, Serialize};
+use std::fmt::Write;
+
+/// Name of the format.
+pub const COMPARISON_FORMAT: &str = "gaptone.comparison/1";
+
+/// One figure beside its truth.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Compared {
+    /// Name of the figure, as in the measurement.
+    pub quantity: String,
+    /// As it was realised, in the unit of the figure.
+    pub truth: f64,
+    /// As measured; none if the measurement gives no figure.
+    pub measured: Option<Estimate>,
+    /// (Measured − truth) over the half of the 95 % interval on the side of the truth: within ±1 the truth is covered.
+    pub intervals: Option<f64>,
+}
+
+impl Compared {
+    /// True if the interval covers the truth.
+    #[must_use]
+    pub fn covered(&self) -> bool {
+        self.intervals.is_some_and(|intervals| intervals.abs() <= 1.0)
+    }
+}
+
+/// A measurement beside the truth.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Comparison {
+    /// Always [`COMPARISON_FORMAT`].
+    pub format: String,
+    /// Trains in the clip.
+    pub trains: usize,
+    /// What the measurement found.
+    pub verdict: Verdict,
+    /// True if a gap was found where there is one, and none where there is none.
+    pub verdict_holds: bool,
+    /// The figures.
+    pub figures: Vec<Compared>,
+}
+
+impl Comparison {
+    /// True if the verdict holds and every figure that was given covers its truth.
+    #[must_use]
+    pub fn holds(&self) -> bool {
+        self.verdict_holds && self.figures.iter().all(|figure| figure.measured.is_none() || figure.covered())
+    }
+}
+
+/// Compares a measurement with the truth of the clip that was measured.
+#[must_use]
+pub fn compare(measurement: &Measurement, truth: &Truth) -> Comparison {
+    let reading = &measurement.reading;
+    let found = matches!(reading.verdict, Verdict::Steady | Verdict::Unsteady);
+    let mut figures = Vec::new();
+    let mut put = |quantity: &str, truth: Option<f64>, measured: Option<Estimate>| {
+        if let Some(truth) = truth {
+            let intervals = measured.map(|estimate| intervals(&estimate, truth));
+            figures.push(Compared { quantity: quantity.to_owned(), truth, measured, intervals });
+        }
+    };
+    if let Some(train) = truth.trains.first() {
+        let realised = &train.realised;
+        put("firing_rate_hz", realised.firing_rate_hz, reading.firing_rate_hz);
+        put("period_s", realised.period_s, reading.period_s);
+        put("period_jitter_s", realised.period_jitter_s, reading.period_jitter_s);
+        put("cycle_jitter_s", realised.cycle_jitter_s, reading.cycle_jitter_s);
+        put("drift_per_s", realised.drift_per_s, reading.drift_per_s);
+        put("gap_voltage_v", realised.gap_voltage_v, measurement.gap_voltage_v);
+        put("gap_voltage_spread_v", realised.gap_voltage_spread_v, measurement.gap_voltage_spread_v);
+    }
+    for (number, train) in truth.trains.iter().enumerate().skip(1) {
+        let Some(rate_hz) = train.realised.firing_rate_hz else { continue };
+        let distance = |estimate: &Estimate| (estimate.value / rate_hz).ln().abs();
+        let nearest = reading
+            .other_trains
+            .iter()
+            .map(|other| other.firing_rate_hz)
+            .min_by(|a, b| distance(a).total_cmp(&distance(b)));
+        put(&format!("firing_rate_hz of train {}", number + 1), Some(rate_hz), nearest);
+    }
+    Comparison {
+        format: COMPARISON_FORMAT.to_owned(),
+        trains: truth.trains.len(),
+        verdict: reading.verdict,
+        verdict_holds: found != truth.trains.is_empty(),
+        figures,
+    }
+}
+
+/// Distance in half intervals; an interval of no width covers only the truth itself.
+fn intervals(estimate: &Estimate, truth: f64) -> f64 {
+    let distance = estimate.value - truth;
+    let half = if distance > 0.0 { estimate.value - estimate.low } else { estimate.high - estimate.value };
+    if distance == 0.0 { 0.0 } else { distance / half }
+}
+
+/// The comparison as lines for people.
+#[must_use]
+pub fn comparison_text(comparison: &Comparison) -> String {
+    let mut text = String::new();
+    let heard = match (comparison.trains, comparison.verdict_holds) {
+        (0, true) => "there is no gap in the clip, and none was found",
+        (0, false) => "there is no gap in the clip, but one was found",
+        (_, true) => "the gap in the clip was found",
+        (_, false) => "the gap in the clip was not found",
+    };
+    // Writing to a string cannot fail.
+    let _ = writeln!(text, "against the truth: {heard}");
+    for figure in &comparison.figures {
+        let line = match (figure.measured, figure.intervals) {
+            (Some(measured), Some(intervals)) => format!(
+                "measured {:.6e}, {:+.2} half intervals off: {}",
+                measured.value,
+                intervals,
+                if figure.covered() { "covered" } else { "NOT covered" }
+            ),
+            _ => "not measured".to_owned(),
+        };
+        let _ = writeln!(text, "  {:<28} {:.6e}  {line}", figure.quantity, figure.truth);
+    }
+    text
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn distances_are_counted_in_the_half_interval_on_the_side_of_the_truth() {
+        let estimate = Estimate { value: 10.0, u: 1.0, low: 9.0, high: 14.0 };
+        assert_eq!(intervals(&estimate, 8.0), 2.0);
+        assert_eq!(intervals(&estimate, 12.0), -0.5);
+        assert_eq!(intervals(&estimate, 10.0), 0.0);
+        let sharp = Estimate { value: 10.0, u: 0.0, low: 10.0, high: 10.0 };
+        assert_eq!(intervals(&sharp, 10.0), 0.0);
+        assert!(intervals(&sharp, 9.0).is_infinite());
+    }
+}
