@@ -188,9 +188,11 @@ fn line(audio: &[f64], fired: &[Firing], delay_s: f64) -> f64 {
     let (mut sum, mut count) = (Complex::default(), 0.0);
     for pair in fired.windows(2) {
         let (a, b) = (pair[0].time_s + delay_s, pair[1].time_s + delay_s);
-        for k in (a / STEP_S).ceil() as usize..((b / STEP_S).ceil() as usize).min(audio.len()) {
+        let from = (a / STEP_S).ceil() as usize;
+        let to = ((b / STEP_S).ceil() as usize).min(audio.len());
+        for (k, &value) in audio.iter().enumerate().take(to).skip(from) {
             let phase = (k as f64 * STEP_S - a) / (b - a);
-            sum += Complex::from_polar(audio[k], -TAU * phase);
+            sum += Complex::from_polar(value, -TAU * phase);
             count += 1.0;
         }
     }

@@ -107,7 +107,7 @@ fn run(command: &str, folder: &Path) -> Output {
 /// A folder that holds what a fresh clone holds of demonstration files.
 fn clone_of_demonstrations() -> Folder {
     let folder = Folder::new();
-    for name in ["sounds", "examples/benches"] {
+    for name in ["sounds", "examples/benches", "examples/teaching"] {
         let from = Path::new(env!("CARGO_MANIFEST_DIR")).join(name);
         std::fs::create_dir_all(folder.path(name)).expect("a folder");
         for entry in std::fs::read_dir(from).expect("demonstration files") {
