@@ -70,7 +70,7 @@ fn run_bench(bench_name: &str, arguments: &RenderArguments) -> Result<Exit, Fail
     }
     #[cfg(feature = "sound-card")]
     if let Some(samples) = aloud {
-        super::play::play(samples, arguments.sample_rate)
+        super::play::play(samples, truth.settings.sample_rate_hz)
             .map_err(|error| Failure::Told(Exit::File, error.to_string()))?;
     }
     Ok(Exit::Done)
