@@ -30,7 +30,9 @@ const CLEAR_ANYWAY: f64 = 15.0;
 const CROWDED_HZ: f64 = 500.0;
 const CROWDED_CORE: f64 = 0.5;
 /// Crowded clicks without jitter hardly move the line's surroundings: they must be alike, clear and most in the core instead.
-const CROWDED_CLICKS: (f64, f64, f64, f64) = (0.9, 1.8, 0.7, 1.0e-3);
+const CROWDED_CLICKS: (f64, f64, f64, f64) = (0.9, 1.8, 0.65, 1.05e-3);
+/// Clicks that are alike and clear may be a little wider at any rate: alike, clear, core, width (s).
+const WIDER: (f64, f64, f64, f64) = (0.9, 2.5, 0.78, 0.8e-3);
 /// Clicks in noise: alike from here on if they are this narrow (s), this much in the core and this clear.
 const NOISY: (f64, f64, f64, f64) = (0.55, 0.45e-3, 0.85, 3.0);
 /// Rate from which the line alone decides, Hz.
@@ -200,7 +202,8 @@ impl Heard {
         let alike = c.alike >= ALIKE
             || noisy
             || (c.alike >= BARELY_ALIKE.0 && each >= BARELY_ALIKE.1 && c.core >= BARELY_ALIKE.2);
-        let short = c.width_s <= WIDTH_S && c.core >= CORE;
+        let wider = c.alike >= WIDER.0 && c.clear >= WIDER.1 && c.core >= WIDER.2 && c.width_s <= WIDER.3;
+        let short = (c.width_s <= WIDTH_S && c.core >= CORE) || wider;
         let clean = c.alike >= CROWDED_CLICKS.0
             && c.clear >= CROWDED_CLICKS.1
             && c.core >= CROWDED_CLICKS.2
