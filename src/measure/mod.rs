@@ -7,6 +7,8 @@ mod accumulate;
 mod acquire;
 mod hypothesis;
 mod irregular;
+mod multiples;
+mod overlap;
 mod refine;
 mod times;
 mod train;

@@ -1,6 +1,7 @@
 //! The second pass: the shape from the clicks on the rhythm, the noise from what is left, and the rhythm fitted again.
 
 use super::hypothesis::{APART_S, DENSITY, Hypothesis};
+use super::trains;
 use super::window::{FIND_HIGH_PASS_HZ, Window};
 use crate::clicks::candidates;
 use crate::clicks::filter::Kernel;
@@ -8,7 +9,7 @@ use crate::clicks::shape::{Shape, leading_vectors, median_shape, pieces};
 use crate::clicks::snippet::{dot, normalise};
 use crate::clicks::spectrum::Spectrum;
 use crate::rhythm::fit::Start;
-use crate::rhythm::search::fit_whole;
+use crate::rhythm::search::fit_among;
 
 /// Half width of the second shape, s and periods.
 const HALF_S: f64 = 1.2e-3;
@@ -27,8 +28,9 @@ pub struct Finder {
     pub whitened: Vec<f32>,
 }
 
-/// Refines a hypothesis in place, twice, starting from the whitening of floor `floor`.
-pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis) -> Finder {
+/// Refines a hypothesis in place, twice, starting from the whitening of floor `floor`. Clicks at the times `foreign_s` (sorted)
+/// belong to other trains and are left to them.
+pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis, foreign_s: &[f64]) -> Finder {
     let first = window.spectrum.whitening(FIND_HIGH_PASS_HZ, floor);
     let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
     let shape = learn(whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
@@ -38,7 +40,7 @@ pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis)
     let kernel = window.kernel(|f| first(f) * second(f));
     let finder = Finder { whitened: window.through(&kernel), kernel };
     for _ in 0..2 {
-        if !again(window, &finder.whitened, h) {
+        if !again(window, &finder.whitened, h, foreign_s) {
             break;
         }
     }
@@ -46,14 +48,15 @@ pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis)
 }
 
 /// One round: shape, candidates and fit; false if the fit lost half of its clicks (the hypothesis then stays as it was).
-fn again(window: &Window, whitened: &[f32], h: &mut Hypothesis) -> bool {
+fn again(window: &Window, whitened: &[f32], h: &mut Hypothesis, foreign_s: &[f64]) -> bool {
     let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
     let shape = learn(whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
     let mut output = Vec::new();
     candidates::matched_output(window.bank, whitened, &shape, &mut output);
     let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
     let start = Start::again(&h.fit);
-    match fit_whole(&found, window.duration_s(), start, DENSITY) {
+    let free = trains::free_of(&found, foreign_s);
+    match fit_among(&found, &free, window.duration_s(), start, DENSITY) {
         Some(fit) if 2 * fit.chain.index.len() >= h.fit.chain.index.len() => {
             h.fit = fit;
             h.candidates = found;

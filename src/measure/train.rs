@@ -1,10 +1,11 @@
 //! A train of one window: click times with firing numbers, in stretches.
 
 use super::hypothesis::Hypothesis;
+use super::trains;
 use crate::estimate::Estimate;
 use crate::firing::{Event, EventKind};
 use crate::rhythm::OtherTrain;
-use crate::rhythm::fit::median;
+use crate::rhythm::fit::{Fit, median};
 use std::ops::Range;
 
 /// A drop-out of more periods than this ends a stretch; a shorter one counts as missed clicks.
@@ -59,11 +60,19 @@ pub fn number(time_s: &[f64], steps: &[usize], period_s: f64) -> (Vec<i64>, Vec<
 }
 
 impl Train {
-    /// The train of separate clicks of a hypothesis.
+    /// The train of separate clicks of a hypothesis, with the trains heard beside it.
     #[must_use]
-    pub fn of_clicks(h: &Hypothesis, time_s: Vec<f64>, noise_s: f64, x: &[f32], rate_hz: f64) -> Self {
+    pub fn of_clicks(
+        h: &Hypothesis,
+        others: &[Fit],
+        time_s: Vec<f64>,
+        noise_s: f64,
+        x: &[f32],
+        rate_hz: f64,
+    ) -> Self {
         let (number, stretches) = number(&time_s, &h.fit.chain.steps, h.fit.period_s);
-        let extra = extras(h).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();
+        let foreign_s = trains::times_of(&h.candidates, others);
+        let extra = extras(h, &foreign_s).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();
         Self {
             size: time_s.iter().map(|t| size_at(x, t * rate_hz, rate_hz)).collect(),
             time_s,
@@ -73,7 +82,7 @@ impl Train {
             noise_s: Some(noise_s),
             phase_jitter_s: None,
             period_s: h.fit.period_s,
-            others: Vec::new(),
+            others: trains::figures_of(h, others),
         }
     }
 
@@ -136,11 +145,12 @@ impl Train {
 /// Clicks nearer than this to one on the rhythm are its ringing, s.
 const RING_S: f64 = 0.45e-3;
 
-/// Candidates off the rhythm that are as strong as firings: above the mark that nine in ten firings exceed.
-fn extras(h: &Hypothesis) -> Vec<f64> {
+/// Candidates off the rhythm that are as strong as firings: above the mark that nine in ten firings exceed. Those at the times
+/// `foreign_s` are another train's.
+fn extras(h: &Hypothesis, foreign_s: &[f64]) -> Vec<f64> {
     let c = &h.candidates;
     let chain = &h.fit.chain.index;
-    let mut marks: Vec<f64> = chain.iter().map(|&i| c.mark[i]).collect();
+    let mut marks = h.fit.marks_on(c);
     let middle = median(&marks);
     let rank = marks.len() / 10;
     let tenth = *marks.select_nth_unstable_by(rank, f64::total_cmp).1;
@@ -149,7 +159,7 @@ fn extras(h: &Hypothesis) -> Vec<f64> {
     let ring_s = RING_S.min(0.35 * h.fit.period_s);
     let mut found = Vec::new();
     let mut next = 0;
-    for i in 0..c.len() {
+    for i in trains::free_of(c, foreign_s) {
         while next < chain.len() && c.time_s[chain[next]] < c.time_s[i] - ring_s {
             next += 1;
         }

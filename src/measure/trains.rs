@@ -13,6 +13,10 @@ const MOST: usize = 2;
 /// Candidates within this of a click on the rhythm belong to it, s and periods.
 const OWN_S: f64 = 0.5e-3;
 const OWN_PERIODS: f64 = 0.2;
+/// Candidates within this of another train's click are that click, s.
+const SAME_S: f64 = 0.15e-3;
+/// Natural log of the ratio from which clicks count as larger.
+const LARGER: f64 = 0.05;
 /// Fewest candidates left over that stand out of the noise (natural log of sigmas) for a search to be worth its time.
 const FEWEST: usize = 12;
 const STANDS_OUT: f64 = 1.6;
@@ -32,8 +36,7 @@ pub fn beside(h: &Hypothesis, duration_s: f64) -> Vec<Fit> {
     claim(&mut taken, &h.candidates, &h.fit);
     let mut found = Vec::new();
     while found.len() < MOST {
-        let rest: Vec<usize> = (0..taken.len()).filter(|&i| !taken[i]).collect();
-        let Some(fit) = best_of(&h.candidates, &rest, duration_s, median_mark(&h.candidates, &h.fit)) else { break };
+        let Some(fit) = best_of(&h.candidates, &left_over(&taken), duration_s, median_mark(&h.candidates, &h.fit)) else { break };
         claim(&mut taken, &h.candidates, &fit);
         found.push(fit);
     }
@@ -48,12 +51,69 @@ fn best_of(c: &Candidates, rest: &[usize], duration_s: f64, typical: f64) -> Opt
     }
     let best =
         search::rhythms(&part, duration_s, false).into_iter().max_by(|a, b| a.evidence.total_cmp(&b.evidence))?;
-    let mut fit = search::fit_whole(&part, duration_s, Start::again(&best), DENSITY)?;
+    let fit = search::fit_among(c, rest, duration_s, Start::again(&best), DENSITY)?;
     let n = fit.chain.index.len() as f64;
     let sound =
         fit.evidence > EVIDENCE && fit.evidence > EVIDENCE_PER_FIRING * n && fit.cover > COVER && fit.jitter < LOOSEST;
-    fit.chain.index.iter_mut().for_each(|i| *i = rest[*i]);
     (sound && median_mark(c, &fit) > threshold).then_some(fit)
+}
+
+fn left_over(taken: &[bool]) -> Vec<usize> {
+    (0..taken.len()).filter(|&i| !taken[i]).collect()
+}
+
+/// Follows a train and those beside it through candidates found in another stretch: the train among what is larger than the
+/// others' clicks, the others among what is left, then the train again among what the others leave.
+#[must_use]
+pub fn follow(c: &Candidates, duration_s: f64, lead: &Fit, others: &[Fit]) -> Option<(Fit, Vec<Fit>)> {
+    let between = others.iter().map(|o| o.marks.on.0).fold(f64::NEG_INFINITY, f64::max);
+    let threshold = if lead.marks.on.0 - between > LARGER { 0.5 * (lead.marks.on.0 + between) } else { f64::MIN };
+    let large: Vec<usize> = (0..c.len()).filter(|&i| c.mark[i] > threshold).collect();
+    let first = search::fit_among(c, &large, duration_s, Start::again(lead), DENSITY)?;
+    if others.is_empty() {
+        return Some((first, Vec::new()));
+    }
+    let mut taken = vec![false; c.len()];
+    claim(&mut taken, c, &first);
+    let mut followed = Vec::new();
+    for other in others {
+        if let Some(fit) = search::fit_among(c, &left_over(&taken), duration_s, Start::again(other), DENSITY) {
+            claim(&mut taken, c, &fit);
+            followed.push(fit);
+        }
+    }
+    let free = free_of(c, &times_of(c, &followed));
+    let fit = search::fit_among(c, &free, duration_s, Start::again(&first), DENSITY)?;
+    Some((fit, followed))
+}
+
+/// Times of the clicks of some trains, s, sorted.
+#[must_use]
+pub fn times_of(c: &Candidates, fits: &[Fit]) -> Vec<f64> {
+    let mut all: Vec<f64> = fits.iter().flat_map(|f| f.times_s(c)).collect();
+    all.sort_by(f64::total_cmp);
+    all
+}
+
+/// The candidates that are not at one of the times `foreign_s` (sorted).
+#[must_use]
+pub fn free_of(c: &Candidates, foreign_s: &[f64]) -> Vec<usize> {
+    let is_foreign = |t: f64| {
+        let k = foreign_s.partition_point(|&f| f < t - SAME_S);
+        foreign_s.get(k).is_some_and(|&f| f <= t + SAME_S)
+    };
+    (0..c.len()).filter(|&i| !is_foreign(c.time_s[i])).collect()
+}
+
+/// Which of the other trains has clearly larger clicks than the hypothesis, if any.
+#[must_use]
+pub fn largest(h: &Hypothesis, others: &[Fit]) -> Option<usize> {
+    let own = median_mark(&h.candidates, &h.fit) + LARGER;
+    (0..others.len())
+        .map(|i| (i, median_mark(&h.candidates, &others[i])))
+        .filter(|(_, m)| *m > own)
+        .max_by(|a, b| a.1.total_cmp(&b.1))
+        .map(|(i, _)| i)
 }
 
 fn claim(taken: &mut [bool], c: &Candidates, fit: &Fit) {
@@ -69,13 +129,19 @@ fn claim(taken: &mut [bool], c: &Candidates, fit: &Fit) {
 /// Median mark of a train.
 #[must_use]
 pub fn median_mark(c: &Candidates, fit: &Fit) -> f64 {
-    median(&fit.chain.index.iter().map(|&i| c.mark[i]).collect::<Vec<_>>())
+    median(&fit.marks_on(c))
+}
+
+/// The figures of the trains beside a hypothesis.
+#[must_use]
+pub fn figures_of(h: &Hypothesis, others: &[Fit]) -> Vec<OtherTrain> {
+    let mark = median_mark(&h.candidates, &h.fit);
+    others.iter().filter_map(|f| figures(&h.candidates, f, mark)).collect()
 }
 
 /// The figures of a weaker train; `mark` is the median mark of the measured one.
-#[must_use]
-pub fn figures(c: &Candidates, fit: &Fit, mark: f64) -> Option<OtherTrain> {
-    let time_s: Vec<f64> = fit.chain.index.iter().map(|&i| c.time_s[i]).collect();
+fn figures(c: &Candidates, fit: &Fit, mark: f64) -> Option<OtherTrain> {
+    let time_s = fit.times_s(c);
     let (number, stretches) = super::train::number(&time_s, &fit.chain.steps, fit.period_s);
     let (mut steps, mut span) = (0.0, 0.0);
     for r in stretches.iter().filter(|r| r.len() > 1) {

@@ -36,6 +36,18 @@ const SOLID: (f64, f64, f64) = (25.0, 2.0, 0.08);
 const COVER: f64 = 0.4;
 
 impl Fit {
+    /// Times of the candidates on the rhythm, s.
+    #[must_use]
+    pub fn times_s(&self, c: &Candidates) -> Vec<f64> {
+        self.chain.index.iter().map(|&i| c.time_s[i]).collect()
+    }
+
+    /// Marks of the candidates on the rhythm.
+    #[must_use]
+    pub fn marks_on(&self, c: &Candidates) -> Vec<f64> {
+        self.chain.index.iter().map(|&i| c.mark[i]).collect()
+    }
+
     /// True if the train fills the time, or fires in long stretches of strong evidence with silence between.
     #[must_use]
     pub fn fills_its_time(&self) -> bool {

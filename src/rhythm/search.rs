@@ -35,6 +35,16 @@ pub fn fit_whole(c: &Candidates, duration_s: f64, start: Start, density: f64) ->
     Some(found)
 }
 
+/// The same among the candidates `among` alone; the chain refers to the whole list.
+pub fn fit_among(c: &Candidates, among: &[usize], duration_s: f64, start: Start, density: f64) -> Option<Fit> {
+    if among.len() == c.len() {
+        return fit_whole(c, duration_s, start, density);
+    }
+    let mut found = fit_whole(&c.pick(among), duration_s, start, density)?;
+    found.chain.index.iter_mut().for_each(|i| *i = among[*i]);
+    Some(found)
+}
+
 /// Fits the promising periods of one list of candidates, each on a stretch that holds enough firings; the evidence is
 /// brought to the whole duration. In no order; the chains are those of the stretches.
 #[must_use]

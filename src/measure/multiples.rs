@@ -1,0 +1,76 @@
+//! Whether a fitted period is half or twice the gap's own, seen from the clicks.
+//!
+//! Evidence alone can prefer twice the period where periods alternate (a long one follows a short one, as under supply ripple
+//! near half the rate): every second click is then steadier than every click. The clicks between are as large and come once
+//! a period: they are firings too.
+
+use super::hypothesis::{DENSITY, Hypothesis};
+use crate::rhythm::fit::{FirstGains, Fit, Start, median};
+use crate::rhythm::search;
+
+/// A click between counts as one of the train if it reaches the median mark less this.
+const AS_LARGE: f64 = 0.3;
+/// Medians of the two sets of marks differ by less than this.
+const ALIKE: f64 = 0.12;
+/// Where between two clicks it lies, as a share of the step.
+const BETWEEN: (f64, f64) = (0.25, 0.75);
+/// Share of single steps with just one such click.
+const MOST: f64 = 0.85;
+/// Fewest single steps for a judgement.
+const FEWEST: usize = 12;
+/// Share of missed clicks from which a multiple of the period is tried.
+const MISSES: f64 = 0.25;
+
+/// Settles whether the period is to be halved or multiplied, in place. The error is the reason to refuse.
+pub fn settle(h: &mut Hypothesis, duration_s: f64, explanation: &mut Vec<String>) -> Result<(), &'static str> {
+    if let Some(start) = halved(h) {
+        explanation.push(format!("equal clicks lie between: half of {:.4} ms", 1e3 * h.fit.period_s));
+        let half = search::fit_whole(&h.candidates, duration_s, start, DENSITY)
+            .filter(|f| 10 * f.chain.index.len() > 17 * h.fit.chain.index.len())
+            .ok_or("equal clicks lie between those on the rhythm, and no rhythm holds them")?;
+        h.fit = Fit { evidence: h.fit.evidence.max(half.evidence), ..half };
+    }
+    if h.fit.missed > MISSES {
+        for times in [2.0, 3.0] {
+            let start = Start { period_s: times * h.fit.period_s, ..Start::again(&h.fit) };
+            if let Some(fit) = search::fit_whole(&h.candidates, duration_s, start, DENSITY)
+                && fit.evidence > h.fit.evidence
+                && fit.missed < MISSES
+            {
+                explanation.push(format!("most steps span {times:.0} periods: {:.4} ms", 1e3 * fit.period_s));
+                h.fit = fit;
+                return Ok(());
+            }
+        }
+    }
+    Ok(())
+}
+
+/// Where a fit of half the period starts, if one click as large as the train's lies between most of its clicks.
+fn halved(h: &Hypothesis) -> Option<Start> {
+    let (c, chain) = (&h.candidates, &h.fit.chain);
+    let own = median(&h.fit.marks_on(c));
+    let (mut singles, mut marks, mut places) = (0usize, Vec::new(), Vec::new());
+    for (pair, _) in chain.index.windows(2).zip(&chain.steps[1..]).filter(|(_, k)| **k == 1) {
+        singles += 1;
+        let (from, to) = (c.time_s[pair[0]], c.time_s[pair[1]]);
+        let place = |i: usize| (c.time_s[i] - from) / (to - from);
+        let mut between = (pair[0] + 1..pair[1])
+            .filter(|&i| c.mark[i] > own - AS_LARGE && (BETWEEN.0..BETWEEN.1).contains(&place(i)));
+        if let (Some(i), None) = (between.next(), between.next()) {
+            marks.push(c.mark[i]);
+            places.push(place(i));
+        }
+    }
+    if singles < FEWEST || (marks.len() as f64) < MOST * singles as f64 || (median(&marks) - own).abs() > ALIKE {
+        return None;
+    }
+    let off_middle = places.iter().map(|p| (2.0 * p - 1.0).powi(2)).sum::<f64>() / places.len() as f64;
+    Some(Start {
+        period_s: 0.5 * h.fit.period_s,
+        jitter: (h.fit.jitter + off_middle.sqrt()).min(0.3),
+        follow: 0.05,
+        gains: FirstGains::Known(h.fit.marks),
+        rounds: 4,
+    })
+}
