@@ -22,10 +22,12 @@ const FLOORS: [f64; 2] = [2e-3, 0.1];
 const SILENCE: f32 = 1e-4;
 /// Shortest window worth a look, s.
 const SHORTEST_S: f64 = 0.5;
-/// Length of the part that is learnt from, s, and the firings and cover that it must hold to be enough.
+/// Length of the part that is learnt from, s, and the firings and cover that it must hold to be enough; with many firings it
+/// may be silent between.
 const LEARN_S: f64 = 4.0;
 const LEARN_FIRINGS: usize = 40;
 const LEARN_COVER: f64 = 0.8;
+const MANY_FIRINGS: usize = 150;
 /// Rounds of sorting trains by the size of their clicks.
 const ROUNDS: usize = 3;
 
@@ -78,7 +80,9 @@ struct Model {
 
 impl Model {
     fn is_enough(&self) -> bool {
-        self.hypothesis.fit.chain.index.len() >= LEARN_FIRINGS && self.hypothesis.fit.cover > LEARN_COVER
+        let fit = &self.hypothesis.fit;
+        let firings = fit.chain.index.len();
+        (firings >= LEARN_FIRINGS && fit.cover > LEARN_COVER) || (firings >= MANY_FIRINGS && fit.fills_its_time())
     }
 
     /// The train of the window that was learnt from itself.

@@ -163,7 +163,8 @@ fn local_maxima(grid: &[(f64, f64)], fast: bool) -> Vec<f64> {
 fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
     let mut found: Vec<(f64, f64)> = (0..LOOSE_COUNT)
         .map(|k| LOOSE_FIRST_S * LOOSE_RATIO.powi(k as i32))
-        .take_while(|t| *t <= duration_s / 10.0)
+        .chain(period_of_the_clear(c, duration_s))
+        .filter(|t| *t <= duration_s / 10.0)
         .filter_map(|period_s| {
             let start = Start { period_s, jitter: 0.3, follow: 0.0, gains: FirstGains::Steep, rounds: 3 };
             let fitted = fit_stretch(c, duration_s, start, 6.0)?;
@@ -176,4 +177,15 @@ fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
         .into_iter()
         .map(|(_, period_s)| Start { period_s, jitter: 0.3, follow: 0.0, gains: FirstGains::Steep, rounds: 6 })
         .collect()
+}
+
+/// The mean spacing of the candidates above the widest gap in the sorted marks: where clicks stand clear of noise these are the
+/// clicks, however loose their rhythm.
+fn period_of_the_clear(c: &Candidates, duration_s: f64) -> Option<f64> {
+    let mut marks = c.mark.clone();
+    marks.sort_by(|a, b| b.total_cmp(a));
+    let most = ((duration_s / LOOSE_FIRST_S) as usize).min(marks.len() * 9 / 10);
+    let width = |rank: usize| marks[rank * 19 / 20] - marks[(rank * 21 / 20).min(marks.len() - 1)];
+    let rank = (20..most).max_by(|&a, &b| width(a).total_cmp(&width(b)))?;
+    Some(duration_s / rank as f64)
 }

@@ -31,6 +31,9 @@ const CROWDED_HZ: f64 = 500.0;
 const CROWDED_CORE: f64 = 0.5;
 /// Crowded clicks without jitter hardly move the line's surroundings: they must be alike, clear and most in the core instead.
 const CROWDED_CLICKS: (f64, f64, f64, f64) = (0.9, 1.8, 0.65, 1.05e-3);
+/// So must clicks be whose line is so coherent that its wander (drift of the rate) need not be looked at: alike, share of time on
+/// the line, coherence.
+const COHERENT: (f64, f64, f64) = (0.9, 0.8, 0.5);
 /// Clicks that are alike and clear may be a little wider at any rate: alike, clear, core, width (s).
 const WIDER: (f64, f64, f64, f64) = (0.9, 2.5, 0.78, 0.8e-3);
 /// Clicks in noise: alike from here on if they are this narrow (s), this much in the core and this clear.
@@ -208,7 +211,10 @@ impl Heard {
             && c.clear >= CROWDED_CLICKS.1
             && c.core >= CROWDED_CLICKS.2
             && c.width_s <= CROWDED_CLICKS.3;
-        let crowded = self.rate_hz > CROWDED_HZ && (clean || (c.core >= CROWDED_CORE && self.line_holds()));
+        let coherent = c.alike >= COHERENT.0
+            && self.line.is_some_and(|l| l.stable >= COHERENT.1 && l.coherence >= COHERENT.2);
+        let crowded =
+            self.rate_hz > CROWDED_HZ && (clean || coherent || (c.core >= CROWDED_CORE && self.line_holds()));
         let on_mains = [50.0, 60.0].iter().any(|unit| {
             let multiple = (self.rate_hz / unit).round();
             multiple >= 1.0 && (self.rate_hz / (unit * multiple) - 1.0).abs() < ON_MAINS
@@ -222,7 +228,10 @@ impl Heard {
             Some("what repeats is longer than a click")
         } else if buzz {
             Some("what is heard keeps step with the mains and does not stand out like clicks: hum or buzz")
-        } else if c.clear < UNCLEAR && self.rate_hz < CROWDED_HZ && (self.tones.six > MANY_TONES || self.line_wanders())
+        } else if c.clear < UNCLEAR
+            && self.rate_hz < CROWDED_HZ
+            && !coherent
+            && (self.tones.six > MANY_TONES || self.line_wanders())
         {
             Some("what repeats hardly stands out of tones or a voice")
         } else if self.tones.six > SIX_LINES && c.clear < CLEAR_OF_TONES && !crowded {

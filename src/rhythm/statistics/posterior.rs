@@ -10,9 +10,12 @@ use super::whiten::Block;
 use crate::estimate::{COVERAGE_95, Estimate};
 
 /// Memories on the grid.
-const MEMORY: [f64; 13] = [-0.2, 0.0, 0.15, 0.3, 0.4, 0.5, 0.6, 0.7, 0.78, 0.85, 0.9, 0.94, 0.97];
+const MEMORY: [f64; 15] = [-0.6, -0.4, -0.2, 0.0, 0.15, 0.3, 0.4, 0.5, 0.6, 0.7, 0.78, 0.85, 0.9, 0.94, 0.97];
 /// Index of no memory.
-const NONE: usize = 1;
+const NONE: usize = 3;
+/// Weight of negative memory in the prior, against positive: a gap that alternates is rare, and negative memory is what timing
+/// noise looks like where its prediction is too low.
+const NEGATIVE: f64 = 0.15;
 /// Shares on the grid: logit from −8 to 8.
 const SHARES: usize = 41;
 const LOGIT_MOST: f64 = 8.0;
@@ -213,13 +216,13 @@ impl PosteriorGrid {
     }
 }
 
-/// Half at no memory, the rest spread evenly over the range.
+/// Half at no memory, the rest spread evenly over the positive range and thinly over the negative one.
 fn memory_prior() -> [f64; MEMORY.len()] {
     let mut width = [0.0; MEMORY.len()];
     for (i, w) in width.iter_mut().enumerate() {
         let left = MEMORY[i.saturating_sub(1)];
         let right = MEMORY[(i + 1).min(MEMORY.len() - 1)];
-        *w = right - left;
+        *w = (right - left) * if MEMORY[i] < 0.0 { NEGATIVE } else { 1.0 };
     }
     let total: f64 = width.iter().sum();
     width.iter_mut().for_each(|w| *w *= 0.5 / total);
