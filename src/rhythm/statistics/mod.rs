@@ -5,6 +5,7 @@
 //! audio). A missed click is a step without an observation. m and b are taken out by restricted maximum likelihood.
 //! Raw differences of click times would read √(σ_T² + 2σ_e²) instead of σ_T (Wing and Kristofferson 1973, two-level timing).
 
+mod integral;
 pub mod posterior;
 pub mod robust;
 pub mod structure;

@@ -7,49 +7,39 @@
 //! memory under timing noise the maximum is lucky and its curvature says nothing.
 
 use super::whiten::Block;
-use crate::estimate::{COVERAGE_95, Estimate};
+use crate::estimate::Estimate;
 
-/// Memories on the grid.
-const MEMORY: [f64; 15] = [-0.6, -0.4, -0.2, 0.0, 0.15, 0.3, 0.4, 0.5, 0.6, 0.7, 0.78, 0.85, 0.9, 0.94, 0.97];
+/// Memories on the grid: artanh ρ from −0.6 in equal steps (ρ from −0.54 to 0.976).
+pub(super) const MEMORIES: usize = 15;
+pub(super) const MEMORY_STEP: f64 = 0.2;
 /// Index of no memory.
-const NONE: usize = 3;
-/// Weight of negative memory in the prior, against positive: a gap that alternates is rare, and negative memory is what timing
-/// noise looks like where its prediction is too low.
-const NEGATIVE: f64 = 0.15;
+pub(super) const NONE: usize = 3;
 /// Shares on the grid: logit from −8 to 8.
-const SHARES: usize = 41;
+pub(super) const SHARES: usize = 41;
 const LOGIT_MOST: f64 = 8.0;
 /// Clicks of a first block from which far-off cells are ruled out, step of the coarse look, and nats below the best.
 const SCREEN_FROM: usize = 300;
 const SCREEN_STEP: usize = 5;
 const SCREEN_OUT: f64 = 18.0;
-/// Finer shares between them for the integral.
-const FINE: usize = 8;
-/// Scales about the residual one, and their reach in standard deviations of ln s².
-const SCALES: usize = 41;
-const SCALE_REACH: f64 = 4.5;
 /// Least centre of the prior of the timing noise, in units of the least on the grid.
 const LEAST_NOISE_SHARE: f64 = 1.5;
-/// Log standard deviation of the prior of the timing noise below and above the prediction, which is rather too high.
-const NOISE_PRIOR_LN_SD: (f64, f64) = (0.7, 0.5);
-
 /// Sums over blocks on the grid of memory and share.
 #[derive(Debug, Clone)]
 pub struct PosteriorGrid {
-    freedom: f64,
+    pub(super) freedom: f64,
     blocks: usize,
-    cells: Vec<Cell>,
+    pub(super) cells: Vec<Cell>,
 }
 
 #[derive(Debug, Clone, Copy, Default)]
-struct Cell {
+pub(super) struct Cell {
     /// False if the first block ruled it out.
-    live: bool,
-    rest: f64,
-    ln_det: f64,
+    pub(super) live: bool,
+    pub(super) rest: f64,
+    pub(super) ln_det: f64,
     /// Of the last block: period and its variance at unit scale.
-    period_s: f64,
-    period_variance: f64,
+    pub(super) period_s: f64,
+    pub(super) period_variance: f64,
 }
 
 /// What the posterior says.
@@ -75,13 +65,19 @@ pub struct Posterior {
 
 impl Default for PosteriorGrid {
     fn default() -> Self {
-        Self { freedom: 0.0, blocks: 0, cells: vec![Cell { live: true, ..Cell::default() }; MEMORY.len() * SHARES] }
+        Self { freedom: 0.0, blocks: 0, cells: vec![Cell { live: true, ..Cell::default() }; MEMORIES * SHARES] }
     }
 }
 
-fn share(i: f64) -> f64 {
+/// Share at a place on the grid.
+pub(super) fn share(i: f64) -> f64 {
     let logit = -LOGIT_MOST + 2.0 * LOGIT_MOST * i / (SHARES - 1) as f64;
     1.0 / (1.0 + (-logit).exp())
+}
+
+/// Memory at a place on the grid.
+pub(super) fn memory(i: f64) -> f64 {
+    if i == NONE as f64 { 0.0 } else { (MEMORY_STEP * (i - NONE as f64)).tanh() }
 }
 
 impl PosteriorGrid {
@@ -94,13 +90,13 @@ impl PosteriorGrid {
         if self.blocks == 0 && time_s.len() >= SCREEN_FROM {
             self.screen(&block);
         }
-        for (r, &rho) in MEMORY.iter().enumerate() {
+        for r in 0..MEMORIES {
             for s in 0..SHARES {
                 let cell = &mut self.cells[r * SHARES + s];
                 if !cell.live {
                     continue;
                 }
-                let pass = block.pass(share(s as f64), rho);
+                let pass = block.pass(share(s as f64), memory(r as f64));
                 cell.rest += pass.rest;
                 cell.ln_det += pass.ln_det;
                 cell.period_s = pass.beta[0] / block.span;
@@ -118,14 +114,17 @@ impl PosteriorGrid {
             let pass = block.pass(share(s as f64), rho);
             -0.5 * (block.freedom() * pass.rest.ln() + pass.ln_det)
         };
-        let table: Vec<Vec<f64>> = MEMORY.iter().map(|&rho| coarse.iter().map(|&s| ln(rho, s)).collect()).collect();
+        let table: Vec<Vec<f64>> =
+            (0..MEMORIES).map(|r| coarse.iter().map(|&s| ln(memory(r as f64), s)).collect()).collect();
         let top = table.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max);
-        for (r, row) in table.iter().enumerate() {
+        for r in 0..MEMORIES {
             for s in 0..SHARES {
                 let (left, right) = (s / SCREEN_STEP, s.div_ceil(SCREEN_STEP));
-                // One coarse cell more on each side: the interpolation of the fine grid reaches there.
-                let near = &row[left.saturating_sub(1)..(right + 2).min(row.len())];
-                self.cells[r * SHARES + s].live = near.iter().any(|v| *v > top - SCREEN_OUT);
+                // One coarse cell more on each side, and two memories: the interpolation of the fine grid reaches there.
+                let shares = left.saturating_sub(1)..(right + 2).min(coarse.len());
+                let rows = &table[r.saturating_sub(2)..(r + 3).min(MEMORIES)];
+                self.cells[r * SHARES + s].live =
+                    rows.iter().any(|row| row[shares.clone()].iter().any(|v| *v > top - SCREEN_OUT));
             }
         }
     }
@@ -148,141 +147,6 @@ impl PosteriorGrid {
         let least = LEAST_NOISE_SHARE * (smallest / self.freedom * share(0.0)).sqrt();
         let weighted = self.weigh(noise_s.map(|n| n.max(least)));
         Some(weighted.summary(self.freedom, excess))
-    }
-
-    fn weigh(&self, noise_s: Option<f64>) -> Weighted {
-        let prior = memory_prior();
-        let mut all = Vec::with_capacity(MEMORY.len() * SHARES * FINE * SCALES);
-        let reach = SCALE_REACH * (2.0 / self.freedom).sqrt();
-        let mut top = f64::NEG_INFINITY;
-        for (r, &rho) in MEMORY.iter().enumerate() {
-            for f in 0..=(SHARES - 1) * FINE {
-                let place = f as f64 / FINE as f64;
-                let Some(cell) = self.between(r, place) else { continue };
-                let u = share(place);
-                let ln_share = prior[r].ln() + 0.5 * (u * (1.0 - u)).ln();
-                for k in 0..SCALES {
-                    let scale = cell.rest / self.freedom * (reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0)).exp();
-                    let mut ln = -0.5 * (self.freedom * scale.ln() + cell.rest / scale + cell.ln_det) + ln_share;
-                    if let Some(noise) = noise_s {
-                        let off = 0.5 * (scale * u).ln() - noise.ln();
-                        let z = off / if off < 0.0 { NOISE_PRIOR_LN_SD.0 } else { NOISE_PRIOR_LN_SD.1 };
-                        ln -= 0.5 * z * z;
-                    }
-                    top = top.max(ln);
-                    all.push(Point {
-                        ln,
-                        scale,
-                        u,
-                        rho,
-                        period_s: cell.period_s,
-                        period_variance: cell.period_variance,
-                    });
-                }
-            }
-        }
-        // Points that weigh nothing are dropped: the sorts that follow are short.
-        all.retain(|p| p.ln > top - 20.0);
-        all.iter_mut().for_each(|p| p.ln = (p.ln - top).exp());
-        let total: f64 = all.iter().map(|p| p.ln).sum();
-        all.iter_mut().for_each(|p| p.ln /= total);
-        Weighted { points: all }
-    }
-
-    /// Cubic interpolation of ln S and L between shares; none where a cell was ruled out.
-    fn between(&self, r: usize, place: f64) -> Option<Cell> {
-        let row = &self.cells[r * SHARES..(r + 1) * SHARES];
-        let i = (place as usize).min(SHARES - 2);
-        let a = place - i as f64;
-        let needed = &row[i.saturating_sub(1)..(i + 3).min(SHARES)];
-        if needed.iter().any(|c| !c.live) {
-            return None;
-        }
-        if a == 0.0 {
-            return Some(row[i]);
-        }
-        let at = |d: isize| &row[(i as isize + d).clamp(0, SHARES as isize - 1) as usize];
-        let cubic = |f: &dyn Fn(&Cell) -> f64| {
-            let (y0, y1, y2, y3) = (f(at(-1)), f(at(0)), f(at(1)), f(at(2)));
-            y1 + 0.5 * a * (y2 - y0 + a * (2.0 * y0 - 5.0 * y1 + 4.0 * y2 - y3 + a * (3.0 * (y1 - y2) + y3 - y0)))
-        };
-        Some(Cell {
-            live: true,
-            rest: cubic(&|c| c.rest.ln()).exp(),
-            ln_det: cubic(&|c| c.ln_det),
-            period_s: cubic(&|c| c.period_s),
-            period_variance: cubic(&|c| c.period_variance.ln()).exp(),
-        })
-    }
-}
-
-/// Half at no memory, the rest spread evenly over the positive range and thinly over the negative one.
-fn memory_prior() -> [f64; MEMORY.len()] {
-    let mut width = [0.0; MEMORY.len()];
-    for (i, w) in width.iter_mut().enumerate() {
-        let left = MEMORY[i.saturating_sub(1)];
-        let right = MEMORY[(i + 1).min(MEMORY.len() - 1)];
-        *w = (right - left) * if MEMORY[i] < 0.0 { NEGATIVE } else { 1.0 };
-    }
-    let total: f64 = width.iter().sum();
-    width.iter_mut().for_each(|w| *w *= 0.5 / total);
-    width[NONE] += 0.5;
-    width
-}
-
-struct Point {
-    /// Log weight, then weight.
-    ln: f64,
-    scale: f64,
-    u: f64,
-    rho: f64,
-    period_s: f64,
-    period_variance: f64,
-}
-
-struct Weighted {
-    points: Vec<Point>,
-}
-
-impl Weighted {
-    fn mean(&self, f: impl Fn(&Point) -> f64) -> f64 {
-        self.points.iter().map(|p| p.ln * f(p)).sum()
-    }
-
-    /// Median and central 95 % of a positive quantity; the standard uncertainty is a quarter of the interval on its log scale.
-    fn quantiles(&self, f: impl Fn(&Point) -> f64, widen: f64) -> Estimate {
-        let mut pairs: Vec<(f64, f64)> = self.points.iter().map(|p| (f(p), p.ln)).collect();
-        pairs.sort_by(|a, b| a.0.total_cmp(&b.0));
-        let at = |q: f64| {
-            let mut sum = 0.0;
-            for &(x, w) in &pairs {
-                if sum + w >= q {
-                    return x;
-                }
-                sum += w;
-            }
-            pairs[pairs.len() - 1].0
-        };
-        let value = at(0.5).max(1e-15);
-        let low = value * (at(0.025).max(1e-15) / value).powf(widen);
-        let high = value * (at(0.975).max(1e-15) / value).powf(widen);
-        Estimate { value, u: (high - low) / (2.0 * COVERAGE_95), low, high }
-    }
-
-    fn summary(&self, freedom: f64, excess: f64) -> Posterior {
-        let widen = (1.0 + 0.5 * excess.max(0.0)).sqrt();
-        let period = self.mean(|p| p.period_s);
-        let variance = self.mean(|p| p.scale * p.period_variance + (p.period_s - period).powi(2));
-        Posterior {
-            jitter_s: self.quantiles(|p| (p.scale * (1.0 - p.u)).sqrt(), widen),
-            timing_noise_s: self.quantiles(|p| (p.scale * p.u).sqrt(), 1.0),
-            cycle_jitter_s: self.quantiles(|p| (2.0 * (1.0 - p.rho) * p.scale * (1.0 - p.u)).sqrt(), widen),
-            memory: self.mean(|p| p.rho),
-            memory_probability: self.mean(|p| if p.rho == 0.0 { 0.0 } else { 1.0 }),
-            period_s: (period, variance.sqrt()),
-            long_run_variance_s2: self.mean(|p| p.scale * (1.0 - p.u) * (1.0 + p.rho) / (1.0 - p.rho)),
-            freedom,
-        }
     }
 }
 
@@ -335,6 +199,22 @@ mod tests {
         assert!(p.memory_probability > 0.99 && (0.7..0.9).contains(&p.memory), "{p:?}");
         // Long-run variance: σ²(1 + ρ)/(1 − ρ) = 9 σ².
         assert!((p.long_run_variance_s2 / 9e-4 - 1.0).abs() < 0.5, "{p:?}");
+    }
+
+    #[test]
+    fn the_interval_holds_the_jitter_under_memory() {
+        for rho in [0.5, 0.88] {
+            let mut inside = 0;
+            for seed in 0..40 {
+                let (t, n) = train(2500, 0.02, 0.001, rho, 100 + seed);
+                let mut grid = PosteriorGrid::default();
+                grid.add(&t, &n);
+                let p = grid.posterior(Some(0.001), 0.0).unwrap();
+                inside += usize::from((p.jitter_s.low..p.jitter_s.high).contains(&0.02));
+            }
+            // As above.
+            assert!(inside >= 34, "memory {rho}: {inside} of 40");
+        }
     }
 
     #[test]

@@ -4,11 +4,16 @@
 //! moving-average models under ripple would read the random jitter 40 % low.
 
 use crate::rhythm::fit::median;
+use std::f64::consts::{PI, TAU};
 
 /// Mains and rectified-mains frequencies tried, Hz.
 pub const LINES_HZ: [f64; 4] = [50.0, 60.0, 100.0, 120.0];
-/// A set of regressors is kept if it explains more than this many times the rest's variance per parameter.
+/// A set of regressors is kept if it explains more than this many times the rest's variance per parameter …
 const KEEP: f64 = 9.0;
+/// … and as many times what sines nearby explain, since periods with memory have more variance at low frequencies: half
+/// cycles over the stretch for the drift, and distances from a mains line in cycles over the stretch.
+const BESIDE_DRIFT: [f64; 6] = [5.0, 6.0, 7.0, 8.0, 9.0, 10.0];
+const BESIDE_LINE: [f64; 6] = [-9.0, -7.0, -5.0, 5.0, 7.0, 9.0];
 /// Fewest periods for which structure is looked for.
 const FEWEST: usize = 60;
 
@@ -62,7 +67,11 @@ fn add_drift(found: &mut Structure, rest: &[f64], middle: &[f64]) {
         x.iter().map(|x| 0.5 * (5.0 * x * x * x - 3.0 * x)).collect(),
         x.iter().map(|x| 0.125 * (35.0 * x.powi(4) - 30.0 * x * x + 3.0)).collect(),
     ];
-    if let Some(fit) = worth_keeping(&basis, rest, &found.deviation_s) {
+    let beside = || {
+        let half_cycles = |k: f64| vec![x.iter().map(|x| (0.5 * PI * k * (x + 1.0)).cos()).collect()];
+        BESIDE_DRIFT.iter().map(|&k| half_cycles(k)).collect()
+    };
+    if let Some(fit) = worth_keeping(&basis, rest, &found.deviation_s, beside) {
         found.drift_sd_s = sd(&fit);
         found.deviation_s.iter_mut().zip(fit).for_each(|(d, f)| *d += f);
     }
@@ -71,18 +80,11 @@ fn add_drift(found: &mut Structure, rest: &[f64], middle: &[f64]) {
 /// The mains line that explains most, with its second harmonic.
 fn add_mains(found: &mut Structure, rest: &[f64], middle: &[f64]) {
     let mut best: Option<(f64, Vec<f64>)> = None;
+    let span = middle[middle.len() - 1] - middle[0];
     for line_hz in LINES_HZ {
-        let basis: [Vec<f64>; 4] = std::array::from_fn(|c| {
-            let harmonic = (c / 2 + 1) as f64;
-            middle
-                .iter()
-                .map(|t| {
-                    let phase = std::f64::consts::TAU * line_hz * harmonic * t;
-                    if c % 2 == 0 { phase.cos() } else { phase.sin() }
-                })
-                .collect()
-        });
-        if let Some(fit) = worth_keeping(&basis, rest, &found.deviation_s)
+        let basis = with_harmonic(line_hz, middle);
+        let beside = || BESIDE_LINE.iter().map(|d| with_harmonic(line_hz + d / span, middle)).collect();
+        if let Some(fit) = worth_keeping(&basis, rest, &found.deviation_s, beside)
             && best.as_ref().is_none_or(|(_, b)| sd(&fit) > sd(b))
         {
             best = Some((line_hz, fit));
@@ -96,12 +98,31 @@ fn add_mains(found: &mut Structure, rest: &[f64], middle: &[f64]) {
     }
 }
 
-fn worth_keeping(basis: &[Vec<f64>], rest: &[f64], taken: &[f64]) -> Option<Vec<f64>> {
+/// Cosine and sine of a frequency and of its double at given times.
+fn with_harmonic(frequency_hz: f64, time_s: &[f64]) -> Vec<Vec<f64>> {
+    let at = |harmonic: f64, f: fn(f64) -> f64| time_s.iter().map(|t| f(TAU * frequency_hz * harmonic * t)).collect();
+    vec![at(1.0, f64::cos), at(1.0, f64::sin), at(2.0, f64::cos), at(2.0, f64::sin)]
+}
+
+/// Fitted values of a set of regressors, if they explain more than chance and than the sets beside it.
+fn worth_keeping(
+    basis: &[Vec<f64>],
+    rest: &[f64],
+    taken: &[f64],
+    beside: impl Fn() -> Vec<Vec<Vec<f64>>>,
+) -> Option<Vec<f64>> {
     let target: Vec<f64> = rest.iter().zip(taken).map(|(r, t)| r - t).collect();
     let fit = least_squares(basis, &target);
-    let explained: f64 = fit.iter().map(|f| f * f).sum();
+    let square = |x: &[f64]| x.iter().map(|f| f * f).sum::<f64>();
+    let explained = square(&fit) / basis.len() as f64;
     let left: f64 = target.iter().zip(&fit).map(|(t, f)| (t - f).powi(2)).sum();
-    (explained / basis.len() as f64 > KEEP * left / target.len() as f64).then_some(fit)
+    if explained <= KEEP * left / target.len() as f64 {
+        return None;
+    }
+    let unexplained: Vec<f64> = target.iter().zip(&fit).map(|(t, f)| t - f).collect();
+    let sets = beside();
+    let near = sets.iter().map(|b| square(&least_squares(b, &unexplained)) / b.len() as f64).sum::<f64>();
+    (explained > KEEP * near / sets.len() as f64).then_some(fit)
 }
 
 fn sd(x: &[f64]) -> f64 {
@@ -154,7 +175,7 @@ mod tests {
         for n in 0..800 {
             let t: f64 = time_s[n];
             let noise = 3e-5 * ((n * n) as f64 * 0.37).sin();
-            time_s.push(t + 0.0131 + 2e-4 * (std::f64::consts::TAU * 100.0 * t).sin() + noise);
+            time_s.push(t + 0.0131 + 2e-4 * (TAU * 100.0 * t).sin() + noise);
         }
         let number: Vec<i64> = (0..time_s.len() as i64).collect();
         let (line, sd, _) = find(&time_s, &number).mains.unwrap();

@@ -1,0 +1,224 @@
+//! The integral over the posterior's grid: finer cells between the nodes by interpolation, scales at each, and quantiles of what
+//! they weigh.
+
+use super::posterior::{Cell, MEMORIES, MEMORY_STEP, NONE, Posterior, PosteriorGrid, SHARES, memory, share};
+use crate::estimate::{COVERAGE_95, Estimate};
+
+/// Weight of negative memory in the prior, against positive: a gap that alternates is rare, and negative memory is what timing
+/// noise looks like where its prediction is too low.
+const NEGATIVE: f64 = 0.15;
+/// Finer memories and shares between them for the integral: as many as the posterior's width asks for, within these.
+const FINE: (usize, usize) = (8, 32);
+/// Nats below the best node within which the space between nodes is looked at, and below the best point within which points
+/// count.
+const NODE_REACH: f64 = 30.0;
+const POINT_REACH: f64 = 20.0;
+/// Scales about the residual one, and their reach in standard deviations of ln s².
+const SCALES: usize = 41;
+const SCALE_REACH: f64 = 4.5;
+/// Log standard deviation of the prior of the timing noise below and above the prediction, which is rather too high.
+const NOISE_PRIOR_LN_SD: (f64, f64) = (0.7, 0.5);
+
+impl PosteriorGrid {
+    /// Points of the posterior with their weights.
+    pub(super) fn weigh(&self, noise_s: Option<f64>) -> Weighted {
+        let mut cells = self.fine_cells();
+        for c in &mut cells {
+            c.ln += noise_s.map_or(0.0, |n| ln_noise_prior(0.5 * (c.cell.rest() / self.freedom * c.u).ln() - n.ln()));
+        }
+        let top = cells.iter().map(|c| c.ln).fold(f64::NEG_INFINITY, f64::max);
+        cells.retain(|c| c.ln > top - POINT_REACH);
+        let reach = SCALE_REACH * (2.0 / self.freedom).sqrt();
+        let scales: Vec<f64> = (0..SCALES).map(|k| reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0)).collect();
+        let mut points = Vec::with_capacity(cells.len() * SCALES);
+        for c in &cells {
+            let middle = (c.cell.rest() / self.freedom).ln();
+            let at_middle = noise_s.map_or(0.0, |n| ln_noise_prior(0.5 * (middle + c.u.ln()) - n.ln()));
+            for &d in &scales {
+                // −½(ν ln s² + S/s²) about its maximum at s² = S/ν.
+                let mut ln = c.ln - 0.5 * self.freedom * (d + (-d).exp() - 1.0);
+                if let Some(noise) = noise_s {
+                    ln += ln_noise_prior(0.5 * (middle + d + c.u.ln()) - noise.ln()) - at_middle;
+                }
+                points.push(Point {
+                    ln,
+                    scale: (middle + d).exp(),
+                    u: c.u,
+                    rho: c.rho,
+                    period_s: c.cell.period_s,
+                    period_variance: c.cell.ln_period_variance.exp(),
+                });
+            }
+        }
+        let top = points.iter().map(|p| p.ln).fold(f64::NEG_INFINITY, f64::max);
+        points.retain(|p| p.ln > top - POINT_REACH);
+        points.iter_mut().for_each(|p| p.ln = (p.ln - top).exp());
+        let total: f64 = points.iter().map(|p| p.ln).sum();
+        points.iter_mut().for_each(|p| p.ln /= total);
+        Weighted { points }
+    }
+
+    /// The cells of a finer grid near the maximum, each with the log of its profile likelihood and prior (of memory and share).
+    fn fine_cells(&self) -> Vec<FineCell> {
+        let fine = ((MEMORY_STEP * self.freedom.sqrt()) as usize).clamp(FINE.0, FINE.1);
+        let rows: Vec<Vec<Option<LnCell>>> =
+            self.cells.chunks(SHARES).map(|row| row.iter().map(Cell::ln).collect()).collect();
+        let columns: Vec<(f64, Vec<Option<LnCell>>)> = (0..=(SHARES - 1) * fine)
+            .map(|f| f as f64 / fine as f64)
+            .map(|place| (place, rows.iter().map(|row| between(row, place)).collect()))
+            .collect();
+        let profile = |c: &LnCell| -0.5 * (self.freedom * c.ln_rest + c.ln_det);
+        let top = columns.iter().flat_map(|(_, c)| c.iter().flatten()).map(profile).fold(f64::NEG_INFINITY, f64::max);
+        let mut cells = Vec::new();
+        for (place, column) in &columns {
+            let u = share(*place);
+            let value: Vec<f64> = column.iter().map(|c| c.as_ref().map_or(f64::NEG_INFINITY, profile)).collect();
+            let best = (0..MEMORIES).max_by(|&a, &b| value[a].total_cmp(&value[b])).unwrap_or(NONE);
+            let mut push = |place: f64, weight: f64, cell: LnCell| {
+                let ln = profile(&cell) + weight.ln() + 0.5 * (u * (1.0 - u)).ln();
+                cells.push(FineCell { ln, u, rho: memory(place), cell });
+            };
+            if let Some(cell) = column[NONE] {
+                push(NONE as f64, 0.5, cell);
+            }
+            for r in 0..MEMORIES - 1 {
+                let near = best.abs_diff(r) <= 2 || value[r].max(value[r + 1]) > top - NODE_REACH;
+                for f in (0..fine).filter(|_| near) {
+                    let place = r as f64 + (f as f64 + 0.5) / fine as f64;
+                    if let Some(cell) = between(column, place) {
+                        push(place, memory_density(memory(place)) * MEMORY_STEP / fine as f64, cell);
+                    }
+                }
+            }
+        }
+        cells
+    }
+}
+
+/// Log of the prior of the timing noise, `off` its natural log over the prediction.
+fn ln_noise_prior(off: f64) -> f64 {
+    let z = off / if off < 0.0 { NOISE_PRIOR_LN_SD.0 } else { NOISE_PRIOR_LN_SD.1 };
+    -0.5 * z * z
+}
+
+/// Prior density of artanh ρ beside the half that lies on no memory: flat in ρ over the positive range and thin over the
+/// negative one.
+fn memory_density(rho: f64) -> f64 {
+    let most = memory((MEMORIES - 1) as f64);
+    let total = most - NEGATIVE * memory(0.0);
+    0.5 / total * if rho < 0.0 { NEGATIVE } else { 1.0 } * (1.0 - rho * rho)
+}
+
+/// Cubic interpolation along a row of nodes; none where one that is needed is missing.
+fn between(row: &[Option<LnCell>], place: f64) -> Option<LnCell> {
+    let i = (place as usize).min(row.len() - 2);
+    let a = place - i as f64;
+    if a == 0.0 {
+        return row[i];
+    }
+    let at = |d: usize| row[(i + d).saturating_sub(1).min(row.len() - 1)];
+    let (y0, y1, y2, y3) = (at(0)?, at(1)?, at(2)?, at(3)?);
+    let cubic = |f: fn(&LnCell) -> f64| {
+        let (y0, y1, y2, y3) = (f(&y0), f(&y1), f(&y2), f(&y3));
+        y1 + 0.5 * a * (y2 - y0 + a * (2.0 * y0 - 5.0 * y1 + 4.0 * y2 - y3 + a * (3.0 * (y1 - y2) + y3 - y0)))
+    };
+    Some(LnCell {
+        ln_rest: cubic(|c| c.ln_rest),
+        ln_det: cubic(|c| c.ln_det),
+        period_s: cubic(|c| c.period_s),
+        ln_period_variance: cubic(|c| c.ln_period_variance),
+    })
+}
+
+/// A cell in the form that is interpolated.
+#[derive(Debug, Clone, Copy)]
+struct LnCell {
+    ln_rest: f64,
+    ln_det: f64,
+    period_s: f64,
+    ln_period_variance: f64,
+}
+
+impl LnCell {
+    fn rest(&self) -> f64 {
+        self.ln_rest.exp()
+    }
+}
+
+impl Cell {
+    fn ln(&self) -> Option<LnCell> {
+        self.live.then(|| LnCell {
+            ln_rest: self.rest.ln(),
+            ln_det: self.ln_det,
+            period_s: self.period_s,
+            ln_period_variance: self.period_variance.ln(),
+        })
+    }
+}
+
+/// A cell of the finer grid.
+struct FineCell {
+    ln: f64,
+    u: f64,
+    rho: f64,
+    cell: LnCell,
+}
+
+/// A point of the posterior.
+struct Point {
+    /// Log weight, then weight.
+    ln: f64,
+    scale: f64,
+    u: f64,
+    rho: f64,
+    period_s: f64,
+    period_variance: f64,
+}
+
+/// The posterior as weighted points.
+pub(super) struct Weighted {
+    points: Vec<Point>,
+}
+
+impl Weighted {
+    fn mean(&self, f: impl Fn(&Point) -> f64) -> f64 {
+        self.points.iter().map(|p| p.ln * f(p)).sum()
+    }
+
+    /// Median and central 95 % of a positive quantity; the standard uncertainty is a quarter of the interval on its log scale.
+    fn quantiles(&self, f: impl Fn(&Point) -> f64, widen: f64) -> Estimate {
+        let mut pairs: Vec<(f64, f64)> = self.points.iter().map(|p| (f(p), p.ln)).collect();
+        pairs.sort_by(|a, b| a.0.total_cmp(&b.0));
+        let at = |q: f64| {
+            let mut sum = 0.0;
+            for &(x, w) in &pairs {
+                if sum + w >= q {
+                    return x;
+                }
+                sum += w;
+            }
+            pairs[pairs.len() - 1].0
+        };
+        let value = at(0.5).max(1e-15);
+        let low = value * (at(0.025).max(1e-15) / value).powf(widen);
+        let high = value * (at(0.975).max(1e-15) / value).powf(widen);
+        Estimate { value, u: (high - low) / (2.0 * COVERAGE_95), low, high }
+    }
+
+    /// Figures of the posterior.
+    pub(super) fn summary(&self, freedom: f64, excess: f64) -> Posterior {
+        let widen = (1.0 + 0.5 * excess.max(0.0)).sqrt();
+        let period = self.mean(|p| p.period_s);
+        let variance = self.mean(|p| p.scale * p.period_variance + (p.period_s - period).powi(2));
+        Posterior {
+            jitter_s: self.quantiles(|p| (p.scale * (1.0 - p.u)).sqrt(), widen),
+            timing_noise_s: self.quantiles(|p| (p.scale * p.u).sqrt(), 1.0),
+            cycle_jitter_s: self.quantiles(|p| (2.0 * (1.0 - p.rho) * p.scale * (1.0 - p.u)).sqrt(), widen),
+            memory: self.mean(|p| p.rho),
+            memory_probability: self.mean(|p| if p.rho == 0.0 { 0.0 } else { 1.0 }),
+            period_s: (period, variance.sqrt()),
+            long_run_variance_s2: self.mean(|p| p.scale * (1.0 - p.u) * (1.0 + p.rho) / (1.0 - p.rho)),
+            freedom,
+        }
+    }
+}
