@@ -125,7 +125,7 @@ impl Accumulator {
             + if self.drift_variance.1 > 0.0 { self.drift_variance.0 / self.drift_variance.1 } else { 0.0 }
             + mains.map_or(0.0, |m| m.jitter_s.value.powi(2));
         let total = (random.value.powi(2) + structure_variance).sqrt();
-        let jitter = with_structure(random, structure_variance);
+        let jitter = with_structure(random, structure_variance, mains.map(|m| m.jitter_s));
         let long_run = posterior.long_run_variance_s2 * (random.value / posterior.jitter_s.value).powi(2);
         let u_period = (long_run / self.steps + 2.0 * (posterior.timing_noise_s.value / self.steps).powi(2)).sqrt();
         let period_s = Estimate::normal(period, u_period);
@@ -317,8 +317,16 @@ fn piece(time_s: &[f64], number: &[i64], before: f64) -> Piece {
     Piece { middle: before + 0.5 * firings, period_s, firings, inner }
 }
 
-fn with_structure(random: Estimate, variance: f64) -> Estimate {
+/// The random part joined with the variance of what is not random; of that the mains part has an uncertainty of its own.
+fn with_structure(random: Estimate, variance: f64, mains: Option<Estimate>) -> Estimate {
     let join = |x: f64| (x * x + variance).sqrt();
     let value = join(random.value);
-    Estimate { value, u: random.u * random.value / value, low: join(random.low), high: join(random.high) }
+    let of_mains = mains.map_or(0.0, |m| m.value * m.u / value);
+    let wider = |reach: f64| reach.hypot(COVERAGE_95 * of_mains);
+    Estimate {
+        value,
+        u: (random.u * random.value / value).hypot(of_mains),
+        low: (value - wider(value - join(random.low))).max(0.0),
+        high: value + wider(join(random.high) - value),
+    }
 }
