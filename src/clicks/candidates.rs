@@ -10,6 +10,8 @@ pub struct Candidates {
     pub time_s: Vec<f64>,
     /// Mark: natural logarithm of the filter output over its robust standard deviation.
     pub mark: Vec<f64>,
+    /// That standard deviation.
+    pub scale: f64,
 }
 
 /// Marks alone, where the times do not matter.
@@ -39,7 +41,17 @@ impl Candidates {
         Self {
             time_s: indices.iter().map(|&i| self.time_s[i]).collect(),
             mark: indices.iter().map(|&i| self.mark[i]).collect(),
+            scale: self.scale,
         }
+    }
+
+    /// The same candidates with marks over another standard deviation.
+    #[must_use]
+    pub fn over(mut self, scale: f64) -> Self {
+        let shift = (self.scale / scale).ln();
+        self.mark.iter_mut().for_each(|m| *m += shift);
+        self.scale = scale;
+        self
     }
 
     /// The candidates from one time (s) up to another.
@@ -47,7 +59,7 @@ impl Candidates {
     pub fn between(&self, from_s: f64, to_s: f64) -> Self {
         let from = self.time_s.partition_point(|&t| t < from_s);
         let to = self.time_s.partition_point(|&t| t < to_s).max(from);
-        Self { time_s: self.time_s[from..to].to_vec(), mark: self.mark[from..to].to_vec() }
+        Self { time_s: self.time_s[from..to].to_vec(), mark: self.mark[from..to].to_vec(), scale: self.scale }
     }
 
     /// Indices of the `count` strongest, in the order of time.
@@ -126,6 +138,7 @@ pub fn find(output: &[f32], rate_hz: f64, apart_s: f64) -> Candidates {
     Candidates {
         time_s: found.iter().map(|f| f.0).collect(),
         mark: found.iter().map(|f| f64::from(f.1.max(LEAST_SIGMAS * scale) / scale).ln()).collect(),
+        scale: f64::from(scale),
     }
 }
 
@@ -151,7 +164,7 @@ mod tests {
 
     #[test]
     fn the_strongest_are_kept_in_the_order_of_time() {
-        let c = Candidates { time_s: vec![0.0, 1.0, 2.0, 3.0], mark: vec![1.0, 4.0, 2.0, 3.0] };
+        let c = Candidates { time_s: vec![0.0, 1.0, 2.0, 3.0], mark: vec![1.0, 4.0, 2.0, 3.0], scale: 1.0 };
         assert_eq!(c.strongest(2), vec![1, 3]);
     }
 }

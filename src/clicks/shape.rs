@@ -18,6 +18,23 @@ pub struct Shape {
     pub signed: bool,
 }
 
+/// A later swing of a click whose match reaches this share of the whole can be taken for the click.
+const SWING: f64 = 0.6;
+
+impl Shape {
+    /// How long after the click, in samples, a later swing of it can still be taken for the click itself.
+    #[must_use]
+    pub fn swings(&self) -> usize {
+        let v = &self.vectors[0];
+        let whole = f64::from(dot(v, v));
+        let matches = |lag: usize| {
+            let m = f64::from(dot(&v[..v.len() - lag], &v[lag..])) / whole;
+            if self.signed { m } else { m.abs() }
+        };
+        (1..v.len()).rev().find(|&lag| matches(lag) > SWING).unwrap_or(0)
+    }
+}
+
 /// What the first look at the strongest peaks gives.
 #[derive(Debug, Clone)]
 pub struct FirstLook {

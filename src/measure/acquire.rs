@@ -3,7 +3,7 @@
 //! What the clicks look like, their period and the best way to time them are learnt on the most active few seconds (on the whole
 //! window if those hold too few firings); the train is then followed through the whole window with what was learnt.
 
-use super::hypothesis::{self, APART_S, Hypothesis};
+use super::hypothesis::{self, Hypothesis, apart_s};
 use super::refine::{Finder, refine};
 use super::times::{self, Timing};
 use super::train::{Train, number};
@@ -28,6 +28,8 @@ const LEARN_S: f64 = 4.0;
 const LEARN_FIRINGS: usize = 40;
 const LEARN_COVER: f64 = 0.8;
 const MANY_FIRINGS: usize = 150;
+/// A followed train that leaves more equal clicks than this beside it, per firing, has lost its rhythm.
+const MOST_STRAYS: f64 = 0.3;
 /// Rounds of sorting trains by the size of their clicks.
 const ROUNDS: usize = 3;
 
@@ -44,7 +46,10 @@ pub fn train(window: &Window, explanation: &mut Vec<String>) -> Result<Train, &'
         explanation.push(format!("learning on the most active {LEARN_S} s"));
         let part = window.most_active_part(LEARN_S);
         match learn(&part, FLOORS[0], explanation) {
-            Ok(Learnt::Clicks(model)) if model.is_enough() => return follow(window, *model, explanation),
+            Ok(Learnt::Clicks(model)) if model.is_enough() => match follow(window, *model, explanation) {
+                Some(train) => return Ok(train),
+                None => explanation.push("the rhythm is lost there: learning on the whole window".into()),
+            },
             Ok(Learnt::Line(line)) => return overlap::by_line(window, line.line.frequency_hz, explanation),
             _ => explanation.push("too few firings there: learning on the whole window".into()),
         }
@@ -179,14 +184,14 @@ fn check_presence(window: &Window, h: &Hypothesis, explanation: &mut Vec<String>
     heard.refusal().map_or(Ok(()), Err)
 }
 
-/// Follows a train through a longer window than it was learnt from.
-fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Result<Train, &'static str> {
+/// Follows a train through a longer window than it was learnt from; none if it is lost.
+fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Option<Train> {
     let Model { mut hypothesis, finder, timing, overlaps, others } = model;
     let mut output = Vec::new();
     candidates::matched_output(window.bank, &window.through(&finder.kernel), &hypothesis.shape, &mut output);
-    let found = candidates::find(&output, window.rate_hz, if hypothesis.fast { 0.0 } else { APART_S });
-    let (fit, others) = trains::follow(&found, window.duration_s(), &hypothesis.fit, &others)
-        .ok_or("the rhythm is lost after a few seconds")?;
+    let apart = apart_s(&hypothesis.shape, window.rate_hz, hypothesis.fit.period_s, hypothesis.fast);
+    let found = candidates::find(&output, window.rate_hz, apart).over(hypothesis.candidates.scale);
+    let (fit, others) = trains::follow(&found, window.duration_s(), &hypothesis.fit, &others)?;
     hypothesis.fit = fit;
     hypothesis.candidates = found;
     explanation.push(format!(
@@ -197,7 +202,9 @@ fn follow(window: &Window, model: Model, explanation: &mut Vec<String>) -> Resul
     ));
     let flat =
         timing.reader.as_ref().map_or_else(Vec::new, |(_, flatness)| window.through(&window.flattening(*flatness)));
-    Ok(finish_train(window, &hypothesis, &others, &timing, &flat, overlaps))
+    let train = finish_train(window, &hypothesis, &others, &timing, &flat, overlaps);
+    let strays = train.extra.len() as f64 / train.time_s.len() as f64;
+    (strays < MOST_STRAYS).then_some(train)
 }
 
 fn finish_train(
@@ -209,8 +216,7 @@ fn finish_train(
     overlaps: bool,
 ) -> Train {
     let time_s = timing.read(flat, &h.fit.times_s(&h.candidates));
-    let mut train =
-        Train::of_clicks(h, others, time_s, timing.noise_s, window.flat(Flatness::Plain), window.rate_hz);
+    let mut train = Train::of_clicks(h, others, time_s, timing.noise_s, window.flat(Flatness::Plain), window.rate_hz);
     let scale = plain_scale(window);
     train.size.iter_mut().for_each(|s| *s *= scale);
     train.extra.iter_mut().for_each(|e| e.1 *= scale);

@@ -23,10 +23,26 @@ pub struct Hypothesis {
 const SIGNED: f64 = 0.93;
 /// … and from this on, nothing else is tried.
 const CERTAIN: f64 = 0.985;
-/// Maxima nearer than this are one click, s (slow trains only).
-pub const APART_S: f64 = 0.2e-3;
+/// Maxima nearer than this are one click, s (slow trains only) …
+const APART_S: f64 = 0.2e-3;
+/// … or nearer than the click's swings and a little, s, but not this share of the period.
+const SWING_MORE_S: f64 = 0.1e-3;
+const APART_PERIODS: f64 = 0.35;
+/// The period taken for that before one is known, s.
+const FIRST_PERIOD_S: f64 = 1e-3;
 /// Candidates per expected firing when the best is fitted to all of the window.
 pub const DENSITY: f64 = 14.0;
+
+/// How far apart clicks of a shape are told apart, s; `fast` trains of overlapping clicks take every maximum.
+#[must_use]
+pub fn apart_s(shape: &Shape, rate_hz: f64, period_s: f64, fast: bool) -> f64 {
+    if fast {
+        return 0.0;
+    }
+    let swings_s = shape.swings() as f64 / rate_hz + SWING_MORE_S;
+    swings_s.min(APART_PERIODS * period_s).max(APART_S)
+}
+
 /// Looks for the best rhythm; lines of the explanation are appended.
 #[must_use]
 pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) -> Option<Hypothesis> {
@@ -42,7 +58,8 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
     for shape in shapes(&look) {
         candidates::matched_output(window.bank, whitened, &shape, &mut output);
         for fast in [false, true] {
-            let found = candidates::find(&output, window.rate_hz, if fast { 0.0 } else { APART_S });
+            let found =
+                candidates::find(&output, window.rate_hz, apart_s(&shape, window.rate_hz, FIRST_PERIOD_S, fast));
             for mut fit in search::rhythms(&found, window.duration_s(), fast) {
                 if !fit.fills_its_time() {
                     fit.evidence = fit.evidence.min(1e-3 * fit.evidence);

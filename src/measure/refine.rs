@@ -1,6 +1,6 @@
 //! The second pass: the shape from the clicks on the rhythm, the noise from what is left, and the rhythm fitted again.
 
-use super::hypothesis::{APART_S, DENSITY, Hypothesis};
+use super::hypothesis::{DENSITY, Hypothesis, apart_s};
 use super::trains;
 use super::window::{FIND_HIGH_PASS_HZ, Window};
 use crate::clicks::candidates;
@@ -53,7 +53,7 @@ fn again(window: &Window, whitened: &[f32], h: &mut Hypothesis, foreign_s: &[f64
     let shape = learn(whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
     let mut output = Vec::new();
     candidates::matched_output(window.bank, whitened, &shape, &mut output);
-    let found = candidates::find(&output, window.rate_hz, if h.fast { 0.0 } else { APART_S });
+    let found = candidates::find(&output, window.rate_hz, apart_s(&shape, window.rate_hz, h.fit.period_s, h.fast));
     let start = Start::again(&h.fit);
     let free = trains::free_of(&found, foreign_s);
     match fit_among(&found, &free, window.duration_s(), start, DENSITY) {

@@ -62,14 +62,7 @@ pub fn number(time_s: &[f64], steps: &[usize], period_s: f64) -> (Vec<i64>, Vec<
 impl Train {
     /// The train of separate clicks of a hypothesis, with the trains heard beside it.
     #[must_use]
-    pub fn of_clicks(
-        h: &Hypothesis,
-        others: &[Fit],
-        time_s: Vec<f64>,
-        noise_s: f64,
-        x: &[f32],
-        rate_hz: f64,
-    ) -> Self {
+    pub fn of_clicks(h: &Hypothesis, others: &[Fit], time_s: Vec<f64>, noise_s: f64, x: &[f32], rate_hz: f64) -> Self {
         let (number, stretches) = number(&time_s, &h.fit.chain.steps, h.fit.period_s);
         let foreign_s = trains::times_of(&h.candidates, others);
         let extra = extras(h, &foreign_s).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();

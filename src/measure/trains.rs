@@ -36,7 +36,10 @@ pub fn beside(h: &Hypothesis, duration_s: f64) -> Vec<Fit> {
     claim(&mut taken, &h.candidates, &h.fit);
     let mut found = Vec::new();
     while found.len() < MOST {
-        let Some(fit) = best_of(&h.candidates, &left_over(&taken), duration_s, median_mark(&h.candidates, &h.fit)) else { break };
+        let Some(fit) = best_of(&h.candidates, &left_over(&taken), duration_s, median_mark(&h.candidates, &h.fit))
+        else {
+            break;
+        };
         claim(&mut taken, &h.candidates, &fit);
         found.push(fit);
     }
@@ -69,7 +72,7 @@ pub fn follow(c: &Candidates, duration_s: f64, lead: &Fit, others: &[Fit]) -> Op
     let between = others.iter().map(|o| o.marks.on.0).fold(f64::NEG_INFINITY, f64::max);
     let threshold = if lead.marks.on.0 - between > LARGER { 0.5 * (lead.marks.on.0 + between) } else { f64::MIN };
     let large: Vec<usize> = (0..c.len()).filter(|&i| c.mark[i] > threshold).collect();
-    let first = search::fit_among(c, &large, duration_s, Start::again(lead), DENSITY)?;
+    let first = search::fit_among(c, &large, duration_s, Start::onward(lead), DENSITY)?;
     if others.is_empty() {
         return Some((first, Vec::new()));
     }
@@ -77,7 +80,7 @@ pub fn follow(c: &Candidates, duration_s: f64, lead: &Fit, others: &[Fit]) -> Op
     claim(&mut taken, c, &first);
     let mut followed = Vec::new();
     for other in others {
-        if let Some(fit) = search::fit_among(c, &left_over(&taken), duration_s, Start::again(other), DENSITY) {
+        if let Some(fit) = search::fit_among(c, &left_over(&taken), duration_s, Start::onward(other), DENSITY) {
             claim(&mut taken, c, &fit);
             followed.push(fit);
         }

@@ -132,6 +132,21 @@ impl Start {
     }
 }
 
+/// Least jitter allowed for where a train is followed: its rate may drift from what was learnt.
+const FOLLOW_JITTER: f64 = 0.04;
+
+impl Start {
+    /// A start for following a train into a longer stretch.
+    #[must_use]
+    pub fn onward(fit: &Fit) -> Self {
+        let again = Self::again(fit);
+        if again.follow == 0.0 {
+            return again;
+        }
+        Self { jitter: again.jitter.max(FOLLOW_JITTER), follow: 0.15, rounds: 4, ..again }
+    }
+}
+
 /// Fewest firings of a chain that is looked at.
 const FEWEST: usize = 5;
 
@@ -452,7 +467,11 @@ mod tests {
             (0..400).map(|n| (0.01 * f64::from(n) + 4e-4 * (uniform() - 0.5), 2.0 + uniform())).collect();
         all.extend((0..4000).map(|_| (uniform() * 4.0, uniform())));
         all.sort_by(|a, b| a.0.total_cmp(&b.0));
-        let c = Candidates { time_s: all.iter().map(|a| a.0).collect(), mark: all.iter().map(|a| a.1).collect() };
+        let c = Candidates {
+            time_s: all.iter().map(|a| a.0).collect(),
+            mark: all.iter().map(|a| a.1).collect(),
+            scale: 1.0,
+        };
         let start = Start { period_s: 0.0103, jitter: 0.07, follow: 0.15, gains: FirstGains::Soft, rounds: 6 };
         let fitted = fit(&c, 4.0, start).unwrap();
         assert!((fitted.period_s / 0.01 - 1.0).abs() < 0.003 && fitted.evidence > 1_000.0);

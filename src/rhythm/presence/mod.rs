@@ -24,13 +24,15 @@ const BARELY_ALIKE: (f64, f64, f64) = (0.5, 2.5, 0.7);
 /// A click's energy lies within this time, s, and this share of it in the core.
 const WIDTH_S: f64 = 0.65e-3;
 const CORE: f64 = 0.64;
-/// Clicks that stand out by this factor may be wider (a ticking clock, a ringing receiver).
-const CLEAR_ANYWAY: f64 = 15.0;
+/// Clicks that stand out by this factor with this share in the core may be wider (a ticking clock, a ringing receiver).
+const CLEAR_ANYWAY: (f64, f64) = (15.0, 0.5);
 /// Rate from which neighbours lie within the window of a click's shape, Hz; the line must then hold.
 const CROWDED_HZ: f64 = 500.0;
 const CROWDED_CORE: f64 = 0.5;
-/// Crowded clicks without jitter hardly move the line's surroundings: they must be alike, clear and most in the core instead.
+/// Crowded clicks without jitter hardly move the line's surroundings: they must be alike, clear and most in the core instead,
+/// and short (s); while they sound their line must hold for this share of the time.
 const CROWDED_CLICKS: (f64, f64, f64, f64) = (0.9, 1.8, 0.65, 1.05e-3);
+const CROWDED_STABLE: f64 = 0.75;
 /// So must clicks be whose line is so coherent that its wander (drift of the rate) need not be looked at: alike, share of time on
 /// the line, coherence.
 const COHERENT: (f64, f64, f64) = (0.9, 0.8, 0.5);
@@ -60,6 +62,8 @@ const CLEAR_OF_MAINS: f64 = 2.5;
 /// … and one without scatter needs more.
 const BUZZ_SCATTER: f64 = 1e-2;
 const CLEAR_OF_BUZZ: f64 = 8.0;
+/// Clicks that hardly stand out must fill this share of the time.
+const UNCLEAR_COVER: f64 = 0.6;
 
 /// Where the energy lies.
 #[derive(Debug, Clone, Copy)]
@@ -210,11 +214,11 @@ impl Heard {
         let clean = c.alike >= CROWDED_CLICKS.0
             && c.clear >= CROWDED_CLICKS.1
             && c.core >= CROWDED_CLICKS.2
-            && c.width_s <= CROWDED_CLICKS.3;
-        let coherent = c.alike >= COHERENT.0
-            && self.line.is_some_and(|l| l.stable >= COHERENT.1 && l.coherence >= COHERENT.2);
-        let crowded =
-            self.rate_hz > CROWDED_HZ && (clean || coherent || (c.core >= CROWDED_CORE && self.line_holds()));
+            && c.width_s <= CROWDED_CLICKS.3
+            && self.line.is_none_or(|l| l.stable >= CROWDED_STABLE * self.cover);
+        let coherent =
+            c.alike >= COHERENT.0 && self.line.is_some_and(|l| l.stable >= COHERENT.1 && l.coherence >= COHERENT.2);
+        let crowded = self.rate_hz > CROWDED_HZ && (clean || coherent || (c.core >= CROWDED_CORE && self.line_holds()));
         let on_mains = [50.0, 60.0].iter().any(|unit| {
             let multiple = (self.rate_hz / unit).round();
             multiple >= 1.0 && (self.rate_hz / (unit * multiple) - 1.0).abs() < ON_MAINS
@@ -224,7 +228,7 @@ impl Heard {
                 || (self.scatter < BUZZ_SCATTER && c.clear < CLEAR_OF_BUZZ));
         if !alike {
             Some("what repeats is not the same click each time")
-        } else if !(short || crowded || c.clear >= CLEAR_ANYWAY) {
+        } else if !(short || crowded || (c.clear >= CLEAR_ANYWAY.0 && c.core >= CLEAR_ANYWAY.1)) {
             Some("what repeats is longer than a click")
         } else if buzz {
             Some("what is heard keeps step with the mains and does not stand out like clicks: hum or buzz")
@@ -234,6 +238,8 @@ impl Heard {
             && (self.tones.six > MANY_TONES || self.line_wanders())
         {
             Some("what repeats hardly stands out of tones or a voice")
+        } else if c.clear < UNCLEAR && self.cover < UNCLEAR_COVER {
+            Some("a rhythm that hardly stands out holds only here and there")
         } else if self.tones.six > SIX_LINES && c.clear < CLEAR_OF_TONES && !crowded {
             Some("the sound is a handful of tones")
         } else {
