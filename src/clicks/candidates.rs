@@ -110,14 +110,18 @@ pub fn robust_sd(x: &[f32]) -> f32 {
     1.4826 * *part.select_nth_unstable_by(mid, f32::total_cmp).1
 }
 
+/// A swing this much larger and the other way round, within this time (s), makes a maximum the side lobe of a click.
+const SIDE_LOBE: (f32, f64) = (1.25, 0.4e-3);
+
 /// All local maxima of `output`, times by the parabola through three samples; a maximum that is not the largest
-/// within ± `apart_s` is left out.
+/// within ± `apart_s`, or that is a side lobe, is left out (neither is asked if `apart_s` is zero).
 #[must_use]
 pub fn find(output: &[f32], rate_hz: f64, apart_s: f64) -> Candidates {
     let scale = robust_sd(output) + 1e-12;
     let top = output.iter().copied().fold(0.0f32, f32::max);
     let floor = 1e-9 * top;
     let reach = (apart_s * rate_hz) as usize;
+    let lobe_reach = (SIDE_LOBE.1.max(apart_s) * rate_hz) as usize;
     let mut found: Vec<(f64, f32)> = Vec::new();
     for i in 1..output.len().saturating_sub(1) {
         let (a, b, c) = (output[i - 1], output[i], output[i + 1]);
@@ -127,6 +131,10 @@ pub fn find(output: &[f32], rate_hz: f64, apart_s: f64) -> Candidates {
         if reach > 1 {
             let near = &output[i.saturating_sub(reach)..(i + reach + 1).min(output.len())];
             if near.iter().any(|&v| v > b * 1.0001) {
+                continue;
+            }
+            let about = &output[i.saturating_sub(lobe_reach)..(i + lobe_reach + 1).min(output.len())];
+            if about.iter().any(|&v| -v > b * SIDE_LOBE.0) {
                 continue;
             }
         }

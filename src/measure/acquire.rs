@@ -22,12 +22,14 @@ const FLOORS: [f64; 2] = [2e-3, 0.1];
 const SILENCE: f32 = 1e-4;
 /// Shortest window worth a look, s.
 const SHORTEST_S: f64 = 0.5;
-/// Length of the part that is learnt from, s, and the firings and cover that it must hold to be enough; with many firings it
-/// may be silent between.
+/// Length of the part that is learnt from, s, and the firings and cover that it must hold to be enough; it may be silent
+/// between with many firings, or with a few that each bring much evidence (nats).
 const LEARN_S: f64 = 4.0;
 const LEARN_FIRINGS: usize = 40;
 const LEARN_COVER: f64 = 0.8;
 const MANY_FIRINGS: usize = 150;
+const FEW_FIRINGS: usize = 25;
+const SOLID_EVIDENCE: f64 = 2.0;
 /// A followed train that leaves more equal clicks than this beside it, per firing, has lost its rhythm.
 const MOST_STRAYS: f64 = 0.3;
 /// Rounds of sorting trains by the size of their clicks.
@@ -87,7 +89,9 @@ impl Model {
     fn is_enough(&self) -> bool {
         let fit = &self.hypothesis.fit;
         let firings = fit.chain.index.len();
-        (firings >= LEARN_FIRINGS && fit.cover > LEARN_COVER) || (firings >= MANY_FIRINGS && fit.fills_its_time())
+        let solid =
+            firings >= MANY_FIRINGS || (firings >= FEW_FIRINGS && fit.evidence > SOLID_EVIDENCE * firings as f64);
+        (firings >= LEARN_FIRINGS && fit.cover > LEARN_COVER) || (solid && fit.fills_its_time())
     }
 
     /// The train of the window that was learnt from itself.

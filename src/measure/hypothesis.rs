@@ -65,7 +65,7 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
                     fit.evidence = fit.evidence.min(1e-3 * fit.evidence);
                 }
                 explanation.push(describe(&fit, &shape, fast));
-                if best.as_ref().is_none_or(|b| fit.evidence > b.fit.evidence) {
+                if best.as_ref().is_none_or(|b| better(&fit, &found, b)) {
                     best = Some(Hypothesis { fit, candidates: found.clone(), shape: shape.clone(), fast });
                 }
             }
@@ -76,6 +76,22 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
     let whole = search::fit_whole(&best.candidates, window.duration_s(), start, DENSITY)?;
     best.fit = Fit { evidence: whole.evidence.max(best.fit.evidence), ..whole };
     Some(best)
+}
+
+/// Evidences nearer than this share are alike; the larger clicks then decide (natural log of the ratio): a side lobe keeps the
+/// same rhythm.
+const ALIKE: f64 = 0.03;
+const LARGER: f64 = 0.15;
+
+fn better(fit: &Fit, found: &Candidates, than: &Hypothesis) -> bool {
+    if (fit.is_proven() && than.fit.is_loose()) || (than.fit.is_proven() && fit.is_loose()) {
+        return fit.is_proven();
+    }
+    let ratio = fit.evidence / than.fit.evidence.max(1e-9);
+    let size = |f: &Fit, c: &Candidates| f.marks.on.0 + c.scale.ln();
+    let larger = size(fit, found) - size(&than.fit, &than.candidates);
+    let same_rhythm = (fit.period_s / than.fit.period_s - 1.0).abs() < ALIKE;
+    if same_rhythm && (ratio - 1.0).abs() < ALIKE && larger.abs() > LARGER { larger > 0.0 } else { ratio > 1.0 }
 }
 
 /// The shapes tried: one signed shape, or both signs and an unsigned pair.

@@ -16,6 +16,8 @@ use statrs::function::gamma::ln_gamma;
 pub struct Fit {
     /// Evidence, nats.
     pub evidence: f64,
+    /// Evidence per firing, nats.
+    pub each: f64,
     /// Candidates on the rhythm.
     pub chain: Chain,
     /// Median local period, s.
@@ -35,7 +37,23 @@ const SOLID: (f64, f64, f64) = (25.0, 2.0, 0.08);
 /// Cover from which it needs no such excuse.
 const COVER: f64 = 0.4;
 
+/// A tight rhythm that needs no more proof: most scatter, least evidence in all and per firing (nats).
+const PROVEN: (f64, f64, f64) = (0.12, 60.0, 0.8);
+
 impl Fit {
+    /// True if the rhythm is tight and beyond chance: a loose one with more evidence in all, as the spacing of noise maxima gives
+    /// over many of them, does not displace it.
+    #[must_use]
+    pub fn is_proven(&self) -> bool {
+        self.jitter <= PROVEN.0 && self.evidence >= PROVEN.1 && self.each >= PROVEN.2 && self.fills_its_time()
+    }
+
+    /// True if the rhythm is loose.
+    #[must_use]
+    pub fn is_loose(&self) -> bool {
+        self.jitter > PROVEN.0
+    }
+
     /// Times of the candidates on the rhythm, s.
     #[must_use]
     pub fn times_s(&self, c: &Candidates) -> Vec<f64> {
@@ -53,7 +71,7 @@ impl Fit {
     pub fn fills_its_time(&self) -> bool {
         let n = self.chain.index.len() as f64;
         let stretches = self.chain.steps.iter().filter(|k| **k == 0).count().max(1) as f64;
-        self.cover >= COVER || (n / stretches >= SOLID.0 && self.evidence >= SOLID.1 * n && self.cover >= SOLID.2)
+        self.cover >= COVER || (n / stretches >= SOLID.0 && self.each >= SOLID.1 && self.cover >= SOLID.2)
     }
 }
 
@@ -183,6 +201,7 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
     let evidence = evidence(c, duration_s, &binned, &chain, &on, &densities, off_rate, &steps);
     Some(Fit {
         evidence,
+        each: evidence / chain.index.len() as f64,
         period_s: median(&steps.period),
         jitter: law.jitter,
         missed: law.missed,

@@ -87,9 +87,15 @@ fn fit_all(c: &Candidates, duration_s: f64, starts: &[Start]) -> Vec<Fit> {
         .copied()
         .filter(|s| s.period_s <= duration_s / 4.0 && s.period_s >= 1.0 / 4200.0)
         .filter_map(|s| fit_stretch(c, duration_s, s, FIT_DENSITY))
-        // A loose train at a very short period is what noise looks like.
-        .filter(|f| f.period_s >= 0.7e-3 || f.jitter <= 0.12)
+        .filter(|f| !looks_like_noise(f))
         .collect()
+}
+
+/// A loose train at a very short period is what noise looks like: (period, s, and the most jitter below it).
+const NOISE_LOOKS: [(f64, f64); 2] = [(0.7e-3, 0.12), (1.2e-3, 0.25)];
+
+fn looks_like_noise(f: &Fit) -> bool {
+    NOISE_LOOKS.iter().any(|&(period_s, jitter)| f.period_s < period_s && f.jitter > jitter)
 }
 
 /// The candidates of the middle stretch for a period, with its length.
