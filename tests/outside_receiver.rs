@@ -281,6 +281,13 @@ fn gain_control_pumps_in_the_direction_and_by_the_size_of_the_other_receiver() {
         let settled = mean(&heights(&audio, delay_s));
         let first = peak(&audio, fired[0].time_s + delay_s).1 / settled;
         let silence: Vec<f64> = audio[72_000..95_000].iter().map(|&x| f64::from(x) / CLICK).collect();
+        for (a, b) in [(0, 95_000), (24_000, 95_000), (48_000, 95_000), (0, 48_000), (72_000, 95_000)] {
+            let part: Vec<f64> = audio[a..b].iter().map(|&x| f64::from(x) / CLICK).collect();
+            eprintln!(
+                "  window {a}..{b}: {:+.1} %",
+                100.0 * (deviation(&part) / settled / number(&row, "noise_rms_in_silence_over_click") - 1.0)
+            );
+        }
         for (what, got, name) in [
             ("first click", first, "first_click_over_late"),
             ("gain", settled / plain, "gain_at_click_late"),

@@ -4,6 +4,7 @@
 //! figure of a short clip may lie a little outside of them more often than one in twenty.
 
 use super::Measurement;
+use crate::bench::{si, signed};
 use crate::estimate::Estimate;
 use crate::model::truth::Truth;
 use crate::rhythm::Verdict;
@@ -120,21 +121,40 @@ pub fn comparison_text(comparison: &Comparison) -> String {
     for figure in &comparison.figures {
         let line = match (figure.measured, figure.intervals) {
             (Some(measured), Some(intervals)) => format!(
-                "measured {:.6e}, {:+.2} half intervals off: {}",
-                measured.value,
-                intervals,
+                "measured {:<22} {:>6} half intervals off: {}",
+                in_units(&figure.quantity, measured.value),
+                signed(intervals, 2),
                 if figure.covered() { "covered" } else { "NOT covered" }
             ),
             _ => "not measured".to_owned(),
         };
-        let _ = writeln!(text, "  {:<28} {:.6e}  {line}", figure.quantity, figure.truth);
+        let _ = writeln!(text, "  {:<28} {:<22} {line}", figure.quantity, in_units(&figure.quantity, figure.truth));
     }
     text
+}
+
+/// A figure in the unit that the name of its quantity ends in, to six digits.
+fn in_units(quantity: &str, value: f64) -> String {
+    let name = quantity.split_once(' ').map_or(quantity, |(name, _)| name);
+    match name.rsplit_once('_') {
+        Some(("drift_per", _)) => format!("{} % per minute", signed(6000.0 * value, 3)),
+        Some((_, "hz")) => si(value, "/s", 6),
+        Some((_, "v")) => si(value, "V", 6),
+        _ => si(value, "s", 6),
+    }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn figures_are_shown_in_their_units() {
+        assert_eq!(in_units("firing_rate_hz of train 2", 423.502), "423.502 /s");
+        assert_eq!(in_units("period_jitter_s", 14.64e-6), "14.6400 µs");
+        assert_eq!(in_units("gap_voltage_v", 5200.0), "5.20000 kV");
+        assert_eq!(in_units("drift_per_s", -1e-8), "+0.000 % per minute");
+    }
 
     #[test]
     fn distances_are_counted_in_the_half_interval_on_the_side_of_the_truth() {
