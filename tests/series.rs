@@ -9,18 +9,7 @@ use gaptone::model::truth::Truth;
 use gaptone::report::{FORMAT, Measurement, Recording, compare};
 use std::path::{Path, PathBuf};
 
-const BENCH: &str = "
-[supply]
-voltage = \"9 kV\"
-[charging]
-resistance = \"1.2 MΩ\"
-capacitance = \"4.7 nF\"
-[gap]
-voltage = \"6.2 kV\"
-spread = \"0.5 %\"
-[receiver]
-noise = \"-30 dB\"
-";
+const BENCH: &str = include_str!("data/series-bench.toml");
 
 fn entries(text: &str) -> Vec<SeriesEntry> {
     parse_series(text, "series.toml").unwrap_or_else(|error| panic!("{error}")).entries

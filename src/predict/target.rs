@@ -14,6 +14,8 @@ use std::cmp::Ordering;
 const MOST_SUPPLY_V: f64 = 1e6;
 /// Largest factor by which another part is changed.
 const MOST_FACTOR: f64 = 1000.0;
+/// Least number of settings that is worth a thread of its own.
+const LEAST_STRETCH: usize = 16;
 /// First reach of the search around the answer without ripple, in the logarithm.
 const HELD_REACH: f64 = 1e-3;
 /// Halvings of that search.
@@ -46,12 +48,36 @@ pub fn sweep(bench: &Bench, low_v: f64, high_v: f64, count: usize) -> Result<Swe
         return Err(PredictError::Range { low: low_v, high: high_v, count });
     }
     let step_v = (high_v - low_v) / (count - 1) as f64;
-    let mut locks = Locks::new();
-    let settings = (0..count)
-        .map(|k| forecast(&Setting::new(bench, Some(low_v + step_v * k as f64))?, false, &mut locks))
-        .collect::<Result<Vec<_>, _>>()?;
+    let supplies: Vec<f64> = (0..count).map(|k| low_v + step_v * k as f64).collect();
+    let (settings, locks) = in_parallel(bench, &supplies)?;
     let remarks = super::remarks::remarks(bench, &settings, &locks);
     Ok(Sweep { format: FORMAT.to_owned(), settings, remarks })
+}
+
+/// Predictions at all settings with the locks met on the way, a stretch of the range on each core.
+fn in_parallel(bench: &Bench, supplies: &[f64]) -> Result<(Vec<Prediction>, Locks), PredictError> {
+    let cores = std::thread::available_parallelism().map_or(1, usize::from);
+    let stretch = supplies.len().div_ceil(cores).max(LEAST_STRETCH);
+    let one = |supplies: &[f64]| {
+        let mut locks = Locks::new();
+        let forecast_at = |supply_v: &f64| forecast(&Setting::new(bench, Some(*supply_v))?, false, &mut locks);
+        let settings = supplies.iter().map(forecast_at).collect::<Result<Vec<_>, PredictError>>()?;
+        Ok((settings, locks))
+    };
+    let parts: Vec<Result<(Vec<Prediction>, Locks), PredictError>> = std::thread::scope(|scope| {
+        let workers: Vec<_> = supplies.chunks(stretch).map(|supplies| scope.spawn(move || one(supplies))).collect();
+        let joined = |worker: std::thread::ScopedJoinHandle<'_, _>| {
+            worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic))
+        };
+        workers.into_iter().map(joined).collect()
+    });
+    let (mut settings, mut locks) = (Vec::new(), Locks::new());
+    for part in parts {
+        let (some, met) = part?;
+        settings.extend(some);
+        locks.extend(met);
+    }
+    Ok((settings, locks))
 }
 
 /// The supply voltage in V at which the bench fires at a rate in Hz; where the ripple holds the rate over a range, its middle.

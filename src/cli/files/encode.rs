@@ -231,9 +231,9 @@ mod tests {
         let flac = |room| {
             let disk = Disk { bytes: Cursor::new(Vec::new()), room };
             let noise = (0..20_000u32).map(|k| (k.wrapping_mul(2_654_435_761) >> 16) as f32 / 65_536.0 - 0.5);
-            write_flac(disk, noise, &facts(SampleFormat::Int24))
+            write_flac(disk, noise, &facts(SampleFormat::Int16))
         };
-        flac(100_000).expect("room enough");
+        assert!(flac(100_000).is_ok());
         for room in [10, 60, 1000, 30_000] {
             assert_eq!(flac(room).expect_err("no room").kind(), io::ErrorKind::StorageFull, "{room}");
         }
