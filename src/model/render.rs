@@ -237,8 +237,8 @@ impl<I: Iterator<Item = Firing>> Renderer<I> {
             self.step();
         }
         let mut audio = self.decimator.output();
-        if let Some(hum) = &mut self.hum {
-            audio += hum.next(self.next);
+        if let Some(hum) = &self.hum {
+            audio += hum.at(self.next);
         }
         let written = self.recorder.write(audio * self.scale, self.next);
         self.next += 1;

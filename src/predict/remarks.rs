@@ -48,7 +48,7 @@ pub(super) fn remarks(bench: &Bench, settings: &[Prediction], locks: &Locks) -> 
     let patterns = patterns.count();
     if patterns > 0 {
         said.push(format!(
-            "{patterns} of the settings are locked in a pattern of several firings (firings:ripple periods in the table); at one \
+            "locked in a pattern of several firings (firings:ripple periods in the table): {patterns} of the settings; at one \
              setting predict tells how far such a lock reaches"
         ));
     }

@@ -102,16 +102,19 @@ impl Chain {
     #[inline]
     pub(crate) fn audio(&mut self) -> f64 {
         let mut envelope = self.envelope();
+        let mut level = envelope.norm_sqr().sqrt();
         if let Some(agc) = &mut self.agc {
-            envelope *= agc.gain(envelope.norm_sqr().sqrt());
+            let gain = agc.gain(level);
+            envelope *= gain;
+            level *= gain;
         }
         let reference = self.carrier.as_ref().map_or(Complex::from(1.0), |carrier| carrier.phase() * self.carrier_turn);
-        let level = self.detector.step(envelope, reference);
+        let detected = self.detector.step_at_level(envelope, level, reference);
         if self.index % SETTLE_EVERY == 0 {
             self.channel.settle();
             self.audio.settle();
         }
-        self.audio.step(level)
+        self.audio.step(detected)
     }
 }
 

@@ -21,11 +21,6 @@ impl Turning {
         self.now
     }
 
-    /// Sets the vector of the coming step.
-    pub(super) fn set(&mut self, now: Complex) {
-        self.now = now;
-    }
-
     /// The vector of this step.
     #[inline]
     pub(super) fn next(&mut self) -> Complex {
