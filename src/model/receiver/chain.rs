@@ -89,11 +89,10 @@ impl Chain {
     /// Complex envelope behind the channel filter at the sample last advanced to, noise and carrier added.
     #[inline]
     fn envelope(&mut self) -> Complex {
-        if let Some((draw, strength)) = &mut self.noise {
-            self.channel.add_impulse_now(draw.complex_normal() * *strength);
-        }
-        if let Some(carrier) = &mut self.carrier {
-            self.channel.add_impulse_now(carrier.next_impulse());
+        if self.noise.is_some() || self.carrier.is_some() {
+            let noise = self.noise.as_mut().map(|(draw, strength)| draw.complex_normal() * *strength);
+            let carrier = self.carrier.as_mut().map(CarrierSource::next_impulse);
+            self.channel.add_impulse_now(noise.unwrap_or_default() + carrier.unwrap_or_default());
         }
         self.channel.output()
     }
