@@ -121,6 +121,11 @@ fn a_lock_of_several_firings_is_told_with_its_range() {
     assert!(lock.largest_voltage_error > 0.0 && lock.largest_voltage_error < 0.01, "{lock:?}");
     let said = ripple.words().join(" ");
     assert!(said.contains("the rate stands at 200.00 /s") && said.contains("2 firings in one period"), "{said}");
+    // A gap that scatters by 1 % is not held by a lock that is narrower.
+    assert!(!ripple.slips && !said.contains("slips"), "{said}");
+    bench.gap.spread = exact(0.01);
+    let scattered = predict(&bench, None).unwrap().ripple.unwrap();
+    assert!(scattered.slips && scattered.words().join(" ").contains("slips in and out"), "{:?}", scattered.words());
 }
 
 #[test]

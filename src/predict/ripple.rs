@@ -56,6 +56,9 @@ pub struct RippleForecast {
     /// The range of the lock in which the setting is (in a table only of those of one firing), or of the lock of one firing to
     /// which it is near.
     pub lock: Option<LockRange>,
+    /// True if the spread of the gap is wider than the lock in which the setting is, as far as its range is known: the gap then
+    /// slips in and out of it.
+    pub slips: bool,
     /// Frequency at which the periods beat outside of a lock, Hz.
     pub beat_hz: Option<f64>,
     /// Error of a gap voltage that is read from the mean rate here, as a fraction.
@@ -97,7 +100,10 @@ impl Setting<'_> {
             Some(locked) => rippled.lock.and_then(|lock| self.pattern(gap_v, lock, locked.firing_rate_hz, supply_v)),
             None => self.single_lock(gap_v, mean_s, ripple.frequency_hz, supply_v, locks),
         };
+        let spread = self.bench.gap.spread.map_or(0.0, |spread| spread.value);
+        let slips = locked.is_some() && lock.is_some_and(|lock| spread > lock.largest_voltage_error);
         Some(RippleForecast {
+            slips,
             frequency_hz: f,
             fraction: ripple.fraction,
             period_sd_s: rippled.period_sd_s,
@@ -177,9 +183,10 @@ pub(super) fn rippled_period(bench: &Bench, supply_v: Option<f64>, gap_v: f64) -
     Some(mean_with_curvature(&rippled, both.map_or(0.0, |(mean_s, period_s)| mean_s - period_s)))
 }
 
-/// Mean period under ripple with what the curvature of the charging law adds outside of the locks, s.
+/// Mean period under ripple with what the curvature of the charging law adds outside of the locks of one firing, s. (A pattern of
+/// several firings is so narrow that a gap that scatters is not held by it.)
 pub(super) fn mean_with_curvature(rippled: &Rippled, curvature_s: f64) -> f64 {
-    rippled.mean_period_s + if rippled.lock.is_some() { 0.0 } else { curvature_s }
+    rippled.mean_period_s + if rippled.lock.is_some_and(|lock| lock.firings == 1) { 0.0 } else { curvature_s }
 }
 
 impl RippleForecast {
@@ -207,8 +214,13 @@ impl RippleForecast {
             (Some(locked), _) => {
                 let count =
                     |n: u32, one: &str, more: &str| if n == 1 { format!("one {one}") } else { format!("{n} {more}") };
+                let slips = if self.slips {
+                    "; the spread of the gap is wider than that, so it slips in and out of the lock"
+                } else {
+                    ""
+                };
                 format!(
-                    "locked: {} in {} of the ripple{error}",
+                    "locked: {} in {} of the ripple{error}{slips}",
                     count(locked.firings, "firing", "firings"),
                     count(locked.cycles, "period", "periods")
                 )
