@@ -18,7 +18,7 @@ use gaptone::rhythm::Reading;
 
 /// Seconds of a clip.
 const CLIP_S: f64 = 12.0;
-/// Rate within which predicted, realised and measured must agree.
+/// Rate within which realised and measured must agree.
 const RATE: f64 = 5e-3;
 /// Jitter within which realised and measured must agree.
 const JITTER: f64 = 0.15;
@@ -128,8 +128,12 @@ impl Row {
 
     fn check_prediction(&self) {
         let rate = self.predicted_rate_hz / self.realised.firing_rate_hz.expect("a rate") - 1.0;
-        assert!(rate.abs() < RATE, "{:?} at {}: rate off by {rate}", self.kind, self.rate_hz);
         let (off, chance) = self.predicted_off();
+        // Four standard errors of the mean period of the clip.
+        let memory = (1.0 + self.kind.memory) / (1.0 - self.kind.memory);
+        let mean =
+            4.0 * self.predicted_jitter_s * self.predicted_rate_hz * (memory / self.realised.firings as f64).sqrt();
+        assert!(rate.abs() < 1e-3 + mean, "{:?} at {}: rate off by {rate}, chance {mean}", self.kind, self.rate_hz);
         assert!(off.abs() < chance, "{:?} at {}: jitter off by {off}, chance {chance}", self.kind, self.rate_hz);
     }
 
