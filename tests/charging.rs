@@ -267,6 +267,40 @@ fn any_parts() -> impl Strategy<Value = Parts> {
     )
 }
 
+/// Period by stepping through time: Runge's and Kutta's method on the currents of the circuit and a straight line to the crossing.
+fn stepped_period_s(parts: &Parts, gap_v: f64, step_s: f64) -> f64 {
+    let (supply_v, r, c) = (parts.supply_v.unwrap(), parts.resistance_ohm.unwrap(), parts.capacitance_f.unwrap());
+    let limit_a = parts.current_limit_a.unwrap_or(f64::INFINITY);
+    let leak_s = parts.leakage_ohm.map_or(0.0, f64::recip);
+    let rise = |v: f64| (((supply_v - v) / r).min(limit_a) - v * leak_s) / c;
+    let (mut v, mut t) = (parts.residual_v, parts.conduction_s);
+    loop {
+        let k1 = rise(v);
+        let k2 = rise(v + 0.5 * step_s * k1);
+        let k3 = rise(v + 0.5 * step_s * k2);
+        let k4 = rise(v + step_s * k3);
+        let next = v + (k1 + 2.0 * k2 + 2.0 * k3 + k4) * step_s / 6.0;
+        if next >= gap_v {
+            return t + step_s * (gap_v - v) / (next - v);
+        }
+        v = next;
+        t += step_s;
+    }
+}
+
+proptest! {
+    #[test]
+    fn the_closed_form_is_what_plain_stepping_through_time_gives(parts in any_parts(), share in 0.05..0.95f64) {
+        let circuit = parts.circuit().unwrap();
+        let gap_v = circuit.residual_v() + share * (circuit.reach_v() - circuit.residual_v());
+        let period_s = circuit.period_s(gap_v).unwrap();
+        let charging_s = period_s - circuit.conduction_s();
+        let stepped_s = stepped_period_s(&parts, gap_v, charging_s / 4000.0);
+        // A step across the knee of a current limit and the straight line at the end leave less than 1e-6.
+        prop_assert!((stepped_s / period_s - 1.0).abs() < 1e-6, "{stepped_s} {period_s}");
+    }
+}
+
 proptest! {
     #[test]
     fn predict_then_invert_returns_the_gap_voltage(parts in any_parts(), share in 0.05..0.98f64) {

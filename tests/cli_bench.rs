@@ -231,6 +231,8 @@ fn a_clip_that_cannot_be_made_is_told_with_what_would_be_right() {
         (&["-o", "clip.ogg"], 1, "must end in .wav or .flac"),
         (&["-o", "clip.wav", "--supply", "5 kV"], 2, "does not fire"),
         (&["-o", "clip.wav", "--seconds", "0"], 2, "above 0"),
+        (&["-o", "clip.wav", "--seconds", "604800"], 2, "up to 86400"),
+        (&["-o", "clip.wav", "--sample-rate", "4000"], 2, "bandwidth"),
     ] {
         let output = gaptone()
             .current_dir(folder.0.path())

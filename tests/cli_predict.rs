@@ -109,6 +109,16 @@ fn a_drawing_and_a_clip_are_written_for_a_gap_of_spheres() {
         .expect("the program runs");
     assert_eq!(output.status.code(), Some(0), "{}", stderr(&output));
     assert!(std::fs::read_to_string(&plot).unwrap().starts_with("<svg"));
+    // The tags say what it is, and the level is the usual one.
+    let bytes = std::fs::read(&clip).unwrap();
+    assert!(String::from_utf8_lossy(&bytes).contains("Synthetic: rendered from a description"));
+    let samples: Vec<f32> = hound::WavReader::open(&clip)
+        .unwrap()
+        .samples::<i16>()
+        .map(|sample| f32::from(sample.unwrap()) / 32_768.0)
+        .collect();
+    let (lufs, dbtp) = gaptone::model::finish::loudness(samples, 1, 48_000).unwrap();
+    assert!(dbtp < -0.9 && ((lufs + 23.0).abs() < 0.1 || (dbtp + 1.0).abs() < 0.1), "{lufs} LUFS, {dbtp} dBTP");
     // What was predicted is what is heard.
     let predicted = json(&output)["firing_rate_hz"]["value"].as_f64().unwrap();
     let (status, stdout, _) = measure(&clip, &["--json"]);

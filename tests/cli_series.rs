@@ -4,18 +4,7 @@ use std::fs;
 use std::path::Path;
 use std::process::Output;
 
-const BENCH: &str = "
-[supply]
-voltage = \"9 kV\"
-[charging]
-resistance = \"1.2 MΩ\"
-capacitance = \"4.7 nF\"
-[gap]
-voltage = \"6.2 kV\"
-spread = \"0.5 %\"
-[receiver]
-carrier = \"0.3\"
-";
+const BENCH: &str = concat!(include_str!("data/series-bench.toml"), "carrier = \"0.3\"\n");
 
 const SERIES: &str = "
 title = \"Three\"
@@ -101,6 +90,64 @@ fn an_interrupted_series_goes_on_where_it_stopped_and_a_changed_clip_is_made_ane
     assert_eq!(text.matches("is there already").count(), 2, "{text}");
     fs::remove_file(clips.join("index.json")).expect("removed");
     assert!(!said(&run(folder.path(), &changed)).contains("is there already"));
+}
+
+#[test]
+fn a_series_that_was_killed_in_the_middle_ends_in_the_same_files_as_one_that_ran_through() {
+    let series = "[defaults]\nbench = \"bench.toml\"\nseconds = \"20 s\"\n[[clip]]\nname = \"supply\"\n\
+                  vary = \"supply.voltage\"\nover = \"8 kV .. 9 kV\"\nsteps = 5\n";
+    let (whole, killed) = (tempfile::tempdir().expect("a folder"), tempfile::tempdir().expect("a folder"));
+    assert_eq!(run(whole.path(), series).status.code(), Some(0));
+    fs::write(killed.path().join("bench.toml"), BENCH).expect("written");
+    fs::write(killed.path().join("series.toml"), series).expect("written");
+    let mut child = std::process::Command::new(assert_cmd::cargo::cargo_bin!("gaptone"))
+        .current_dir(killed.path())
+        .args(["render", "--series", "series.toml", "-o", "clips"])
+        .stdout(std::process::Stdio::null())
+        .spawn()
+        .expect("it starts");
+    let clips = killed.path().join("clips");
+    while !clips.join("supply-02.wav").exists() && child.try_wait().expect("its state").is_none() {
+        std::thread::sleep(std::time::Duration::from_millis(2));
+    }
+    child.kill().expect("killed, or at its end");
+    child.wait().expect("its end");
+    let first = fs::read(clips.join("supply-01.wav")).expect("the first clip is whole");
+    assert_eq!(first, fs::read(whole.path().join("clips/supply-01.wav")).expect("read"));
+    let text = said(&run(killed.path(), series));
+    assert!(text.contains("supply-01.wav: is there already"), "{text}");
+    for name in names(&whole.path().join("clips")) {
+        let [a, b] = [&whole, &killed].map(|folder| fs::read(folder.path().join("clips").join(&name)).expect("read"));
+        assert!(a == b, "{name} differs");
+    }
+}
+
+#[cfg(unix)]
+#[test]
+fn a_full_disk_ends_a_clip_and_a_series_with_one_line_and_without_half_a_file() {
+    let folder = tempfile::tempdir().expect("a folder");
+    assert_eq!(run(folder.path(), SERIES).status.code(), Some(0));
+    fs::remove_dir_all(folder.path().join("clips")).expect("removed");
+    let before = names(folder.path());
+    // No file may grow beyond some kilobytes; the signal for it is ignored, so that the write fails as on a full disk.
+    let limited = |arguments: &str| {
+        std::process::Command::new("sh")
+            .current_dir(folder.path())
+            .args(["-c", &format!("trap '' XFSZ; ulimit -f 40; exec \"$0\" render {arguments}")])
+            .arg(assert_cmd::cargo::cargo_bin!("gaptone"))
+            .output()
+            .expect("it runs")
+    };
+    for name in ["clip.wav", "clip.flac"] {
+        let output = limited(&format!("--bench bench.toml -o {name} --seconds 5"));
+        assert_eq!(output.status.code(), Some(1), "{}", said(&output));
+        assert!(said(&output).contains(&format!("{name}: writing failed")), "{}", said(&output));
+        assert_eq!(names(folder.path()), before, "{name}");
+    }
+    let output = limited("--series series.toml -o clips");
+    assert_eq!(output.status.code(), Some(1), "{}", said(&output));
+    assert!(said(&output).contains("writing failed"), "{}", said(&output));
+    assert!(names(&folder.path().join("clips")).is_empty());
 }
 
 #[test]

@@ -115,6 +115,22 @@ fn the_same_seed_gives_the_same_firing_times() {
     assert_ne!(make(5).firings, make(6).firings);
 }
 
+/// The first firing, the 100th and the last of two seconds, s, as every build and every machine makes them.
+const FIRING_TIMES_S: [f64; 3] = [0.001_592_878_226_904_692, 0.990_603_362_216_205_7, 1.995_678_412_133_044_6];
+
+#[test]
+fn firing_times_are_the_same_in_every_build_profile_and_on_every_machine() {
+    /// Elementary functions differ in their last bit from one library to the other; in one library all profiles agree to the
+    /// bit (DEVELOPERS.md has the command).
+    const LAST_BITS: f64 = 1e-13;
+    let gap = GapLaw { spread: 0.02, memory: 0.5, statistical_lag_s: 50e-6, ..GapLaw::steady(5e3) };
+    let firings = simulate(&plan(bench(kilovolt_circuit(), gap), 2.0, 5)).unwrap().firings;
+    let times = [firings[0].time_s, firings[100].time_s, firings[firings.len() - 1].time_s];
+    for (time_s, expected_s) in times.into_iter().zip(FIRING_TIMES_S) {
+        assert!((time_s - expected_s).abs() < LAST_BITS, "{times:?}");
+    }
+}
+
 #[test]
 fn a_fault_does_not_move_the_firings() {
     let rhythm = || bench(kilovolt_circuit(), GapLaw { spread: 0.02, ..GapLaw::steady(5e3) });
@@ -206,8 +222,20 @@ fn a_statistical_lag_adds_its_mean_to_the_period_and_its_skew_to_the_voltage() {
     // Ramp of 0.3 V/µs at threshold and a mean lag of 0.2 ms: mean excess 60 V, standard deviation 60 V.
     let ramp = Parts { current_a: Some(0.3e-3), capacitance_f: Some(1e-9), ..Parts::default() }.circuit().unwrap();
     let gap = GapLaw { statistical_lag_s: 0.2e-3, ..GapLaw::steady(3e3) };
-    let realised = simulate(&plan(bench(ramp, gap), 200.0, 4)).unwrap().realised;
+    let train = simulate(&plan(bench(ramp, gap), 200.0, 4)).unwrap();
+    let realised = train.realised;
     let n = realised.firings as f64;
+    // Of n lags those that are still waiting after t fall as exp(−t/ts) (von Laue 1925): the straight line through ln(n/N) from the
+    // first to the last tenth has the slope −1/ts, with an error of some 3/√n.
+    let mut lags_s: Vec<f64> = train.firings.iter().map(|firing| (firing.voltage_v - 3e3) / 0.3e6).collect();
+    lags_s.sort_by(f64::total_cmp);
+    let waiting = |share: f64| (lags_s[((1.0 - share) * lags_s.len() as f64) as usize], share.ln());
+    let ((from_s, from), (to_s, to)) = (waiting(0.9), waiting(0.1));
+    let slope = (to - from) / (to_s - from_s);
+    assert!((slope * 0.2e-3 + 1.0).abs() < 4.0 * 3.0 / n.sqrt(), "{slope}");
+    // An exponential has skewness 2, where a normal one has none.
+    let third = lags_s.iter().map(|lag_s| (lag_s / 0.2e-3 - 1.0).powi(3)).sum::<f64>() / lags_s.len() as f64;
+    assert!((third - 2.0).abs() < 0.5, "{third}");
     assert!((realised.gap_voltage_v.unwrap() - 3060.0).abs() < 4.0 * 60.0 / n.sqrt());
     // An exponential has kurtosis 9: the variance has a relative error of √(8/n).
     assert!((realised.gap_voltage_spread_v.unwrap() / 60.0 - 1.0).abs() < 4.0 * (2.0 / n).sqrt());

@@ -4,7 +4,7 @@ mod circuit_table;
 
 use circuit_table::rows;
 use gaptone::model::charging::{Circuit, Parts, Ripple, Strength};
-use gaptone::model::locking::{PhaseMap, Rippled, lock_range};
+use gaptone::model::locking::{PhaseMap, Rippled, lock_range, pattern_range};
 use proptest::prelude::*;
 
 fn settled(circuit: &Circuit, gap_v: f64) -> Rippled {
@@ -104,6 +104,54 @@ fn the_edges_of_a_lock_are_where_plain_stepping_stops_locking() {
     assert!(!locks(low * 0.999) && !locks(high * 1.001), "{low} {high}");
     // The settled sine at 100 Hz is 2 % · Vs/√(1 + (ωτ)²), about 0.9 % of the gap voltage: the lock is that wide either way.
     assert!((1.012..1.025).contains(&(high / low)), "{low} {high}");
+}
+
+#[test]
+fn a_pattern_of_several_firings_holds_over_the_range_in_which_plain_stepping_repeats_it() {
+    let (gap_v, tau_s) = (4340.0, 3.198e-3);
+    // The higher the order, the more ripple it takes for a lock that plain stepping settles into.
+    for (firings, cycles, fraction) in [(2, 1, 0.02), (3, 2, 0.08)] {
+        let ripple = Ripple { fraction, frequency_hz: 100.0, phase_rad: 0.0 };
+        let at = |supply_v: f64| {
+            let parts = Parts {
+                supply_v: Some(supply_v),
+                time_constant_s: Some(tau_s),
+                ripple: Some(ripple),
+                ..Parts::default()
+            };
+            parts.circuit().ok()
+        };
+        let mean = |supply_v: f64| settled(&at(supply_v).unwrap(), gap_v).mean_period_s;
+        let period_s = f64::from(cycles) / f64::from(firings) / ripple.frequency_hz;
+        // The settings at which the gap is a little slower and a little faster, by halving.
+        let setting = |period_s: f64| {
+            let (mut low, mut high) = (gap_v * 1.01, gap_v * 3.0);
+            for _ in 0..50 {
+                let middle = 0.5 * (low + high);
+                if mean(middle) > period_s { low = middle } else { high = middle }
+            }
+            high
+        };
+        let inside = 0.5 * (setting(period_s * (1.0 + 1e-9)) + setting(period_s * (1.0 - 1e-9)));
+        let lock = settled(&at(inside).unwrap(), gap_v).lock.unwrap();
+        assert_eq!((lock.firings, lock.cycles), (firings, cycles));
+        let (low, high) = pattern_range(&at, Strength::settled(gap_v), lock, inside).unwrap();
+        let width = high - low;
+        eprintln!("{firings}:{cycles}: {low:.3} V to {high:.3} V");
+        // A locked pattern repeats itself; half a width outside the phase creeps on, by more than 10 µs in each pattern.
+        let creep_s = |supply_v: f64| {
+            let periods = stepped(supply_v, gap_v, 0.0, tau_s, ripple, 3000);
+            (periods[2400..].iter().sum::<f64>() - 600.0 * period_s).abs()
+        };
+        for inside_v in [low + 0.2 * width, high - 0.2 * width] {
+            let creep_s = creep_s(inside_v);
+            assert!(creep_s < 20e-6, "{firings}:{cycles} {low} {high}: {creep_s}");
+        }
+        for outside_v in [low - 0.5 * width, high + 0.5 * width] {
+            let creep_s = creep_s(outside_v);
+            assert!(creep_s > 100e-6, "{firings}:{cycles} {low} {high}: {creep_s}");
+        }
+    }
 }
 
 #[test]

@@ -258,7 +258,8 @@ fn agc(kind: &str) -> AgcSettings {
 }
 
 // The inner law of the loop called "pump" is not stated with the table; the one here (the attack sets in above threshold and gain
-// together) follows it. Its gain in silence lies a quarter above the table's, which is only checked for its direction.
+// together) follows it. In silence that loop goes on climbing for seconds, so its noise is that of the whole silence before the
+// first spark; the end of it alone is a quarter louder.
 #[test]
 fn gain_control_pumps_in_the_direction_and_by_the_size_of_the_other_receiver() {
     /// Size of the pumping.
@@ -280,7 +281,7 @@ fn gain_control_pumps_in_the_direction_and_by_the_size_of_the_other_receiver() {
         });
         let settled = mean(&heights(&audio, delay_s));
         let first = peak(&audio, fired[0].time_s + delay_s).1 / settled;
-        let silence: Vec<f64> = audio[72_000..95_000].iter().map(|&x| f64::from(x) / CLICK).collect();
+        let silence: Vec<f64> = audio[..95_000].iter().map(|&x| f64::from(x) / CLICK).collect();
         for (what, got, name) in [
             ("first click", first, "first_click_over_late"),
             ("gain", settled / plain, "gain_at_click_late"),
@@ -288,8 +289,7 @@ fn gain_control_pumps_in_the_direction_and_by_the_size_of_the_other_receiver() {
         ] {
             let ratio = got / number(&row, name);
             eprintln!("{kind} {rate_hz}: {what} {got:.4} ({}) {:+.1} %", row[name], 100.0 * (ratio - 1.0));
-            let size = if kind == "pump" && what == "noise in silence" { 2.0 * SIZE } else { SIZE };
-            assert!((ratio - 1.0).abs() < size, "{row:?}: {what} {got}");
+            assert!((ratio - 1.0).abs() < SIZE, "{row:?}: {what} {got}");
         }
     }
 }

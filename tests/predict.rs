@@ -4,7 +4,7 @@ mod circuit_table;
 
 use circuit_table::{Row, rows};
 use gaptone::bench::{Bench, Quantity, parse};
-use gaptone::predict::{Prediction, predict, supply_for_rate};
+use gaptone::predict::{Prediction, predict, supply_for_rate, target};
 use proptest::prelude::*;
 
 /// Largest relative difference of the mean period to that of the circuit simulator, residual voltage and conduction time
@@ -80,6 +80,67 @@ fn under_ripple_the_mean_period_is_that_of_a_circuit_simulator_and_locks_are_tol
             assert!(ripple.voltage_error.unwrap().abs() <= lock.largest_voltage_error * 1.001);
         }
     }
+}
+
+#[test]
+fn a_target_in_a_lock_tells_over_which_settings_the_ripple_holds_it() {
+    // Set B of the circuit simulator locks to 100 Hz from 1.04 to 1.055 times 4340 V, and not at 1.03 and 1.06.
+    let mut row = rows("ripple").into_iter().find(|row| row.case.starts_with("B-1.05")).unwrap();
+    row.supply_v = 9e3;
+    let found = target(&bench_of(&row), 100.0).unwrap();
+    let (low, high) = found.locked_supply_v.unwrap();
+    assert!((1.03..1.04).contains(&(low / row.gap_v)), "{low}");
+    assert!((1.055..1.06).contains(&(high / row.gap_v)), "{high}");
+    assert!((low..high).contains(&found.supply_v.value));
+    // Each alternative gives the rate at the supply of the bench, and is locked there too.
+    assert!(!found.alternatives.is_empty());
+    for other in &found.alternatives {
+        let mut bench = bench_of(&row);
+        match other.key.as_str() {
+            "charging.resistance" => bench.charging.resistance = exact(other.value),
+            "charging.capacitance" => bench.charging.capacitance = exact(other.value),
+            "gap.voltage" => bench.gap.voltage = exact(other.value),
+            key => panic!("{key}"),
+        }
+        let ripple = predict(&bench, None).unwrap().ripple.unwrap();
+        assert_eq!(ripple.locked.map(|locked| (locked.firings, locked.cycles)), Some((1, 1)), "{}", other.key);
+    }
+}
+
+#[test]
+fn a_lock_of_several_firings_is_told_with_its_range() {
+    let mut bench = bench_of(&rows("ripple").into_iter().find(|row| row.case.starts_with("B-1.05")).unwrap());
+    let found = target(&bench, 200.0).unwrap();
+    bench.supply.voltage = exact(found.supply_v.value);
+    let ripple = predict(&bench, None).unwrap().ripple.unwrap();
+    let locked = ripple.locked.unwrap();
+    assert_eq!((locked.firings, locked.cycles), (2, 1));
+    let lock = ripple.lock.unwrap();
+    assert!((lock.firing_rate_hz - 200.0).abs() < 1e-9);
+    assert!(lock.low_supply_v < found.supply_v.value && found.supply_v.value < lock.high_supply_v, "{lock:?}");
+    assert!(lock.largest_voltage_error > 0.0 && lock.largest_voltage_error < 0.01, "{lock:?}");
+    let said = ripple.words().join(" ");
+    assert!(said.contains("the rate stands at 200.00 /s") && said.contains("2 firings in one period"), "{said}");
+    // A gap that scatters by 1 % is not held by a lock that is narrower.
+    assert!(!ripple.slips && !said.contains("slips"), "{said}");
+    bench.gap.spread = exact(0.01);
+    let scattered = predict(&bench, None).unwrap().ripple.unwrap();
+    assert!(scattered.slips && scattered.words().join(" ").contains("slips in and out"), "{:?}", scattered.words());
+}
+
+#[test]
+fn a_mean_lag_under_ripple_moves_the_lock_and_not_the_rate_in_it() {
+    let row = rows("ripple").into_iter().find(|row| row.case.starts_with("B-1.05")).unwrap();
+    let mut bench = bench_of(&row);
+    let without = predict(&bench, None).unwrap().ripple.unwrap().lock.unwrap();
+    bench.gap.statistical_lag = exact(0.3e-3);
+    let found = predict(&bench, None).unwrap();
+    let with = found.ripple.as_ref().unwrap().lock.unwrap();
+    // A later breakdown needs a faster charge.
+    assert!(with.low_supply_v > without.low_supply_v && with.high_supply_v > without.high_supply_v, "{with:?}");
+    let middle = 0.5 * (with.low_supply_v + with.high_supply_v);
+    let locked = predict(&bench, Some(middle)).unwrap();
+    assert!((locked.firing_rate_hz.unwrap().value / 100.0 - 1.0).abs() < 1e-9);
 }
 
 #[test]
@@ -282,6 +343,21 @@ proptest! {
         moved[which] *= 1.0 + 1e-6;
         let (at, beyond) = (least(values)?, least(moved)?);
         prop_assert!((beyond / at - 1.0).abs() < 2e-6, "{} {} {}", at, beyond, which);
+    }
+
+    #[test]
+    fn under_ripple_too_the_setting_for_a_target_gives_the_target(
+        rate_hz in 30.0..900.0f64, ripple in 0.001..0.03f64, spread in 0.0..0.01f64, lag in 0.0..1e-4f64,
+    ) {
+        let mut bench = kilovolts();
+        bench.supply.ripple = exact(ripple);
+        bench.supply.ripple_frequency = exact(100.0);
+        bench.gap.spread = exact(spread);
+        bench.gap.statistical_lag = exact(lag);
+        let supply_v = supply_for_rate(&bench, rate_hz).unwrap();
+        let found = predict(&bench, Some(supply_v)).unwrap().firing_rate_hz.unwrap().value;
+        // The mean of a beat is good to some 1e-7; where a lock ends, what the curvature adds to the mean sets in at once.
+        prop_assert!((found / rate_hz - 1.0).abs() < 1e-6 + 2.0 * spread * spread, "{found} {rate_hz}");
     }
 
     #[test]

@@ -43,6 +43,14 @@ pub fn with_uncertainty(value: f64, u: f64, unit: &str) -> String {
     joined(&format!("{value_text} ± {}", to_place(u, last_place, exponent)), unit, prefix)
 }
 
+/// A number with its sign and so many decimals; what rounds to zero is `+0.00`, never `-0.00`.
+#[must_use]
+pub fn signed(value: f64, decimals: usize) -> String {
+    let text = format!("{value:+.decimals$}");
+    let is_zero = value.is_finite() && !text.contains(|digit: char| ('1'..='9').contains(&digit));
+    if is_zero { text.replacen('-', "+", 1) } else { text }
+}
+
 /// The quantity as text that [`super::parse_quantity`] reads back without loss (up to the last bit).
 #[must_use]
 pub fn quantity_text(quantity: &Quantity, dimension: Dimension) -> String {
@@ -158,6 +166,13 @@ mod tests {
         assert_eq!(with_uncertainty(437.0, 0.0996, "/s"), "437.00 ± 0.10 /s");
         assert_eq!(with_uncertainty(9.81e-3, 1.0e-6, "s"), "9.8100 ± 0.0010 ms");
         assert_eq!(with_uncertainty(1.0, 50.0, "V"), "0 ± 50 V");
+    }
+
+    #[test]
+    fn what_rounds_to_zero_has_no_minus() {
+        assert_eq!([signed(-0.004, 2), signed(-0.0, 1), signed(0.0, 0)], ["+0.00", "+0.0", "+0"]);
+        assert_eq!([signed(-0.006, 2), signed(12.0, 1)], ["-0.01", "+12.0"]);
+        assert_eq!(signed(f64::NEG_INFINITY, 1), "-inf");
     }
 
     #[test]

@@ -18,7 +18,7 @@ mod unit;
 
 pub use dimension::Dimension;
 pub use error::{BenchError, BenchFault};
-pub use format::{quantity_text, si, with_uncertainty};
+pub use format::{quantity_text, si, signed, with_uncertainty};
 pub use quantity::{Quantity, Tolerance};
 pub use read::parse;
 pub use series::{LayoutWord, Motion, Outage, RATE, SeriesDescription, SeriesEntry, SeriesFaults, parse_series};

@@ -4,8 +4,10 @@ use super::args::PredictArguments;
 use super::bench_file;
 use super::clip::{Order, clip};
 use super::exit::{Exit, Failure, say};
-use super::files::{self, SampleFormat};
+use super::files;
+use super::render::facts;
 use crate::bench::{self, Bench, Dimension, Quantity};
+use crate::model::finish::{FinishSettings, Finished};
 use crate::model::firings::Start;
 use crate::predict::{self, Target, parse_target, predict, sweep, target};
 use serde::Serialize;
@@ -119,7 +121,7 @@ fn wants_sound(arguments: &PredictArguments) -> bool {
     arguments.clip.is_some()
 }
 
-/// Writes the clip and plays it, as asked.
+/// Writes the clip, at the usual loudness and with what it is in its tags, and plays it, as asked.
 fn listen(arguments: &PredictArguments, bench: &Bench, supply_v: Option<f64>) -> Result<(), Failure> {
     if !wants_sound(arguments) {
         return Ok(());
@@ -132,14 +134,16 @@ fn listen(arguments: &PredictArguments, bench: &Bench, supply_v: Option<f64>) ->
         seed: 1,
         programme: None,
     };
-    let clip = clip(bench, &order)?;
+    let mut clip = clip(bench, &order)?;
+    clip.truth.title.clone_from(&bench.title);
+    let (finished, truth) = Finished::new(clip, FinishSettings::default()).map_err(Failure::usage)?;
     if let Some(place) = &arguments.clip {
-        files::write_clip(place, clip.renderer.clone(), CLIP_RATE_HZ, SampleFormat::Int16)
+        files::write_frames(place, finished.clone(), &facts(&finished, &truth))
             .map_err(|error| Failure::file(place, &error))?;
     }
     #[cfg(feature = "sound-card")]
     if arguments.play {
-        super::play::play(clip.renderer.collect(), CLIP_RATE_HZ)
+        super::play::play(finished.collect(), CLIP_RATE_HZ)
             .map_err(|error| Failure::Told(Exit::File, error.to_string()))?;
     }
     Ok(())

@@ -97,6 +97,13 @@ impl Circuit {
         Self { ripple, ..self }
     }
 
+    /// The same circuit with a longer pause between two charges, s: a lag between threshold and breakdown counts like the
+    /// time for which the gap conducts, for in neither does the capacitor charge towards the next firing.
+    #[must_use]
+    pub fn with_pause(self, more_s: f64) -> Self {
+        Self { conduction_s: self.conduction_s + more_s, ..self }
+    }
+
     /// Time constant of the charging with leakage, s; infinite for a pure ramp.
     #[must_use]
     pub fn time_constant_s(&self) -> f64 {

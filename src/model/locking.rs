@@ -2,8 +2,8 @@
 //!
 //! A firing at phase θ of the ripple (in turns) is followed by one at θ + f·P(θ), P the exact period from there. Where the
 //! map θ → θ + f·P(θ) has a stable fixed point the gap locks: one firing in every n periods of the ripple, with no scatter,
-//! over a whole range of supply settings; q firings in p periods of the ripple are locks of the map applied q times. Outside
-//! of the locks the phase runs on and the periods beat. (Circle maps; textbook theory of synchronisation.)
+//! over a whole range of supply settings; q firings in p periods of the ripple are locks of the map applied q times (patterns, found
+//! up to twelve firings). Outside of the locks the phase runs on and the periods beat. (Circle maps; textbook theory of synchronisation.)
 //!
 //! Units: s, Hz, V; phases in turns. Assumes a gap that breaks down at the same voltage every time.
 
@@ -29,6 +29,10 @@ const REPEATS: f64 = 1e-7;
 const SLOPE_STEP: f64 = 1e-5;
 /// How far the closed form of a lock's edge may differ from the map, turns.
 const EDGE_AGREES: f64 = 2e-3;
+/// Turns by which a mean may miss a pattern for it to be looked for: more than half of the widest.
+const NEAR_PATTERN: f64 = 1e-2;
+/// Turns over which a pattern must hold on for it to be more than the last digits of the map.
+const LEAST_PATTERN: f64 = 1e-10;
 /// Halvings of an edge of a lock.
 const HALVINGS: usize = 44;
 
@@ -159,8 +163,38 @@ impl<'a> PhaseMap<'a> {
         None
     }
 
+    /// Least and greatest advance over a pattern, in turns less its whole number.
+    fn pattern_extremes(&self, firings: u32, cycles: u32) -> Result<(f64, f64), NoFiring> {
+        let (mut least, mut most) = (f64::INFINITY, f64::NEG_INFINITY);
+        for k in 0..PHASES {
+            // The orbit of one firing after the other carries the phase by about 1/firings: a little more than that part of a
+            // turn shows all.
+            let start = 1.2 / f64::from(firings) * k as f64 / PHASES as f64;
+            let mut turns = start;
+            for _ in 0..firings {
+                turns += self.turned(turns)?;
+            }
+            let advance = turns - start - f64::from(cycles);
+            (least, most) = (least.min(advance), most.max(advance));
+        }
+        Ok((least, most))
+    }
+
+    /// A pattern that holds the phase too weakly to settle within the firings that are followed.
+    fn weak_pattern(&self, mean: f64) -> Option<Lock> {
+        (2..=LONGEST_PATTERN as u32).find_map(|firings| {
+            let cycles = (f64::from(firings) * mean).round();
+            if cycles < 1.0 || (f64::from(firings) * mean - cycles).abs() > NEAR_PATTERN {
+                return None;
+            }
+            let (least, most) = self.pattern_extremes(firings, cycles as u32).ok()?;
+            let holds = least <= 0.0 && most >= 0.0 && most - least > LEAST_PATTERN;
+            holds.then_some(Lock { firings, cycles: cycles as u32, slope: None })
+        })
+    }
+
     fn summary(&self, phases: &[f64], turned: &[f64]) -> Rippled {
-        let lock = pattern(phases, turned);
+        let mut lock = pattern(phases, turned);
         let count = turned.len();
         let weights: Vec<f64> = match lock {
             Some(lock) => {
@@ -170,7 +204,11 @@ impl<'a> PhaseMap<'a> {
             None => (0..count).map(|k| smooth((k as f64 + 0.5) / count as f64)).collect(),
         };
         let total: f64 = weights.iter().sum();
-        let mean = turned.iter().zip(&weights).map(|(turned, weight)| turned * weight).sum::<f64>() / total;
+        let mut mean = turned.iter().zip(&weights).map(|(turned, weight)| turned * weight).sum::<f64>() / total;
+        lock = lock.or_else(|| self.weak_pattern(mean));
+        if let Some(lock) = lock {
+            mean = f64::from(lock.cycles) / f64::from(lock.firings);
+        }
         let square = |turned: f64| (turned - mean) * (turned - mean);
         let variance =
             turned.iter().zip(&weights).map(|(turned, weight)| square(*turned) * weight).sum::<f64>() / total;
@@ -236,6 +274,26 @@ pub fn lock_range(
     }
     let low = falling_zero(near_v, &|supply_v| extremes(supply_v).0)?;
     let high = falling_zero(near_v, &|supply_v| extremes(supply_v).1)?;
+    (low < high).then_some((low, high))
+}
+
+/// Lowest and highest supply voltage at which the gap stays in a pattern of several firings; `within_v` is a setting in it.
+///
+/// The edges are where the phase, after the firings of the pattern, only just comes back anywhere on its way round. Such locks
+/// are of a higher order in the ripple and mostly very narrow.
+pub fn pattern_range(
+    circuit_at: &dyn Fn(f64) -> Option<Circuit>,
+    strength: Strength,
+    lock: Lock,
+    within_v: f64,
+) -> Option<(f64, f64)> {
+    let extremes = |supply_v: f64| {
+        let circuit = circuit_at(supply_v)?;
+        PhaseMap::new(&circuit, strength)?.pattern_extremes(lock.firings, lock.cycles).ok()
+    };
+    let least = |supply_v: f64| extremes(supply_v).map_or(f64::INFINITY, |(least, _)| least);
+    let most = |supply_v: f64| extremes(supply_v).map_or(f64::INFINITY, |(_, most)| most);
+    let (low, high) = (falling_zero(within_v, &least)?, falling_zero(within_v, &most)?);
     (low < high).then_some((low, high))
 }
 

@@ -37,6 +37,7 @@ impl Random {
     }
 
     /// Uniform between 0 and 1, both excluded; 53 bits.
+    #[inline]
     pub fn uniform(&mut self) -> f64 {
         ((self.generator.next_u64() >> 11) as f64 + 0.5) * 2f64.powi(-53)
     }

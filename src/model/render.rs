@@ -238,7 +238,7 @@ impl<I: Iterator<Item = Firing>> Renderer<I> {
         }
         let mut audio = self.decimator.output();
         if let Some(hum) = &self.hum {
-            audio += hum.at(self.next as i64);
+            audio += hum.at(self.next);
         }
         let written = self.recorder.write(audio * self.scale, self.next);
         self.next += 1;

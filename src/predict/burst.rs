@@ -1,7 +1,7 @@
 //! The ring of every spark: frequencies, quality, cycles, and what the receiver gets of it.
 
 use super::setting::Setting;
-use crate::bench::{Bench, si, with_uncertainty};
+use crate::bench::{Bench, si, signed, with_uncertainty};
 use crate::model::receiver::Burst;
 use crate::model::ring::{self, Mode, Network, Readings};
 use serde::{Deserialize, Serialize};
@@ -158,9 +158,9 @@ impl BurstForecast {
             && (simple_hz / self.ring_hz - 1.0).abs() > 0.002
         {
             said.push(format!(
-                "1/(2π√(L·C)) of coil and both capacitors, which leaves out the leads, would say {}, {:+.1} %",
+                "1/(2π√(L·C)) of coil and both capacitors, which leaves out the leads, would say {}, {} %",
                 hz(simple_hz),
-                100.0 * (simple_hz / self.ring_hz - 1.0)
+                signed(100.0 * (simple_hz / self.ring_hz - 1.0), 1)
             ));
         }
         if let Some(count) = self.arc_half_cycles {
@@ -171,9 +171,9 @@ impl BurstForecast {
         said.extend(self.readings.iter().flat_map(reading_words));
         if let (Some(strength), Some(share)) = (self.strength_v_s, self.strength_share) {
             said.push(format!(
-                "the receiver gets an impulse of {:.3e} V·s at its tuned frequency, {:+.1} dB against the ring frequency",
+                "the receiver gets an impulse of {:.3e} V·s at its tuned frequency, {} dB against the ring frequency",
                 strength,
-                20.0 * share.log10()
+                signed(20.0 * share.log10(), 1)
             ));
         }
         said

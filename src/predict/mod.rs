@@ -165,7 +165,7 @@ fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) ->
     let curvature_s = setting.curvature_s();
     // At the edge of firing there is a period only with the ripple.
     let charged = smooth.or_else(|| setting.propagated_at_edge(ripple::rippled_period)).map(|charged| {
-        let mean_s = rippled.map_or(charged.value, |rippled| rippled.mean_period_s + setting.lag_s() + curvature_s);
+        let mean_s = rippled.map_or(charged.value, |rippled| ripple::mean_with_curvature(&rippled, curvature_s));
         Propagated { value: mean_s, ..charged }
     });
     let period_s = charged.map(Propagated::positive);
@@ -207,7 +207,7 @@ fn forecast(setting: &Setting<'_>, thorough: bool, locks: &mut ripple::Locks) ->
         hazards: notes::hazards(setting),
         cautions: CAUTIONS.map(str::to_owned).to_vec(),
         notes,
-        ripple: rippled.and_then(|rippled| setting.ripple_forecast(&rippled, locks)),
+        ripple: rippled.and_then(|rippled| setting.ripple_forecast(&rippled, thorough, locks)),
         rate_drift_per_s: setting.rate_drift_per_s(),
         jitter,
         burst,

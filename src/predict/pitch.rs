@@ -1,6 +1,6 @@
 //! How a firing rate is heard: musical pitch, or clicks.
 
-use crate::bench::{Dimension, parse_quantity};
+use crate::bench::{Dimension, parse_quantity, signed};
 use serde::{Deserialize, Serialize};
 use thiserror::Error;
 
@@ -107,7 +107,7 @@ impl Pitch {
     /// In words: `G2 +35 cents`, `flutter`, `separate clicks`.
     #[must_use]
     pub fn words(&self) -> String {
-        let note = format!("{} {:+.0} cents", self.note, self.cents);
+        let note = format!("{} {} cents", self.note, signed(self.cents, 0));
         match self.hearing {
             Hearing::SeparateClicks => "separate clicks, no pitch".to_owned(),
             Hearing::Flutter => format!("flutter, hardly a pitch yet (near {note})"),

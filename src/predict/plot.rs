@@ -1,7 +1,7 @@
 //! A range of settings as a drawing: rate, pitch and jitter against the supply voltage.
 
 use super::{Prediction, Sweep};
-use crate::bench::si;
+use crate::bench::{si, signed};
 use std::fmt::Write;
 
 const WIDTH: f64 = 760.0;
@@ -128,7 +128,13 @@ fn rate_panel(out: &mut String, sweep: &Sweep, x: &Axis) {
     for tick in y.ticks() {
         left_tick(out, y.at(tick), &si(tick, "", 3));
         if let Some(pitch) = super::pitch(tick).filter(|pitch| pitch.hearing == super::Hearing::Pitch) {
-            text(out, WIDTH - RIGHT + 6.0, y.at(tick) + 4.0, "start", &format!("{} {:+.0}", pitch.note, pitch.cents));
+            text(
+                out,
+                WIDTH - RIGHT + 6.0,
+                y.at(tick) + 4.0,
+                "start",
+                &format!("{} {}", pitch.note, signed(pitch.cents, 0)),
+            );
         }
     }
     text(out, 8.0, RATE.0 - 6.0, "start", "firings/s (band: 95 %)");

@@ -43,5 +43,14 @@ pub(super) fn remarks(bench: &Bench, settings: &[Prediction], locks: &Locks) -> 
             si(lock.high_supply_v, "V", 4)
         ));
     }
+    let patterns =
+        settings.iter().filter_map(|setting| setting.ripple.as_ref()?.locked).filter(|lock| lock.firings > 1);
+    let patterns = patterns.count();
+    if patterns > 0 {
+        said.push(format!(
+            "locked in a pattern of several firings (firings:ripple periods in the table): {patterns} of the settings; at one \
+             setting predict tells how far such a lock reaches"
+        ));
+    }
     said
 }

@@ -2,7 +2,7 @@
 
 use super::figures::{self, Figure};
 use super::propagate::propagate;
-use super::ripple::Locks;
+use super::ripple::{Locks, rippled_period};
 use super::{FORMAT, PredictError, Prediction, Setting, forecast, notes};
 use crate::bench::{Bench, Quantity};
 use crate::estimate::Estimate;
@@ -14,6 +14,16 @@ use std::cmp::Ordering;
 const MOST_SUPPLY_V: f64 = 1e6;
 /// Largest factor by which another part is changed.
 const MOST_FACTOR: f64 = 1000.0;
+/// Least number of settings that is worth a thread of its own.
+const LEAST_STRETCH: usize = 16;
+/// First reach of the search around the answer without ripple, in the logarithm.
+const HELD_REACH: f64 = 1e-3;
+/// Halvings of that search.
+const HALVINGS: usize = 44;
+/// Relative difference of rates that are the same: the mean of a beat is that good.
+const HELD: f64 = 1e-9;
+/// Least extent of a lock, as a share of the setting, that is told.
+const LEAST_LOCK: f64 = 1e-6;
 /// Steps of the search for such a factor, on either side.
 const FACTOR_STEPS: i32 = 60;
 
@@ -38,21 +48,50 @@ pub fn sweep(bench: &Bench, low_v: f64, high_v: f64, count: usize) -> Result<Swe
         return Err(PredictError::Range { low: low_v, high: high_v, count });
     }
     let step_v = (high_v - low_v) / (count - 1) as f64;
-    let mut locks = Locks::new();
-    let settings = (0..count)
-        .map(|k| forecast(&Setting::new(bench, Some(low_v + step_v * k as f64))?, false, &mut locks))
-        .collect::<Result<Vec<_>, _>>()?;
+    let supplies: Vec<f64> = (0..count).map(|k| low_v + step_v * k as f64).collect();
+    let (settings, locks) = in_parallel(bench, &supplies)?;
     let remarks = super::remarks::remarks(bench, &settings, &locks);
     Ok(Sweep { format: FORMAT.to_owned(), settings, remarks })
 }
 
-/// The supply voltage in V at which the bench fires at a rate in Hz, ripple left out.
+/// Predictions at all settings with the locks met on the way, a stretch of the range on each core.
+fn in_parallel(bench: &Bench, supplies: &[f64]) -> Result<(Vec<Prediction>, Locks), PredictError> {
+    let cores = std::thread::available_parallelism().map_or(1, usize::from);
+    let stretch = supplies.len().div_ceil(cores).max(LEAST_STRETCH);
+    let one = |supplies: &[f64]| {
+        let mut locks = Locks::new();
+        let forecast_at = |supply_v: &f64| forecast(&Setting::new(bench, Some(*supply_v))?, false, &mut locks);
+        let settings = supplies.iter().map(forecast_at).collect::<Result<Vec<_>, PredictError>>()?;
+        Ok((settings, locks))
+    };
+    let parts: Vec<Result<(Vec<Prediction>, Locks), PredictError>> = std::thread::scope(|scope| {
+        let workers: Vec<_> = supplies.chunks(stretch).map(|supplies| scope.spawn(move || one(supplies))).collect();
+        let joined = |worker: std::thread::ScopedJoinHandle<'_, _>| {
+            worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic))
+        };
+        workers.into_iter().map(joined).collect()
+    });
+    let (mut settings, mut locks) = (Vec::new(), Locks::new());
+    for part in parts {
+        let (some, met) = part?;
+        settings.extend(some);
+        locks.extend(met);
+    }
+    Ok((settings, locks))
+}
+
+/// The supply voltage in V at which the bench fires at a rate in Hz; where the ripple holds the rate over a range, its middle.
 ///
 /// # Errors
 /// [`PredictError::Rate`] for a senseless rate, [`PredictError::Missing`] if the bench lacks a part,
 /// [`PredictError::Unreachable`] if no setting gives the rate (a constant current, a current limit or the conduction
 /// time bounds it).
 pub fn supply_for_rate(bench: &Bench, rate_hz: f64) -> Result<f64, PredictError> {
+    supplies_for_rate(bench, rate_hz).map(|(low_v, high_v)| 0.5 * (low_v + high_v))
+}
+
+/// Lowest and highest supply voltage of that rate, V; the same where no lock holds it.
+fn supplies_for_rate(bench: &Bench, rate_hz: f64) -> Result<(f64, f64), PredictError> {
     if !(rate_hz.is_finite() && rate_hz > 0.0) {
         return Err(PredictError::Rate(rate_hz));
     }
@@ -67,14 +106,41 @@ pub fn supply_for_rate(bench: &Bench, rate_hz: f64) -> Result<f64, PredictError>
     // A gap that has not recovered fires below the least setting too; that is not what is asked for.
     let (low_v, high_v) = (just_above(least_v), MOST_SUPPLY_V.max(2.0 * least_v));
     let (low_hz, high_hz) = (rate(low_v), rate(high_v));
+    let unreachable = PredictError::Unreachable { rate_hz, low_hz, high_hz, most_v: high_v };
     if high_hz < rate_hz || low_hz > rate_hz {
-        return Err(PredictError::Unreachable { rate_hz, low_hz, high_hz, most_v: high_v });
+        return Err(unreachable);
     }
     // In the logarithm of how far above the least setting, where the rate is a tame function.
     let at = |x: f64| least_v + x.exp();
     let found =
-        bracketed((low_v - least_v).ln(), (high_v - least_v).ln(), |x| (rate(at(x)).max(1e-300) / rate_hz).ln());
-    Ok(at(found))
+        at(bracketed((low_v - least_v).ln(), (high_v - least_v).ln(), |x| (rate(at(x)).max(1e-300) / rate_hz).ln()));
+    if bench.supply.ripple.is_none_or(|ripple| ripple.value == 0.0) {
+        return Ok((found, found));
+    }
+    let rippled = |supply_v: f64| rippled_period(bench, Some(supply_v), gap_v).map_or(0.0, f64::recip);
+    let ends = held(&|x| (rippled(found * x.exp()) / rate_hz).ln()).ok_or(unreachable)?;
+    Ok((found * ends.0.exp(), found * ends.1.exp()))
+}
+
+/// The range around zero over which a function that never falls is zero: a point, or the extent of a lock. None if it
+/// does not change its sign within a factor of about e.
+fn held(excess: &dyn Fn(f64) -> f64) -> Option<(f64, f64)> {
+    let mut reach = HELD_REACH;
+    while excess(-reach) >= 0.0 || excess(reach) <= 0.0 {
+        reach *= 2.0;
+        if reach > 1.0 {
+            return None;
+        }
+    }
+    let edge = |beyond: &dyn Fn(f64) -> bool| {
+        let (mut low, mut high) = (-reach, reach);
+        for _ in 0..HALVINGS {
+            let middle = 0.5 * (low + high);
+            if beyond(excess(middle)) { high = middle } else { low = middle }
+        }
+        0.5 * (low + high)
+    };
+    Some((edge(&|excess| excess >= -HELD), edge(&|excess| excess > HELD)))
 }
 
 /// A voltage a little above: the period at the least setting itself is infinite.
@@ -102,7 +168,10 @@ pub struct Target {
     pub firing_rate_hz: f64,
     /// Supply voltage that gives it, V; its uncertainty is that of all parts but the supply.
     pub supply_v: Estimate,
-    /// Supply voltage for one cent of pitch, V.
+    /// Settings over which the ripple holds the gap at this rate, V; none where it does not lock there.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub locked_supply_v: Option<(f64, f64)>,
+    /// Supply voltage for one cent of pitch, V; ripple left out.
     pub supply_per_cent_v: f64,
     /// Other parts that would give it at the supply voltage of the bench.
     pub alternatives: Vec<Alternative>,
@@ -113,7 +182,8 @@ pub struct Target {
 /// # Errors
 /// As [`supply_for_rate`].
 pub fn target(bench: &Bench, rate_hz: f64) -> Result<Target, PredictError> {
-    let supply_v = supply_for_rate(bench, rate_hz)?;
+    let (low_v, high_v) = supplies_for_rate(bench, rate_hz)?;
+    let supply_v = 0.5 * (low_v + high_v);
     let setting = Setting::new(bench, Some(supply_v))?;
     let gap = setting.gap.as_ref().map(|gap| gap.quantity());
     let slope = setting.slope_hz_per_v().unwrap_or(f64::INFINITY);
@@ -122,6 +192,7 @@ pub fn target(bench: &Bench, rate_hz: f64) -> Result<Target, PredictError> {
     Ok(Target {
         firing_rate_hz: rate_hz,
         supply_v: Estimate::normal(supply_v, u_v),
+        locked_supply_v: (high_v - low_v > LEAST_LOCK * supply_v).then_some((low_v, high_v)),
         supply_per_cent_v: rate_hz * std::f64::consts::LN_2 / 1200.0 / slope,
         alternatives: alternatives(bench, rate_hz),
     })
@@ -150,14 +221,24 @@ fn alternatives(bench: &Bench, rate_hz: f64) -> Vec<Alternative> {
         let hidden = key == "gap.spacing" && bench.gap.voltage.is_some();
         let mut other = bench.clone();
         let Some(now) = (*slot(&mut other)).filter(|_| !hidden) else { continue };
-        let rate = |factor: f64| {
+        let rate = |factor: f64, period: Figure| {
             let mut other = bench.clone();
             *slot(&mut other) = Some(Quantity::exact(now.value * factor));
             let gap_v = crate::model::breakdown::gap_voltage(&other).ok()?.voltage_v;
-            let period: Figure = figures::mean_period;
             period(&other, supply_v, gap_v).map(f64::recip)
         };
-        if let Some(factor) = factor_for(rate_hz, &rate) {
+        let smooth = |factor: f64| rate(factor, figures::mean_period);
+        let factor = factor_for(rate_hz, &smooth).and_then(|factor| {
+            if bench.supply.ripple.is_none_or(|ripple| ripple.value == 0.0) {
+                return Some(factor);
+            }
+            // The rate falls as most parts grow.
+            let side = if smooth(factor * 1.001)? > smooth(factor * 0.999)? { 1.0 } else { -1.0 };
+            let rippled = |x: f64| rate(factor * (side * x).exp(), rippled_period).unwrap_or(0.0);
+            let ends = held(&|x| (rippled(x) / rate_hz).ln())?;
+            Some(factor * (side * 0.5 * (ends.0 + ends.1)).exp())
+        });
+        if let Some(factor) = factor {
             found.push(Alternative {
                 key: key.to_owned(),
                 now: now.value,

@@ -1,7 +1,7 @@
 //! A prediction as text that a person reads at a glance.
 
 use super::{Prediction, Sweep, Target};
-use crate::bench::{si, with_uncertainty};
+use crate::bench::{si, signed, with_uncertainty};
 use crate::estimate::Estimate;
 use crate::model::breakdown::GapVoltage;
 use std::fmt::Write;
@@ -54,7 +54,7 @@ fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 16] {
         ("slope", prediction.slope_hz_per_v.map(|slope| format!("{} of supply", si(1e3 * slope, "Hz/kV", 3)))),
         ("period", prediction.period_s.map(|period| with_interval(period, "s"))),
         ("period jitter", jitter(prediction)),
-        ("rate drifts", prediction.rate_drift_per_s.map(|drift| format!("{:+.3} % per minute", 6000.0 * drift))),
+        ("rate drifts", prediction.rate_drift_per_s.map(|drift| format!("{} % per minute", signed(6000.0 * drift, 3)))),
         ("gap voltage", prediction.gap_voltage_v.map(|gap| with_uncertainty(gap.value, gap.u, "V"))),
         ("by", prediction.gap.as_ref().map(law)),
         ("rule 3 kV/mm", prediction.gap.as_ref().and_then(rule)),
@@ -76,7 +76,14 @@ fn heard(prediction: &Prediction) -> Option<String> {
         && high.midi - low.midi > 0.02
         && pitch.hearing == super::Hearing::Pitch
     {
-        let _ = write!(words, "; from {} {:+.0} to {} {:+.0} cents", low.note, low.cents, high.note, high.cents);
+        let _ = write!(
+            words,
+            "; from {} {} to {} {} cents",
+            low.note,
+            signed(low.cents, 0),
+            high.note,
+            signed(high.cents, 0)
+        );
     }
     Some(words)
 }
@@ -182,7 +189,7 @@ fn row(setting: &Prediction) -> String {
     let share = setting.period_jitter_s.zip(setting.period_s).map(|(jitter, period)| jitter.value / period.value);
     let jitter = share.map_or_else(String::new, |share| format!("{} %", si(100.0 * share, "", 2)));
     let mut heard = setting.pitch.as_ref().map_or_else(String::new, |pitch| match pitch.hearing {
-        super::Hearing::Pitch => format!("{} {:+.0} cents", pitch.note, pitch.cents),
+        super::Hearing::Pitch => format!("{} {} cents", pitch.note, signed(pitch.cents, 0)),
         _ => pitch.words(),
     });
     if let Some(locked) = setting.ripple.as_ref().and_then(|ripple| ripple.locked) {
@@ -198,6 +205,9 @@ fn target_text(target: &Target) -> String {
     if target.supply_v.u > 0.0 {
         let (low, high) = (si(target.supply_v.low, "V", 4), si(target.supply_v.high, "V", 4));
         let _ = write!(out, " (95 %, by the tolerances of the other parts: {low} to {high})");
+    }
+    if let Some((low, high)) = target.locked_supply_v {
+        let _ = write!(out, "; the ripple holds it at that rate from {} to {}", si(low, "V", 4), si(high, "V", 4));
     }
     let _ = writeln!(out, "; {} of supply are one cent", si(target.supply_per_cent_v, "V", 2));
     for other in &target.alternatives {

@@ -1,12 +1,15 @@
 //! How far a measurement is from the truth of a rendered clip, in intervals.
 //!
-//! The truth is what was realised in the clip. Intervals are for the process (what a longer recording would settle to), so a
+//! The truth is what was realised in the clip, in the stretches that the measurement speaks of. Intervals are for the process (what a longer recording would settle to), so a
 //! figure of a short clip may lie a little outside of them more often than one in twenty.
 
 use super::Measurement;
+use crate::bench::{si, signed};
 use crate::estimate::Estimate;
-use crate::model::truth::Truth;
-use crate::rhythm::Verdict;
+use crate::firing::Firing;
+use crate::model::firings::{Outage, Realised};
+use crate::model::truth::{TrainTruth, Truth};
+use crate::rhythm::{Stretch, Verdict};
 use serde::{Deserialize, Serialize};
 use std::fmt::Write;
 
@@ -45,6 +48,8 @@ pub struct Comparison {
     pub verdict: Verdict,
     /// True if a gap was found where there is one, and none where there is none.
     pub verdict_holds: bool,
+    /// Stretches of the recording that the figures are of, measured and true; 1 if the gap fires all the time.
+    pub stretches: usize,
     /// The figures.
     pub figures: Vec<Compared>,
 }
@@ -70,7 +75,7 @@ pub fn compare(measurement: &Measurement, truth: &Truth) -> Comparison {
         }
     };
     if let Some(train) = truth.trains.first() {
-        let realised = &train.realised;
+        let realised = realised_in(train, &reading.stretches, truth.receiver_delay_s);
         put("firing_rate_hz", realised.firing_rate_hz, reading.firing_rate_hz);
         put("period_s", realised.period_s, reading.period_s);
         put("period_jitter_s", realised.period_jitter_s, reading.period_jitter_s);
@@ -94,8 +99,27 @@ pub fn compare(measurement: &Measurement, truth: &Truth) -> Comparison {
         trains: truth.trains.len(),
         verdict: reading.verdict,
         verdict_holds: found != truth.trains.is_empty(),
+        stretches: reading.stretches.len().max(1),
         figures,
     }
+}
+
+/// What a train did in the stretches that a measurement speaks of: where it tells of several, what happened between them is no
+/// part of its figures.
+fn realised_in(train: &TrainTruth, stretches: &[Stretch], delay_s: f64) -> Realised {
+    let (Some(period_s), true) = (train.realised.period_s, stretches.len() > 1) else { return train.realised };
+    // A stretch ends at its last click, whose time is read with some error.
+    let slack_s = 0.25 * period_s;
+    let inside = |time_s: f64| {
+        let heard_s = time_s + delay_s;
+        stretches.iter().any(|s| (s.from_s - slack_s..=s.to_s + slack_s).contains(&heard_s))
+    };
+    let firings: Vec<Firing> = train.firings.iter().filter(|firing| inside(firing.time_s)).copied().collect();
+    let between = |pair: &[Stretch]| Outage {
+        from_s: pair[0].to_s - delay_s + slack_s,
+        to_s: pair[1].from_s - delay_s - slack_s,
+    };
+    Realised::of(&firings, &stretches.windows(2).map(between).collect::<Vec<_>>())
 }
 
 /// Distance in half intervals; an interval of no width covers only the truth itself.
@@ -117,24 +141,62 @@ pub fn comparison_text(comparison: &Comparison) -> String {
     };
     // Writing to a string cannot fail.
     let _ = writeln!(text, "against the truth: {heard}");
+    if comparison.stretches > 1 {
+        let _ =
+            writeln!(text, "  (measured and true in the {} stretches in which it fires evenly)", comparison.stretches);
+    }
     for figure in &comparison.figures {
         let line = match (figure.measured, figure.intervals) {
             (Some(measured), Some(intervals)) => format!(
-                "measured {:.6e}, {:+.2} half intervals off: {}",
-                measured.value,
-                intervals,
+                "measured {:<22} {:>6} half intervals off: {}",
+                in_units(&figure.quantity, measured.value),
+                signed(intervals, 2),
                 if figure.covered() { "covered" } else { "NOT covered" }
             ),
             _ => "not measured".to_owned(),
         };
-        let _ = writeln!(text, "  {:<28} {:.6e}  {line}", figure.quantity, figure.truth);
+        let _ = writeln!(text, "  {:<28} {:<22} {line}", figure.quantity, in_units(&figure.quantity, figure.truth));
     }
     text
+}
+
+/// A figure in the unit that the name of its quantity ends in, to six digits.
+fn in_units(quantity: &str, value: f64) -> String {
+    let name = quantity.split_once(' ').map_or(quantity, |(name, _)| name);
+    match name.rsplit_once('_') {
+        Some(("drift_per", _)) => format!("{} % per minute", signed(6000.0 * value, 3)),
+        Some((_, "hz")) => si(value, "/s", 6),
+        Some((_, "v")) => si(value, "V", 6),
+        _ => si(value, "s", 6),
+    }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn only_the_stretches_that_were_measured_count() {
+        let at = |time_s: f64| Firing { time_s, voltage_v: 5e3, kind: crate::firing::EventKind::Firing };
+        // 100 a second, a burst of 500 a second from 1 s to 1.2 s, then 100 a second again.
+        let even = |from_s: f64, count: i32, period_s: f64| (0..count).map(move |k| from_s + f64::from(k) * period_s);
+        let times = even(0.0, 100, 0.01).chain(even(1.0, 100, 0.002)).chain(even(1.2, 100, 0.01));
+        let train = TrainTruth::of(times.map(at).collect(), &[]);
+        assert!(train.realised.firing_rate_hz.unwrap() > 120.0);
+        let stretch = |from_s: f64, to_s: f64| Stretch { from_s, to_s };
+        let found = realised_in(&train, &[stretch(0.0011, 0.9909), stretch(1.201, 2.191)], 0.001);
+        assert_eq!(found.firings, 200);
+        assert!((found.firing_rate_hz.unwrap() - 100.0).abs() < 1e-9 && found.period_jitter_s.unwrap() < 1e-9);
+        assert_eq!(realised_in(&train, &[stretch(0.0, 2.2)], 0.001), train.realised);
+    }
+
+    #[test]
+    fn figures_are_shown_in_their_units() {
+        assert_eq!(in_units("firing_rate_hz of train 2", 423.502), "423.502 /s");
+        assert_eq!(in_units("period_jitter_s", 14.64e-6), "14.6400 µs");
+        assert_eq!(in_units("gap_voltage_v", 5200.0), "5.20000 kV");
+        assert_eq!(in_units("drift_per_s", -1e-8), "+0.000 % per minute");
+    }
 
     #[test]
     fn distances_are_counted_in_the_half_interval_on_the_side_of_the_truth() {

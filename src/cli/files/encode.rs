@@ -2,12 +2,11 @@
 //!
 //! Tags: a LIST INFO chunk behind the samples of a WAV, Vorbis comments in a FLAC.
 
+use super::flac::write_flac;
 use super::write::write_atomically;
 use super::{FileError, STANDARD_STREAM};
 use dasp::Sample;
 use dasp::sample::{FromSample, I24};
-use flacenc::component::{BitRepr, MetadataBlockData};
-use flacenc::error::Verify;
 use std::io::{self, Cursor, Seek, SeekFrom, Write};
 
 /// How samples are stored.
@@ -26,7 +25,7 @@ pub enum SampleFormat {
 }
 
 impl SampleFormat {
-    fn bits(self) -> u16 {
+    pub(super) fn bits(self) -> u16 {
         match self {
             Self::Int16 => 16,
             Self::Int24 => I24_BITS,
@@ -35,7 +34,7 @@ impl SampleFormat {
     }
 
     /// The nearest integer sample.
-    fn quantize(self, sample: f32) -> i32 {
+    pub(super) fn quantize(self, sample: f32) -> i32 {
         match self {
             Self::Int16 => i32::from(nearest::<i16>(sample, self.bits())),
             Self::Int24 | Self::Float32 => nearest::<I24>(sample, I24_BITS).inner(),
@@ -70,26 +69,13 @@ pub struct ClipFacts {
 }
 
 impl ClipFacts {
-    fn width(&self) -> u16 {
+    pub(super) fn width(&self) -> u16 {
         self.channels.max(1)
     }
 }
 
-/// Writes a mono clip without tags: FLAC if the name ends in `.flac`, WAV if it ends in `.wav` or is `-` (standard output).
-///
-/// # Errors
-/// As [`write_frames`].
-pub fn write_clip(
-    name: &str,
-    samples: impl IntoIterator<Item = f32>,
-    sample_rate_hz: u32,
-    format: SampleFormat,
-) -> Result<(), FileError> {
-    write_frames(name, samples, &ClipFacts { channels: 1, sample_rate_hz, format, ..ClipFacts::default() })
-}
-
-/// Writes interleaved samples: FLAC if the name ends in `.flac`, WAV if it ends in `.wav` or is `-` (standard output). A WAV
-/// file is written as the samples come; the others are made in memory.
+/// Writes interleaved samples: FLAC if the name ends in `.flac`, WAV if it ends in `.wav` or is `-` (standard output). Files
+/// are written as the samples come; standard output is made in memory first.
 ///
 /// # Errors
 /// [`FileError`] for another ending, a format that the file cannot hold, or a place that cannot be written.
@@ -99,10 +85,7 @@ pub fn write_frames(name: &str, samples: impl IntoIterator<Item = f32>, facts: &
         Some("flac") if facts.format == SampleFormat::Float32 => {
             Err(FileError::Broken("FLAC holds no floating point; choose 16 or 24 bits, or WAV".to_owned()))
         }
-        Some("flac") => {
-            let bytes = flac_bytes(samples, facts).map_err(FileError::Broken)?;
-            write_atomically(name, |out| out.write_all(&bytes))
-        }
+        Some("flac") => write_atomically(name, |out| write_flac(out, samples, facts)),
         _ if name == STANDARD_STREAM => {
             let mut bytes = Cursor::new(Vec::new());
             write_wav(&mut bytes, samples, facts)
@@ -175,56 +158,8 @@ fn append_tags(out: &mut (impl Write + Seek), facts: &ClipFacts) -> io::Result<(
     Ok(())
 }
 
-fn software() -> String {
+pub(super) fn software() -> String {
     format!("gaptone {}", env!("CARGO_PKG_VERSION"))
-}
-
-fn flac_bytes(samples: impl IntoIterator<Item = f32>, facts: &ClipFacts) -> Result<Vec<u8>, String> {
-    let told = |what: &str, error: &dyn std::fmt::Debug| format!("cannot be encoded as FLAC: {what} ({error:?})");
-    let config = flacenc::config::Encoder::default().into_verified().map_err(|error| told("settings", &error.1))?;
-    let integers: Vec<i32> = samples.into_iter().map(|sample| facts.format.quantize(sample)).collect();
-    let source = flacenc::source::MemSource::from_samples(
-        &integers,
-        usize::from(facts.width()),
-        usize::from(facts.format.bits()),
-        facts.sample_rate_hz as usize,
-    );
-    let mut stream = flacenc::encode_with_fixed_block_size(&config, source, config.block_size)
-        .map_err(|error| told("samples", &error))?;
-    // The smallest block leaves the last one out (RFC 9639, 8.2); the encoder counts it, and readers then take the
-    // stream for one of varying blocks.
-    stream
-        .stream_info_mut()
-        .set_block_sizes(config.block_size, config.block_size)
-        .map_err(|error| told("block size", &error))?;
-    if facts.title.is_some() || facts.comment.is_some() {
-        let block = MetadataBlockData::new_unknown(VORBIS_COMMENT, &vorbis_comment(facts))
-            .map_err(|error| told("tags", &error))?;
-        stream.add_metadata_block(block);
-    }
-    let mut sink = flacenc::bitsink::ByteSink::new();
-    stream.write(&mut sink).map_err(|error| told("output", &error))?;
-    Ok(sink.into_inner())
-}
-
-/// Number of the block of Vorbis comments (RFC 9639, 8.1).
-const VORBIS_COMMENT: u8 = 4;
-
-/// Vorbis comments: vendor and `NAME=text`, each with its length in front (RFC 9639, 8.6).
-fn vorbis_comment(facts: &ClipFacts) -> Vec<u8> {
-    let named = |name: &str, text: &Option<String>| text.as_ref().map(|text| format!("{name}={text}"));
-    let comments: Vec<String> =
-        [named("TITLE", &facts.title), named("COMMENT", &facts.comment)].into_iter().flatten().collect();
-    let mut block = Vec::new();
-    push_text(&mut block, &software());
-    block.extend_from_slice(&(comments.len() as u32).to_le_bytes());
-    comments.iter().for_each(|comment| push_text(&mut block, comment));
-    block
-}
-
-fn push_text(block: &mut Vec<u8>, text: &str) {
-    block.extend_from_slice(&(text.len() as u32).to_le_bytes());
-    block.extend_from_slice(text.as_bytes());
 }
 
 #[cfg(test)]
@@ -293,6 +228,15 @@ mod tests {
             let disk = Disk { bytes: Cursor::new(Vec::new()), room };
             write_wav(disk, std::iter::repeat_n(0.25, 1001), &facts(SampleFormat::Int24))
         };
+        let flac = |room| {
+            let disk = Disk { bytes: Cursor::new(Vec::new()), room };
+            let noise = (0..20_000u32).map(|k| (k.wrapping_mul(2_654_435_761) >> 16) as f32 / 65_536.0 - 0.5);
+            write_flac(disk, noise, &facts(SampleFormat::Int16))
+        };
+        assert!(flac(100_000).is_ok());
+        for room in [10, 60, 1000, 30_000] {
+            assert_eq!(flac(room).expect_err("no room").kind(), io::ErrorKind::StorageFull, "{room}");
+        }
         let needed = 44 + 3 * 1001 + 200;
         assert!(write(needed).is_ok());
         // In the head, among the samples, in their last bytes, in the tags.

@@ -3,6 +3,7 @@
 mod decode;
 mod encode;
 mod error;
+mod flac;
 mod kind;
 mod place;
 mod stream;
@@ -10,7 +11,7 @@ mod wav_head;
 mod write;
 
 pub use decode::open;
-pub use encode::{ClipFacts, SampleFormat, write_clip, write_frames};
+pub use encode::{ClipFacts, SampleFormat, write_frames};
 pub use error::FileError;
 pub use stream::Recording;
 pub use write::{check_writable, read_text, write_atomically};

@@ -218,10 +218,20 @@ fn impossible_formats_are_refused_with_what_would_be_right() {
     assert!(told(slow).contains("between 1000 Hz and 4000000 Hz"));
 }
 
+/// Writes a mono clip without tags.
+fn write_mono(
+    name: &str,
+    samples: impl IntoIterator<Item = f32>,
+    sample_rate_hz: u32,
+    format: SampleFormat,
+) -> Result<(), FileError> {
+    write_frames(name, samples, &ClipFacts { channels: 1, sample_rate_hz, format, ..ClipFacts::default() })
+}
+
 fn clip(folder: &Folder, name: &str, format: SampleFormat) -> (Vec<f32>, PathBuf) {
     let samples: Vec<f32> = (0..96_000).map(|k| ((k % 977) as f32 / 977.0 - 0.5) * 0.9).collect();
     let path = folder.0.path().join(name);
-    write_clip(path.to_str().expect("UTF-8"), samples.iter().copied(), SAMPLE_RATE_HZ, format).expect("written");
+    write_mono(path.to_str().expect("UTF-8"), samples.iter().copied(), SAMPLE_RATE_HZ, format).expect("written");
     (samples, path)
 }
 
@@ -250,7 +260,7 @@ fn what_is_written_is_read_back_within_half_a_step() {
 fn samples_beyond_full_scale_are_cut_when_written() {
     let folder = Folder::new();
     let path = folder.0.path().join("a.wav");
-    write_clip(path.to_str().expect("UTF-8"), [2.0, -2.0, 1.0], 8000, SampleFormat::Int16).expect("written");
+    write_mono(path.to_str().expect("UTF-8"), [2.0, -2.0, 1.0], 8000, SampleFormat::Int16).expect("written");
     assert_eq!(read_all(&path).0, [32_767.0 / 32_768.0, -1.0, 32_767.0 / 32_768.0]);
 }
 
@@ -283,8 +293,8 @@ fn a_cut_flac_gives_what_is_there_and_says_so() {
 
 #[test]
 fn a_clip_must_be_named_as_a_kind_that_can_be_written() {
-    let error = write_clip("a.ogg", [0.0], 8000, SampleFormat::Int16).expect_err("no kind").to_string();
+    let error = write_mono("a.ogg", [0.0], 8000, SampleFormat::Int16).expect_err("no kind").to_string();
     assert_eq!(error, "the name of a clip must end in .wav or .flac");
-    let error = write_clip("a.flac", [0.0], 8000, SampleFormat::Float32).expect_err("no float").to_string();
+    let error = write_mono("a.flac", [0.0], 8000, SampleFormat::Float32).expect_err("no float").to_string();
     assert!(error.contains("16 or 24 bits"), "{error}");
 }

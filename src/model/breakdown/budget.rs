@@ -4,7 +4,7 @@
 //! is a rectangular distribution (4.3.7).
 
 use super::{Law, Level, NoGapVoltage, level};
-use crate::bench::{Bench, Electrodes, Quantity, Tolerance, si};
+use crate::bench::{Bench, Electrodes, Quantity, Tolerance, si, signed};
 use crate::model::air::Air;
 use serde::{Deserialize, Serialize};
 
@@ -121,11 +121,11 @@ fn beside(bench: &Bench, stated_v: f64) -> Option<String> {
     let air = Air::of_bench(&bench.air);
     let found = level(gap.electrodes?, gap.diameter.map(|d| d.value), gap.spacing?.value, &air).ok()?;
     Some(format!(
-        "gap.voltage is taken as stated; for these electrodes the {} gives {} ± {:.0} %, {:+.0} % off",
+        "gap.voltage is taken as stated; for these electrodes the {} gives {} ± {:.0} %, {} % off",
         found.law.words(),
         si(found.voltage_v, "V", 3),
         100.0 * found.band,
-        100.0 * (found.voltage_v / stated_v - 1.0)
+        signed(100.0 * (found.voltage_v / stated_v - 1.0), 0)
     ))
 }
 

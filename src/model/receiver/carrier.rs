@@ -3,9 +3,9 @@
 //! It enters the channel filter as impulses at the internal rate, so that the filter shapes its side bands. Amplitudes are those
 //! behind the filter, in click peaks; frequencies in Hz from the tuned frequency.
 
+use super::turning::Turning;
 use super::{AudioBand, AudioFilter, Complex, Draw};
 use serde::{Deserialize, Serialize};
-use std::f64::consts::TAU;
 use std::sync::Arc;
 
 /// What the carrier is modulated with.
@@ -71,32 +71,52 @@ const SYLLABLES_HZ: [f64; 3] = [1.7, 3.1, 4.9];
 /// Rms of the speech against its limit: 3 standard deviations are near full modulation in a loud syllable.
 const SPEECH_RMS: f64 = 0.3;
 
-/// A unit vector that turns by the same angle in each step.
+/// Steps between two values of the loudness of speech; it changes a thousand times more slowly and runs straight between them.
+const SWELL_STEPS: u32 = 32;
+
+/// How loud the speech is: the length of a sum of turning vectors.
 #[derive(Debug, Clone)]
-struct Turning {
-    now: Complex,
-    turn: Complex,
+struct Swell {
+    syllables: [Turning; 3],
+    now: f64,
+    slope: f64,
+    /// Value at the end of the straight stretch.
+    to: f64,
+    /// Steps that are left of it.
+    left: u32,
 }
 
-impl Turning {
-    fn new(start: Complex, frequency_hz: f64, step_s: f64) -> Self {
-        Self { now: start, turn: Complex::from_polar(1.0, TAU * frequency_hz * step_s) }
+impl Swell {
+    fn new(step_s: f64, draw: &mut Draw) -> Self {
+        let mut syllables = SYLLABLES_HZ.map(|f| Turning::new(draw.phase(), f, f64::from(SWELL_STEPS) * step_s));
+        let to = length(&mut syllables);
+        Self { syllables, now: to, slope: 0.0, to, left: 0 }
     }
 
-    fn next(&mut self) -> Complex {
+    #[inline]
+    fn next(&mut self) -> f64 {
+        if self.left == 0 {
+            self.now = self.to;
+            self.to = length(&mut self.syllables);
+            self.slope = (self.to - self.now) / f64::from(SWELL_STEPS);
+            self.left = SWELL_STEPS;
+        }
         let now = self.now;
-        let next = now * self.turn;
-        // One Newton step of the reciprocal root keeps the length at 1.
-        self.now = next * (1.5 - 0.5 * next.norm_sqr());
+        self.now += self.slope;
+        self.left -= 1;
         now
     }
+}
+
+fn length(syllables: &mut [Turning; 3]) -> f64 {
+    syllables.iter_mut().map(Turning::next).sum::<Complex>().norm()
 }
 
 #[derive(Debug, Clone)]
 enum Modulation {
     None,
     Tone { depth: f64, tone: Turning },
-    Speech { depth: f64, filter: AudioFilter, scale: f64, syllables: [Turning; 3], draw: Draw },
+    Speech { depth: f64, filter: AudioFilter, scale: f64, swell: Swell, draw: Draw },
     Sound { scale: f64, sound: Sound, place: f64, pace: f64 },
 }
 
@@ -123,12 +143,12 @@ impl CarrierSource {
             Some(Programme::Speech { depth }) => {
                 let filter = AudioFilter::new(SPEECH_BAND, 1.0 / step_s);
                 let scale = SPEECH_RMS / noise_gain(filter.clone(), 1.0 / step_s);
-                let syllables = SYLLABLES_HZ.map(|f| Turning::new(draw.phase(), f, step_s));
-                Modulation::Speech { depth: *depth, filter, scale, syllables, draw }
+                let swell = Swell::new(step_s, &mut draw);
+                Modulation::Speech { depth: *depth, filter, scale, swell, draw }
             }
             Some(Programme::Sound { depth, sound }) => sounding(*depth, sound.as_ref(), step_s),
         };
-        Self { strength: settings.amplitude * step_s / gain, phase: carrier.now, carrier, modulation }
+        Self { strength: settings.amplitude * step_s / gain, phase: carrier.now(), carrier, modulation }
     }
 
     /// Strength of the impulse of this step.
@@ -162,13 +182,13 @@ fn sounding(depth: f64, sound: Option<&Sound>, step_s: f64) -> Modulation {
 
 impl Modulation {
     /// Relative change of the amplitude in this step, within ± the depth.
+    #[inline]
     fn next(&mut self) -> f64 {
         match self {
             Self::None => 0.0,
             Self::Tone { depth, tone } => *depth * tone.next().im,
-            Self::Speech { depth, filter, scale, syllables, draw } => {
-                let swell = syllables.iter_mut().map(Turning::next).sum::<Complex>().norm();
-                let voice = filter.step(draw.normal()) * *scale * swell;
+            Self::Speech { depth, filter, scale, swell, draw } => {
+                let voice = filter.step(draw.normal()) * *scale * swell.next();
                 *depth * voice.clamp(-1.0, 1.0)
             }
             Self::Sound { scale, sound, place, pace } => {

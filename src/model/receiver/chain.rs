@@ -89,11 +89,10 @@ impl Chain {
     /// Complex envelope behind the channel filter at the sample last advanced to, noise and carrier added.
     #[inline]
     fn envelope(&mut self) -> Complex {
-        if let Some((draw, strength)) = &mut self.noise {
-            self.channel.add_impulse_now(draw.complex_normal() * *strength);
-        }
-        if let Some(carrier) = &mut self.carrier {
-            self.channel.add_impulse_now(carrier.next_impulse());
+        if self.noise.is_some() || self.carrier.is_some() {
+            let noise = self.noise.as_mut().map(|(draw, strength)| draw.complex_normal() * *strength);
+            let carrier = self.carrier.as_mut().map(CarrierSource::next_impulse);
+            self.channel.add_impulse_now(noise.unwrap_or_default() + carrier.unwrap_or_default());
         }
         self.channel.output()
     }
@@ -102,16 +101,19 @@ impl Chain {
     #[inline]
     pub(crate) fn audio(&mut self) -> f64 {
         let mut envelope = self.envelope();
+        let mut level = envelope.norm_sqr().sqrt();
         if let Some(agc) = &mut self.agc {
-            envelope *= agc.gain(envelope.norm_sqr().sqrt());
+            let gain = agc.gain(level);
+            envelope *= gain;
+            level *= gain;
         }
         let reference = self.carrier.as_ref().map_or(Complex::from(1.0), |carrier| carrier.phase() * self.carrier_turn);
-        let level = self.detector.step(envelope, reference);
+        let detected = self.detector.step_at_level(envelope, level, reference);
         if self.index % SETTLE_EVERY == 0 {
             self.channel.settle();
             self.audio.settle();
         }
-        self.audio.step(level)
+        self.audio.step(detected)
     }
 }
 

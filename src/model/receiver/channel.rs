@@ -150,16 +150,20 @@ impl Channel {
     /// A state at rest that is carried from sample to sample by `step_s`.
     #[must_use]
     pub fn state(&self, step_s: f64) -> ChannelState {
-        let chains = self
-            .modes
-            .iter()
-            .map(|mode| Chain {
-                mode: mode.clone(),
-                step: mode.step(step_s),
-                states: vec![Complex::default(); mode.weights.len()],
-            })
-            .collect();
-        ChannelState { chains, flat: self.flat.as_ref().map(|flat| flat.state(step_s)) }
+        let mut state =
+            ChannelState { pairs: Vec::new(), chains: Vec::new(), flat: self.flat.as_ref().map(|f| f.state(step_s)) };
+        for mode in &self.modes {
+            let step = mode.step(step_s);
+            let nothing = Complex::default();
+            let first_two = |terms: &[Complex]| [terms[0], terms.get(1).copied().unwrap_or(nothing)];
+            if step.len() <= 2 {
+                let (step, weights) = (first_two(&step), first_two(&mode.weights));
+                state.pairs.push(Pair { mode: mode.clone(), step, weights, states: [nothing; 2] });
+            } else {
+                state.chains.push(Chain { mode: mode.clone(), states: vec![nothing; step.len()], step });
+            }
+        }
+        state
     }
 }
 
@@ -196,7 +200,17 @@ fn convolve(z: &mut [Complex], step: &[Complex]) {
     }
 }
 
-/// States of one pole.
+/// States of a single or double pole, as the usual filters have; of a single one the second state stays zero.
+#[derive(Debug, Clone, PartialEq)]
+struct Pair {
+    mode: Mode,
+    /// What one step does to the states.
+    step: [Complex; 2],
+    weights: [Complex; 2],
+    states: [Complex; 2],
+}
+
+/// States of one pole of higher multiplicity.
 #[derive(Debug, Clone, PartialEq)]
 struct Chain {
     mode: Mode,
@@ -208,6 +222,7 @@ struct Chain {
 /// A channel filter at work.
 #[derive(Debug, Clone, PartialEq)]
 pub struct ChannelState {
+    pairs: Vec<Pair>,
     chains: Vec<Chain>,
     flat: Option<LinearState>,
 }
@@ -219,16 +234,12 @@ impl ChannelState {
         if let Some(flat) = &mut self.flat {
             flat.advance();
         }
+        for Pair { step: [e, e_t], states: [z, chained], .. } in &mut self.pairs {
+            *chained = *e * *chained + *e_t * *z;
+            *z *= *e;
+        }
         for chain in &mut self.chains {
-            match (&mut chain.states[..], &chain.step[..]) {
-                // The usual filters have single and double poles.
-                ([z], [e]) => *z *= e,
-                ([z, chained], [e, e_t]) => {
-                    *chained = e * *chained + e_t * *z;
-                    *z *= e;
-                }
-                (z, step) => convolve(z, step),
-            }
+            convolve(&mut chain.states, &chain.step);
         }
     }
 
@@ -236,6 +247,11 @@ impl ChannelState {
     pub fn add_impulse(&mut self, strength: Complex, age_s: f64) {
         if let Some(flat) = &mut self.flat {
             flat.add_impulse(strength, age_s);
+        }
+        for pair in &mut self.pairs {
+            for (z, term) in pair.states.iter_mut().zip(pair.mode.step(age_s)) {
+                *z += strength * term;
+            }
         }
         for chain in &mut self.chains {
             for (z, term) in chain.states.iter_mut().zip(chain.mode.step(age_s)) {
@@ -250,6 +266,9 @@ impl ChannelState {
         if let Some(flat) = &mut self.flat {
             flat.add_impulse_now(strength);
         }
+        for pair in &mut self.pairs {
+            pair.states[0] += strength;
+        }
         for chain in &mut self.chains {
             chain.states[0] += strength;
         }
@@ -257,7 +276,8 @@ impl ChannelState {
 
     /// Puts states that are far below anything audible to rest, where arithmetic on them would become slow.
     pub fn settle(&mut self) {
-        for z in self.chains.iter_mut().flat_map(|chain| &mut chain.states) {
+        let pairs = self.pairs.iter_mut().flat_map(|pair| &mut pair.states);
+        for z in pairs.chain(self.chains.iter_mut().flat_map(|chain| &mut chain.states)) {
             if z.norm_sqr() < NOTHING_SQUARED {
                 *z = Complex::default();
             }
@@ -269,6 +289,9 @@ impl ChannelState {
     #[must_use]
     pub fn output(&self) -> Complex {
         let mut sum = self.flat.as_ref().map_or(Complex::default(), LinearState::output);
+        for Pair { weights: [w, chained_w], states: [z, chained], .. } in &self.pairs {
+            sum = sum + z * w + chained * chained_w;
+        }
         for chain in &self.chains {
             for (z, weight) in chain.states.iter().zip(&chain.mode.weights) {
                 sum += z * weight;

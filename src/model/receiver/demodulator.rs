@@ -47,7 +47,12 @@ impl Demodulator {
     /// detector is locked.
     #[inline]
     pub fn step(&mut self, envelope: Complex, reference: Complex) -> f64 {
-        let level = envelope.norm_sqr().sqrt();
+        self.step_at_level(envelope, envelope.norm_sqr().sqrt(), reference)
+    }
+
+    /// The same where the length of the envelope is known already.
+    #[inline]
+    pub(crate) fn step_at_level(&mut self, envelope: Complex, level: f64, reference: Complex) -> f64 {
         let diode = |level: f64, diode: &mut Option<Detector>| diode.as_mut().map_or(level, |diode| diode.step(level));
         match &mut self.stage {
             Stage::Envelope => diode(level, &mut self.diode),

@@ -100,7 +100,12 @@ impl LinearState {
 
     pub(super) fn add_impulse_now(&mut self, strength: Complex) {
         let (later, sooner) = self.coming.split_at_mut(self.now);
-        for (z, tap) in sooner.iter_mut().chain(later).zip(&self.taps) {
+        let (first, rest) = self.taps.split_at(sooner.len());
+        // Two plain loops, which the compiler keeps in vector registers.
+        for (z, tap) in sooner.iter_mut().zip(first) {
+            *z += strength * tap;
+        }
+        for (z, tap) in later.iter_mut().zip(rest) {
             *z += strength * tap;
         }
     }

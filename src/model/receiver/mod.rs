@@ -26,6 +26,7 @@ mod linear_phase;
 mod recorder;
 mod selectivity;
 mod settings;
+mod turning;
 mod weighting;
 
 pub use agc::{Agc, AgcLaw, AgcSettings};
