@@ -44,21 +44,27 @@ pub fn train(window: &Window, explanation: &mut Vec<String>) -> Result<Train, &'
     if window.duration_s() < SHORTEST_S {
         return Err("the recording is shorter than half a second");
     }
+    let mut expected_s = None;
     if window.duration_s() > 1.5 * LEARN_S {
         explanation.push(format!("learning on the most active {LEARN_S} s"));
         let part = window.most_active_part(LEARN_S);
-        match learn(&part, FLOORS[0], explanation) {
+        match learn(&part, FLOORS[0], None, explanation) {
             Ok(Learnt::Clicks(model)) if model.is_enough() => match follow(window, *model, explanation) {
                 Some(train) => return Ok(train),
                 None => explanation.push("the rhythm is lost there: learning on the whole window".into()),
             },
             Ok(Learnt::Line(line)) => return overlap::by_line(window, line.line.frequency_hz, explanation),
-            _ => explanation.push("too few firings there: learning on the whole window".into()),
+            found => {
+                if let Ok(Learnt::Clicks(model)) = found {
+                    expected_s = Some(model.hypothesis.fit.period_s);
+                }
+                explanation.push("too few firings there: learning on the whole window".into());
+            }
         }
     }
     let mut reason = "no clicks stand out";
     for floor in FLOORS {
-        match learn(window, floor, explanation) {
+        match learn(window, floor, expected_s, explanation) {
             Ok(Learnt::Clicks(model)) => return Ok(model.into_train(window)),
             Ok(Learnt::Line(line)) => return overlap::by_line(window, line.line.frequency_hz, explanation),
             Err(why) => {
@@ -101,9 +107,14 @@ impl Model {
     }
 }
 
-fn learn(window: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Learnt, &'static str> {
+fn learn(
+    window: &Window,
+    floor: f64,
+    expected_s: Option<f64>,
+    explanation: &mut Vec<String>,
+) -> Result<Learnt, &'static str> {
     let whitened = window.through(&window.kernel(window.spectrum.whitening(FIND_HIGH_PASS_HZ, floor)));
-    let clicks = hypothesis::best(window, &whitened, explanation);
+    let clicks = hypothesis::best(window, &whitened, expected_s, explanation);
     let line = overlap::best_line(window, explanation);
     if line.as_ref().is_some_and(|l| overlap::line_wins(l, clicks.as_ref())) {
         return line.map(|l| Learnt::Line(Box::new(l))).ok_or("no line stands out");

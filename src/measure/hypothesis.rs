@@ -43,9 +43,14 @@ pub fn apart_s(shape: &Shape, rate_hz: f64, period_s: f64, fast: bool) -> f64 {
     swings_s.min(APART_PERIODS * period_s).max(APART_S)
 }
 
-/// Looks for the best rhythm; lines of the explanation are appended.
+/// Looks for the best rhythm, also at a period that is expected; lines of the explanation are appended.
 #[must_use]
-pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) -> Option<Hypothesis> {
+pub fn best(
+    window: &Window,
+    whitened: &[f32],
+    expected_s: Option<f64>,
+    explanation: &mut Vec<String>,
+) -> Option<Hypothesis> {
     let mut envelope: Vec<Complex32> = Vec::new();
     window.bank.apply_analytic(whitened, &window.kernel(|_| 1.0), &mut envelope);
     let look = first_look(whitened, &envelope, window.rate_hz)?;
@@ -60,7 +65,7 @@ pub fn best(window: &Window, whitened: &[f32], explanation: &mut Vec<String>) ->
         for fast in [false, true] {
             let found =
                 candidates::find(&output, window.rate_hz, apart_s(&shape, window.rate_hz, FIRST_PERIOD_S, fast));
-            for mut fit in search::rhythms(&found, window.duration_s(), fast) {
+            for mut fit in search::rhythms(&found, window.duration_s(), fast, expected_s) {
                 if !fit.fills_its_time() {
                     fit.evidence = fit.evidence.min(1e-3 * fit.evidence);
                 }

@@ -53,7 +53,7 @@ fn best_of(c: &Candidates, rest: &[usize], duration_s: f64, typical: f64) -> Opt
         return None;
     }
     let best =
-        search::rhythms(&part, duration_s, false).into_iter().max_by(|a, b| a.evidence.total_cmp(&b.evidence))?;
+        search::rhythms(&part, duration_s, false, None).into_iter().max_by(|a, b| a.evidence.total_cmp(&b.evidence))?;
     let fit = search::fit_among(c, rest, duration_s, Start::again(&best), DENSITY)?;
     let n = fit.chain.index.len() as f64;
     let sound =

@@ -9,6 +9,7 @@ use super::marks::Binned;
 use super::path::{Chain, Law, best_chain};
 use crate::clicks::Candidates;
 use crate::clicks::candidates::nth_largest;
+use statrs::distribution::{ContinuousCDF, Gamma};
 use statrs::function::gamma::ln_gamma;
 
 /// A fitted rhythm.
@@ -150,6 +151,10 @@ impl Start {
     }
 }
 
+/// Share of missed clicks where there is no sign of any, and the periods from which a step may be taken for two.
+const NONE_MISSED: f64 = 1e-7;
+const LONG: f64 = 1.5;
+
 /// Least jitter allowed for where a train is followed: its rate may drift from what was learnt.
 const FOLLOW_JITTER: f64 = 0.04;
 
@@ -188,7 +193,7 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         law.follow = if round >= 1 { 0.0 } else { start.follow };
         let steps = Steps::of(c, &chain, &periods);
         law.jitter = steps.jitter(law.jitter);
-        law.missed = steps.missed();
+        law.missed = if steps.long_by_chance(law.jitter) { NONE_MISSED } else { steps.missed() };
         let mut on = vec![false; c.len()];
         chain.index.iter().for_each(|&i| on[i] = true);
         let densities = (binned.density(|i| on[i]), binned.density(|i| !on[i]));
@@ -282,6 +287,18 @@ impl Steps {
         let rms = if n > 3 { (sum / n as f64).sqrt() } else { robust };
         let seen = rms.max(robust).max(3e-6 / median(&self.period)).max(5e-4);
         (1.1 * seen).max(0.3 * before).min(0.6)
+    }
+
+    /// True if a loose train's steps of two periods and more are no more than its own law gives long periods.
+    fn long_by_chance(&self, jitter: f64) -> bool {
+        if jitter <= super::path::GAMMA_FROM {
+            return false;
+        }
+        let shape = 1.0 / (jitter * jitter);
+        let share = Gamma::new(shape, shape).map_or(0.0, |law| law.sf(LONG));
+        let double = self.count.iter().filter(|k| **k > 1.0).count() as f64;
+        let chance = share * self.count.len() as f64;
+        double < chance + 3.0 * chance.sqrt() + 2.0
     }
 
     fn missed(&self) -> f64 {

@@ -46,16 +46,17 @@ pub fn fit_among(c: &Candidates, among: &[usize], duration_s: f64, start: Start,
 }
 
 /// Fits the promising periods of one list of candidates, each on a stretch that holds enough firings; the evidence is
-/// brought to the whole duration. In no order; the chains are those of the stretches.
+/// brought to the whole duration. A period that is expected is tried too. In no order; the chains are those of the stretches.
 #[must_use]
-pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool) -> Vec<Fit> {
+pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, expected_s: Option<f64>) -> Vec<Fit> {
     let (shortest, longest) = if fast { FAST_S } else { (SHORTEST_SLOW_S, LONGEST_S) };
     let longest = longest.min(duration_s / 4.0);
     if c.len() < 8 || longest <= shortest {
         return Vec::new();
     }
     let grid = scan(c, duration_s, shortest, longest);
-    let starts: Vec<Start> = local_maxima(&grid, fast).into_iter().map(tight).collect();
+    let expected = expected_s.filter(|_| !fast);
+    let starts: Vec<Start> = local_maxima(&grid, fast).into_iter().chain(expected).map(tight).collect();
     let mut found: Vec<Fit> = fit_all(c, duration_s, &starts);
     if !fast {
         if let Some(first) = strongest(&found).map(|f| f.period_s) {

@@ -4,7 +4,7 @@ pub mod character;
 pub mod coherence;
 
 use super::fit::{Fit, median};
-use crate::clicks::spectrum::{power_of_two_near, welch};
+use crate::clicks::spectrum::{Spectrum, power_of_two_near, welch};
 use character::Character;
 use coherence::LineCharacter;
 
@@ -47,9 +47,11 @@ const STABLE: f64 = 0.93;
 const COHERENCE: f64 = 0.12;
 const GROWTH: (f64, f64) = (0.4, 2.0);
 /// A line with less coherence is a train's if it is never off, wanders just as a train of independent periods does and keeps its
-/// amplitude: share of time, growth, amplitude, and the coherence that noise beside a tone does not reach (tones and whistles of
-/// the proving ground, seeds 5000..5008: 0.01 where the line is stable).
-const WALKS: (f64, (f64, f64), f64, f64) = (0.97, (0.7, 1.4), 0.1, 0.03);
+/// amplitude: share of time, growth, amplitude, and either the coherence that noise beside a tone does not reach (tones and
+/// whistles of the proving ground, seeds 5000..5008: 0.01 where the line is stable) or this many harmonics nearly alike.
+const WALKS: (f64, (f64, f64), f64, f64, usize) = (0.97, (0.7, 1.4), 0.1, 0.03, 3);
+/// A crowded train whose line is off for most of the time that it sounds is none (random phases are off for a third).
+const CROWDED_OFF: f64 = 0.45;
 /// Six lines with this share of the energy are tones unless clicks stand out by this factor.
 const SIX_LINES: f64 = 0.9;
 const CLEAR_OF_TONES: f64 = 1.2;
@@ -72,14 +74,15 @@ const UNCLEAR_COVER: f64 = 0.6;
 /// Where the energy lies.
 #[derive(Debug, Clone, Copy)]
 pub struct Tones {
-    /// Share of the energy above 150 Hz in narrow lines that are no multiples of the rate.
-    pub foreign: f64,
     /// Share outside the line at the rate.
     pub outside: f64,
     /// Share in the six strongest lines.
     pub six: f64,
     /// Share in narrow lines on multiples of 50 Hz or of 60 Hz, whichever is more.
     pub mains: f64,
+    /// Multiples of the rate, of the first eight, that hold a tenth or more of what the strongest of them holds: clicks have
+    /// many alike, a tone's fall off.
+    pub harmonics: usize,
 }
 
 /// Sorts the energy of a window by its lines, for a train of a given rate.
@@ -87,7 +90,7 @@ pub struct Tones {
 pub fn tones(x: &[f32], sample_rate_hz: f64, firing_rate_hz: f64) -> Tones {
     let segment = power_of_two_near(sample_rate_hz / 3.0);
     if x.len() < segment {
-        return Tones { foreign: 0.0, outside: 1.0, six: 0.0, mains: 0.0 };
+        return Tones { outside: 1.0, six: 0.0, mains: 0.0, harmonics: 0 };
     }
     let mut s = welch(x, sample_rate_hz, segment, true);
     let low = s.bin(150.0);
@@ -98,8 +101,6 @@ pub fn tones(x: &[f32], sample_rate_hz: f64, firing_rate_hz: f64) -> Tones {
         (1..p.len() - 1).filter(|&k| p[k] > p[k - 1] && p[k] >= p[k + 1] && p[k] > 30.0 * surroundings(p, k)).collect();
     peaks.sort_by(|&a, &b| p[b].total_cmp(&p[a]));
     let about = |k: usize, r: usize| p[k.saturating_sub(r)..(k + r + 1).min(p.len())].iter().sum::<f64>();
-    let foreign = peaks.iter().take(12).filter(|&&k| is_foreign(k as f64 * s.step_hz, s.step_hz, firing_rate_hz));
-    let foreign = foreign.map(|&k| about(k, 3)).sum::<f64>() / total;
     let six = peaks.iter().take(6).map(|&k| about(k, 2)).sum::<f64>() / total;
     let reach = 0.06 * firing_rate_hz + 2.0 * s.step_hz;
     let outside = 1.0 - s.sum(firing_rate_hz - reach, firing_rate_hz + reach) / total;
@@ -107,17 +108,23 @@ pub fn tones(x: &[f32], sample_rate_hz: f64, firing_rate_hz: f64) -> Tones {
         let on = |f: f64| (f - (f / unit).round().max(1.0) * unit).abs() < 1.5 * s.step_hz;
         peaks.iter().take(24).filter(|&&k| on(k as f64 * s.step_hz)).map(|&k| about(k, 2)).sum::<f64>() / total
     };
-    Tones { foreign, outside, six, mains: on_mains(50.0).max(on_mains(60.0)) }
+    Tones { outside, six, mains: on_mains(50.0).max(on_mains(60.0)), harmonics: even_harmonics(&s, firing_rate_hz) }
+}
+
+/// Half width of a harmonic, share of its frequency.
+const HARMONIC: f64 = 0.02;
+
+fn even_harmonics(s: &Spectrum, rate_hz: f64) -> usize {
+    let energy: Vec<f64> = (1..=8)
+        .map(|k| rate_hz * f64::from(k))
+        .map(|f| s.sum(f * (1.0 - HARMONIC) - s.step_hz, f * (1.0 + HARMONIC) + s.step_hz))
+        .collect();
+    let most = energy.iter().copied().fold(0.0, f64::max);
+    energy.iter().filter(|e| **e >= 0.1 * most).count()
 }
 
 fn surroundings(p: &[f64], k: usize) -> f64 {
     median(&p[k.saturating_sub(20)..(k + 21).min(p.len())])
-}
-
-fn is_foreign(f: f64, step_hz: f64, firing_rate_hz: f64) -> bool {
-    let off = |unit: f64| (f - (f / unit).round().max(1.0) * unit).abs();
-    let mains = f < 700.0 && [50.0, 60.0].iter().any(|&m| off(m) < step_hz);
-    off(firing_rate_hz) > 2.5 * step_hz + 0.004 * f && !mains
 }
 
 /// Everything that the judgement rests on.
@@ -164,12 +171,13 @@ impl Heard {
     #[must_use]
     pub fn describe(&self) -> String {
         let mut text = format!(
-            "presence: {} firings at {:.2} /s, {:.2} nats each, cover {:.2}; six lines hold {:.2} of the energy",
+            "presence: {} firings at {:.2} /s, {:.2} nats each, cover {:.2}; six lines hold {:.2} of the energy, {} harmonics alike",
             self.firings,
             self.rate_hz,
             self.evidence / self.firings.max(1) as f64,
             self.cover,
-            self.tones.six
+            self.tones.six,
+            self.tones.harmonics
         );
         if let Some(c) = &self.character {
             text += &format!(
@@ -236,11 +244,13 @@ impl Heard {
             Some("what repeats is not the same click each time")
         } else if !(short || crowded || (c.clear >= CLEAR_ANYWAY.0 && c.core >= CLEAR_ANYWAY.1)) {
             Some("what repeats is longer than a click")
+        } else if self.rate_hz > CROWDED_HZ && self.line.is_some_and(|l| l.stable < CROWDED_OFF * self.cover) {
+            Some("what repeats has no line at its rate")
         } else if buzz {
             Some("what is heard keeps step with the mains and does not stand out like clicks: hum or buzz")
         } else if c.clear < UNCLEAR
             && self.rate_hz < CROWDED_HZ
-            && !coherent
+            && !(coherent || self.line_holds())
             && (self.tones.six > MANY_TONES || self.line_wanders())
         {
             Some("what repeats hardly stands out of tones or a voice")
@@ -264,7 +274,7 @@ impl Heard {
             let walks = l.stable >= WALKS.0
                 && (WALKS.1.0..WALKS.1.1).contains(&l.growth)
                 && l.amplitude_cv <= WALKS.2
-                && l.coherence >= WALKS.3;
+                && (l.coherence >= WALKS.3 || self.tones.harmonics >= WALKS.4);
             coherent || walks
         })
     }
