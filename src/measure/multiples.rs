@@ -5,7 +5,7 @@
 //! a period: they are firings too.
 
 use super::hypothesis::{DENSITY, Hypothesis};
-use crate::rhythm::fit::{FirstGains, Fit, Start, median};
+use crate::rhythm::fit::{FirstGains, Fit, MarkLaw, Start, median};
 use crate::rhythm::search;
 
 /// A click between counts as one of the train if it reaches the median mark less this.
@@ -21,6 +21,13 @@ const FEWEST: usize = 12;
 /// Share of missed clicks from which a multiple of the period is tried.
 const MISSES: f64 = 0.25;
 
+/// Marks alternate if this share of neighbouring second differences have opposite signs (0.73 by chance), and by more than
+/// this in the median.
+const ALTERNATING: (f64, f64) = (0.93, 0.5);
+
+/// Least standard deviation of a class of marks.
+const LEAST_SD: f64 = 0.15;
+
 /// Settles whether the period is to be halved or multiplied, in place. The error is the reason to refuse.
 pub fn settle(h: &mut Hypothesis, duration_s: f64, explanation: &mut Vec<String>) -> Result<(), &'static str> {
     if let Some(start) = halved(h) {
@@ -29,6 +36,14 @@ pub fn settle(h: &mut Hypothesis, duration_s: f64, explanation: &mut Vec<String>
             .filter(|f| 10 * f.chain.index.len() > 17 * h.fit.chain.index.len())
             .ok_or("equal clicks lie between those on the rhythm, and no rhythm holds them")?;
         h.fit = Fit { evidence: h.fit.evidence.max(half.evidence), ..half };
+    }
+    if let Some(start) = doubled(h)
+        && let Some(fit) = search::fit_whole(&h.candidates, duration_s, start, DENSITY)
+        && 5 * fit.chain.index.len() > 2 * h.fit.chain.index.len()
+    {
+        explanation.push(format!("large and small alternate: twice {:.4} ms", 1e3 * h.fit.period_s));
+        h.fit = fit;
+        return Ok(());
     }
     if h.fit.missed > MISSES {
         for times in [2.0, 3.0] {
@@ -73,4 +88,29 @@ fn halved(h: &Hypothesis) -> Option<Start> {
         gains: FirstGains::Known(h.fit.marks),
         rounds: 4,
     })
+}
+
+/// Where a fit of twice the period starts, if large and small clicks alternate: the small ones are what noise or ringing left
+/// half way.
+fn doubled(h: &Hypothesis) -> Option<Start> {
+    let marks = h.fit.marks_on(&h.candidates);
+    if marks.len() < 3 * FEWEST {
+        return None;
+    }
+    let off: Vec<f64> = marks.windows(3).map(|m| m[1] - 0.5 * (m[0] + m[2])).collect();
+    let opposite = off.windows(2).filter(|d| d[0] * d[1] < 0.0).count() as f64;
+    let size = median(&off.iter().map(|d| d.abs()).collect::<Vec<_>>());
+    if opposite < ALTERNATING.0 * (off.len() - 1) as f64 || size < ALTERNATING.1 {
+        return None;
+    }
+    let class = |large: bool| -> Vec<f64> {
+        marks[1..].iter().zip(&off).filter(|(_, d)| (**d > 0.0) == large).map(|(m, _)| *m).collect()
+    };
+    let law = |class: &[f64]| {
+        let mean = class.iter().sum::<f64>() / class.len() as f64;
+        let square = class.iter().map(|m| (m - mean).powi(2)).sum::<f64>() / class.len() as f64;
+        (mean, square.sqrt().max(LEAST_SD))
+    };
+    let marks = MarkLaw { on: law(&class(true)), off: law(&class(false)) };
+    Some(Start { period_s: 2.0 * h.fit.period_s, gains: FirstGains::Known(marks), rounds: 4, ..Start::again(&h.fit) })
 }
