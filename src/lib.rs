@@ -26,4 +26,5 @@ pub mod model;
 pub mod predict;
 pub mod report;
 pub mod rhythm;
+pub mod uncertainty;
 pub mod voltage;
