@@ -58,7 +58,7 @@ fn one_large_rectangular_input_makes_the_law_of_propagation_fail() {
     near("propagation", linear.interval(0.95).1, 19.9, 0.05);
     let drawn = problem.monte_carlo(&MonteCarlo { digits: 3, ..MonteCarlo::default() }).unwrap();
     near("high", drawn.high, 17.0, 0.1);
-    let budget = problem.budget("y", "").unwrap();
+    let budget = problem.budget("y", "sum", "").unwrap();
     assert_eq!(budget.method, gaptone::uncertainty::Method::MonteCarlo);
     near("reported", budget.result.high, 17.0, 0.6);
 }
@@ -86,7 +86,7 @@ fn the_mass_calibration_has_a_larger_uncertainty_than_first_order_says() {
     near("u", drawn.u, 0.0754, 5e-4);
     near("low", drawn.low, 1.0834, 4e-3);
     near("high", drawn.high, 1.3825, 4e-3);
-    assert_eq!(problem.budget("mass", "mg").unwrap().method, gaptone::uncertainty::Method::MonteCarlo);
+    assert_eq!(problem.budget("mass", "mass", "mg").unwrap().method, gaptone::uncertainty::Method::MonteCarlo);
 }
 
 #[test]
@@ -211,7 +211,7 @@ fn a_logarithm_has_the_printed_skew() {
 #[test]
 fn a_model_without_an_answer_gives_no_result() {
     let half = Problem::new(vec![normal(0.0, 1.0)], |x| (x[0] > 0.0).then_some(x[0]));
-    assert!(half.linear().is_none() && half.budget("y", "").is_none());
+    assert!(half.linear().is_none() && half.budget("y", "sum", "").is_none());
     let third = Problem::new(vec![normal(0.5, 1.0)], |x| (x[0] > 0.0).then_some(x[0]));
     assert!(third.monte_carlo(&MonteCarlo::default()).is_none());
     // One side is enough for a sensitivity.

@@ -85,6 +85,10 @@ pub struct MeasureArguments {
     #[arg(long, value_name = "FILE")]
     pub truth: Option<String>,
 
+    /// Tell what the uncertainty of the voltage consists of, input by input
+    #[arg(long, requires = "bench")]
+    pub budget: bool,
+
     /// Write every click to a CSV file (one recording only)
     #[arg(long, value_name = "FILE")]
     pub events: Option<String>,

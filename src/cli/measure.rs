@@ -68,6 +68,7 @@ struct Task<'a> {
     span: Span,
     events: Option<&'a str>,
     explain: bool,
+    budget: bool,
     /// A voltmeter that has seen no event yet.
     voltage: Option<VoltageMeter>,
 }
@@ -93,7 +94,15 @@ impl<'a> Task<'a> {
             files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
         }
         let voltage = voltmeter(arguments)?;
-        Ok(Self { channel: arguments.channel.unwrap_or_default(), span, events, explain: arguments.explain, voltage })
+        let voltage = if arguments.budget { voltage.map(VoltageMeter::with_all_budgets) } else { voltage };
+        Ok(Self {
+            channel: arguments.channel.unwrap_or_default(),
+            span,
+            events,
+            explain: arguments.explain,
+            budget: arguments.budget,
+            voltage,
+        })
     }
 
     /// Measures one recording and writes its events if they are wanted.
@@ -150,8 +159,13 @@ impl<'a> Task<'a> {
         };
         let voltage = voltage.map(|meter| meter.finish(&reading)).unwrap_or_default();
         reading.notes.extend(voltage.notes);
-        explanation.extend(voltage.contributions.iter().map(|part| {
-            format!("gap voltage: {} brings {:.1} V, {:.0} % of the variance", part.name, part.u_v, 100.0 * part.share)
+        explanation.extend(voltage.budgets.first().into_iter().flat_map(|budget| &budget.inputs).map(|line| {
+            format!(
+                "gap voltage: {} brings {:.1} V, {:.0} % of the variance",
+                line.name,
+                line.contribution,
+                100.0 * line.share
+            )
         }));
         let measurement = Measurement {
             format: report::FORMAT.to_owned(),
@@ -159,6 +173,7 @@ impl<'a> Task<'a> {
             reading,
             gap_voltage_v: voltage.gap_voltage_v,
             gap_voltage_spread_v: voltage.gap_voltage_spread_v,
+            budget: if self.budget { voltage.budgets } else { Vec::new() },
         };
         let explanation = if self.explain { explanation } else { Vec::new() };
         Ok(Analysed { measurement: report::finite(measurement), explanation })

@@ -1,5 +1,6 @@
 //! Results as text, JSON and CSV. Computes nothing: it rounds, names units and leaves out what is not finite.
 
+mod budget;
 mod comparison;
 mod events;
 mod figure;

@@ -38,9 +38,8 @@ pub struct Line {
     pub contribution: f64,
     /// Share of the variance, 0..1.
     pub share: f64,
-    /// What would reduce it.
-    #[serde(skip)]
-    pub remedy: &'static str,
+    /// What would reduce it; empty if nothing is known.
+    pub remedy: String,
 }
 
 /// The uncertainty budget of one figure.
@@ -71,16 +70,19 @@ pub struct Budget {
 }
 
 impl Problem<'_> {
-    /// The budget of a figure: name and unit are the caller's. None if the model has no answer at the inputs.
+    /// The budget of a figure: its name in the measurement, in words, and its unit are the caller's. None if the model has
+    /// no answer at the inputs.
     #[must_use]
-    pub fn budget(&self, quantity: &str, unit: &str) -> Option<Budget> {
+    pub fn budget(&self, quantity: &str, words: &str, unit: &str) -> Option<Budget> {
         let linear = self.linear()?;
-        let only_normal = !self.inputs.iter().any(|input| input.distribution.u() > 0.0);
-        let drawn = if only_normal { None } else { self.monte_carlo(&MonteCarlo::default()) };
+        let exact = !self.inputs.iter().any(|input| input.distribution.u() > 0.0);
+        let drawn = if exact { None } else { self.monte_carlo(&MonteCarlo::default()) };
         let (low, high) = linear.interval(PROBABILITY);
         let propagation = Estimate { value: linear.value, u: linear.u, low, high };
+        // As in clause 8 of JCGM 101; the draws themselves may be off by the tolerance once more.
         let agree = drawn.is_none_or(|drawn| {
-            (drawn.low - low).abs() <= drawn.tolerance && (drawn.high - high).abs() <= drawn.tolerance
+            let apart = (drawn.low - low).abs().max((drawn.high - high).abs());
+            apart <= 2.0 * drawn.tolerance
         });
         let of = |drawn: Propagated| Estimate { value: drawn.value, u: drawn.u, low: drawn.low, high: drawn.high };
         // The value stays that of the stated inputs: a mean of draws would move it by what the tolerances happen to be.
@@ -99,7 +101,7 @@ impl Problem<'_> {
             coverage_factor: linear.coverage_factor(PROBABILITY),
             monte_carlo: drawn.map(of),
             draws: drawn.map_or(0, |drawn| drawn.draws),
-            advice: advice(&inputs),
+            advice: advice(words, &inputs),
             inputs,
         })
     }
@@ -110,7 +112,7 @@ impl Problem<'_> {
             .inputs
             .iter()
             .enumerate()
-            .filter(|(_, input)| input.distribution.u() > 0.0)
+            .filter(|(i, _)| linear.sensitivities[*i] != 0.0)
             .map(|(i, input)| {
                 let freedom = input.distribution.degrees_of_freedom();
                 let u = input.distribution.u();
@@ -124,7 +126,7 @@ impl Problem<'_> {
                     sensitivity: linear.sensitivities[i],
                     contribution: (linear.sensitivities[i] * u).abs(),
                     share: linear.shares[i],
-                    remedy: input.remedy,
+                    remedy: input.remedy.to_owned(),
                 }
             })
             .collect();
@@ -133,10 +135,10 @@ impl Problem<'_> {
     }
 }
 
-/// A sentence about the largest contributor; empty if nothing is uncertain.
-fn advice(lines: &[Line]) -> String {
+/// A sentence about the largest contributor and what would reduce it; empty if nothing is uncertain.
+fn advice(words: &str, lines: &[Line]) -> String {
     let Some(first) = lines.first() else { return String::new() };
-    let share = 100.0 * first.share;
-    let remedy = if first.remedy.is_empty() { String::new() } else { format!(": {}", first.remedy) };
-    format!("the {} makes {share:.0} % of the variance{remedy}", first.name)
+    let most = if first.share > 0.5 { "most" } else { "the largest part" };
+    let remedy = if first.remedy.is_empty() { String::new() } else { format!("; to reduce it, {}", first.remedy) };
+    format!("{most} of the uncertainty of the {words} comes from the {}{remedy}", first.name)
 }
