@@ -17,6 +17,7 @@
 
 pub mod audio;
 pub mod bench;
+pub mod calibrate;
 pub mod cli;
 pub mod clicks;
 pub mod estimate;

@@ -43,3 +43,30 @@ fn electrodes_give_an_implied_spacing_and_a_budget_needs_a_bench() {
     assert!((1e-5..1e-2).contains(&spacing_m), "{spacing_m}");
     gaptone().args(["measure", "sounds/steady.wav", "--budget"]).assert().code(2);
 }
+
+#[test]
+fn two_runs_of_one_bench_are_compared_without_what_they_have_in_common() {
+    let folder = cli_common::Folder::new();
+    let bench = concat!(env!("CARGO_MANIFEST_DIR"), "/sounds/steady.toml");
+    let run = |arguments: &[&str]| {
+        let output = gaptone().args(arguments).current_dir(folder.0.path()).output().expect("it runs");
+        assert!(output.status.success(), "{}", String::from_utf8_lossy(&output.stderr));
+        output.stdout
+    };
+    let worn =
+        std::fs::read_to_string(bench).expect("a bench").replace("voltage = \"5.2 kV\"", "voltage = \"5.226 kV\"");
+    folder.file("worn.toml", worn.as_bytes());
+    run(&["render", "--bench", bench, "--seed", "5", "-o", "before.wav"]);
+    run(&["render", "--bench", "worn.toml", "--seed", "6", "-o", "after.wav"]);
+    let compared = ["measure", "before.wav", "after.wav", "--bench", bench, "--difference"];
+    let found: serde_json::Value = serde_json::from_slice(&run(&[&compared[..], &["--json"]].concat())).expect("JSON");
+    assert_eq!(found["format"], "gaptone.difference/1");
+    let differences = found["differences"].as_array().expect("differences");
+    let voltage = differences.iter().find(|one| one["quantity"] == "gap_voltage_v").expect("a voltage");
+    let of = |key: &str| voltage["difference"][key].as_f64().expect(key);
+    // The gap is 26 V higher; each voltage alone is only known to 45 V.
+    assert!(voltage["differs"] == true && (of("value") - 26.0).abs() < 4.0 * of("u") && of("u") < 5.0, "{voltage}");
+    let text = String::from_utf8(run(&compared)).expect("UTF-8");
+    assert!(text.contains("the two runs differ in firing rate") && text.contains("gap voltage"), "{text}");
+    gaptone().args(["measure", "sounds/steady.wav", "--difference"]).assert().code(2);
+}

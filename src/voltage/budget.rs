@@ -215,6 +215,32 @@ impl Sources<'_> {
         Problem::new(inputs, model).budget("gap_voltage_v", "gap voltage", "V")
     }
 
+    /// Difference of the mean gap voltages of two runs at one bench, V: second less first. The parts are common to both.
+    pub fn difference(&self, mean_v: f64, second: &Sources, second_mean_v: f64) -> Option<Budget> {
+        let base = Parts::from_bench(self.bench, None).ok()?;
+        let (parts, mut inputs) = self.parts();
+        let scatters = [self.scatter.periods_s(), second.scatter.periods_s()];
+        let centre = base.circuit().ok()?;
+        let mut offsets_v = [mean_v, second_mean_v];
+        for (place, run) in [self, second].into_iter().enumerate() {
+            offsets_v[place] -= mean_voltage(&centre, run.period.value, scatters[place])?;
+            let period = run.statistical(run.period.u);
+            inputs.push(Input::new("statistics of the firings", "s", run.period.value, period));
+        }
+        inputs.extend(self.additions());
+        inputs.extend(second.additions());
+        let model = move |x: &[f64]| {
+            let mut drawn = base;
+            parts.iter().zip(x).for_each(|(part, value)| (part.place)(&mut drawn, *value));
+            let circuit = drawn.circuit().ok()?;
+            let rest = &x[parts.len()..];
+            let at = |place: usize| Some(mean_voltage(&circuit, rest[place], scatters[place])? + offsets_v[place]);
+            // The sign of what adds up does not matter: its distribution is symmetric.
+            Some(at(1)? - at(0)? + rest[2..].iter().sum::<f64>())
+        };
+        Problem::new(inputs, model).budget("gap_voltage_difference_v", "difference of the gap voltages", "V")
+    }
+
     /// The problem of the spread: slope of the law times the scatter of the periods.
     fn spread_problem(&self) -> Option<Problem<'static>> {
         let base = Parts::from_bench(self.bench, None).ok()?;

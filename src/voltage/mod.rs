@@ -154,6 +154,26 @@ impl VoltageMeter {
         result
     }
 
+    /// Difference of the gap voltages of two runs at this bench, second less first, each a reading with its mean voltage, V.
+    /// What the runs have in common, supply meter and parts, cancels as far as it acts alike on both.
+    #[must_use]
+    pub fn difference(&self, first: (&Reading, f64), second: (&Reading, f64)) -> Option<Estimate> {
+        let scatter = |run: (&Reading, f64)| run.0.period_s.map(|period| Scatter::of(run.0, period.value));
+        let scatters = (scatter(first)?, scatter(second)?);
+        let one = self.sources(first, &scatters.0)?;
+        let two = self.sources(second, &scatters.1)?;
+        one.difference(first.1, &two, second.1).map(|budget| budget.result).filter(Estimate::is_finite)
+    }
+
+    fn sources<'a>(&'a self, run: (&Reading, f64), scatter: &'a Scatter) -> Option<Sources<'a>> {
+        let (reading, mean_v) = run;
+        let period = reading.period_s?;
+        let slope = self.circuit.slope_v_per_s(mean_v);
+        let firings = (reading.firings.on_rhythm + reading.firings.missed).max(1);
+        let pull_u_v = slope * scatter.pull_u_s(period.value);
+        Some(Sources { bench: &self.bench, period, scatter, slope, firings, pull_u_v })
+    }
+
     /// The good periods: those within the scatter of the rhythm.
     fn kept(&self, period_s: f64, scatter: &Scatter) -> Kept {
         let half = (FARTHEST_SD * scatter.measured_s()).max(LEAST_BAND * period_s);
