@@ -3,7 +3,7 @@
 mod calibrate_help;
 
 use calibrate_help::{Fault, Sweep, Tally};
-use gaptone::bench::Quantity;
+use gaptone::bench::{Quantity, Tolerance};
 use gaptone::calibrate::{Known, NoCalibration, Options, Setting, SupplyLog, calibrate, ramp_settings};
 use gaptone::estimate::Estimate;
 use gaptone::firing::{Event, EventKind};
@@ -52,6 +52,41 @@ fn a_residual_voltage_is_found_when_it_is_asked_for() {
     let known = Known { residual: Some(Quantity::exact(300.0)), ..Known::default() };
     let stated = calibrate(&settings, &known, Options::default()).unwrap();
     assert!(stated.residual_voltage_v.is_none() && (stated.time_constant_s.value / 8e-3 - 1.0).abs() < 1e-6);
+}
+
+/// Six settings read so well that the data can demand a further parameter.
+fn well_read(period_s: impl Fn(f64) -> f64) -> Vec<Setting> {
+    [7.3e3, 7.8e3, 8.6e3, 10e3, 12e3, 15e3]
+        .map(|v| {
+            let period = Estimate::normal(period_s(v), 1e-7 * period_s(v));
+            let supply = Quantity { value: v, tolerance: Tolerance::Standard(5e-5 * v) };
+            Setting { supply, period, firing_rate_hz: Some(period.reciprocal()), ..exact(v, 8e-3, 7e3, 0.0) }
+        })
+        .to_vec()
+}
+
+#[test]
+fn the_data_may_demand_a_residual_voltage_or_a_recovery() {
+    let left = well_read(|v| 8e-3 * ((v - 1.5e3) / (v - 7e3)).ln());
+    let found = calibrate(&left, &Known::default(), Options::default()).unwrap();
+    assert!((found.residual_voltage_v.expect("it is demanded").value / 1.5e3 - 1.0).abs() < 0.1, "{found:?}");
+    assert!(found.notes.iter().any(|note| note.contains("demand a residual voltage")), "{:?}", found.notes);
+
+    // Strength 7 kV·(1 − 0.3·exp(−t/4 ms)), reached by the charging curve: found by bisection.
+    let recovering = well_read(|v| {
+        let excess = |t: f64| v * (1.0 - (-t / 8e-3).exp()) - 7e3 * (1.0 - 0.3 * (-t / 4e-3).exp());
+        let (mut low, mut high) = (0.0, 0.2);
+        for _ in 0..100 {
+            let middle = 0.5 * (low + high);
+            if excess(middle) < 0.0 { low = middle } else { high = middle }
+        }
+        high
+    });
+    let known = Known { recovery_s: Some(4e-3), residual: Some(Quantity::exact(0.0)), ..Known::default() };
+    let found = calibrate(&recovering, &known, Options::default()).unwrap();
+    let recovery = found.recovery.clone().expect("it is demanded");
+    assert!((recovery.depth.value - 0.3).abs() < 0.02, "{found:?}");
+    assert!((found.time_constant_s.value / 8e-3 - 1.0).abs() < 0.01 && found.gap_voltage_v.value > 6.9e3, "{found:?}");
 }
 
 #[test]
