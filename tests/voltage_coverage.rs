@@ -74,7 +74,7 @@ fn the_interval_holds_the_truth_of_most_benches() {
 /// `cargo test --release --test voltage_coverage -- --ignored --nocapture`
 #[test]
 #[ignore = "measures the figures of DEVELOPERS.md"]
-fn coverage_over_a_thousand_benches() {
+fn coverage_over_five_hundred_benches() {
     let cases = [
         ("limits: supply 1 %, R and C 5 %; fill 0.3..0.9", (0.3, 0.9), Tolerance::Limit(0.01), Tolerance::Limit(0.05)),
         (
@@ -93,7 +93,7 @@ fn coverage_over_a_thousand_benches() {
         ),
     ];
     for (name, fill, supply, parts) in cases {
-        let found = coverage(1000, 2, fill, supply, parts);
+        let found = coverage(500, 2, fill, supply, parts);
         println!(
             "{name}: reported {:.1} %, law of propagation {:.1} % (upper end above the supply in {:.1} %), Monte Carlo {:.1} % of {}",
             percent(found.reported, &found),

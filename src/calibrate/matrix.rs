@@ -47,9 +47,9 @@ mod tests {
     fn the_inverse_times_the_matrix_is_one_and_a_singular_matrix_has_none() {
         let matrix = [vec![4.0, 1.0, 0.5], vec![1.0, 3.0, -1.0], vec![0.5, -1.0, 2.0]];
         let inverse = inverse(&matrix).unwrap();
-        for i in 0..3 {
-            for j in 0..3 {
-                let product: f64 = (0..3).map(|k| matrix[i][k] * inverse[k][j]).sum();
+        for (i, row) in matrix.iter().enumerate() {
+            for j in 0..row.len() {
+                let product: f64 = row.iter().zip(&inverse).map(|(a, column)| a * column[j]).sum();
                 assert!((product - f64::from(u8::from(i == j))).abs() < 1e-14);
             }
         }

@@ -18,12 +18,15 @@ pub use input::{Distribution, Input};
 pub use linear::Linear;
 pub use monte_carlo::{Interval, MonteCarlo, Propagated, tolerance};
 
+/// From the values of the inputs, in order, to the result; it may have no answer.
+type Model<'a> = dyn Fn(&[f64]) -> Option<f64> + 'a;
+
 /// A model of a measurement with its inputs.
 pub struct Problem<'a> {
     inputs: Vec<Input>,
     /// Correlation coefficients, row by row; none for independent inputs.
     correlation: Option<Vec<Vec<f64>>>,
-    model: Box<dyn Fn(&[f64]) -> Option<f64> + 'a>,
+    model: Box<Model<'a>>,
 }
 
 impl<'a> Problem<'a> {

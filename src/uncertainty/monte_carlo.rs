@@ -36,7 +36,8 @@ impl Default for MonteCarlo {
             probability: 0.95,
             digits: 2,
             interval: Interval::Symmetric,
-            most_draws: 2_000_000,
+            // Two digits of a nearly normal result stand after 1.14 million draws at the latest, which is when u begins with 99.
+            most_draws: 1_200_000,
             seed: 0x0067_6170_746f_6e65,
         }
     }
@@ -77,18 +78,26 @@ pub fn tolerance(u: f64, digits: i32) -> f64 {
 type Figures = [f64; 4];
 
 fn figures(values: &mut [f64], probability: f64, kind: Interval) -> Figures {
-    values.sort_unstable_by(f64::total_cmp);
     let n = values.len();
     let mean = values.iter().sum::<f64>() / n as f64;
     let u = (values.iter().map(|y| (y - mean).powi(2)).sum::<f64>() / (n - 1) as f64).sqrt();
     let held = (((n as f64) * probability).round() as usize).clamp(1, n - 1);
-    let first = match kind {
-        Interval::Symmetric => (n - held) / 2,
-        Interval::Shortest => (0..n - held)
-            .min_by(|&a, &b| (values[a + held] - values[a]).total_cmp(&(values[b + held] - values[b])))
-            .unwrap_or(0),
+    let (low, high) = match kind {
+        Interval::Symmetric => {
+            // Selecting two places takes a fraction of the time of sorting.
+            let first = (n - held) / 2;
+            let (_, low, above) = values.select_nth_unstable_by(first, f64::total_cmp);
+            let low = *low;
+            (low, *above.select_nth_unstable_by(held - 1, f64::total_cmp).1)
+        }
+        Interval::Shortest => {
+            values.sort_unstable_by(f64::total_cmp);
+            let width = |first: &usize| values[first + held] - values[*first];
+            let first = (0..n - held).min_by(|a, b| width(a).total_cmp(&width(b))).unwrap_or(0);
+            (values[first], values[first + held])
+        }
     };
-    [mean, u, values[first], values[first + held]]
+    [mean, u, low, high]
 }
 
 /// Lower triangle L with L·Lᵀ the matrix (Cholesky); a direction without variance stays zero.
