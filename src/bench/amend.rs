@@ -44,11 +44,16 @@ fn apply(document: &mut DocumentMut, amendment: &Amendment) {
         }
     }
     let mut value = Value::from(amendment.text.as_str());
-    let known = section.get(amendment.key).and_then(Item::as_value).map(|old| old.decor().clone());
-    if let Some(decor) = &known {
-        *value.decor_mut() = decor.clone();
+    // A value that is there is changed in its place: inserting would drop the comments above its key.
+    match section.get_mut(amendment.key).and_then(Item::as_value_mut) {
+        Some(old) => {
+            *value.decor_mut() = old.decor().clone();
+            *old = value;
+        }
+        None => {
+            section.insert(amendment.key, Item::Value(value));
+        }
     }
-    section.insert(amendment.key, Item::Value(value));
     if !before.is_empty()
         && let Some(mut key) = section.key_mut(amendment.key)
     {
