@@ -17,6 +17,7 @@
 
 pub mod audio;
 pub mod bench;
+pub mod calibrate;
 pub mod cli;
 pub mod clicks;
 pub mod estimate;
@@ -26,4 +27,5 @@ pub mod model;
 pub mod predict;
 pub mod report;
 pub mod rhythm;
+pub mod uncertainty;
 pub mod voltage;

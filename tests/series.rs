@@ -208,6 +208,7 @@ fn measured(entry: &SeriesEntry) -> (Measurement, Truth) {
         reading: measurer.finish().reading,
         gap_voltage_v: None,
         gap_voltage_spread_v: None,
+        budget: Vec::new(),
     };
     (measurement, truth)
 }

@@ -21,18 +21,21 @@ fn the_budget_of_the_worked_example_comes_out() {
     let result = measure(&bench, &reading(Estimate::normal(9.555_114e-3, 1e-6)));
     let voltage = result.gap_voltage_v.unwrap();
     assert!((voltage.value - 5000.0).abs() < 0.01, "{voltage:?}");
+    let budget = &result.budgets[0];
     // Differences over ± u leave the third derivative in; printed to 0.01 V.
-    assert!((voltage.u - 89.51).abs() < 0.05, "{voltage:?}");
-    // An end of the interval from 20 000 draws scatters by 1.3 V.
-    assert!((voltage.low - 4826.0).abs() < 5.0 && (voltage.high - 5177.0).abs() < 5.0, "{voltage:?}");
+    assert!((budget.propagation.u - 89.51).abs() < 0.05, "{budget:?}");
+    // Monte Carlo within 0.5 % of it.
+    assert!((voltage.u / 89.51 - 1.0).abs() < 5e-3, "{voltage:?}");
+    // The tolerance of the draws is 0.5 V, and the printed ends are rounded.
+    assert!((voltage.low - 4826.0).abs() < 1.5 && (voltage.high - 5177.0).abs() < 1.5, "{voltage:?}");
     let names =
         ["capacitance (u 2 %)", "supply voltage (u 1 %)", "residual voltage (u 50 %)", "charging resistance (u 1 %)"];
     let expected = [57.3, 49.2, 38.5, 28.7, 0.3];
-    for (i, contribution) in result.contributions.iter().enumerate() {
-        assert!(i == 4 || contribution.name == names[i], "{}", contribution.name);
-        assert!((contribution.u_v - expected[i]).abs() < 0.06, "{contribution:?}");
+    for (i, line) in budget.inputs.iter().enumerate() {
+        assert!(i == 4 || line.name == names[i], "{}", line.name);
+        assert!((line.contribution - expected[i]).abs() < 0.06, "{line:?}");
     }
-    assert!((result.contributions.iter().map(|c| c.share).sum::<f64>() - 1.0).abs() < 1e-12);
+    assert!((budget.inputs.iter().map(|line| line.share).sum::<f64>() - 1.0).abs() < 1e-12);
     assert!(result.notes.iter().any(|note| note.contains("capacitance (u 2 %)")), "{:?}", result.notes);
 }
 
@@ -42,8 +45,8 @@ fn an_exact_bench_leaves_the_statistics_alone() {
     let result = measure(&bench, &reading(Estimate::normal(9.808_293e-3, 2e-6)));
     let voltage = result.gap_voltage_v.unwrap();
     // dV/dT = (8 kV − 5 kV)/10 ms.
-    assert!((voltage.u - 3e5 * 2e-6).abs() < 1e-4, "{voltage:?}");
-    assert_eq!(result.contributions.len(), 1);
+    assert!((voltage.u - 3e5 * 2e-6).abs() < 2e-3, "{voltage:?}");
+    assert_eq!(result.budgets[0].inputs.len(), 1);
     assert!(result.notes.is_empty(), "{:?}", result.notes);
 }
 
@@ -54,7 +57,7 @@ fn a_limit_of_error_gives_a_rectangular_interval() {
     bench.supply.voltage = Some(Quantity { value: 8e3, tolerance: Tolerance::Limit(80.0) });
     let voltage = measure(&bench, &reading(Estimate::normal(9.808_293e-3, 0.0))).gap_voltage_v.unwrap();
     let half_width = 80.0 * 0.625;
-    assert!((voltage.u - half_width / 3f64.sqrt()).abs() < 1e-3, "{voltage:?}");
+    assert!((voltage.u / (half_width / 3f64.sqrt()) - 1.0).abs() < 0.01, "{voltage:?}");
     assert!((voltage.high - voltage.value - 0.95 * half_width).abs() < 0.01 * half_width, "{voltage:?}");
 }
 
@@ -65,7 +68,7 @@ fn a_recording_without_a_rhythm_has_no_voltage() {
     for verdict in [Verdict::Irregular, Verdict::None] {
         let result = measure(&bench, &Reading { verdict, ..reading(period) });
         assert_eq!(result.gap_voltage_v, None);
-        assert!(result.gap_voltage_spread_v.is_none() && result.contributions.is_empty());
+        assert!(result.gap_voltage_spread_v.is_none() && result.budgets.is_empty());
         assert_eq!(result.notes.len(), 1);
     }
     let silent = measure(&bench, &Reading { period_s: None, ..reading(period) });

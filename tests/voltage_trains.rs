@@ -151,7 +151,7 @@ fn ripple_near_the_rate_moves_the_voltage_only_where_the_gap_is_locked() {
         assert!(error.abs() < if locked { LOCKED } else { PULLED }, "{} {error}", row.case);
         if locked {
             assert!(voltage.u / row.gap_v > 3e-3, "{} {voltage:?}", row.case);
-            assert!(result.contributions[0].name.starts_with("supply ripple"), "{:?}", result.contributions);
+            assert!(result.budgets[0].inputs[0].name.starts_with("supply ripple"), "{:?}", result.budgets);
         }
         held += usize::from(voltage.low <= row.gap_v && row.gap_v <= voltage.high);
         // All of the scatter is ripple, none of it the gap's.

@@ -2,6 +2,7 @@
 //!
 //! Every value inside is in SI units with its standard uncertainty.
 
+mod amend;
 mod check;
 mod dimension;
 mod error;
@@ -16,6 +17,7 @@ mod syntax;
 mod text;
 mod unit;
 
+pub use amend::{Amendment, amended};
 pub use dimension::Dimension;
 pub use error::{BenchError, BenchFault};
 pub use format::{quantity_text, si, signed, with_uncertainty};

@@ -38,6 +38,8 @@ pub struct Arguments {
 pub enum Command {
     /// Rate, jitter and, with a bench, gap voltage of recordings
     Measure(MeasureArguments),
+    /// Time constant and gap voltage from recordings at several supply settings
+    Calibrate(CalibrateArguments),
     /// What a bench will do and sound like, before power
     Predict(PredictArguments),
     /// A clip of a bench with known truth
@@ -85,6 +87,14 @@ pub struct MeasureArguments {
     #[arg(long, value_name = "FILE")]
     pub truth: Option<String>,
 
+    /// Tell what the uncertainty of the voltage consists of, input by input
+    #[arg(long, requires = "bench")]
+    pub budget: bool,
+
+    /// Tell whether two runs differ: second less first, with intervals (two recordings)
+    #[arg(long, conflicts_with_all = ["truth", "events"])]
+    pub difference: bool,
+
     /// Write every click to a CSV file (one recording only)
     #[arg(long, value_name = "FILE")]
     pub events: Option<String>,
@@ -92,6 +102,43 @@ pub struct MeasureArguments {
     /// Tell on standard error how the verdict came about
     #[arg(long)]
     pub explain: bool,
+}
+
+/// Arguments of `calibrate`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Three settings or more, from little above the least at which the gap fires to twice that; two are
+possible, but nothing checks them. A tolerance behind the supply is that of its reading alone; an
+error that all readings share is the tolerance of supply.voltage in the bench.
+A recording that holds no rhythm is left out if three others remain.")]
+pub struct CalibrateArguments {
+    /// Recordings, each with its supply setting behind an @, such as a.wav@9.2kV or "a.wav@9.2 kV ± 0.3 %"
+    #[arg(required = true, value_name = "RECORDING@SUPPLY")]
+    pub recordings: Vec<String>,
+
+    /// Description of the bench (TOML): residual voltage, conduction time, leakage, tolerance of the supply meter
+    #[arg(long, value_name = "FILE")]
+    pub bench: Option<String>,
+
+    /// Fit the residual voltage too
+    #[arg(long)]
+    pub residual: bool,
+
+    /// One recording, named without a supply, whose supply was ramped: its log, CSV with the header time_s,supply_v
+    #[arg(long, value_name = "FILE")]
+    pub supply_log: Option<String>,
+
+    /// Write the bench with the result in it, comments kept; FILE may be the bench itself
+    #[arg(long, value_name = "FILE")]
+    pub write_bench: Option<String>,
+
+    /// Channel to analyse: left, right, mix or a number from 1 [default: the one with the clearest clicks]
+    #[arg(long, value_name = "CHANNEL")]
+    pub channel: Option<ChannelChoice>,
+
+    /// Write the result as JSON, in SI units
+    #[arg(long)]
+    pub json: bool,
 }
 
 /// Arguments of `predict`.

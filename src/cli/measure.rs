@@ -7,12 +7,12 @@ use super::args::MeasureArguments;
 use super::bench_file;
 use super::exit::{Exit, Failure, say, tell};
 use super::files::{self, FileError, STANDARD_STREAM};
+use super::listen::{HeardRecording, Listener};
 use super::progress::Progress;
-use crate::audio::{AudioError, ChannelChoice, Heard, Intake, Span};
+use crate::audio::Span;
 use crate::firing::Event;
-use crate::measure::{Measurer, Options, Outcome};
 use crate::model::truth::Truth;
-use crate::report::{self, Measurement, Recording, Report, WithTruth};
+use crate::report::{self, Differences, Measurement, Report, WithTruth};
 use crate::rhythm::Verdict;
 use crate::voltage::VoltageMeter;
 use std::collections::BTreeMap;
@@ -27,6 +27,12 @@ use std::sync::mpsc;
 pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
     let task = Task::new(arguments)?;
     let mut results = Results { json: arguments.json, truth: truth(arguments)?, ..Results::default() };
+    if arguments.difference {
+        if arguments.recordings.len() != 2 {
+            return Err(Failure::usage("--difference compares two recordings; name exactly two"));
+        }
+        results.difference = Some(task.voltage.clone());
+    }
     let recordings = &arguments.recordings;
     let progress = Progress::new(recordings.len());
     let next = AtomicUsize::new(0);
@@ -64,10 +70,9 @@ struct Analysed {
 
 /// What is to be done with each recording.
 struct Task<'a> {
-    channel: ChannelChoice,
-    span: Span,
+    listener: Listener,
     events: Option<&'a str>,
-    explain: bool,
+    budget: bool,
     /// A voltmeter that has seen no event yet.
     voltage: Option<VoltageMeter>,
 }
@@ -93,7 +98,13 @@ impl<'a> Task<'a> {
             files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
         }
         let voltage = voltmeter(arguments)?;
-        Ok(Self { channel: arguments.channel.unwrap_or_default(), span, events, explain: arguments.explain, voltage })
+        let voltage = if arguments.budget { voltage.map(VoltageMeter::with_all_budgets) } else { voltage };
+        Ok(Self {
+            listener: Listener { channel: arguments.channel.unwrap_or_default(), span, explain: arguments.explain },
+            events,
+            budget: arguments.budget,
+            voltage,
+        })
     }
 
     /// Measures one recording and writes its events if they are wanted.
@@ -120,38 +131,19 @@ impl<'a> Task<'a> {
     }
 
     fn analyse(&self, name: &str, progress: &Progress, sink: &mut Sink<'_>) -> Result<Analysed, Failure> {
-        let recording = files::open(name).map_err(|error| Failure::file(name, &error))?;
-        let told = |error: AudioError| Failure::file(name, &FileError::Broken(error.to_string()));
-        let mut intake = Intake::new(recording, self.channel, self.span).map_err(told)?;
-        let (sample_rate_hz, channels) = (intake.sample_rate_hz(), intake.channels());
-        let mut measurer = Measurer::new(sample_rate_hz, Options { explain: self.explain });
         let mut voltage = self.voltage.clone();
-        let mut take = |events: Vec<Event>| self.take(events, voltage.as_mut(), sink);
-        let mut mono = Vec::new();
-        while intake.next(&mut mono).map_err(told)? {
-            measurer.push(&mono);
-            take(measurer.take_events())?;
-            progress.heard(mono.len() as f64 / f64::from(sample_rate_hz));
-        }
-        let heard = intake.finish();
-        let Outcome { mut reading, events, mut explanation } = measurer.finish();
-        take(events)?;
-        for stretch in &mut reading.stretches {
-            (stretch.from_s, stretch.to_s) = (stretch.from_s + self.span.from_s, stretch.to_s + self.span.from_s);
-        }
-        reading.notes.splice(0..0, notes_of(&heard, self.span));
-        let recording = Recording {
-            file: name.to_owned(),
-            duration_s: heard.duration_s,
-            sample_rate_hz,
-            channels,
-            channel: heard.channel,
-            from_s: self.span.from_s,
-        };
+        let mut take = |event: Event| self.take(&event, voltage.as_mut(), sink);
+        let HeardRecording { recording, mut reading, mut explanation } =
+            self.listener.listen(name, progress, &mut take)?;
         let voltage = voltage.map(|meter| meter.finish(&reading)).unwrap_or_default();
         reading.notes.extend(voltage.notes);
-        explanation.extend(voltage.contributions.iter().map(|part| {
-            format!("gap voltage: {} brings {:.1} V, {:.0} % of the variance", part.name, part.u_v, 100.0 * part.share)
+        explanation.extend(voltage.budgets.first().into_iter().flat_map(|budget| &budget.inputs).map(|line| {
+            format!(
+                "gap voltage: {} brings {:.1} V, {:.0} % of the variance",
+                line.name,
+                line.contribution,
+                100.0 * line.share
+            )
         }));
         let measurement = Measurement {
             format: report::FORMAT.to_owned(),
@@ -159,32 +151,22 @@ impl<'a> Task<'a> {
             reading,
             gap_voltage_v: voltage.gap_voltage_v,
             gap_voltage_spread_v: voltage.gap_voltage_spread_v,
+            budget: if self.budget { voltage.budgets } else { Vec::new() },
         };
-        let explanation = if self.explain { explanation } else { Vec::new() };
+        let explanation = if self.listener.explain { explanation } else { Vec::new() };
         Ok(Analysed { measurement: report::finite(measurement), explanation })
     }
 
-    /// Hands events on to the voltmeter and to their file.
-    fn take(
-        &self,
-        events: Vec<Event>,
-        mut voltage: Option<&mut VoltageMeter>,
-        sink: &mut Sink<'_>,
-    ) -> Result<(), Failure> {
-        for mut event in events {
-            // The analyzer counts from the first sample it hears; a person counts from the start of the file.
-            event.time_s += self.span.from_s;
-            let meter = voltage.as_deref_mut();
-            let voltage_v = meter.and_then(|meter| {
-                meter.push(&event);
-                event.period_s.and_then(|period_s| meter.gap_voltage_of(period_s))
-            });
-            sink(&event, voltage_v).map_err(|error| {
-                let place = self.events.unwrap_or("standard output");
-                Failure::file(place, &FileError::from_io("writing", error))
-            })?;
-        }
-        Ok(())
+    /// Hands an event on to the voltmeter and to its file.
+    fn take(&self, event: &Event, voltage: Option<&mut VoltageMeter>, sink: &mut Sink<'_>) -> Result<(), Failure> {
+        let voltage_v = voltage.and_then(|meter| {
+            meter.push(event);
+            event.period_s.and_then(|period_s| meter.gap_voltage_of(period_s))
+        });
+        sink(event, voltage_v).map_err(|error| {
+            let place = self.events.unwrap_or("standard output");
+            Failure::file(place, &FileError::from_io("writing", error))
+        })
     }
 }
 
@@ -211,19 +193,14 @@ fn voltmeter(arguments: &MeasureArguments) -> Result<Option<VoltageMeter>, Failu
     VoltageMeter::new(&bench, supply).map(Some).map_err(|error| Failure::usage(format!("{name}: {error}")))
 }
 
-fn notes_of(heard: &Heard, span: Span) -> Vec<String> {
-    let mut notes = heard.notes.clone();
-    if heard.frames == 0 && span.from_s > 0.0 {
-        notes.push(format!("the recording ends before {} s, where the analysis was to start", span.from_s));
-    }
-    notes
-}
-
 /// Results as they come in, put out in the order of the arguments.
 #[derive(Default)]
 struct Results {
     json: bool,
     truth: Option<Truth>,
+    /// The two runs are to be compared; with the voltmeter of their bench.
+    difference: Option<Option<VoltageMeter>>,
+    runs: Vec<Measurement>,
     reports: Vec<Report>,
     texts: usize,
     failed: bool,
@@ -257,6 +234,9 @@ impl Results {
                 explanation.iter().for_each(|line| tell(&format!("{name}: {line}")));
                 self.not_measurable |= measurement.reading.verdict == Verdict::None;
                 let comparison = self.truth.as_ref().map(|truth| report::compare(&measurement, truth));
+                if self.difference.is_some() {
+                    self.runs.push(measurement.clone());
+                }
                 if self.json {
                     self.reports.push(match comparison {
                         None => Report::Measured(Box::new(measurement)),
@@ -282,11 +262,23 @@ impl Results {
         }
     }
 
-    fn finish(self) -> Result<Exit, Failure> {
-        if self.json {
-            let text = report::to_json(&self.reports)
-                .map_err(|error| Failure::Told(Exit::File, format!("the result cannot be written as JSON: {error}")))?;
-            say(&(text + "\n"))?;
+    /// The comparison of the two runs, if it was asked for and both were read.
+    fn differences(&mut self) -> Option<Differences> {
+        let meter = self.difference.take()?;
+        let [first, second]: [Measurement; 2] = std::mem::take(&mut self.runs).try_into().ok()?;
+        let run = |of: &Measurement| of.gap_voltage_v.map(|voltage| voltage.value);
+        let voltage =
+            meter.and_then(|meter| meter.difference((&first.reading, run(&first)?), (&second.reading, run(&second)?)));
+        Some(report::differences(first, second, voltage))
+    }
+
+    fn finish(mut self) -> Result<Exit, Failure> {
+        let not_json = |error| Failure::Told(Exit::File, format!("the result cannot be written as JSON: {error}"));
+        match self.differences() {
+            Some(found) if self.json => say(&(serde_json::to_string_pretty(&found).map_err(not_json)? + "\n"))?,
+            Some(found) => say(&format!("\n{}", report::differences_text(&found)))?,
+            None if self.json => say(&(report::to_json(&self.reports).map_err(not_json)? + "\n"))?,
+            None => {}
         }
         Ok(match (self.failed, self.not_measurable) {
             (true, _) => Exit::File,

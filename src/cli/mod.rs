@@ -4,9 +4,11 @@
 
 mod args;
 mod bench_file;
+mod calibrate;
 mod clip;
 mod exit;
 pub mod files;
+mod listen;
 mod measure;
 #[cfg(feature = "sound-card")]
 mod play;
@@ -33,6 +35,7 @@ pub fn main() -> ExitCode {
     };
     let ended = match &arguments.command {
         Command::Measure(arguments) => measure::run(arguments),
+        Command::Calibrate(arguments) => calibrate::run(arguments),
         Command::Predict(arguments) => predict::run(arguments),
         Command::Render(arguments) => render::run(arguments),
     };

@@ -6,6 +6,7 @@
 
 mod budget;
 mod error;
+mod inputs;
 mod planes;
 mod points;
 mod sphere_table;
@@ -14,6 +15,7 @@ mod uniform;
 
 pub use budget::{Contribution, GapVoltage, gap_voltage};
 pub use error::NoGapVoltage;
+pub use inputs::implied_spacing;
 pub use uniform::{
     AIR, GASES, Gas, SECONDARY, point_field_factor, sphere_field_factor, sphere_surface_kv_per_cm, uniform_kv,
 };

@@ -2,6 +2,7 @@
 
 use crate::estimate::Estimate;
 use crate::rhythm::Reading;
+use crate::uncertainty::Budget;
 use serde::{Deserialize, Serialize};
 
 /// Name of the format, in every measurement.
@@ -38,4 +39,7 @@ pub struct Measurement {
     pub gap_voltage_v: Option<Estimate>,
     /// Its standard deviation from firing to firing, V.
     pub gap_voltage_spread_v: Option<Estimate>,
+    /// Uncertainty budgets, if they were asked for: gap voltage, its spread, the spacing that it implies.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub budget: Vec<Budget>,
 }

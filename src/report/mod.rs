@@ -1,13 +1,18 @@
 //! Results as text, JSON and CSV. Computes nothing: it rounds, names units and leaves out what is not finite.
 
+mod budget;
+mod calibration;
 mod comparison;
+mod difference;
 mod events;
 mod figure;
 mod json;
 mod measurement;
 mod text;
 
+pub use calibration::calibration_text;
 pub use comparison::{COMPARISON_FORMAT, Compared, Comparison, compare, comparison_text};
+pub use difference::{DIFFERENCE_FORMAT, Difference, Differences, differences, differences_text};
 pub use events::{EVENTS_HEADER, write_event};
 pub use figure::Figure;
 pub use json::{Failure, Report, WithTruth, finite, to_json};

@@ -1,5 +1,6 @@
 //! The measurement as text that a person takes in at a glance: what was read, the verdict, the figures, the notes.
 
+use super::budget::budget_text;
 use super::{Figure, Measurement, Recording};
 use crate::estimate::Estimate;
 use crate::rhythm::{Reading, Verdict};
@@ -41,6 +42,10 @@ pub fn measurement_text(measurement: &Measurement) -> String {
     }
     if reading.firing_rate_hz.is_some() {
         text.push_str("  (± is one standard uncertainty, .. the 95 % interval)\n");
+    }
+    for budget in &measurement.budget {
+        text.push('\n');
+        text.push_str(&budget_text(budget));
     }
     if !reading.notes.is_empty() {
         text.push('\n');
@@ -238,6 +243,7 @@ pub(super) mod tests {
             },
             gap_voltage_v: Some(Estimate::normal(7103.0, 52.0)),
             gap_voltage_spread_v: Some(Estimate::normal(22.0, 1.5)),
+            budget: vec![],
         }
     }
 

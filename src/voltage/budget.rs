@@ -1,59 +1,108 @@
-//! The uncertainty budget of the gap voltage.
+//! The uncertainty budgets of the gap voltage and of its spread: which inputs there are and how they act.
 //!
-//! Law of propagation of uncertainty (JCGM 100:2008, 5.1.2) with the sensitivity of each part by differences over its own
-//! standard uncertainty (5.1.3, note 2); limits of error are rectangular (4.3.7), an unknown phase gives the arcsine
-//! distribution. The coverage interval is that of propagated distributions (JCGM 101:2008, clause 7).
+//! The rules of propagation are those of [`crate::uncertainty`]; here stand the parts of a bench, the statistics of the
+//! firings, a ripple whose phase is not known (arcsine), and the correction for the pull of the ripple on the rate.
 
+use super::scatter::Scatter;
 use crate::bench::{Bench, Quantity, Tolerance};
 use crate::estimate::Estimate;
-use crate::model::charging::{Circuit, Ripple};
-use crate::model::random::Random;
+use crate::model::charging::{Circuit, Parts};
+use crate::uncertainty::{Budget, Distribution, Input, Problem};
 
-/// One contribution to the uncertainty of the gap voltage.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Contribution {
-    /// What it comes from, with its tolerance.
-    pub name: String,
-    /// Standard uncertainty that it brings to the voltage, V.
-    pub u_v: f64,
-    /// Share of the variance, 0..1.
-    pub share: f64,
+/// A part of a bench that the voltage depends on.
+struct Part {
+    name: &'static str,
+    unit: &'static str,
+    /// What would reduce its uncertainty.
+    remedy: &'static str,
+    stated: fn(&Bench) -> Option<Quantity>,
+    place: fn(&mut Parts, f64),
 }
 
-/// Draws of the propagation of distributions. The ends of the interval then scatter by about 1 % of its width.
-const DRAWS: usize = 20_000;
-
-/// Seed of those draws: the same recording gives the same interval.
-const SEED: u64 = 0x0067_6170_746f_6e65;
-
-/// Share of draws that may fall where the law has no answer; above it the interval is the normal one.
-const FEW: f64 = 0.01;
-
-/// Name of the statistical contribution.
-const STATISTICS: &str = "statistics of the firings";
-
-type Part = (&'static str, fn(&mut Bench) -> &mut Option<Quantity>);
+const METER: &str = "read the supply with a better meter, or have this one calibrated";
+const CALIBRATE: &str =
+    "measure it, or let calibrate find the time constant from recordings at several supply settings";
+const CURRENT: &str = "measure the current with a better meter";
 
 /// The parts of a bench that the voltage depends on.
 const PARTS: [Part; 10] = [
-    ("supply voltage", |bench| &mut bench.supply.voltage),
-    ("supply current limit", |bench| &mut bench.supply.current_limit),
-    ("charging resistance", |bench| &mut bench.charging.resistance),
-    ("charging current", |bench| &mut bench.charging.current),
-    ("time constant", |bench| &mut bench.charging.time_constant),
-    ("capacitance", |bench| &mut bench.charging.capacitance),
-    ("leakage", |bench| &mut bench.charging.leakage),
-    ("residual voltage", |bench| &mut bench.gap.residual_voltage),
-    ("conduction time", |bench| &mut bench.gap.conduction_time),
-    ("stray capacitance", |bench| &mut bench.gap.stray_capacitance),
+    Part {
+        name: "supply voltage",
+        unit: "V",
+        remedy: METER,
+        stated: |b| b.supply.voltage,
+        place: |p, x| p.supply_v = Some(x),
+    },
+    Part {
+        name: "supply current limit",
+        unit: "A",
+        remedy: CURRENT,
+        stated: |b| b.supply.current_limit,
+        place: |p, x| p.current_limit_a = Some(x),
+    },
+    Part {
+        name: "charging resistance",
+        unit: "Ω",
+        remedy: CALIBRATE,
+        stated: |b| b.charging.resistance,
+        place: |p, x| p.resistance_ohm = Some(x),
+    },
+    Part {
+        name: "charging current",
+        unit: "A",
+        remedy: CURRENT,
+        stated: |b| b.charging.current,
+        place: |p, x| p.current_a = Some(x),
+    },
+    Part {
+        name: "time constant",
+        unit: "s",
+        remedy: CALIBRATE,
+        stated: |b| b.charging.time_constant,
+        place: |p, x| p.time_constant_s = Some(x),
+    },
+    Part {
+        name: "capacitance",
+        unit: "F",
+        remedy: CALIBRATE,
+        stated: |b| b.charging.capacitance,
+        place: |p, x| p.capacitance_f = Some(x),
+    },
+    Part {
+        name: "leakage",
+        unit: "Ω",
+        remedy: "measure the leakage with the gap opened, or take the divider off",
+        stated: |b| b.charging.leakage,
+        place: |p, x| p.leakage_ohm = Some(x),
+    },
+    Part {
+        name: "residual voltage",
+        unit: "V",
+        remedy: "find it from recordings at several supply settings with calibrate --residual",
+        stated: |b| b.gap.residual_voltage,
+        place: |p, x| p.residual_v = x,
+    },
+    Part {
+        name: "conduction time",
+        unit: "s",
+        remedy: "run slower, so that it is a smaller part of the period",
+        stated: |b| b.gap.conduction_time,
+        place: |p, x| p.conduction_s = x,
+    },
+    Part {
+        name: "stray capacitance",
+        unit: "F",
+        remedy: CALIBRATE,
+        stated: |b| b.gap.stray_capacitance,
+        place: |p, x| p.stray_f = x,
+    },
 ];
 
 /// What the uncertainty is computed from.
-pub(super) struct Budget<'a> {
+pub(super) struct Sources<'a> {
     pub bench: &'a Bench,
     pub period: Estimate,
-    /// Standard deviation of the true periods, s.
-    pub scatter_s: f64,
+    pub scatter: &'a Scatter,
     /// dV/dT, V/s.
     pub slope: f64,
     pub firings: u64,
@@ -82,140 +131,149 @@ fn tolerance_text(quantity: &Quantity) -> String {
     }
 }
 
-impl Budget<'_> {
-    /// Mean voltage of a bench for periods of this mean and scatter: three nodes of Gauss–Hermite quadrature, exact
-    /// for a law of fifth degree.
-    fn mean_voltage(&self, bench: &Bench) -> Option<f64> {
-        let circuit = Circuit::from_bench(bench, None).ok()?;
-        let at = |period_s: f64| circuit.gap_voltage_v(period_s).ok();
-        let reach = 3f64.sqrt() * self.scatter_s;
-        let middle = at(self.period.value)?;
-        match (at(self.period.value - reach), at(self.period.value + reach)) {
-            (Some(low), Some(high)) => Some((low + 4.0 * middle + high) / 6.0),
-            _ => Some(middle),
+/// Mean voltage of a circuit for periods of this mean and scatter: three nodes of Gauss–Hermite quadrature, exact for a law
+/// of fifth degree.
+fn mean_voltage(circuit: &Circuit, period_s: f64, scatter_s: f64) -> Option<f64> {
+    let at = |period_s: f64| circuit.gap_voltage_v(period_s).ok();
+    let reach = 3f64.sqrt() * scatter_s;
+    let middle = at(period_s)?;
+    match (at(period_s - reach), at(period_s + reach)) {
+        (Some(low), Some(high)) => Some((low + 4.0 * middle + high) / 6.0),
+        _ => Some(middle),
+    }
+}
+
+impl Sources<'_> {
+    /// The parts that are not exact, with their inputs.
+    fn parts(&self) -> (Vec<&'static Part>, Vec<Input>) {
+        PARTS
+            .iter()
+            .filter_map(|part| {
+                let quantity = (part.stated)(self.bench).filter(|quantity| quantity.u() > 0.0)?;
+                let name = format!("{}{}", part.name, tolerance_text(&quantity));
+                Some((part, Input::of_quantity(name, part.unit, &quantity).reduced_by(part.remedy)))
+            })
+            .unzip()
+    }
+
+    /// Distribution of a statistical figure of the firings.
+    fn statistical(&self, u: f64) -> Distribution {
+        let freedom = self.firings.saturating_sub(1) as f64;
+        if freedom >= 1.0 {
+            Distribution::Student { scale: u, degrees_of_freedom: freedom }
+        } else {
+            Distribution::Normal { u }
         }
     }
 
-    fn slope_of(&self, bench: &Bench) -> Option<f64> {
-        let circuit = Circuit::from_bench(bench, None).ok()?;
-        Some(circuit.slope_v_per_s(circuit.gap_voltage_v(self.period.value).ok()?))
-    }
-
-    /// Half the change of a figure when one part goes from −u to +u; one-sided where a side has no answer.
-    fn change(&self, part: &Part, figure: impl Fn(&Bench) -> Option<f64>) -> f64 {
-        let shifted = |sign: f64| {
-            let mut bench = self.bench.clone();
-            if let Some(quantity) = (part.1)(&mut bench) {
-                quantity.value += sign * quantity.u();
-            }
-            figure(&bench)
-        };
-        match (shifted(-1.0), figure(self.bench), shifted(1.0)) {
-            (Some(low), _, Some(high)) => 0.5 * (high - low),
-            (Some(low), Some(middle), None) => middle - low,
-            (None, Some(middle), Some(high)) => high - middle,
-            _ => f64::NAN,
-        }
-    }
-
-    /// The parts that are not exact.
-    fn uncertain(&self) -> impl Iterator<Item = (&'static Part, Quantity)> {
-        let mut bench = self.bench.clone();
-        PARTS.iter().filter_map(move |part| {
-            let quantity = (*(part.1)(&mut bench))?;
-            (quantity.u() > 0.0).then_some((part, quantity))
-        })
-    }
-
-    /// Amplitude of the mean voltage's error by a ripple whose phase is not known, V.
+    /// Amplitude of the mean voltage's error by a ripple whose phase is not known, V, and the ripple's size.
     ///
     /// Over N firings at phases that advance by 2πfT the mean of a sine is |sin(Nx)/(N·sin x)|, x = πfT: 1 for a gap
     /// that keeps step, next to nothing otherwise.
-    fn ripple_v(&self) -> Option<(Ripple, f64)> {
+    fn ripple_v(&self) -> Option<(f64, f64)> {
         let circuit = Circuit::from_bench(self.bench, None).ok()?;
         let ripple = circuit.ripple()?;
         let x = std::f64::consts::PI * (ripple.frequency_hz * self.period.value).fract();
         let n = self.firings as f64;
         let coherence = if x.sin().abs() * n < 1e-6 { 1.0 } else { ((n * x).sin() / (n * x.sin())).abs() };
-        Some((ripple, coherence * circuit.ripple_swing_v(self.period.value)))
+        Some((ripple.fraction, coherence * circuit.ripple_swing_v(self.period.value)))
     }
 
-    /// All contributions, largest first.
-    pub fn contributions(&self) -> Vec<Contribution> {
-        let contribution = |name: String, u_v: f64| Contribution { name, u_v, share: 0.0 };
-        let mut list = vec![contribution(STATISTICS.to_owned(), (self.slope * self.period.u).abs())];
-        for (part, quantity) in self.uncertain() {
-            let u_v = self.change(part, |bench| self.mean_voltage(bench)).abs();
-            list.push(contribution(format!("{}{}", part.0, tolerance_text(&quantity)), u_v));
+    /// Inputs that act on the voltage as they are, V.
+    fn additions(&self) -> Vec<Input> {
+        let mut inputs = Vec::new();
+        if let Some((fraction, amplitude_v)) = self.ripple_v() {
+            let name = format!("supply ripple ({} peak)", percent(fraction));
+            let shape = Distribution::Arcsine { half_width: amplitude_v };
+            inputs.push(
+                Input::new(name, "V", 0.0, shape).reduced_by("smooth the supply, or run off the mains' multiples"),
+            );
         }
-        if let Some((ripple, amplitude_v)) = self.ripple_v() {
-            let u_v = amplitude_v / std::f64::consts::SQRT_2;
-            list.push(contribution(format!("supply ripple ({} peak)", percent(ripple.fraction)), u_v));
-        }
-        list.push(contribution("pull of the ripple on the rate".to_owned(), self.pull_u_v));
-        let variance: f64 = list.iter().map(|c| c.u_v * c.u_v).sum();
-        for c in &mut list {
-            c.share = if variance > 0.0 { c.u_v * c.u_v / variance } else { 0.0 };
-        }
-        list.retain(|c| c.u_v != 0.0);
-        list.sort_by(|a, b| b.u_v.total_cmp(&a.u_v));
-        list
+        let pull = Distribution::Normal { u: self.pull_u_v };
+        inputs.push(Input::new("pull of the ripple on the rate", "V", 0.0, pull).reduced_by("smooth the supply"));
+        inputs
     }
 
-    /// The voltage with its combined uncertainty and coverage interval.
-    pub fn estimate(&self, mean_v: f64, contributions: &[Contribution]) -> Estimate {
-        let u = contributions.iter().map(|c| c.u_v * c.u_v).sum::<f64>().sqrt();
-        let normal = Estimate::normal(mean_v, u);
-        let only_statistics = contributions.iter().all(|c| c.name == STATISTICS);
-        if only_statistics || !normal.is_finite() {
-            return normal;
-        }
-        match self.propagated() {
-            Some((low, high)) => Estimate { low: mean_v + low, high: mean_v + high, ..normal },
-            None => normal,
-        }
+    /// Budget of the mean gap voltage, about the mean that was found.
+    pub fn voltage(&self, mean_v: f64) -> Option<Budget> {
+        let base = Parts::from_bench(self.bench, None).ok()?;
+        let (parts, mut inputs) = self.parts();
+        let period = self.statistical(self.period.u);
+        inputs.push(
+            Input::new("statistics of the firings", "s", self.period.value, period).reduced_by("record for longer"),
+        );
+        inputs.extend(self.additions());
+        let scatter_s = self.scatter.periods_s();
+        let offset_v = mean_v - mean_voltage(&base.circuit().ok()?, self.period.value, scatter_s)?;
+        let model = move |x: &[f64]| {
+            let mut drawn = base;
+            parts.iter().zip(x).for_each(|(part, value)| (part.place)(&mut drawn, *value));
+            let rest = &x[parts.len()..];
+            let voltage_v = mean_voltage(&drawn.circuit().ok()?, rest[0], scatter_s)?;
+            Some(voltage_v + offset_v + rest[1..].iter().sum::<f64>())
+        };
+        Problem::new(inputs, model).budget("gap_voltage_v", "gap voltage", "V")
     }
 
-    /// Ends of the 95 % interval against the voltage of the mean period, by propagation of distributions.
-    fn propagated(&self) -> Option<(f64, f64)> {
-        let middle_v = self.mean_voltage(self.bench)?;
-        let offset_v = middle_v - Circuit::from_bench(self.bench, None).ok()?.gap_voltage_v(self.period.value).ok()?;
-        let uncertain: Vec<_> = self.uncertain().collect();
-        let ripple_v = self.ripple_v().map_or(0.0, |ripple| ripple.1);
-        let mut random = Random::seeded(SEED);
-        let mut bench = self.bench.clone();
-        let mut voltages = Vec::with_capacity(DRAWS);
-        for _ in 0..DRAWS {
-            for (part, quantity) in &uncertain {
-                *(part.1)(&mut bench) = Some(Quantity::exact(draw(quantity, &mut random)));
-            }
-            let period_s = self.period.value + self.period.u * random.normal();
-            let phase = (std::f64::consts::TAU * random.uniform()).sin();
-            let voltage = Circuit::from_bench(&bench, None).ok().and_then(|c| c.gap_voltage_v(period_s).ok());
-            let pull_v = self.pull_u_v * random.normal();
-            voltages.extend(voltage.map(|v| v + offset_v + ripple_v * phase + pull_v - middle_v));
+    /// Difference of the mean gap voltages of two runs at one bench, V: second less first. The parts are common to both.
+    pub fn difference(&self, mean_v: f64, second: &Sources, second_mean_v: f64) -> Option<Budget> {
+        let base = Parts::from_bench(self.bench, None).ok()?;
+        let (parts, mut inputs) = self.parts();
+        let scatters = [self.scatter.periods_s(), second.scatter.periods_s()];
+        let centre = base.circuit().ok()?;
+        let mut offsets_v = [mean_v, second_mean_v];
+        for (place, run) in [self, second].into_iter().enumerate() {
+            offsets_v[place] -= mean_voltage(&centre, run.period.value, scatters[place])?;
+            let period = run.statistical(run.period.u);
+            inputs.push(Input::new("statistics of the firings", "s", run.period.value, period));
         }
-        if (voltages.len() as f64) < (1.0 - FEW) * DRAWS as f64 {
-            return None;
-        }
-        voltages.sort_by(f64::total_cmp);
-        let at = |share: f64| voltages[((voltages.len() - 1) as f64 * share).round() as usize];
-        Some((at(0.025), at(0.975)))
+        inputs.extend(self.additions());
+        inputs.extend(second.additions());
+        let model = move |x: &[f64]| {
+            let mut drawn = base;
+            parts.iter().zip(x).for_each(|(part, value)| (part.place)(&mut drawn, *value));
+            let circuit = drawn.circuit().ok()?;
+            let rest = &x[parts.len()..];
+            let at = |place: usize| Some(mean_voltage(&circuit, rest[place], scatters[place])? + offsets_v[place]);
+            // The sign of what adds up does not matter: its distribution is symmetric.
+            Some(at(1)? - at(0)? + rest[2..].iter().sum::<f64>())
+        };
+        Problem::new(inputs, model).budget("gap_voltage_difference_v", "difference of the gap voltages", "V")
     }
 
-    /// Relative standard uncertainty of the slope dV/dT by the bench: that of a spread in volts.
-    pub fn relative_u_of_slope(&self) -> f64 {
-        let Some(slope) = self.slope_of(self.bench).filter(|slope| *slope > 0.0) else { return 0.0 };
-        let square: f64 =
-            self.uncertain().map(|(part, _)| self.change(part, |bench| self.slope_of(bench)).powi(2)).sum();
-        if square.is_finite() { square.sqrt() / slope } else { 0.0 }
+    /// The problem of the spread: slope of the law times the scatter of the periods.
+    fn spread_problem(&self) -> Option<Problem<'static>> {
+        let base = Parts::from_bench(self.bench, None).ok()?;
+        let tangent = |circuit: &Circuit, period_s: f64| {
+            Some(circuit.slope_v_per_s(circuit.gap_voltage_v(period_s).ok()?)).filter(|slope| *slope > 0.0)
+        };
+        let period_s = self.period.value;
+        // The slope in force is averaged over the scatter; the tangent follows the parts.
+        let factor = self.slope / tangent(&base.circuit().ok()?, period_s)?;
+        let (parts, mut inputs) = self.parts();
+        let own = self.scatter.own?;
+        let longer = "record for longer";
+        inputs.push(Input::new("jitter", "s", own.value, self.statistical(own.u)).reduced_by(longer));
+        let drift = Distribution::Normal { u: self.scatter.drift_u };
+        inputs.push(Input::new("drift", "s", self.scatter.drift, drift).reduced_by(longer));
+        Some(Problem::new(inputs, move |x| {
+            let mut drawn = base;
+            parts.iter().zip(x).for_each(|(part, value)| (part.place)(&mut drawn, *value));
+            let rest = &x[parts.len()..];
+            Some(factor * tangent(&drawn.circuit().ok()?, period_s)? * rest[0].hypot(rest[1]))
+        }))
     }
-}
 
-fn draw(quantity: &Quantity, random: &mut Random) -> f64 {
-    match quantity.tolerance {
-        Tolerance::Exact => quantity.value,
-        Tolerance::Limit(half_width) => quantity.value + half_width * (2.0 * random.uniform() - 1.0),
-        Tolerance::Standard(u) => quantity.value + u * random.normal(),
+    /// Standard uncertainty that everything but the jitter's own statistics brings to the spread, V.
+    pub fn spread_rest_u_v(&self) -> Option<f64> {
+        let problem = self.spread_problem()?;
+        let linear = problem.linear()?;
+        let jitter = problem.inputs().iter().position(|input| input.name == "jitter")?;
+        Some(linear.u * (1.0 - linear.shares[jitter]).max(0.0).sqrt())
+    }
+
+    /// Budget of the spread.
+    pub fn spread(&self) -> Option<Budget> {
+        self.spread_problem()?.budget("gap_voltage_spread_v", "voltage spread", "V")
     }
 }

@@ -15,14 +15,14 @@ mod notes;
 mod scatter;
 mod shape;
 
-pub use budget::Contribution;
-
 use crate::bench::{Bench, Quantity};
 use crate::estimate::{COVERAGE_95, Estimate};
 use crate::firing::{Event, EventKind};
+use crate::model::breakdown::implied_spacing;
 use crate::model::charging::{Circuit, MissingPart};
 use crate::rhythm::{Reading, Verdict};
-use budget::Budget;
+use crate::uncertainty::Budget;
+use budget::Sources;
 use classes::{Classes, Kept};
 use scatter::Scatter;
 use shape::{NormalGap, normal_gap};
@@ -44,8 +44,9 @@ pub struct VoltageResult {
     pub gap_voltage_v: Option<Estimate>,
     /// Its standard deviation from firing to firing, V; a drift over the recording is in it, mains ripple is not.
     pub gap_voltage_spread_v: Option<Estimate>,
-    /// What the uncertainty of the mean consists of, largest first; empty without a voltage.
-    pub contributions: Vec<Contribution>,
+    /// What the uncertainty consists of: first that of the mean, then, if they were asked for, those of the spread and of the
+    /// spacing that the voltage implies. Empty without a voltage.
+    pub budgets: Vec<Budget>,
     /// What a person should know about it.
     pub notes: Vec<String>,
 }
@@ -57,6 +58,7 @@ pub struct VoltageMeter {
     bench: Bench,
     circuit: Circuit,
     classes: Classes,
+    all_budgets: bool,
 }
 
 impl VoltageMeter {
@@ -73,7 +75,13 @@ impl VoltageMeter {
             bench.supply.ripple = None;
         }
         let circuit = Circuit::from_bench(&bench, None)?;
-        Ok(Self { bench, circuit, classes: Classes::default() })
+        Ok(Self { bench, circuit, classes: Classes::default(), all_budgets: false })
+    }
+
+    /// The same meter with the budgets of spread and implied spacing beside that of the mean.
+    #[must_use]
+    pub fn with_all_budgets(self) -> Self {
+        Self { all_budgets: true, ..self }
     }
 
     /// Voltage that a single period implies, V; none where the law has no answer.
@@ -115,14 +123,13 @@ impl VoltageMeter {
         let pull_u_v = slope * scatter.pull_u_s(period.value);
         let mean_v = self.mean_v(period.value, slope, &scatter, &kept).unwrap_or(normal.mean_v) + pull_v;
         let firings = (reading.firings.on_rhythm + reading.firings.missed).max(1);
-        let budget = Budget { bench: &self.bench, period, scatter_s: scatter.periods_s(), slope, firings, pull_u_v };
-        let contributions = budget.contributions();
-        let voltage = budget.estimate(mean_v, &contributions);
-        if !voltage.is_finite() {
+        let sources = Sources { bench: &self.bench, period, scatter: &scatter, slope, firings, pull_u_v };
+        let Some(budget) = sources.voltage(mean_v).filter(|budget| budget.result.is_finite()) else {
             result.notes.push("no gap voltage: the period is not known well enough for this bench".to_owned());
             return result;
-        }
-        result.gap_voltage_spread_v = self.spread(&scatter, slope, &budget).filter(Estimate::is_finite);
+        };
+        let voltage = budget.result;
+        result.gap_voltage_spread_v = self.spread(&scatter, slope, &sources).filter(Estimate::is_finite);
         result.gap_voltage_v = Some(voltage);
         result.notes = notes::notes(&notes::Facts {
             bench: &self.bench,
@@ -134,10 +141,37 @@ impl VoltageMeter {
             scatter: &scatter,
             kept: &kept,
             total: self.classes.total(),
-            contributions: &contributions,
+            budget: &budget,
         });
-        result.contributions = contributions;
+        result.budgets.push(budget);
+        if self.all_budgets {
+            let spread = sources
+                .spread()
+                .map(|budget| Budget { result: result.gap_voltage_spread_v.unwrap_or(budget.result), ..budget });
+            result.budgets.extend(spread);
+            result.budgets.extend(implied_spacing(&self.bench, voltage));
+        }
         result
+    }
+
+    /// Difference of the gap voltages of two runs at this bench, second less first, each a reading with its mean voltage, V.
+    /// What the runs have in common, supply meter and parts, cancels as far as it acts alike on both.
+    #[must_use]
+    pub fn difference(&self, first: (&Reading, f64), second: (&Reading, f64)) -> Option<Estimate> {
+        let scatter = |run: (&Reading, f64)| run.0.period_s.map(|period| Scatter::of(run.0, period.value));
+        let scatters = (scatter(first)?, scatter(second)?);
+        let one = self.sources(first, &scatters.0)?;
+        let two = self.sources(second, &scatters.1)?;
+        one.difference(first.1, &two, second.1).map(|budget| budget.result).filter(Estimate::is_finite)
+    }
+
+    fn sources<'a>(&'a self, run: (&Reading, f64), scatter: &'a Scatter) -> Option<Sources<'a>> {
+        let (reading, mean_v) = run;
+        let period = reading.period_s?;
+        let slope = self.circuit.slope_v_per_s(mean_v);
+        let firings = (reading.firings.on_rhythm + reading.firings.missed).max(1);
+        let pull_u_v = slope * scatter.pull_u_s(period.value);
+        Some(Sources { bench: &self.bench, period, scatter, slope, firings, pull_u_v })
     }
 
     /// The good periods: those within the scatter of the rhythm.
@@ -158,14 +192,14 @@ impl VoltageMeter {
     }
 
     /// Spread of the gap voltage, V.
-    fn spread(&self, scatter: &Scatter, slope: f64, budget: &Budget) -> Option<Estimate> {
+    fn spread(&self, scatter: &Scatter, slope: f64, sources: &Sources) -> Option<Estimate> {
         let own = scatter.own?;
         let with_drift = |own_s: f64| slope * own_s.hypot(scatter.drift);
         let value = with_drift(own.value);
         // Each part moves the root of the sum of squares by its own share of it.
         let share = |part_s: f64| if value > 0.0 { slope * part_s / value } else { 1.0 };
         let statistics = slope * own.u * share(own.value);
-        let rest = (value * budget.relative_u_of_slope()).hypot(slope * scatter.drift_u * share(scatter.drift));
+        let rest = sources.spread_rest_u_v().unwrap_or(0.0);
         let reach = COVERAGE_95 * rest;
         Some(Estimate {
             value,

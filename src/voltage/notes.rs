@@ -1,12 +1,12 @@
 //! What a person should know about a gap voltage.
 
-use super::Contribution;
 use super::classes::Kept;
 use super::scatter::Scatter;
 use crate::bench::Bench;
 use crate::estimate::Estimate;
 use crate::model::charging::Circuit;
 use crate::rhythm::Reading;
+use crate::uncertainty::Budget;
 
 /// Voltage below which no air gap breaks down, V: the minimum of Paschen's law for air is about 327 V (published as
 /// 327 V at 7.5 µm and one atmosphere).
@@ -41,7 +41,7 @@ pub(super) struct Facts<'a> {
     pub scatter: &'a Scatter,
     pub kept: &'a Kept,
     pub total: f64,
-    pub contributions: &'a [Contribution],
+    pub budget: &'a Budget,
 }
 
 /// All notes that apply.
@@ -63,12 +63,8 @@ fn volts(v: f64) -> String {
 }
 
 fn largest(facts: &Facts) -> Option<String> {
-    let first = facts.contributions.first()?;
     // Alone it needs no mention.
-    (facts.contributions.len() > 1).then(|| {
-        let most = if first.share > 0.5 { "most" } else { "the largest part" };
-        format!("{most} of the uncertainty of the gap voltage comes from the {}", first.name)
-    })
+    (facts.budget.inputs.len() > 1).then(|| facts.budget.advice.clone())
 }
 
 fn unstated(facts: &Facts) -> Option<String> {

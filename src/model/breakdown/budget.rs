@@ -1,21 +1,19 @@
 //! The gap voltage of a bench with its uncertainty budget.
 //!
-//! Each input is moved by ± its standard uncertainty (JCGM 100:2008, 5.1.3 note 2); the accuracy of the law is a limit, that
-//! is a rectangular distribution (4.3.7).
+//! By the law of propagation of [`crate::uncertainty`]; the accuracy of the law is a limit, that is a rectangular distribution
+//! (JCGM 100:2008, 4.3.7).
 
+use super::inputs::{BAND, inputs, level_of};
 use super::{Law, Level, NoGapVoltage, level};
 use crate::bench::{Bench, Electrodes, Quantity, Tolerance, si, signed};
 use crate::model::air::Air;
+use crate::uncertainty::{Input, Problem};
 use serde::{Deserialize, Serialize};
 
 /// Rule of common practice, V/m: 3 kV/mm.
 const RULE_V_PER_M: f64 = 3e6;
 /// Greatest h/δ for which the humidity factor of IEC 60052 is meant, g/m³ (from memory).
 const MOST_HUMIDITY: f64 = 13.0;
-
-/// What an unstated air may differ from standard air: ± 5 K, ± 25 hPa, ± 45 % relative humidity (a heated room near sea
-/// level).
-const UNSTATED: [f64; 3] = [5.0, 2500.0, 0.45];
 
 /// One contribution to the uncertainty of a gap voltage.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -54,11 +52,6 @@ impl GapVoltage {
     }
 }
 
-/// Inputs of a law: spacing, diameter, temperature, pressure, humidity.
-type Inputs = [f64; 5];
-
-const NAMES: [&str; 5] = ["spacing", "diameter", "air temperature", "air pressure", "air humidity"];
-
 /// The gap voltage of a bench: `gap.voltage` if it is stated, else from `gap.electrodes`, `gap.spacing`, `gap.diameter` and
 /// the air.
 ///
@@ -83,36 +76,30 @@ pub fn gap_voltage(bench: &Bench) -> Result<GapVoltage, NoGapVoltage> {
     let electrodes = gap.electrodes.ok_or(NoGapVoltage::Missing("gap.electrodes"))?;
     let spacing = gap.spacing.ok_or(NoGapVoltage::Missing("gap.spacing"))?;
     let air = Air::of_bench(&bench.air);
-    let has_diameter = gap.diameter.is_some();
-    let centre: Inputs = [
-        spacing.value,
-        gap.diameter.map_or(1.0, |d| d.value),
-        air.temperature_k,
-        air.pressure_pa,
-        air.relative_humidity,
-    ];
-    let at = |inputs: &Inputs| evaluate(electrodes, has_diameter, inputs);
-    let found = at(&centre)?;
-    let u = |stated: Option<Quantity>, unstated: f64| stated.map_or(unstated / 3f64.sqrt(), |q| q.u());
-    let spreads = [
-        spacing.u(),
-        gap.diameter.map_or(0.0, |d| d.u()),
-        u(bench.air.temperature, UNSTATED[0]),
-        u(bench.air.pressure, UNSTATED[1]),
-        u(bench.air.humidity, UNSTATED[2]),
-    ];
-    let law_u = found.band / 3f64.sqrt() * found.voltage_v;
-    let mut contributions = vec![Contribution { name: format!("the law ({})", found.law.words()), u_v: law_u }];
-    for (input, name) in NAMES.iter().enumerate() {
-        let u_v = half_change(&centre, input, spreads[input], found.voltage_v, at);
-        if u_v > 0.0 {
-            contributions.push(Contribution { name: (*name).to_owned(), u_v });
-        }
-    }
+    let found = level(electrodes, gap.diameter.map(|d| d.value), spacing.value, &air)?;
+    let mut contributions = contributions(bench, electrodes, &found);
     contributions.sort_by(|a, b| b.u_v.total_cmp(&a.u_v));
     let u_v = contributions.iter().map(|part| part.u_v * part.u_v).sum::<f64>().sqrt();
     let notes = notes(bench, electrodes, &found, &air);
     Ok(GapVoltage { voltage_v: found.voltage_v, u_v, law: found.law, band: found.band, contributions, rule_v, notes })
+}
+
+/// What each input brings, the accuracy of the law always among them.
+fn contributions(bench: &Bench, electrodes: Electrodes, found: &Level) -> Vec<Contribution> {
+    let inputs = inputs(bench, found);
+    let model = |x: &[f64]| level_of(bench, electrodes, x).map(|voltage_v| voltage_v * x[BAND]);
+    let part = |input: &Input, u_v: f64| Contribution { name: input.name.clone(), u_v };
+    let Some(linear) = Problem::new(inputs.clone(), model).linear() else {
+        return vec![part(&inputs[BAND], found.voltage_v * inputs[BAND].distribution.u())];
+    };
+    inputs
+        .iter()
+        .zip(&linear.sensitivities)
+        .enumerate()
+        .map(|(place, (input, slope))| (place, part(input, (slope * input.distribution.u()).abs())))
+        .filter(|(place, part)| *place == BAND || part.u_v > 0.0)
+        .map(|(_, part)| part)
+        .collect()
 }
 
 /// What the breakdown law gives for the electrodes of a bench whose gap voltage is stated.
@@ -127,35 +114,6 @@ fn beside(bench: &Bench, stated_v: f64) -> Option<String> {
         100.0 * found.band,
         signed(100.0 * (found.voltage_v / stated_v - 1.0), 0)
     ))
-}
-
-fn evaluate(electrodes: Electrodes, has_diameter: bool, inputs: &Inputs) -> Result<Level, NoGapVoltage> {
-    let [spacing, diameter, temperature_k, pressure_pa, relative_humidity] = *inputs;
-    let air = Air { temperature_k, pressure_pa, relative_humidity };
-    level(electrodes, has_diameter.then_some(diameter), spacing, &air)
-}
-
-/// Half the change of the voltage when one input goes up and down by `u`; one-sided where a law ends in between.
-fn half_change(
-    centre: &Inputs,
-    input: usize,
-    u: f64,
-    voltage_v: f64,
-    at: impl Fn(&Inputs) -> Result<Level, NoGapVoltage>,
-) -> f64 {
-    if u == 0.0 {
-        return 0.0;
-    }
-    let moved = |side: f64| {
-        let mut inputs = *centre;
-        inputs[input] += side * u;
-        at(&inputs).ok().map(|level| level.voltage_v)
-    };
-    match (moved(1.0), moved(-1.0)) {
-        (Some(above), Some(below)) => 0.5 * (above - below).abs(),
-        (Some(end), None) | (None, Some(end)) => (end - voltage_v).abs(),
-        (None, None) => 0.0,
-    }
 }
 
 fn notes(bench: &Bench, electrodes: Electrodes, found: &Level, air: &Air) -> Vec<String> {
