@@ -63,6 +63,10 @@ pub fn best(
     for shape in shapes(&look) {
         candidates::matched_output(window.bank, whitened, &shape, &mut output);
         for fast in [false, true] {
+            // Nothing fast hides behind slow clicks that leave nothing over.
+            if fast && best.as_ref().is_some_and(|b| search::beyond_doubt(&b.fit)) {
+                continue;
+            }
             let found =
                 candidates::find(&output, window.rate_hz, apart_s(&shape, window.rate_hz, FIRST_PERIOD_S, fast));
             for mut fit in search::rhythms(&found, window.duration_s(), fast, expected_s) {

@@ -110,6 +110,9 @@ pub fn best_chain(time_s: &[f64], gain: &[f64], period_s: &[f64], law: Law) -> C
     let mut back = vec![(usize::MAX, 0usize); n];
     let mut period = vec![0.0f64; n];
     let mut ln_period = vec![0.0f64; n];
+    // The most that a predecessor offers before its step, and the most up to each: older ones that cannot win end the search.
+    let mut offer = vec![0.0f64; n];
+    let mut most = vec![f64::NEG_INFINITY; n];
     let mut top = (f64::NEG_INFINITY, usize::MAX);
     for i in 0..n {
         let expected = period_s[i];
@@ -121,10 +124,10 @@ pub fn best_chain(time_s: &[f64], gain: &[f64], period_s: &[f64], law: Law) -> C
         let limit = (MOST_PERIODS as f64 + 0.5) * expected * 1.25;
         for j in (0..i).rev() {
             let length = time_s[i] - time_s[j];
-            if length > limit {
+            if length > limit || most[j] + step_law.hope <= best.score {
                 break;
             }
-            if score[j] - ln_period[j] + step_law.hope > best.score {
+            if offer[j] + step_law.hope > best.score {
                 best.consider(&step_law, law.follow, j, length, score[j], period[j], ln_period[j]);
             }
         }
@@ -136,6 +139,8 @@ pub fn best_chain(time_s: &[f64], gain: &[f64], period_s: &[f64], law: Law) -> C
             expected
         };
         ln_period[i] = if period[i] == expected { ln_expected } else { period[i].ln() };
+        offer[i] = score[i] - ln_period[i];
+        most[i] = if i > 0 { most[i - 1].max(offer[i]) } else { offer[i] };
         if score[i] > top.0 {
             top = (score[i], i);
         }

@@ -4,7 +4,7 @@
 use super::fit::{FirstGains, Fit, Start, fit};
 use super::path::{Law, best_chain};
 use crate::clicks::Candidates;
-use crate::clicks::candidates::nth_largest;
+use std::ops::Range;
 
 /// Longest period looked for, s.
 pub const LONGEST_S: f64 = 4.0;
@@ -54,19 +54,50 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, expected_s: Option<f
     if c.len() < 8 || longest <= shortest {
         return Vec::new();
     }
-    let grid = scan(c, duration_s, shortest, longest);
+    let ranked = Ranked::new(c);
+    let grid = scan(&ranked, duration_s, shortest, longest);
+    let peaks = local_maxima(&grid, fast);
+    if !fast
+        && let Some(first) = peaks.iter().max_by(|a, b| a.1.total_cmp(&b.1)).map(|p| p.0)
+        && let Some(fit) = fit_all(c, duration_s, &[tight(first)]).pop()
+        && beyond_doubt(&fit)
+    {
+        let beside = fit_all(c, duration_s, &[tight(fit.period_s / 2.0), tight(fit.period_s * 2.0)]);
+        return std::iter::once(fit).chain(beside).collect();
+    }
     let expected = expected_s.filter(|_| !fast);
-    let starts: Vec<Start> = local_maxima(&grid, fast).into_iter().chain(expected).map(tight).collect();
+    let starts: Vec<Start> = peaks.into_iter().map(|p| p.0).chain(expected).map(tight).collect();
     let mut found: Vec<Fit> = fit_all(c, duration_s, &starts);
     if !fast {
         if let Some(first) = strongest(&found).map(|f| f.period_s) {
             found.extend(fit_all(c, duration_s, &[tight(first / 2.0), tight(first * 2.0)]));
         }
-        if !strongest(&found).is_some_and(beyond_doubt) {
+        if !strongest(&found).is_some_and(explains_nearly_all) {
             found.extend(fit_all(c, duration_s, &loose_starts(c, duration_s)));
         }
     }
     found
+}
+
+/// Candidates with their indices in the order of falling marks: the strongest of any stretch are found without sorting again.
+struct Ranked<'a> {
+    candidates: &'a Candidates,
+    order: Vec<u32>,
+}
+
+impl<'a> Ranked<'a> {
+    fn new(candidates: &'a Candidates) -> Self {
+        let mut order: Vec<u32> = (0..candidates.len() as u32).collect();
+        let mark = &candidates.mark;
+        order.sort_unstable_by(|&a, &b| mark[b as usize].total_cmp(&mark[a as usize]));
+        Self { candidates, order }
+    }
+
+    /// Indices of the strongest `count` of the stretch from one index up to another, strongest first.
+    fn strongest(&self, from: usize, to: usize, count: usize) -> Vec<u32> {
+        let inside = self.order.iter().copied().filter(|&i| (from..to).contains(&(i as usize)));
+        inside.take(count).collect()
+    }
 }
 
 fn strongest(fits: &[Fit]) -> Option<&Fit> {
@@ -74,12 +105,14 @@ fn strongest(fits: &[Fit]) -> Option<&Fit> {
 }
 
 /// A tight rhythm that explains nearly everything: no loose one is looked for beside it.
-fn beyond_doubt(f: &Fit) -> bool {
-    f.jitter < 0.06
-        && f.cover > 0.9
-        && f.missed < 0.2
-        && f.evidence > 1.5 * f.chain.index.len() as f64
-        && f.evidence > 60.0
+fn explains_nearly_all(f: &Fit) -> bool {
+    f.jitter < 0.06 && f.cover > 0.9 && f.missed < 0.2 && f.each > 1.5 && f.evidence > 60.0
+}
+
+/// One that leaves nothing to look for but its half and its double.
+#[must_use]
+pub fn beyond_doubt(f: &Fit) -> bool {
+    explains_nearly_all(f) && f.cover > 0.97 && f.missed < 0.05 && f.each > 2.5 && f.period_s > NOISE_BELOW_S
 }
 
 fn fit_all(c: &Candidates, duration_s: f64, starts: &[Start]) -> Vec<Fit> {
@@ -121,28 +154,35 @@ fn tight(period_s: f64) -> Start {
 }
 
 /// Evidence of the best chain for each period of the grid, brought to the whole duration.
-fn scan(c: &Candidates, duration_s: f64, shortest_s: f64, longest_s: f64) -> Vec<(f64, f64)> {
+fn scan(c: &Ranked, duration_s: f64, shortest_s: f64, longest_s: f64) -> Vec<(f64, f64)> {
     let count = ((longest_s / shortest_s).ln() / GRID_STEP).floor() as usize + 1;
     (0..count)
         .map(|q| shortest_s * (GRID_STEP * q as f64).exp())
         .filter_map(|period_s| {
-            let (part, length) = middle(c, duration_s, period_s, GRID_STRETCH);
-            Some((period_s, grid_score(&part, length, period_s)? * duration_s / length))
+            let length = (GRID_STRETCH.0 * period_s).max(GRID_STRETCH.1);
+            let all = length >= 0.8 * duration_s;
+            let (from_s, length) = if all { (0.0, duration_s) } else { (0.5 * (duration_s - length), length) };
+            let at = |t: f64| c.candidates.time_s.partition_point(|&s| s < t);
+            let range = if all { 0..c.candidates.len() } else { at(from_s)..at(from_s + length) };
+            Some((period_s, grid_score(c, range, length, period_s)? * duration_s / length))
         })
         .collect()
 }
 
-fn grid_score(c: &Candidates, duration_s: f64, period_s: f64) -> Option<f64> {
+fn grid_score(c: &Ranked, range: Range<usize>, duration_s: f64, period_s: f64) -> Option<f64> {
     let expected = duration_s / period_s;
-    if c.is_empty() || 0.7 * expected > c.len() as f64 {
+    if range.is_empty() || 0.7 * expected > range.len() as f64 {
         return None;
     }
-    let keep = c.pick(&c.strongest((GRID_DENSITY * expected + 60.0) as usize));
-    let threshold = nth_largest(&c.mark, (0.9 * expected) as usize) + 0.7f64.ln();
+    let mark = |i: u32| c.candidates.mark[i as usize];
+    let mut keep = c.strongest(range.start, range.end, (GRID_DENSITY * expected + 60.0) as usize);
+    let threshold = mark(keep[((0.9 * expected) as usize).min(keep.len() - 1)]) + 0.7f64.ln();
+    keep.sort_unstable();
     let off_rate = (keep.len() as f64 - expected).max(0.3 * expected) / duration_s;
-    let gain: Vec<f64> = keep.mark.iter().map(|m| (4.0 * (m - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
+    let gain: Vec<f64> = keep.iter().map(|&i| (4.0 * (mark(i) - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
+    let time_s: Vec<f64> = keep.iter().map(|&i| c.candidates.time_s[i as usize]).collect();
     let law = Law { jitter: 0.06, missed: 0.05, follow: 0.15 };
-    let chain = best_chain(&keep.time_s, &gain, &vec![period_s; keep.len()], law);
+    let chain = best_chain(&time_s, &gain, &vec![period_s; keep.len()], law);
     // Against the same candidates with the same two kinds of marks and no rhythm.
     let on = chain.index.len() as f64;
     let odds = on / duration_s / off_rate;
@@ -150,9 +190,9 @@ fn grid_score(c: &Candidates, duration_s: f64, period_s: f64) -> Option<f64> {
     Some(chain.score - null + on)
 }
 
-/// The periods of the best local maxima: of each side of 2 ms a few, since noise keeps a distance at short periods and its
+/// The best local maxima, period and score: of each side of 2 ms a few, since noise keeps a distance at short periods and its
 /// evidence there is settled only by a fit.
-fn local_maxima(grid: &[(f64, f64)], fast: bool) -> Vec<f64> {
+fn local_maxima(grid: &[(f64, f64)], fast: bool) -> Vec<(f64, f64)> {
     let mut peaks: Vec<(f64, f64)> = (0..grid.len())
         .filter(|&i| {
             let near = &grid[i.saturating_sub(2)..(i + 3).min(grid.len())];
@@ -162,7 +202,7 @@ fn local_maxima(grid: &[(f64, f64)], fast: bool) -> Vec<f64> {
         .collect();
     peaks.sort_by(|a, b| b.1.total_cmp(&a.1));
     let side =
-        |short: bool, most: usize| peaks.iter().filter(move |p| (p.0 < NOISE_BELOW_S) == short).take(most).map(|p| p.0);
+        |short: bool, most: usize| peaks.iter().copied().filter(move |p| (p.0 < NOISE_BELOW_S) == short).take(most);
     if fast { side(true, 3).collect() } else { side(true, 2).chain(side(false, 4)).collect() }
 }
 
