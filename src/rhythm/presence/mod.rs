@@ -68,8 +68,8 @@ const CLEAR_OF_MAINS: f64 = 2.5;
 /// … and one without scatter needs more.
 const BUZZ_SCATTER: f64 = 1e-2;
 const CLEAR_OF_BUZZ: f64 = 8.0;
-/// Clicks that hardly stand out must fill this share of the time.
-const UNCLEAR_COVER: f64 = 0.6;
+/// Clicks that fill less than this share of the time must stand clear, or be alike to the last.
+const PARTLY: (f64, f64, f64) = (0.6, 4.0, 0.97);
 
 /// Where the energy lies.
 #[derive(Debug, Clone, Copy)]
@@ -254,7 +254,7 @@ impl Heard {
             && (self.tones.six > MANY_TONES || self.line_wanders())
         {
             Some("what repeats hardly stands out of tones or a voice")
-        } else if c.clear < UNCLEAR && self.cover < UNCLEAR_COVER {
+        } else if self.cover < PARTLY.0 && c.clear < PARTLY.1 && c.alike < PARTLY.2 {
             Some("a rhythm that hardly stands out holds only here and there")
         } else if self.tones.six > SIX_LINES && c.clear < CLEAR_OF_TONES && !crowded {
             Some("the sound is a handful of tones")
