@@ -1,7 +1,7 @@
 //! Clicks without a rhythm: static, a worn gap that fires by chance.
 
 use super::window::Window;
-use crate::rhythm::fit::median;
+use crate::rhythm::order::median;
 use crate::rhythm::presence::character;
 use rustfft::num_complex::Complex32;
 

@@ -5,7 +5,8 @@
 //! a period: they are firings too.
 
 use super::hypothesis::{DENSITY, Hypothesis};
-use crate::rhythm::fit::{FirstGains, Fit, MarkLaw, Start, median};
+use crate::rhythm::fit::{FirstGains, Fit, MarkLaw, Start};
+use crate::rhythm::order::median;
 use crate::rhythm::search;
 
 /// A click between counts as one of the train if it reaches the median mark less this.

@@ -5,7 +5,7 @@ use super::window::Window;
 use crate::clicks::shape::pieces;
 use crate::clicks::snippet::dot;
 use crate::clicks::timing::{Channel, Flatness, Reader, channels};
-use crate::rhythm::fit::median;
+use crate::rhythm::order::median;
 use crate::rhythm::statistics::robust;
 
 /// Clicks in a row by which channels are compared.

@@ -5,7 +5,8 @@ use super::trains;
 use crate::estimate::Estimate;
 use crate::firing::{Event, EventKind};
 use crate::rhythm::OtherTrain;
-use crate::rhythm::fit::{Fit, median};
+use crate::rhythm::fit::Fit;
+use crate::rhythm::order::median;
 use std::ops::Range;
 
 /// A drop-out of more periods than this ends a stretch; a shorter one counts as missed clicks.

@@ -4,7 +4,8 @@ use super::hypothesis::{DENSITY, Hypothesis};
 use crate::clicks::Candidates;
 use crate::estimate::Estimate;
 use crate::rhythm::OtherTrain;
-use crate::rhythm::fit::{Fit, Start, median};
+use crate::rhythm::fit::{Fit, Start};
+use crate::rhythm::order::median;
 use crate::rhythm::search;
 use crate::rhythm::statistics::robust;
 

@@ -5,7 +5,9 @@
 //! and no rhythm (independent arrivals). At short periods maxima of band-limited noise keep a distance from each other, which is
 //! no rhythm: both sides are then given the regularity of a gamma law.
 
+use super::local::local_period;
 use super::marks::Binned;
+use super::order::median;
 use super::path::{Chain, Law, best_chain};
 use crate::clicks::Candidates;
 use crate::clicks::candidates::nth_largest;
@@ -362,135 +364,9 @@ fn regularity(gaps: &[f64]) -> f64 {
         .fold(f64::NEG_INFINITY, f64::max)
 }
 
-/// Half width of the running median and of the smoothing window, steps.
-const LOCAL_HALF: usize = 15;
-
-/// Expected period at every candidate: running median over 31 steps of the chain, then a Hann mean of the held values.
-#[must_use]
-pub fn local_period(c: &Candidates, chain: &Chain, fallback_s: f64) -> Vec<f64> {
-    let mut when = Vec::new();
-    let mut period = Vec::new();
-    for (w, &k) in chain.index.windows(2).zip(&chain.steps[1..]) {
-        if k > 0 {
-            when.push(0.5 * (c.time_s[w[0]] + c.time_s[w[1]]));
-            period.push((c.time_s[w[1]] - c.time_s[w[0]]) / k as f64);
-        }
-    }
-    if period.len() < 4 {
-        return vec![fallback_s; c.len()];
-    }
-    let smooth =
-        if period.len() > 2 * LOCAL_HALF { smooth_periods(&period) } else { vec![median(&period); period.len()] };
-    interpolate(&c.time_s, &when, &smooth)
-}
-
-fn smooth_periods(period: &[f64]) -> Vec<f64> {
-    let mid = running_median(period, LOCAL_HALF);
-    let spread = 1.5 * median(&period.iter().zip(&mid).map(|(x, m)| (x - m).abs()).collect::<Vec<_>>());
-    let held: Vec<f64> = period
-        .iter()
-        .zip(&mid)
-        .map(|(x, m)| {
-            let reach = 3.0 * (spread + 1e-9 * m);
-            x.clamp(m - reach, m + reach)
-        })
-        .collect();
-    let width = 2 * LOCAL_HALF + 1;
-    let weight: Vec<f64> =
-        (0..width).map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos()).collect();
-    let total: f64 = weight.iter().sum();
-    (0..held.len())
-        .map(|i| {
-            weight
-                .iter()
-                .enumerate()
-                .map(|(j, w)| w * held[reflect(i as isize + j as isize - LOCAL_HALF as isize, held.len())])
-                .sum::<f64>()
-                / total
-        })
-        .collect()
-}
-
-fn reflect(i: isize, n: usize) -> usize {
-    let last = n as isize - 1;
-    let mut k = i;
-    if k < 0 {
-        k = -k;
-    }
-    if k > last {
-        k = 2 * last - k;
-    }
-    k.clamp(0, last) as usize
-}
-
-/// Median of each value's neighbourhood of ± `half`, reflected at the ends. A sorted window slides along: one value leaves,
-/// one comes in.
-#[must_use]
-pub fn running_median(x: &[f64], half: usize) -> Vec<f64> {
-    let at = |i: isize| x[reflect(i, x.len())];
-    let reach = half as isize;
-    let mut window: Vec<f64> = (-reach..=reach).map(at).collect();
-    window.sort_by(f64::total_cmp);
-    (0..x.len() as isize)
-        .map(|i| {
-            let middle = window[half];
-            let (leaves, comes) = (at(i - reach), at(i + 1 + reach));
-            let from = window.partition_point(|v| v.total_cmp(&leaves).is_lt());
-            window.remove(from);
-            let to = window.partition_point(|v| v.total_cmp(&comes).is_lt());
-            window.insert(to, comes);
-            middle
-        })
-        .collect()
-}
-
-/// Linear interpolation of (`at`, `value`) at ascending places, held at the ends.
-#[must_use]
-pub fn interpolate(places: &[f64], at: &[f64], value: &[f64]) -> Vec<f64> {
-    let mut k = 0;
-    places
-        .iter()
-        .map(|&p| {
-            while k + 1 < at.len() && at[k + 1] <= p {
-                k += 1;
-            }
-            if p <= at[0] || k + 1 >= at.len() {
-                return if p <= at[0] { value[0] } else { value[at.len() - 1] };
-            }
-            value[k] + (value[k + 1] - value[k]) * (p - at[k]) / (at[k + 1] - at[k])
-        })
-        .collect()
-}
-
-/// Median; 0 for nothing.
-#[must_use]
-pub fn median(x: &[f64]) -> f64 {
-    if x.is_empty() {
-        return 0.0;
-    }
-    let mut copy = x.to_vec();
-    let mid = copy.len() / 2;
-    let upper = *copy.select_nth_unstable_by(mid, f64::total_cmp).1;
-    if x.len() % 2 == 1 {
-        upper
-    } else {
-        let lower = copy[..mid].iter().copied().fold(f64::NEG_INFINITY, f64::max);
-        0.5 * (lower + upper)
-    }
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn the_sliding_median_equals_the_plain_one() {
-        let x: Vec<f64> = (0..200).map(|n| f64::from(n * 7919 % 61)).collect();
-        for (i, &m) in running_median(&x, 15).iter().enumerate() {
-            let around: Vec<f64> = (-15..=15).map(|d| x[reflect(i as isize + d, x.len())]).collect();
-            assert_eq!(m, median(&around), "at {i}");
-        }
-    }
 
     #[test]
     fn a_jittered_clock_among_noise_is_fitted() {

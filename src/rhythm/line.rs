@@ -102,7 +102,7 @@ fn prominence_db(s: &Spectrum, f: f64) -> f64 {
     if around.is_empty() || top == 0.0 {
         return -99.0;
     }
-    10.0 * (top / (super::fit::median(&around) + 1e-300)).log10()
+    10.0 * (top / (super::order::median(&around) + 1e-300)).log10()
 }
 
 /// A train found by its line.

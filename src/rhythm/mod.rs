@@ -2,7 +2,9 @@
 
 pub mod fit;
 pub mod line;
+mod local;
 pub mod marks;
+pub mod order;
 pub mod pairs;
 pub mod path;
 pub mod phase;

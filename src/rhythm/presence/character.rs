@@ -2,7 +2,7 @@
 
 use crate::clicks::shape::leading_vectors;
 use crate::clicks::snippet::{dot, normalise, read};
-use crate::rhythm::fit::median;
+use crate::rhythm::order::median;
 
 /// Half width of the snippets, s.
 const HALF_S: f64 = 0.8e-3;

@@ -50,8 +50,8 @@ pub fn of_line(bank: &FilterBank, x: &[f32], rate_hz: f64, line_hz: f64) -> Opti
     let step = stride as f64 / rate_hz * std::f64::consts::TAU;
     let mut rates: Vec<f64> = (0..count).map(|i| (phase[(i + 1) * stride] - phase[i * stride]) / step).collect();
     let amplitude: Vec<f64> = (0..count).map(|i| f64::from(z[i * stride].norm())).collect();
-    let middle = crate::rhythm::fit::median(&rates);
-    let typical = crate::rhythm::fit::median(&amplitude);
+    let middle = crate::rhythm::order::median(&rates);
+    let typical = crate::rhythm::order::median(&amplitude);
     let stable = rates
         .iter()
         .zip(&amplitude)

@@ -3,7 +3,8 @@
 pub mod character;
 pub mod coherence;
 
-use super::fit::{Fit, median};
+use super::fit::Fit;
+use super::order::median;
 use crate::clicks::spectrum::{Spectrum, power_of_two_near, welch};
 use character::Character;
 use coherence::LineCharacter;

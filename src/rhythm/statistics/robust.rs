@@ -1,6 +1,6 @@
 //! Scatter and displaced clicks, by robust rules.
 
-use crate::rhythm::fit::{median, running_median};
+use crate::rhythm::order::{median, running_median};
 
 /// Robust standard deviation of single periods about their running median: values beyond 2.5 × the 90 % quantile are held.
 #[must_use]

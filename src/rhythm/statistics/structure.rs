@@ -3,7 +3,7 @@
 //! Both are found by regression of the periods and taken out of the click times before the random part is fitted; white or
 //! moving-average models under ripple would read the random jitter 40 % low.
 
-use crate::rhythm::fit::median;
+use crate::rhythm::order::median;
 use std::f64::consts::{PI, TAU};
 
 /// Mains and rectified-mains frequencies tried, Hz.
