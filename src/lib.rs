@@ -28,4 +28,5 @@ pub mod predict;
 pub mod report;
 pub mod rhythm;
 pub mod uncertainty;
+pub mod trend;
 pub mod voltage;
