@@ -26,7 +26,11 @@ impl Log {
     ///
     /// # Errors
     /// A place that cannot be written, weather that is none.
-    pub fn new(arguments: &LogArguments, bench: Option<&Bench>, supply: Option<Quantity>) -> Result<Option<Self>, Failure> {
+    pub fn new(
+        arguments: &LogArguments,
+        bench: Option<&Bench>,
+        supply: Option<Quantity>,
+    ) -> Result<Option<Self>, Failure> {
         let Some(place) = &arguments.log else { return Ok(None) };
         files::check_appendable(place).map_err(|error| Failure::file(place, &error))?;
         let logged = bench.map(|bench| LoggedBench {
@@ -36,7 +40,13 @@ impl Log {
             diameter_m: bench.gap.diameter.map(|diameter| diameter.value),
         });
         let air = weather(arguments, bench)?;
-        Ok(Some(Self { place: place.clone(), time: arguments.at, hour_meter_h: arguments.hour_meter, bench: logged, air }))
+        Ok(Some(Self {
+            place: place.clone(),
+            time: arguments.at,
+            hour_meter_h: arguments.hour_meter,
+            bench: logged,
+            air,
+        }))
     }
 
     /// Appends a measurement.
@@ -65,7 +75,9 @@ impl Log {
             .map_err(|error| Failure::Told(Exit::File, format!("the log entry cannot be written as JSON: {error}")))?;
         if files::append_line(&self.place, &line).map_err(|error| Failure::file(&self.place, &error))? {
             let place = &self.place;
-            tell(&format!("{place}: its last line had been cut off by a run that was stopped while it wrote; all others are whole"));
+            tell(&format!(
+                "{place}: its last line had been cut off by a run that was stopped while it wrote; all others are whole"
+            ));
         }
         Ok(())
     }
@@ -73,21 +85,28 @@ impl Log {
 
 /// The weather: of the options, else of the bench.
 fn weather(arguments: &LogArguments, bench: Option<&Bench>) -> Result<Weather, Failure> {
-    let known = |option: &str, text: &Option<String>, dimension: Dimension, stated: Option<Quantity>, range: (f64, f64)| {
-        let quantity = match text {
-            Some(text) => Some(bench_file::quantity(option, text, dimension)?),
-            None => stated,
+    let known =
+        |option: &str, text: &Option<String>, dimension: Dimension, stated: Option<Quantity>, range: (f64, f64)| {
+            let quantity = match text {
+                Some(text) => Some(bench_file::quantity(option, text, dimension)?),
+                None => stated,
+            };
+            if let (Some(text), Some(quantity)) = (text, &quantity)
+                && !(range.0..=range.1).contains(&quantity.value)
+            {
+                return Err(Failure::usage(format!("{option}: {text} is no weather; look at value and unit")));
+            }
+            Ok(quantity.map(|quantity| Known { value: quantity.value, u: quantity.u() }))
         };
-        if let (Some(text), Some(quantity)) = (text, &quantity)
-            && !(range.0..=range.1).contains(&quantity.value)
-        {
-            return Err(Failure::usage(format!("{option}: {text} is no weather; look at value and unit")));
-        }
-        Ok(quantity.map(|quantity| Known { value: quantity.value, u: quantity.u() }))
-    };
     let air = bench.map(|bench| bench.air.clone()).unwrap_or_default();
     Ok(Weather {
-        temperature_k: known("--temperature", &arguments.temperature, Dimension::Temperature, air.temperature, (200.0, 350.0))?,
+        temperature_k: known(
+            "--temperature",
+            &arguments.temperature,
+            Dimension::Temperature,
+            air.temperature,
+            (200.0, 350.0),
+        )?,
         pressure_pa: known("--pressure", &arguments.pressure, Dimension::Pressure, air.pressure, (3e4, 2e5))?,
         humidity: known("--humidity", &arguments.humidity, Dimension::Fraction, air.humidity, (0.0, 1.0))?,
     })
@@ -213,13 +232,21 @@ fn notes(faults: &[(usize, Fault)]) -> Vec<String> {
     let lines = |which: &dyn Fn(&Fault) -> bool| -> Option<String> {
         let at: Vec<usize> = faults.iter().filter(|(_, fault)| which(fault)).map(|(line, _)| *line).collect();
         let first = at.first()?;
-        Some(if at.len() == 1 { format!("line {first}") } else { format!("{} lines, the first is line {first},", at.len()) })
+        Some(if at.len() == 1 {
+            format!("line {first}")
+        } else {
+            format!("{} lines, the first is line {first},", at.len())
+        })
     };
     let mut notes = Vec::new();
     if let Some(at) = lines(&|fault| matches!(fault, Fault::Newer(_))) {
-        let format = faults.iter().find_map(|(_, fault)| if let Fault::Newer(name) = fault { Some(name.as_str()) } else { None });
+        let format = faults
+            .iter()
+            .find_map(|(_, fault)| if let Fault::Newer(name) = fault { Some(name.as_str()) } else { None });
         let format: String = format.unwrap_or_default().chars().filter(|c| !c.is_control()).take(40).collect();
-        notes.push(format!("left out: {at} of a newer version ({format}); it stays in the log, a newer gaptone reads it"));
+        notes.push(format!(
+            "left out: {at} of a newer version ({format}); it stays in the log, a newer gaptone reads it"
+        ));
     }
     if let Some(at) = lines(&|fault| matches!(fault, Fault::Cut)) {
         notes.push(format!("left out: {at} cut off by a run that was stopped while it wrote; nothing else is lost"));

@@ -13,7 +13,8 @@ use crate::trend::{Charted, Options, Trend, analyse};
 /// A log that cannot be read or holds no entry; limits that are none.
 pub(super) fn run(arguments: &TrendArguments) -> Result<Exit, Failure> {
     let charted = arguments.chart.map(Charted::from);
-    let limits = arguments.limits.as_deref().map(|text| limits(text, charted.unwrap_or(Charted::GapVoltage))).transpose()?;
+    let limits =
+        arguments.limits.as_deref().map(|text| limits(text, charted.unwrap_or(Charted::GapVoltage))).transpose()?;
     let options = Options {
         charted,
         title: arguments.title.clone(),
@@ -34,7 +35,9 @@ pub(super) fn run(arguments: &TrendArguments) -> Result<Exit, Failure> {
 }
 
 fn put(arguments: &TrendArguments, trend: &Trend) -> Result<String, Failure> {
-    let cannot = |what: &str, error: String| Failure::Told(Exit::File, format!("the trend cannot be written as {what}: {error}"));
+    let cannot = |what: &str, error: String| {
+        Failure::Told(Exit::File, format!("the trend cannot be written as {what}: {error}"))
+    };
     if arguments.json {
         let text = serde_json::to_string_pretty(trend).map_err(|error| cannot("JSON", error.to_string()))?;
         return Ok(text + "\n");

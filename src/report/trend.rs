@@ -9,6 +9,8 @@ use std::io;
 
 /// Entries in the table; the CSV has all.
 const SHOWN: usize = 20;
+/// Width of the labels.
+const LABEL: usize = 16;
 /// Alarms told one by one.
 const SHOWN_ALARMS: usize = 5;
 /// Columns between the limits in the drawing of an entry, and beyond them on each side.
@@ -27,7 +29,7 @@ pub const TREND_HEADER: &str = "time,file,firing_h,supply_v,gap_voltage_v,standa
 pub fn trend_text(log: &str, trend: &Trend) -> String {
     let mut text = heading(log, trend);
     for (label, value) in rows(trend) {
-        text.push_str(&wrapped(&format!("{label:16}{value}"), "  ", "                  "));
+        text.push_str(&wrapped(&value, &format!("  {label:LABEL$}"), &" ".repeat(LABEL + 2)));
     }
     if !trend.points.is_empty() {
         text.push('\n');
@@ -72,20 +74,33 @@ fn rows(trend: &Trend) -> Vec<Row> {
         let difference = &change.difference;
         let interval = format!("{} .. {}", of(difference.low), of(difference.high));
         let when = format!("before {}, 95 % from {} to {}", change.time.day(), change.from.day(), change.to.day());
-        rows.push(("step", format!("{} to {}, by {} ({interval}); {when}", of(change.before), of(change.after), of(difference.value))));
+        rows.push((
+            "step",
+            format!("{} to {}, by {} ({interval}); {when}", of(change.before), of(change.after), of(difference.value)),
+        ));
     }
     rows.extend(wear_row(trend));
     rows.extend(air_row(trend));
     if let Some(spacing) = &trend.spacing {
         let metres = |e: &crate::estimate::Estimate| with_uncertainty(e.value, e.u, "m");
-        let change = spacing.change_m.as_ref().map_or_else(String::new, |c| format!("; changed by {} at the step", metres(c)));
+        let change =
+            spacing.change_m.as_ref().map_or_else(String::new, |c| format!("; changed by {} at the step", metres(c)));
         rows.push(("implied spacing", format!("{} by the last entry{change}", metres(&spacing.last_m))));
     }
     for figure in &trend.beside {
         let of = |value: f64| advice::amount(figure.figure, value, 5);
         let verdict = if figure.outside == 0 { "within" } else { "outside" };
         let (low, high) = figure.limits;
-        rows.push((figure.figure.words(), format!("{} at first, now {}, {verdict} {} .. {}", of(figure.reference), of(figure.last), of(low), of(high))));
+        rows.push((
+            figure.figure.words(),
+            format!(
+                "{} at first, now {}, {verdict} {} .. {}",
+                of(figure.reference),
+                of(figure.last),
+                of(low),
+                of(high)
+            ),
+        ));
     }
     rows
 }
@@ -143,7 +158,13 @@ fn wear_row(trend: &Trend) -> Option<Row> {
     let slope = &wear.per_hour;
     Some((
         "slope",
-        format!("{} per hour of firing{beside} (95 %: {} .. {}), over {:.2} h {recorded}", of(slope.value), of(slope.low), of(slope.high), wear.hours),
+        format!(
+            "{} per hour of firing{beside} (95 %: {} .. {}), over {:.2} h {recorded}",
+            of(slope.value),
+            of(slope.low),
+            of(slope.high),
+            wear.hours
+        ),
     ))
 }
 
@@ -157,10 +178,19 @@ fn air_row(trend: &Trend) -> Option<Row> {
         100.0 * air.scatter_reduced
     );
     if let Some(exponent) = &air.exponent {
-        let _ = write!(text, "; the voltage follows the law of the air with the power {}", with_uncertainty(exponent.value, exponent.u, ""));
+        let _ = write!(
+            text,
+            "; the voltage follows the law of the air with the power {}",
+            with_uncertainty(exponent.value, exponent.u, "")
+        );
     }
     if let (Some(all), Some(by_air)) = (air.change_as_measured, air.change_by_air) {
-        let _ = write!(text, "; of the step of {} % as measured the air explains {} %", signed(100.0 * all, 2), signed(100.0 * by_air, 2));
+        let _ = write!(
+            text,
+            "; of the step of {} % as measured the air explains {} %",
+            signed(100.0 * all, 2),
+            signed(100.0 * by_air, 2)
+        );
     }
     Some(("air", text))
 }
@@ -173,7 +203,11 @@ fn table(text: &mut String, trend: &Trend) {
     }
     let is_voltage = trend.charted == Charted::GapVoltage;
     let measured = if is_voltage { "measured" } else { "" };
-    let _ = writeln!(text, "  {:17}{measured:>10}{:>11}{:>10}{:>8}{:>8}   chart", "time", "charted", "rate", "CUSUM+", "CUSUM-");
+    let _ = writeln!(
+        text,
+        "  {:17}{measured:>10}{:>11}{:>10}{:>8}{:>8}   chart",
+        "time", "charted", "rate", "CUSUM+", "CUSUM-"
+    );
     for point in &trend.points[hidden..] {
         let measured = point.gap_voltage_v.filter(|_| is_voltage).map_or_else(String::new, |v| si(v, "V", 5));
         let rate = point.firing_rate_hz.map_or_else(String::new, |rate| format!("{rate:.2}"));
@@ -194,7 +228,8 @@ fn table(text: &mut String, trend: &Trend) {
 fn drawn(point: &Point, limits: &Limits) -> String {
     let width = INSIDE as usize + 2 * OUTSIDE + 1;
     let place = (point.value - limits.low) / (limits.high - limits.low) * INSIDE;
-    let place = if place.is_finite() { place.round().clamp(-(OUTSIDE as f64), INSIDE + OUTSIDE as f64) } else { 0.5 * INSIDE };
+    let place =
+        if place.is_finite() { place.round().clamp(-(OUTSIDE as f64), INSIDE + OUTSIDE as f64) } else { 0.5 * INSIDE };
     let mut line = vec![' '; width];
     line[OUTSIDE] = '|';
     line[OUTSIDE + INSIDE as usize / 2] = '·';
@@ -247,5 +282,9 @@ fn rounded(value: f64) -> f64 {
 
 /// A field in quotes where CSV needs them (RFC 4180).
 fn quoted(field: &str) -> String {
-    if field.contains([',', '"', '\n', '\r']) { format!("\"{}\"", field.replace('"', "\"\"")) } else { field.to_owned() }
+    if field.contains([',', '"', '\n', '\r']) {
+        format!("\"{}\"", field.replace('"', "\"\""))
+    } else {
+        field.to_owned()
+    }
 }

@@ -1,7 +1,7 @@
 //! The state of the gap, and the sentence that says what to do.
 
 use super::wear::Shape;
-use super::{Alarm, AirPart, ChangePoint, Chart, Charted, FEWEST, Limits, Point, Wear};
+use super::{AirPart, Alarm, ChangePoint, Chart, Charted, FEWEST, Limits, Point, Wear};
 use crate::bench::{si, signed, with_uncertainty};
 use serde::{Deserialize, Serialize};
 
@@ -39,17 +39,21 @@ pub(super) fn advice(facts: &Facts) -> (State, String) {
     let Some(limits) = facts.limits else {
         let entries = facts.points.len();
         let more = FEWEST.saturating_sub(entries);
-        return (State::TooFew, format!("too few entries for limits: {entries} of {FEWEST}; log {more} more measurements"));
+        return (
+            State::TooFew,
+            format!("too few entries for limits: {entries} of {FEWEST}; log {more} more measurements"),
+        );
     };
     let standing = |chart: Chart| facts.alarms.iter().find(|alarm| alarm.stands && alarm.chart == chart);
     let sums = standing(Chart::Cusum);
     let single = standing(Chart::Individuals);
     let wear = facts.wear.filter(|wear| wear.sure);
     match (sums, single) {
-        (None, Some(alarm)) if alarm.entries == 1 => {
-            (State::LastOutside, format!("the last entry lies {} the limits: measure again before you act", beyond(alarm.side)))
-        }
-        (None, None) => match wear {
+        (None, Some(alarm)) if alarm.entries == 1 => (
+            State::LastOutside,
+            format!("the last entry lies {} the limits: measure again before you act", beyond(alarm.side)),
+        ),
+        (None, None) => match wear.filter(|wear| wear.shape == Shape::Line) {
             Some(wear) => (State::Drifting, drifting(facts, wear)),
             None => (State::WithinLimits, "within limits: nothing to do".to_owned()),
         },
@@ -91,7 +95,10 @@ fn drifting(facts: &Facts, wear: &Wear) -> String {
         }
         None => "the fit has passed the limit".to_owned(),
     };
-    format!("within limits, but the {} changes by {drift} and {when}: plan to reset the gap before then", facts.charted.words())
+    format!(
+        "within limits, but the {} changes by {drift} and {when}: plan to reset the gap before then",
+        facts.charted.words()
+    )
 }
 
 /// Two significant digits.
@@ -119,11 +126,17 @@ fn out(facts: &Facts, limits: &Limits, since: Option<&Alarm>, wear: Option<&Wear
     let size = facts.change.map_or_else(String::new, |change| {
         let percent = |estimate: f64| signed(100.0 * estimate / limits.centre, 2);
         let difference = &change.difference;
-        format!(": the {words} is {} % off ({} .. {} %)", percent(difference.value), percent(difference.low), percent(difference.high))
+        format!(
+            ": the {words} is {} % off ({} .. {} %)",
+            percent(difference.value),
+            percent(difference.low),
+            percent(difference.high)
+        )
     });
-    let air = facts.air.and_then(|air| air.change_by_air).map_or_else(String::new, |by_air| {
-        format!(", after {} % that the air explains", signed(100.0 * by_air, 2))
-    });
+    let air = facts
+        .air
+        .and_then(|air| air.change_by_air)
+        .map_or_else(String::new, |by_air| format!(", after {} % that the air explains", signed(100.0 * by_air, 2)));
     (State::OutOfLimits, format!("out of limits since {day}{size}{air}; {}", remedy(facts.charted, side)))
 }
 

@@ -110,8 +110,7 @@ mod tests {
         for _ in 0..SERIES {
             let at = 10 + (40.0 * random.uniform()) as usize;
             let size = 0.8 + 2.2 * random.uniform();
-            let values: Vec<f64> =
-                (0..60).map(|k| random.normal() + if k >= at { size } else { 0.0 }).collect();
+            let values: Vec<f64> = (0..60).map(|k| random.normal() + if k >= at { size } else { 0.0 }).collect();
             let found = step(&values).unwrap();
             held += u32::from((found.interval.0..=found.interval.1).contains(&at));
         }

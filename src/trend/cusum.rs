@@ -17,6 +17,9 @@ pub const H: f64 = 5.0;
 const MOST_SCORE: f64 = 4.0;
 /// A sum grows no further than this: after a repair the alarm ends within ten entries.
 const MOST_SUM: f64 = 2.0 * H;
+/// Good entries from which an alarm stops the learning. With fewer the mean may be off by chance so far that what follows would
+/// look like a shift for ever.
+const SETTLED: f64 = 20.0;
 /// Degrees of freedom from which the normal score comes from a closed form (Wallace 1959, from memory), good to 1e-4 there.
 const MANY: f64 = 100.0;
 
@@ -60,7 +63,8 @@ impl Cusum {
         }
         let step = Step { score, high: self.high, low: self.low };
         // What is out of control must not become the standard.
-        if step.alarm() == 0 && score.is_none_or(|score| score.abs() < MOST_SCORE) {
+        let settled = self.count >= SETTLED;
+        if !settled || (step.alarm() == 0 && score.is_none_or(|score| score.abs() < MOST_SCORE)) {
             self.learn(value);
         }
         step

@@ -14,9 +14,9 @@ pub const D2: f64 = 1.128;
 pub const D4: f64 = 3.267;
 /// Chance of a normal value beyond + 3σ.
 const TAIL: f64 = 1.349_898_031_630_094_5e-3;
-/// Degrees of freedom of a σ from m − 1 moving ranges over m − 1: its relative variance is 0.826/(m − 1) for large m (from
-/// memory; the tests count the false alarms).
-const FREEDOM: f64 = 0.605;
+/// Degrees of freedom that σ from m entries is worth at these limits, a + b·(m − 1): fitted to 200 000 simulated stretches each of
+/// 8 to 100 entries, where it gives the chance of 3σ within 3 %.
+const FREEDOM: (f64, f64) = (0.9, 0.685);
 
 /// Limits of the chart, in the unit of the figure.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
@@ -75,7 +75,7 @@ impl Limits {
 #[must_use]
 pub fn factor(m: usize) -> f64 {
     let m = m as f64;
-    let freedom = (FREEDOM * (m - 1.0)).max(1.0);
+    let freedom = FREEDOM.0 + FREEDOM.1 * (m - 1.0);
     // One further entry scatters about a mean that is itself uncertain by σ/√m.
     let widening = (1.0 + 1.0 / m).sqrt();
     StudentsT::new(0.0, 1.0, freedom).map_or(3.0, |t| t.inverse_cdf(1.0 - TAIL)) * widening

@@ -112,16 +112,20 @@ pub(super) fn has_hour_meter(entries: &[&Entry]) -> bool {
 
 /// The series of a log.
 pub(super) fn series<'a>(entries: &'a [Entry], options: &Options, notes: &mut Vec<String>) -> Series<'a> {
-    let mut chosen: Vec<&Entry> = entries.iter().filter(|entry| options.since.is_none_or(|t| entry.time >= t)).collect();
+    let mut chosen: Vec<&Entry> =
+        entries.iter().filter(|entry| options.since.is_none_or(|t| entry.time >= t)).collect();
     chosen.sort_by_key(|entry| entry.time);
-    let title = options.title.clone().or_else(|| chosen.last().map(|entry| entry.title().to_owned())).unwrap_or_default();
+    let title =
+        options.title.clone().or_else(|| chosen.last().map(|entry| entry.title().to_owned())).unwrap_or_default();
     of_one_bench(&mut chosen, &title, notes);
     let has_voltage = chosen.iter().any(|entry| entry.gap_voltage_v.is_some());
     let charted = options.charted.unwrap_or(if has_voltage { Charted::GapVoltage } else { Charted::FiringRate });
     if charted == Charted::FiringRate && options.charted.is_none() && !chosen.is_empty() {
-        notes.push("no entry has a gap voltage (measure with --bench); the firing rate is charted, which follows the supply \
+        notes.push(
+            "no entry has a gap voltage (measure with --bench); the firing rate is charted, which follows the supply \
              setting too"
-            .to_owned());
+                .to_owned(),
+        );
     }
     let mut reducer = weather::Reducer::default();
     let metered = has_hour_meter(&chosen);
@@ -147,7 +151,11 @@ pub(super) fn series<'a>(entries: &'a [Entry], options: &Options, notes: &mut Ve
     }
     let words = charted.words();
     left_out(silent, "in which no gap was heard", notes);
-    left_out(valueless, &format!("without a {words} that can be charted (no bench, no rhythm, or air beyond the correction)"), notes);
+    left_out(
+        valueless,
+        &format!("without a {words} that can be charted (no bench, no rhythm, or air beyond the correction)"),
+        notes,
+    );
     if charted == Charted::GapVoltage {
         weather::notes(&kept, notes);
     }

@@ -86,8 +86,7 @@ mod tests {
     fn a_printed_line_comes_back() {
         // JCGM 100:2008, H.3: correction of a thermometer against temperature above 20 °C; b = 0.00218, u = 0.00067, s = 0.0035.
         let above = [1.521, 2.012, 2.512, 3.003, 3.507, 3.999, 4.513, 5.002, 5.503, 6.010, 6.511];
-        let correction =
-            [-0.171, -0.169, -0.166, -0.159, -0.164, -0.165, -0.156, -0.157, -0.159, -0.161, -0.160];
+        let correction = [-0.171, -0.169, -0.166, -0.159, -0.164, -0.165, -0.156, -0.157, -0.159, -0.161, -0.160];
         let found = fit(&[&above], &correction).unwrap();
         assert!((found.slopes[0].value - 0.00218).abs() < 6e-6, "{found:?}");
         assert!((found.slopes[0].u - 0.00067).abs() < 6e-6);

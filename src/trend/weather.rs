@@ -71,9 +71,11 @@ pub(super) fn notes(entries: &[&Entry], notes: &mut Vec<String>) {
         ));
     }
     if entries.iter().any(|entry| entry.bench.as_ref().is_some_and(|bench| bench.electrodes.is_none())) {
-        notes.push("no electrodes in the bench file: voltages are reduced in proportion to the density of the air, and no \
+        notes.push(
+            "no electrodes in the bench file: voltages are reduced in proportion to the density of the air, and no \
              spacing is implied"
-            .to_owned());
+                .to_owned(),
+        );
     }
 }
 
@@ -120,9 +122,10 @@ pub(super) fn air_part(
     let reduced = column(|point| point.standard_air_v);
     let by_air: Vec<f64> = measured.iter().zip(&reduced).map(|(measured, reduced)| measured - reduced).collect();
     let hours: Vec<f64> = rows.iter().map(|(_, point)| point.hours).collect();
-    let density = rows.iter().filter_map(|(_, point)| point.air_density).fold((f64::INFINITY, 0.0_f64), |range, d| {
-        (range.0.min(d), range.1.max(d))
-    });
+    let density = rows
+        .iter()
+        .filter_map(|(_, point)| point.air_density)
+        .fold((f64::INFINITY, 0.0_f64), |range, d| (range.0.min(d), range.1.max(d)));
     let (before, after) = (deviation(&measured), deviation(&reduced));
     let range = by_air.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |range, x| (range.0.min(*x), range.1.max(*x)));
     let exponent = (rows.len() >= FEWEST_FOR_EXPONENT && range.1 - range.0 > LEAST_RANGE)
@@ -177,7 +180,8 @@ pub(super) fn spacing(
     let last_m = last.spacing_m?;
     let voltage_v = last.standard_air_v.filter(|voltage| *voltage == last.value)?;
     let bench = entries.last()?.bench.as_ref()?;
-    let implied = GapGeometry::new(bench.electrodes?, bench.diameter_m)?.implied(voltage_v, &crate::model::air::Air::default())?;
+    let implied = GapGeometry::new(bench.electrodes?, bench.diameter_m)?
+        .implied(voltage_v, &crate::model::air::Air::default())?;
     let per_volt = implied.spacing_m / (implied.exponent * voltage_v);
     Some(Spacing {
         last_m,

@@ -63,7 +63,9 @@ fn lock(file: &File) -> Result<(), FileError> {
             Err(TryLockError::Error(error)) => return Err(FileError::from_io("locking", error)),
             Err(TryLockError::WouldBlock) if began.elapsed() > PATIENCE => {
                 let seconds = PATIENCE.as_secs();
-                return Err(FileError::Broken(format!("is locked by another program for {seconds} s; close that first")));
+                return Err(FileError::Broken(format!(
+                    "is locked by another program for {seconds} s; close that first"
+                )));
             }
             Err(TryLockError::WouldBlock) => std::thread::sleep(Duration::from_millis(2)),
         }
