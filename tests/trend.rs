@@ -44,6 +44,7 @@ fn a_step_is_found_as_soon_as_the_table_of_the_handbook_says() {
         let sd = (delays.iter().map(|d| (d - mean).powi(2)).sum::<f64>() / RUNS as f64).sqrt();
         // Four standard deviations of the mean, and 4 % for what 2000 entries leave open of mean and σ and for scores cut at 4.
         let allowed = 4.0 * sd / (RUNS as f64).sqrt() + 0.04 * published;
+        println!("shift {shift} σ: CUSUM finds it in {mean:.2} entries, published {published}");
         assert!((mean - published).abs() < allowed, "{shift}: {mean} against {published} ± {allowed}");
     }
 }
@@ -59,6 +60,7 @@ fn an_unchanged_gap_raises_no_more_false_alarms_than_the_handbook_says_from_the_
         sum += (1..).find(|_| chart.push(random.normal()).alarm() != 0).expect("an alarm");
     }
     let mean = f64::from(sum) / RUNS as f64;
+    println!("in control: a first alarm of the CUSUM in {mean:.0} entries, published {}", IN_CONTROL.0);
     assert!((mean / IN_CONTROL.0 - 1.0).abs() < 0.17, "{mean}");
 }
 
@@ -75,6 +77,7 @@ fn the_limits_of_a_first_stretch_leave_a_further_entry_outside_once_in_370() {
             outside += (0..30).filter(|_| limits.side(random.normal()) != 0).count() as f64;
         }
         let per_370 = outside / 120_000.0 * IN_CONTROL.1;
+        println!("in control: {per_370:.2} entries of 370 outside limits from {reference}, published 1");
         assert!((0.7..1.3).contains(&per_370), "{reference}: {per_370}");
     }
 }

@@ -207,7 +207,8 @@ fn parse_piece(bytes: &[u8]) -> Piece {
     let mut piece = Piece::default();
     for line in bytes.split_inclusive(|byte| *byte == b'\n') {
         piece.lines += 1;
-        if line.trim_ascii().is_empty() {
+        let line = line.trim_ascii();
+        if line.is_empty() {
             continue;
         }
         match serde_json::from_slice::<Entry>(line) {
@@ -278,6 +279,9 @@ mod tests {
             assert_eq!(contents.entries.len(), if is_whole { 3 } else { 2 }, "{end}");
             assert_eq!(contents.notes.len(), usize::from(!is_whole && end > whole), "{end}: {:?}", contents.notes);
             assert!(contents.notes.iter().all(|note| note.contains("line 3 cut off")), "{:?}", contents.notes);
+            // The same after the next writer has closed the line.
+            let closed = [&text.as_bytes()[..end], b"\n"].concat();
+            assert_eq!(parse(&closed).notes, contents.notes, "{end}");
         }
     }
 

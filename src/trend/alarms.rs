@@ -25,7 +25,7 @@ pub struct Alarm {
     pub first: usize,
     /// Its time.
     pub since: Moment,
-    /// Number of entries.
+    /// Number of entries from the first to the last out of control.
     pub entries: usize,
     /// True if it stands at the last entry of the log.
     pub stands: bool,
@@ -42,17 +42,32 @@ pub(super) fn find(points: &mut [Point], limits: &Limits) -> Vec<Alarm> {
         sums.push(step.alarm());
     }
     let outside: Vec<i8> = points.iter().map(|point| point.outside).collect();
-    let mut alarms = in_a_row(Chart::Individuals, &outside, points);
-    alarms.extend(in_a_row(Chart::Cusum, &sums, points));
+    let mut alarms = in_a_row(Chart::Individuals, &outside, points, |_, _| false);
+    // A sum that crosses its interval again before it was at zero is the same alarm.
+    let same = |side: i8, between: std::ops::Range<usize>| {
+        let sum = |point: &Point| if side > 0 { point.cusum_high } else { point.cusum_low };
+        points[between].iter().all(|point| sum(point) > 0.0)
+    };
+    alarms.extend(in_a_row(Chart::Cusum, &sums, points, same));
     alarms.sort_by_key(|alarm| alarm.first);
     alarms
 }
 
-fn in_a_row(chart: Chart, sides: &[i8], points: &[Point]) -> Vec<Alarm> {
+fn in_a_row(
+    chart: Chart,
+    sides: &[i8],
+    points: &[Point],
+    same: impl Fn(i8, std::ops::Range<usize>) -> bool,
+) -> Vec<Alarm> {
     let mut found: Vec<Alarm> = Vec::new();
     for (index, side) in sides.iter().enumerate().filter(|(_, side)| **side != 0) {
         match found.last_mut() {
-            Some(last) if last.first + last.entries == index && last.side == *side => last.entries += 1,
+            Some(last)
+                if last.side == *side
+                    && (last.first + last.entries == index || same(*side, last.first + last.entries..index)) =>
+            {
+                last.entries = index + 1 - last.first;
+            }
             _ => found.push(Alarm {
                 chart,
                 side: *side,

@@ -33,7 +33,8 @@ pub(super) fn beside(points: &[Point], charted: Charted, limits: Option<&Limits>
                 figure,
                 unit: figure.unit().to_owned(),
                 reference: limits.centre,
-                limits: (limits.low, limits.high),
+                // None of these figures can be negative.
+                limits: (limits.low.max(0.0), limits.high),
                 last,
                 outside: limits.side(last),
             }

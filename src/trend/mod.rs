@@ -42,6 +42,9 @@ pub const REFERENCE: usize = 20;
 /// Fewest entries from which limits are drawn.
 pub const FEWEST: usize = 8;
 
+/// Standard uncertainties by which a step must stand out: the best of many places for a step looks like one by chance.
+const CLEAR: f64 = 3.0;
+
 /// What is asked of a log.
 #[derive(Debug, Clone, Default)]
 pub struct Options {
@@ -95,7 +98,7 @@ pub struct Trend {
     pub alarms: Vec<Alarm>,
     /// Moving ranges above their limit.
     pub wide_moving_ranges: usize,
-    /// The most probable step, if the charts raised an alarm.
+    /// The most probable step, if the charts raised an alarm and it stands out of the scatter.
     pub change_point: Option<ChangePoint>,
     /// Change with the hours of firing.
     pub wear: Option<Wear>,
@@ -129,7 +132,8 @@ pub fn analyse(entries: &[Entry], options: &Options) -> Trend {
     if let Some(limits) = &limits {
         alarms = alarms::find(&mut points, limits);
         wide_moving_ranges = points.iter().filter(|point| point.moving_range > Some(limits.moving_range_high)).count();
-        let step = change::step(&values).filter(|_| !alarms.is_empty());
+        let is_clear = |step: &change::Step| step.difference.value.abs() > CLEAR * step.difference.u;
+        let step = change::step(&values).filter(|step| !alarms.is_empty() && is_clear(step));
         wear = wear::wear(&points, &values, step.as_ref(), limits, points::has_hour_meter(&used));
         change_point = step.map(|step| at_its_time(&step, &points));
     }
