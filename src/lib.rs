@@ -27,5 +27,6 @@ pub mod model;
 pub mod predict;
 pub mod report;
 pub mod rhythm;
+pub mod trend;
 pub mod uncertainty;
 pub mod voltage;

@@ -75,7 +75,8 @@ pub struct Charging {
 }
 
 /// Shape of the electrodes.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, serde::Serialize, serde::Deserialize)]
+#[serde(rename_all = "lowercase")]
 pub enum Electrodes {
     /// Uniform field.
     Plane,

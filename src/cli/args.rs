@@ -2,6 +2,7 @@
 
 use super::files::SampleFormat;
 use crate::audio::ChannelChoice;
+use crate::trend::{Charted, Moment};
 use clap::{Args, Parser, Subcommand};
 
 const EXAMPLES: &str = "\
@@ -10,6 +11,7 @@ Examples:
   gaptone measure run.wav --bench bench.toml       and the voltage at which the gap fires
   gaptone predict --bench bench.toml               what a bench will sound like, before power
   gaptone render --bench bench.toml -o clip.wav    a clip with known truth
+  gaptone measure run.wav --bench bench.toml --log gap.jsonl; gaptone trend gap.jsonl
   arecord -f S16_LE -r 48000 -d 10 | gaptone measure -
 
 Exit status:
@@ -44,6 +46,8 @@ pub enum Command {
     Predict(PredictArguments),
     /// A clip of a bench with known truth
     Render(RenderArguments),
+    /// Whether a gap has changed, by the log of its measurements
+    Trend(TrendArguments),
 }
 
 /// Arguments of `measure`.
@@ -102,6 +106,102 @@ pub struct MeasureArguments {
     /// Tell on standard error how the verdict came about
     #[arg(long)]
     pub explain: bool,
+
+    /// Where the measurements are logged
+    #[command(flatten)]
+    pub log: LogArguments,
+}
+
+/// Options of `measure` for its log.
+#[derive(Debug, Args)]
+#[command(next_help_heading = "Log")]
+pub struct LogArguments {
+    /// Append each measurement to a log, a line of JSON each, for `gaptone trend`
+    #[arg(long, value_name = "FILE")]
+    pub log: Option<String>,
+
+    /// When it was recorded, such as 2026-11-30T14:05Z [default: now]
+    #[arg(long, value_name = "TIME", requires = "log")]
+    pub at: Option<Moment>,
+
+    /// Hours that the gap has fired so far, by its hour meter
+    #[arg(long, value_name = "HOURS", requires = "log", value_parser = hours)]
+    pub hour_meter: Option<f64>,
+
+    /// Temperature at the gap instead of the bench's, such as "21 °C"
+    #[arg(long, value_name = "TEMPERATURE", requires = "log", allow_hyphen_values = true)]
+    pub temperature: Option<String>,
+
+    /// Air pressure at the gap (not reduced to sea level) instead of the bench's, such as "1002 hPa"
+    #[arg(long, value_name = "PRESSURE", requires = "log")]
+    pub pressure: Option<String>,
+
+    /// Relative humidity instead of the bench's, such as "45 %"
+    #[arg(long, value_name = "HUMIDITY", requires = "log")]
+    pub humidity: Option<String>,
+}
+
+/// Arguments of `trend`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Limits come from the first entries: mean and mean moving range. After a repair begin a new
+stretch with --since. Entries of several benches are told apart by the title of the bench.")]
+pub struct TrendArguments {
+    /// Log written by measure --log; - is standard input
+    #[arg(value_name = "LOG")]
+    pub log: String,
+
+    /// What to chart [default: voltage; without any, rate]
+    #[arg(long, value_name = "FIGURE", value_enum)]
+    pub chart: Option<ChartArgument>,
+
+    /// Chart the bench of this title [default: that of the last entry]
+    #[arg(long, value_name = "TITLE")]
+    pub title: Option<String>,
+
+    /// Leave out what is older, such as 2026-11-30
+    #[arg(long, value_name = "TIME")]
+    pub since: Option<Moment>,
+
+    /// Entries of the first stretch, from which the limits come [default: 20]
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(8..))]
+    pub reference: Option<u16>,
+
+    /// Limits instead of those of the first stretch, such as 5.1kV..5.3kV
+    #[arg(long, value_name = "LOW..HIGH")]
+    pub limits: Option<String>,
+
+    /// Write everything as JSON, in SI units
+    #[arg(long, conflicts_with = "csv")]
+    pub json: bool,
+
+    /// Write the entries as CSV, in SI units
+    #[arg(long)]
+    pub csv: bool,
+}
+
+/// What `trend` charts.
+#[derive(Debug, Clone, Copy, clap::ValueEnum)]
+pub enum ChartArgument {
+    /// Gap voltage in standard air
+    Voltage,
+    /// Firing rate
+    Rate,
+    /// Period jitter over the period
+    Jitter,
+    /// Share of missed firings
+    Missed,
+}
+
+impl From<ChartArgument> for Charted {
+    fn from(argument: ChartArgument) -> Self {
+        match argument {
+            ChartArgument::Voltage => Self::GapVoltage,
+            ChartArgument::Rate => Self::FiringRate,
+            ChartArgument::Jitter => Self::Jitter,
+            ChartArgument::Missed => Self::Missed,
+        }
+    }
 }
 
 /// Arguments of `calibrate`.
@@ -256,6 +356,14 @@ fn duration(text: &str) -> Result<f64, String> {
     match seconds(text) {
         Ok(value) if value > 0.0 && value <= LONGEST_CLIP_S => Ok(value),
         _ => Err(format!("write a length in seconds, above 0 and up to {LONGEST_CLIP_S}, such as 10")),
+    }
+}
+
+/// Reads a count of hours; `h` may stand behind it.
+fn hours(text: &str) -> Result<f64, String> {
+    match text.trim().trim_end_matches('h').trim_end().parse::<f64>() {
+        Ok(value) if value.is_finite() && value >= 0.0 => Ok(value),
+        _ => Err("write hours, 0 or more, such as 1250.5".to_owned()),
     }
 }
 

@@ -8,6 +8,7 @@ use super::bench_file;
 use super::exit::{Exit, Failure, say, tell};
 use super::files::{self, FileError, STANDARD_STREAM};
 use super::listen::{HeardRecording, Listener};
+use super::log::Log;
 use super::progress::Progress;
 use crate::audio::Span;
 use crate::firing::Event;
@@ -26,7 +27,8 @@ use std::sync::mpsc;
 /// Wrong usage, a bench that cannot be used, a place for events that cannot be written.
 pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
     let task = Task::new(arguments)?;
-    let mut results = Results { json: arguments.json, truth: truth(arguments)?, ..Results::default() };
+    let mut results =
+        Results { json: arguments.json, truth: truth(arguments)?, log: log(arguments)?, ..Results::default() };
     if arguments.difference {
         if arguments.recordings.len() != 2 {
             return Err(Failure::usage("--difference compares two recordings; name exactly two"));
@@ -193,6 +195,14 @@ fn voltmeter(arguments: &MeasureArguments) -> Result<Option<VoltageMeter>, Failu
     VoltageMeter::new(&bench, supply).map(Some).map_err(|error| Failure::usage(format!("{name}: {error}")))
 }
 
+/// The log, if one is kept.
+fn log(arguments: &MeasureArguments) -> Result<Option<Log>, Failure> {
+    let bench = arguments.bench.as_deref().filter(|_| arguments.log.log.is_some()).map(bench_file::load).transpose()?;
+    let given = bench.as_ref().zip(arguments.supply.as_deref());
+    let supply = given.map(|(bench, text)| bench_file::supply(text, bench)).transpose()?;
+    Log::new(&arguments.log, bench.as_ref(), supply)
+}
+
 /// Results as they come in, put out in the order of the arguments.
 #[derive(Default)]
 struct Results {
@@ -201,6 +211,7 @@ struct Results {
     /// The two runs are to be compared; with the voltmeter of their bench.
     difference: Option<Option<VoltageMeter>>,
     runs: Vec<Measurement>,
+    log: Option<Log>,
     reports: Vec<Report>,
     texts: usize,
     failed: bool,
@@ -233,6 +244,11 @@ impl Results {
             Ok(Analysed { measurement, explanation }) => {
                 explanation.iter().for_each(|line| tell(&format!("{name}: {line}")));
                 self.not_measurable |= measurement.reading.verdict == Verdict::None;
+                if let Some(Err(error)) = self.log.as_ref().map(|log| log.append(&measurement)) {
+                    // The figures are shown all the same.
+                    self.failed = true;
+                    error.end();
+                }
                 let comparison = self.truth.as_ref().map(|truth| report::compare(&measurement, truth));
                 if self.difference.is_some() {
                     self.runs.push(measurement.clone());

@@ -9,6 +9,7 @@ mod clip;
 mod exit;
 pub mod files;
 mod listen;
+mod log;
 mod measure;
 #[cfg(feature = "sound-card")]
 mod play;
@@ -16,6 +17,7 @@ mod predict;
 mod progress;
 mod render;
 mod render_series;
+mod trend;
 
 use args::{Arguments, Command};
 use clap::Parser;
@@ -38,6 +40,7 @@ pub fn main() -> ExitCode {
         Command::Calibrate(arguments) => calibrate::run(arguments),
         Command::Predict(arguments) => predict::run(arguments),
         Command::Render(arguments) => render::run(arguments),
+        Command::Trend(arguments) => trend::run(arguments),
     };
     ended.unwrap_or_else(exit::Failure::end).into()
 }

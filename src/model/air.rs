@@ -12,6 +12,10 @@ pub const STANDARD_PRESSURE_PA: f64 = 101_300.0;
 /// Absolute humidity of standard air, g/m³.
 pub const STANDARD_HUMIDITY_G_PER_M3: f64 = 8.5;
 
+/// What an unstated air may differ from standard air: ± 5 K, ± 2500 Pa, ± 45 % relative humidity (a heated room near sea
+/// level).
+pub const UNSTATED: [f64; 3] = [5.0, 2500.0, 0.45];
+
 /// 0 °C as IEC 60052 counts it, K.
 const ZERO_CELSIUS_K: f64 = 273.0;
 /// Relative humidity that gives the standard absolute humidity at 20 °C.

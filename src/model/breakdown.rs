@@ -9,6 +9,7 @@ mod error;
 mod inputs;
 mod planes;
 mod points;
+mod spacing;
 mod sphere_table;
 mod spheres;
 mod uniform;
@@ -16,6 +17,7 @@ mod uniform;
 pub use budget::{Contribution, GapVoltage, gap_voltage};
 pub use error::NoGapVoltage;
 pub use inputs::implied_spacing;
+pub use spacing::{GapGeometry, Implied};
 pub use uniform::{
     AIR, GASES, Gas, SECONDARY, point_field_factor, sphere_field_factor, sphere_surface_kv_per_cm, uniform_kv,
 };

@@ -9,6 +9,7 @@ mod figure;
 mod json;
 mod measurement;
 mod text;
+mod trend;
 
 pub use calibration::calibration_text;
 pub use comparison::{COMPARISON_FORMAT, Compared, Comparison, compare, comparison_text};
@@ -18,3 +19,4 @@ pub use figure::Figure;
 pub use json::{Failure, Report, WithTruth, finite, to_json};
 pub use measurement::{FORMAT, Measurement, Recording};
 pub use text::{HIGH_VOLTAGE_CAUTION, measurement_text, wrapped};
+pub use trend::{TREND_HEADER, trend_text, write_trend_csv};

@@ -1,5 +1,6 @@
 //! Files and standard input: reading recordings of any common kind, writing results whole or not at all.
 
+mod append;
 mod decode;
 mod encode;
 mod error;
@@ -10,6 +11,7 @@ mod stream;
 mod wav_head;
 mod write;
 
+pub use append::{append_line, check_appendable};
 pub use decode::open;
 pub use encode::{ClipFacts, SampleFormat, write_frames};
 pub use error::FileError;

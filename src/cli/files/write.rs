@@ -98,7 +98,7 @@ fn temporary_path(path: &Path) -> PathBuf {
     path.with_file_name(format!(".{name}.{}.part", std::process::id()))
 }
 
-fn not_writable(error: io::Error) -> FileError {
+pub(super) fn not_writable(error: io::Error) -> FileError {
     match error.kind() {
         io::ErrorKind::NotFound => FileError::Broken("cannot be written: there is no such folder".to_owned()),
         io::ErrorKind::PermissionDenied => {

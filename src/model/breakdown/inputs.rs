@@ -1,25 +1,16 @@
 //! What a breakdown voltage depends on, as inputs of an uncertainty budget, and the spacing that a voltage implies.
 
-use super::{Level, level};
+use super::{GapGeometry, Level, level};
 use crate::bench::{Bench, Electrodes, Quantity};
 use crate::estimate::Estimate;
-use crate::model::air::Air;
-use crate::model::root::bracketed;
+use crate::model::air::{Air, UNSTATED};
 use crate::uncertainty::{Budget, Distribution, Input, Problem};
-
-/// What an unstated air may differ from standard air: ± 5 K, ± 25 hPa, ± 45 % relative humidity (a heated room near sea
-/// level).
-const UNSTATED: [f64; 3] = [5.0, 2500.0, 0.45];
 
 /// Place of the spacing among the inputs.
 const SPACING: usize = 0;
 /// Place of the accuracy of the law: a factor.
 pub(super) const BAND: usize = 5;
 
-/// Narrowest and widest gap that is looked for, m.
-const SPACINGS_M: (f64, f64) = (1e-5, 1.0);
-/// Steps over that range, to find where a law begins and ends.
-const STEPS: i32 = 400;
 /// Corrections of the spacing in one draw; each takes an error of the exponent down by about a factor of ten.
 const CORRECTIONS: usize = 4;
 
@@ -64,22 +55,13 @@ pub fn implied_spacing(bench: &Bench, voltage: Estimate) -> Option<Budget> {
     let electrodes = bench.gap.electrodes?;
     let air = Air::of_bench(&bench.air);
     let diameter_m = bench.gap.diameter.map(|d| d.value);
-    let excess = |spacing_m: f64| {
-        level(electrodes, diameter_m, spacing_m, &air).map_or(f64::NAN, |level| level.voltage_v - voltage.value)
-    };
-    let grid: Vec<f64> = (0..=STEPS)
-        .map(|i| SPACINGS_M.0 * (SPACINGS_M.1 / SPACINGS_M.0).powf(f64::from(i) / f64::from(STEPS)))
-        .collect();
-    let pair = grid.windows(2).find(|pair| excess(pair[0]) < 0.0 && excess(pair[1]) >= 0.0)?;
-    let spacing_m = bracketed(pair[0], pair[1], excess);
+    let implied = GapGeometry::new(electrodes, diameter_m)?.implied(voltage.value, &air)?;
+    let (spacing_m, exponent) = (implied.spacing_m, implied.exponent);
     let found = level(electrodes, diameter_m, spacing_m, &air).ok()?;
     let mut inputs = inputs(bench, &found);
     // Its place now holds the voltage.
     inputs[SPACING] = Input::new("gap voltage", "V", voltage.value, Distribution::Normal { u: voltage.u })
         .reduced_by("look at the budget of the gap voltage");
-    let step = 1.01;
-    let exponent =
-        (level(electrodes, diameter_m, spacing_m * step, &air).ok()?.voltage_v / found.voltage_v).ln() / step.ln();
     let model = move |x: &[f64]| {
         let mut at = x.to_vec();
         at[SPACING] = spacing_m;
