@@ -126,6 +126,9 @@ pub(super) struct Contents {
     pub notes: Vec<String>,
 }
 
+/// What every line of ours begins with.
+const BEGINNING: &str = "{\"format\":\"gaptone.log/1\",";
+
 /// Just enough of a line to tell what it is.
 #[derive(Deserialize)]
 struct Kind {
@@ -223,7 +226,8 @@ fn fault(line: &[u8]) -> Fault {
     match serde_json::from_slice::<Kind>(line) {
         Ok(kind) if kind.format.starts_with(LOG_FAMILY) && kind.format != LOG_FORMAT => Fault::Newer(kind.format),
         Ok(_) => Fault::Foreign,
-        Err(error) if error.is_eof() => Fault::Cut,
+        // A cut in the middle of a number is no end of the text to the parser.
+        Err(error) if error.is_eof() || line.starts_with(BEGINNING.as_bytes()) => Fault::Cut,
         Err(_) => Fault::Foreign,
     }
 }

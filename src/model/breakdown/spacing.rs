@@ -106,7 +106,8 @@ mod tests {
                 let found = geometry.implied(measured, &air).unwrap();
                 assert!((found.spacing_m / spacing_m - 1.0).abs() < 1e-9, "{electrodes:?} {spacing_m}");
                 assert!((found.in_standard_air.voltage_v / standard.voltage_v - 1.0).abs() < 1e-9);
-                assert!((0.5..1.1).contains(&found.exponent), "{electrodes:?} {}", found.exponent);
+                // About 1 for needles and planes, less where the field crowds at a tip.
+                assert!((0.3..1.1).contains(&found.exponent), "{electrodes:?} {}", found.exponent);
             }
         }
     }
