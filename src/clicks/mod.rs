@@ -6,6 +6,8 @@
 
 pub mod candidates;
 pub mod filter;
+#[cfg(test)]
+mod plain;
 pub mod resample;
 pub mod shape;
 pub mod snippet;

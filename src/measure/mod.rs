@@ -5,6 +5,8 @@
 
 mod accumulate;
 mod acquire;
+#[cfg(test)]
+mod bound_tests;
 mod hypothesis;
 mod irregular;
 mod multiples;

@@ -8,6 +8,8 @@ pub mod order;
 pub mod pairs;
 pub mod path;
 pub mod phase;
+#[cfg(test)]
+mod plain;
 pub mod presence;
 mod reading;
 pub mod search;

@@ -6,6 +6,8 @@
 //! Raw differences of click times would read √(σ_T² + 2σ_e²) instead of σ_T (Wing and Kristofferson 1973, two-level timing).
 
 mod integral;
+#[cfg(test)]
+mod plain;
 pub mod posterior;
 pub mod robust;
 pub mod structure;
