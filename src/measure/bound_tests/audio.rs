@@ -58,6 +58,16 @@ fn cell(jitter: f64, noise_db: f64, clicks: usize, trains: usize, first_seed: u6
 }
 
 #[test]
+fn rate_and_jitter_reach_the_bound_from_audio() {
+    // A root mean square over 24 trains scatters by 1/√48 = 14 %; three times that on top of the promise of 1.1. Where timing noise is
+    // small against the jitter the bound for unknown timing noise is 1.7 times that for known; the reader stays below it.
+    let cell = cell(0.02, 20.0, 300, 24, 88_000);
+    cell.print("jitter 2 %, noise 20 dB, 300 clicks");
+    assert!(cell.silent == 0 && cell.rate < 1.53 && cell.jitter < 1.53, "{cell:?}");
+    assert!(cell.rate > 0.58 && cell.jitter_known > 0.58, "nothing beats the bound by more than chance: {cell:?}");
+}
+
+#[test]
 #[ignore = "minutes of computing; the command stands in DEVELOPERS.md"]
 fn table_of_errors_over_the_bound_from_audio() {
     println!("jitter % | noise dB | N | {HEAD}");

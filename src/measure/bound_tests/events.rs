@@ -48,7 +48,7 @@ impl Kind {
         let train = Train {
             number: (0..self.clicks as i64).collect(),
             size: vec![0.5; self.clicks],
-            stretches: vec![0..self.clicks],
+            stretches: std::iter::once(0..self.clicks).collect(),
             extra: Vec::new(),
             noise_s: Some(noise_s),
             phase_jitter_s: None,

@@ -61,7 +61,7 @@ fn the_grid_gives_the_median_and_the_interval_of_plain_summation() {
         let (jitter, mut a, mut s): (f64, f64, f64) = (0.01, 0.0, 0.0);
         let time_s: Vec<f64> = (0..clicks)
             .map(|_| {
-                a = memory * a + (1.0 - memory * memory as f64).sqrt() * jitter * random.normal();
+                a = memory * a + (1.0f64 - memory * memory).sqrt() * jitter * random.normal();
                 s += 1.0 + a;
                 s + noise * random.normal()
             })
