@@ -1,6 +1,8 @@
 //! Brings any sample rate into 32..64 kHz by a whole factor, so that a click always has enough samples for the
 //! parabola through its peak and never more than the work is worth. Whole factors shift no time.
 
+use super::snippet::dot;
+
 /// What to do to a rate: multiply by the first or divide by the second (one of them is 1).
 #[must_use]
 pub fn whole_factors(rate_hz: f64) -> (usize, usize) {
@@ -51,20 +53,18 @@ pub fn upsample(x: &[f32], factor: usize) -> Vec<f32> {
     let half = LOBES * factor;
     // The cut sits a little below the old half rate: the images of what lies against it matter more than its last 4 %.
     let taps = low_pass(0.48 / factor as f64, half);
-    let mut out = vec![0.0f32; x.len() * factor];
-    for (n, value) in out.iter_mut().enumerate() {
-        let phase = n % factor;
-        let centre = (n / factor) as isize;
-        let mut sum = 0.0f32;
-        // Tap index of input sample i at output n is half + n − i·factor.
-        for d in -(LOBES as isize)..=LOBES as isize {
-            let i = centre + d;
-            let tap = half as isize + phase as isize - d * factor as isize;
-            if i >= 0 && (i as usize) < x.len() && tap >= 0 && (tap as usize) < taps.len() {
-                sum += x[i as usize] * taps[tap as usize];
-            }
-        }
-        *value = sum * factor as f32;
+    // Tap index of input sample i at output n is half + n − i·factor: a row of taps for each place between two samples.
+    let rows: Vec<Vec<f32>> = (0..factor)
+        .map(|phase| {
+            let taps = (0..=2 * LOBES).map(|d| taps.get(phase + (2 * LOBES - d) * factor));
+            taps.map(|tap| tap.map_or(0.0, |t| t * factor as f32)).collect()
+        })
+        .collect();
+    let mut padded = vec![0.0f32; x.len() + 2 * LOBES];
+    padded[LOBES..LOBES + x.len()].copy_from_slice(x);
+    let mut out = Vec::with_capacity(x.len() * factor);
+    for near in padded.windows(2 * LOBES + 1) {
+        out.extend(rows.iter().map(|row| dot(near, row)));
     }
     out
 }
@@ -80,7 +80,7 @@ pub fn decimate(x: &[f32], factor: usize) -> Vec<f32> {
             let from = centre.saturating_sub(half);
             let to = (centre + half + 1).min(x.len());
             let skip = half + from - centre;
-            x[from..to].iter().zip(&taps[skip..]).map(|(a, b)| a * b).sum()
+            dot(&x[from..to], &taps[skip..skip + to - from])
         })
         .collect()
 }

@@ -51,6 +51,8 @@ const FIRST_HALF_S: f64 = 0.5e-3;
 /// Strongest peaks used, and the share of the very largest left out (static, switching).
 const FIRST_COUNT: usize = 150;
 const FIRST_SKIP: f64 = 0.02;
+/// Peaks looked through for those: with their neighbours, which are too near to be taken.
+const FIRST_LIST: usize = 4000;
 /// Least distance of two peaks, s.
 const FIRST_APART_S: f64 = 0.6e-3;
 
@@ -82,7 +84,12 @@ fn strongest_peaks(envelope: &[Complex32], rate_hz: f64) -> Option<Vec<f64>> {
         .filter(|&i| power[i] > power[i - 1] && power[i] >= power[i + 1] && power[i] > 0.0)
         .map(|i| (power[i], i))
         .collect();
-    peaks.sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+    let falling = |a: &(f32, usize), b: &(f32, usize)| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1));
+    if peaks.len() > FIRST_LIST {
+        peaks.select_nth_unstable_by(FIRST_LIST, falling);
+        peaks.truncate(FIRST_LIST);
+    }
+    peaks.sort_unstable_by(falling);
     let skip = (FIRST_SKIP * FIRST_COUNT as f64) as usize;
     let mut taken: Vec<usize> = Vec::new();
     for &(_, at) in &peaks {
@@ -171,8 +178,8 @@ pub fn leading_vectors(rows: &[Vec<f32>], weights: Option<&[f32]>, count: usize)
         let w = weights.map_or(1.0, |w| f64::from(w[i]).powi(2));
         for a in 0..n {
             let ra = w * f64::from(row[a]);
-            for b in 0..=a {
-                gram[a * n + b] += ra * f64::from(row[b]);
+            for (g, &rb) in gram[a * n..=a * n + a].iter_mut().zip(row) {
+                *g += ra * f64::from(rb);
             }
         }
     }
@@ -184,8 +191,10 @@ pub fn leading_vectors(rows: &[Vec<f32>], weights: Option<&[f32]>, count: usize)
     iterate(&gram, n, count)
 }
 
-/// Rounds of orthogonal iteration; the leading three of click Gram matrices stand well apart, 40 leave 1e-6 or better.
+/// Rounds of orthogonal iteration at most; the leading three of click Gram matrices stand well apart, 40 leave 1e-6 or better.
 const ROUNDS: usize = 40;
+/// It ends when no vector asked for turns by more than this, rad.
+const TURNED: f64 = 1e-6;
 
 fn iterate(gram: &[f64], n: usize, count: usize) -> Vec<Vec<f32>> {
     // One vector more than asked for speeds up the convergence of the last one asked for.
@@ -193,17 +202,39 @@ fn iterate(gram: &[f64], n: usize, count: usize) -> Vec<Vec<f32>> {
     let mut basis: Vec<Vec<f64>> = (0..kept)
         .map(|v| (0..n).map(|i| ((i * (2 * v + 1)) as f64 * 0.37 + v as f64).sin() + 0.01).collect())
         .collect();
+    orthonormalise(&mut basis);
     for _ in 0..ROUNDS {
-        for v in &mut basis {
-            let old = v.clone();
-            for (a, value) in v.iter_mut().enumerate() {
-                *value = gram[a * n..(a + 1) * n].iter().zip(&old).map(|(g, o)| g * o).sum();
+        let before = basis.clone();
+        for (v, old) in basis.iter_mut().zip(&before) {
+            for (value, row) in v.iter_mut().zip(gram.chunks_exact(n.max(1))) {
+                *value = dot_f64(row, old);
             }
         }
         orthonormalise(&mut basis);
+        // The sine of a small angle, not its cosine: the cosine says nothing below 1e-8.
+        let turned = |(v, old): (&Vec<f64>, &Vec<f64>)| {
+            let along = dot_f64(v, old);
+            v.iter().zip(old).map(|(a, b)| (a - along * b).powi(2)).sum::<f64>().sqrt()
+        };
+        if basis.iter().zip(&before).take(count).map(turned).fold(0.0, f64::max) < TURNED {
+            break;
+        }
     }
     basis.truncate(count);
     basis.into_iter().map(|v| v.into_iter().map(|x| x as f32).collect()).collect()
+}
+
+/// Scalar product in four lanes.
+fn dot_f64(a: &[f64], b: &[f64]) -> f64 {
+    let mut lanes = [0.0f64; 4];
+    let (ac, bc) = (a.chunks_exact(4), b.chunks_exact(4));
+    let tail: f64 = ac.remainder().iter().zip(bc.remainder()).map(|(x, y)| x * y).sum();
+    for (x, y) in ac.zip(bc) {
+        for l in 0..4 {
+            lanes[l] += x[l] * y[l];
+        }
+    }
+    lanes.iter().sum::<f64>() + tail
 }
 
 fn orthonormalise(basis: &mut [Vec<f64>]) {

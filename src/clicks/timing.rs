@@ -44,6 +44,19 @@ pub struct Channel {
     pub vectors: usize,
 }
 
+impl std::fmt::Display for Channel {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        let flatness = match self.flatness {
+            Flatness::White => "fully",
+            Flatness::Half => "half",
+            Flatness::Plain => "hardly",
+        };
+        let (from, to) = (1e3 * self.window_s.0, 1e3 * self.window_s.1);
+        let shapes = if self.vectors == 1 { "shape" } else { "shapes" };
+        write!(f, "{} {shapes} from {from:+.2} to {to:+.2} ms, spectrum {flatness} flattened", self.vectors)
+    }
+}
+
 /// Windows tried: middle, leading edge, long, short.
 const MIDDLE: (f64, f64) = (-0.35e-3, 0.35e-3);
 const LEADING: (f64, f64) = (-0.45e-3, 0.05e-3);

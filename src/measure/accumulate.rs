@@ -1,4 +1,5 @@
-//! The sums over windows from which the figures are made. Their size does not grow with the recording but for one entry a window.
+//! The sums over windows from which the figures are made. Their size does not grow with the recording but for one entry for some
+//! thousand clicks or a stretch.
 
 use super::train::Train;
 use crate::estimate::{COVERAGE_95, Estimate};
@@ -8,6 +9,8 @@ use crate::rhythm::{FiringCounts, MainsJitter, OtherTrain, Reading, Stretch, Ver
 
 /// Clicks per block of the posterior: long enough for memory of 0.97, short enough that a slow wander is taken by the line.
 const BLOCK: usize = 3000;
+/// Clicks gathered over windows before they enter the sums: slow drift and lines are told by many.
+const GATHERED: usize = 12_000;
 /// Jitter of a steady gap, share of the period.
 pub const STEADY: f64 = 0.05;
 /// Stretches listed at most.
@@ -24,9 +27,17 @@ struct Piece {
     inner: (f64, f64),
 }
 
+/// Clicks of a stretch that have not entered the sums.
+#[derive(Debug, Clone, Default)]
+struct Gathered {
+    time_s: Vec<f64>,
+    number: Vec<i64>,
+}
+
 /// Sums over trains of successive windows.
 #[derive(Debug, Clone, Default)]
 pub struct Accumulator {
+    gathered: Gathered,
     grid: PosteriorGrid,
     counts: FiringCounts,
     steps: f64,
@@ -50,13 +61,8 @@ impl Accumulator {
         self.counts.extra += train.extra.len() as u64;
         for range in &train.stretches {
             let (time_s, number) = (&train.time_s[range.clone()], &train.number[range.clone()]);
-            if time_s.len() < 2 {
-                continue;
-            }
             self.add_time(time_s[0], time_s[time_s.len() - 1], train.period_s);
-            self.add_stretch(time_s, number);
-            self.steps += (number[number.len() - 1] - number[0]) as f64;
-            self.duration_s += time_s[time_s.len() - 1] - time_s[0];
+            self.gather(time_s, number, train.period_s);
         }
         if self.others.is_empty() {
             self.others.clone_from(&train.others);
@@ -69,6 +75,42 @@ impl Accumulator {
         if let Some(phase) = train.phase_jitter_s {
             self.phase.push((phase, n));
         }
+    }
+
+    /// Takes the clicks of a stretch, which goes on with the one before if it begins where that ended (the next window).
+    fn gather(&mut self, time_s: &[f64], number: &[i64], period_s: f64) {
+        let own = &mut self.gathered;
+        let steps = own.time_s.last().map(|last| (time_s[0] - last) / period_s);
+        if let (Some(steps), Some(&last)) = (steps, own.number.last())
+            && steps < super::train::LONGEST_MISS
+        {
+            // The click on the border of two windows may be in both.
+            let from = usize::from(steps < 0.5);
+            let steps = steps.round() as i64;
+            self.counts.missed += (steps - 1).max(0) as u64;
+            own.number.extend(number[from..].iter().map(|n| n - number[0] + last + steps));
+            own.time_s.extend_from_slice(&time_s[from..]);
+        } else {
+            self.settle();
+            self.gathered = Gathered { time_s: time_s.to_vec(), number: number.to_vec() };
+        }
+        if self.gathered.time_s.len() >= GATHERED {
+            let last = self.gathered.time_s.len() - 1;
+            let next = Gathered { time_s: vec![self.gathered.time_s[last]], number: vec![self.gathered.number[last]] };
+            self.settle();
+            self.gathered = next;
+        }
+    }
+
+    /// Moves what was gathered into the sums.
+    fn settle(&mut self) {
+        let Gathered { time_s, number } = std::mem::take(&mut self.gathered);
+        if time_s.len() < 2 {
+            return;
+        }
+        self.add_stretch(&time_s, &number);
+        self.steps += (number[number.len() - 1] - number[0]) as f64;
+        self.duration_s += time_s[time_s.len() - 1] - time_s[0];
     }
 
     /// Lists a stretch; one that begins where the last ended (the next window) goes on with it.
@@ -113,6 +155,12 @@ impl Accumulator {
     /// The figures of everything added.
     #[must_use]
     pub fn reading(&self) -> Option<Reading> {
+        let mut all = self.clone();
+        all.settle();
+        all.settled_reading()
+    }
+
+    fn settled_reading(&self) -> Option<Reading> {
         let noise_s = (self.noise_ln_sum.1 > 0.0).then(|| (self.noise_ln_sum.0 / self.noise_ln_sum.1).exp());
         let excess = if self.excess.1 > 0.0 { self.excess.0 / self.excess.1 } else { 0.0 };
         let posterior = self.grid.posterior(noise_s, excess)?;

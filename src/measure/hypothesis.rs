@@ -19,8 +19,42 @@ pub struct Hypothesis {
     pub fast: bool,
 }
 
-/// From this share of one sign on, clicks are taken as signed …
-const SIGNED: f64 = 0.93;
+/// Which periods are looked for.
+#[derive(Debug, Clone, Copy)]
+pub struct Reach {
+    /// Shortest of separate clicks, s.
+    pub shortest_s: f64,
+    /// One that is tried whatever the grid says, s.
+    pub expected_s: Option<f64>,
+}
+
+/// Candidates per shortest period that a search for slow rhythms keeps.
+const SLOW_DENSITY: f64 = 16.0;
+
+impl Reach {
+    /// All periods.
+    pub const ALL: Self = Self { shortest_s: search::SHORTEST_SLOW_S, expected_s: None };
+
+    /// Periods above one, s.
+    #[must_use]
+    pub fn slow(shortest_s: f64) -> Self {
+        Self { shortest_s: shortest_s.max(search::SHORTEST_SLOW_S), expected_s: None }
+    }
+
+    /// True if fast trains and lines are looked for too.
+    #[must_use]
+    pub fn is_all(self) -> bool {
+        self.shortest_s <= search::SHORTEST_SLOW_S
+    }
+
+    fn thinned(self, c: Candidates, duration_s: f64) -> Candidates {
+        let most = (SLOW_DENSITY * duration_s / self.shortest_s) as usize;
+        if self.is_all() || c.len() <= most { c } else { c.pick(&c.strongest(most)) }
+    }
+}
+
+/// From this share of one sign on, clicks are likely signed …
+const SIGNED: f64 = 0.8;
 /// … and from this on, nothing else is tried.
 const CERTAIN: f64 = 0.985;
 /// Maxima nearer than this are one click, s (slow trains only) …
@@ -43,14 +77,9 @@ pub fn apart_s(shape: &Shape, rate_hz: f64, period_s: f64, fast: bool) -> f64 {
     swings_s.min(APART_PERIODS * period_s).max(APART_S)
 }
 
-/// Looks for the best rhythm, also at a period that is expected; lines of the explanation are appended.
+/// Looks for the best rhythm; lines of the explanation are appended.
 #[must_use]
-pub fn best(
-    window: &Window,
-    whitened: &[f32],
-    expected_s: Option<f64>,
-    explanation: &mut Vec<String>,
-) -> Option<Hypothesis> {
+pub fn best(window: &Window, whitened: &[f32], reach: Reach, explanation: &mut Vec<String>) -> Option<Hypothesis> {
     let mut envelope: Vec<Complex32> = Vec::new();
     window.bank.apply_analytic(whitened, &window.kernel(|_| 1.0), &mut envelope);
     let look = first_look(whitened, &envelope, window.rate_hz)?;
@@ -60,16 +89,18 @@ pub fn best(
     ));
     let mut best: Option<Hypothesis> = None;
     let mut output = Vec::new();
-    for shape in shapes(&look) {
+    for (turn, shape) in shapes(&look).into_iter().enumerate() {
         candidates::matched_output(window.bank, whitened, &shape, &mut output);
         for fast in [false, true] {
-            // Nothing fast hides behind slow clicks that leave nothing over.
-            if fast && best.as_ref().is_some_and(|b| search::beyond_doubt(&b.fit)) {
-                continue;
-            }
+            let Some(search) = worth(best.as_ref(), turn, fast, reach) else { continue };
             let found =
                 candidates::find(&output, window.rate_hz, apart_s(&shape, window.rate_hz, FIRST_PERIOD_S, fast));
-            for mut fit in search::rhythms(&found, window.duration_s(), fast, expected_s) {
+            let found = reach.thinned(found, window.duration_s());
+            let fits = match search {
+                Search::Near(period_s) => search::rhythms_near(&found, window.duration_s(), period_s),
+                Search::All => search::rhythms(&found, window.duration_s(), fast, reach.shortest_s, reach.expected_s),
+            };
+            for mut fit in fits {
                 if !fit.fills_its_time() {
                     fit.evidence = fit.evidence.min(1e-3 * fit.evidence);
                 }
@@ -85,6 +116,26 @@ pub fn best(
     let whole = search::fit_whole(&best.candidates, window.duration_s(), start, DENSITY)?;
     best.fit = Fit { evidence: whole.evidence.max(best.fit.evidence), ..whole };
     Some(best)
+}
+
+/// What is searched in the candidates of one shape.
+enum Search {
+    All,
+    Near(f64),
+}
+
+/// What is worth searching, given the best so far and how many shapes were tried before. Nothing fast hides behind slow clicks that
+/// leave nothing over; and once a rhythm is proven, another shape is only asked whether it shows that rhythm better.
+fn worth(best: Option<&Hypothesis>, turn: usize, fast: bool, reach: Reach) -> Option<Search> {
+    if fast && !reach.is_all() {
+        return None;
+    }
+    let Some(best) = best else { return Some(Search::All) };
+    if search::beyond_doubt(&best.fit) || (turn > 0 && best.fit.is_proven()) {
+        let both = best.fit.period_s < search::FAST_S.1;
+        return (both || best.fast == fast).then_some(Search::Near(best.fit.period_s));
+    }
+    Some(Search::All)
 }
 
 /// Evidences nearer than this share are alike; the larger clicks then decide (natural log of the ratio): a side lobe keeps the
@@ -103,7 +154,7 @@ fn better(fit: &Fit, found: &Candidates, than: &Hypothesis) -> bool {
     if same_rhythm && (ratio - 1.0).abs() < ALIKE && larger.abs() > LARGER { larger > 0.0 } else { ratio > 1.0 }
 }
 
-/// The shapes tried: one signed shape, or both signs and an unsigned pair.
+/// The shapes tried, the likeliest first: one signed shape, or both signs and an unsigned pair.
 fn shapes(look: &FirstLook) -> Vec<Shape> {
     let share = look.positive_share.max(1.0 - look.positive_share);
     let flipped = look.positive_share < 0.5;
@@ -115,12 +166,12 @@ fn shapes(look: &FirstLook) -> Vec<Shape> {
     if share >= CERTAIN {
         return vec![signed(flipped)];
     }
-    let flipped = flipped && share > SIGNED;
-    vec![
-        signed(flipped),
-        signed(!flipped),
-        Shape { vectors: look.vectors[..2].to_vec(), centre: look.centre, signed: false },
-    ]
+    let pair = Shape { vectors: look.vectors[..2].to_vec(), centre: look.centre, signed: false };
+    if share > SIGNED {
+        vec![signed(flipped), signed(!flipped), pair]
+    } else {
+        vec![pair, signed(flipped), signed(!flipped)]
+    }
 }
 
 fn describe(fit: &Fit, shape: &Shape, fast: bool) -> String {

@@ -1,7 +1,8 @@
 //! From audio to what it says: joins [`crate::clicks`] and [`crate::rhythm`] in one streaming pass.
 //!
-//! Samples are pushed in blocks of any size; a window of at most [`WINDOW_S`] is held, analysed and forgotten, and only sums
-//! are kept. A recording shorter than a window is analysed as one piece.
+//! Samples are pushed in blocks of any size. Once a train is learnt it is followed through short windows, each analysed and
+//! forgotten; only sums are kept. A recording shorter than the first window is analysed as one piece, and so is each minute in which
+//! nothing was learnt.
 
 mod accumulate;
 mod acquire;
@@ -9,6 +10,8 @@ mod acquire;
 mod bound_tests;
 mod hypothesis;
 mod irregular;
+mod learn;
+mod model;
 mod multiples;
 mod overlap;
 mod refine;
@@ -22,10 +25,21 @@ use crate::estimate::Estimate;
 use crate::firing::Event;
 use crate::rhythm::{FiringCounts, Reading, Verdict};
 use accumulate::Accumulator;
+use acquire::Known;
+use std::ops::Range;
+use train::Train;
 use window::Window;
 
-/// Longest window, s.
-pub const WINDOW_S: f64 = 60.0;
+/// Window in which a train is first looked for, window in which a slow one or none is, and window through which a known one is
+/// followed, s.
+const FIRST_S: f64 = 12.0;
+const WHOLE_S: f64 = 60.0;
+const FOLLOW_S: f64 = 12.0;
+/// This much more is held than a window takes: no recording ends in a window too short to say anything.
+const MORE: f64 = 1.25;
+/// Audio on both sides of a followed window that is analysed with it: s at least, periods, s at most. Filters and rhythm need it; the
+/// clicks in it belong to the neighbours.
+const MARGIN_S: (f64, f64, f64) = (0.1, 4.0, 2.0);
 
 /// How to measure.
 #[derive(Debug, Clone, Default)]
@@ -50,8 +64,11 @@ pub struct Measurer {
     bank: FilterBank,
     rate_hz: f64,
     options: Options,
+    stage: Stage,
+    /// Samples held, the number of the first of them in the recording, and how many of them lie before the first not yet analysed.
     held: Vec<f32>,
     held_from: u64,
+    done: usize,
     sums: Accumulator,
     trains: usize,
     refused: Option<&'static str>,
@@ -59,6 +76,35 @@ pub struct Measurer {
     loose_time_s: f64,
     events: Vec<Event>,
     explanation: Vec<String>,
+}
+
+/// How far the search has come.
+enum Stage {
+    /// Nothing was tried yet.
+    New,
+    /// Nothing is known.
+    Searching,
+    /// A train is known.
+    Following(Known),
+}
+
+impl Stage {
+    /// Length of a window, s.
+    fn window_s(&self) -> f64 {
+        match self {
+            Self::New => FIRST_S,
+            Self::Following(known) if known.is_quick() => FOLLOW_S,
+            Self::Searching | Self::Following(_) => WHOLE_S,
+        }
+    }
+
+    /// Audio needed on both sides of a window, s.
+    fn margin_s(&self) -> f64 {
+        match self {
+            Self::Following(known) => known.periods_s(MARGIN_S.1).clamp(MARGIN_S.0, MARGIN_S.2),
+            Self::New | Self::Searching => 0.0,
+        }
+    }
 }
 
 impl Measurer {
@@ -69,8 +115,10 @@ impl Measurer {
             bank: FilterBank::new(),
             rate_hz: f64::from(sample_rate_hz.max(1)),
             options,
+            stage: Stage::New,
             held: Vec::new(),
             held_from: 0,
+            done: 0,
             sums: Accumulator::default(),
             trains: 0,
             refused: None,
@@ -83,18 +131,21 @@ impl Measurer {
 
     /// Takes mono samples in units of full scale.
     pub fn push(&mut self, mono: &[f32]) {
-        let window = (WINDOW_S * self.rate_hz) as usize;
         let mut rest = mono;
         while !rest.is_empty() {
-            // A quarter more is held than a window takes: no recording ends in a window too short to say anything.
-            let most = window + window / 4;
-            if self.held.len() == most {
-                self.analyse_held(window);
+            let most = self.done + self.samples(MORE * self.stage.window_s() + self.stage.margin_s());
+            if self.held.len() >= most {
+                self.analyse(self.samples(self.stage.window_s()));
+                continue;
             }
             let (now, later) = rest.split_at((most - self.held.len()).min(rest.len()));
             self.held.extend_from_slice(now);
             rest = later;
         }
+    }
+
+    fn samples(&self, time_s: f64) -> usize {
+        (time_s * self.rate_hz) as usize
     }
 
     /// Events found so far and not yet taken, in the order of time.
@@ -105,7 +156,10 @@ impl Measurer {
     /// Analyses what is held and gives the result.
     #[must_use]
     pub fn finish(mut self) -> Outcome {
-        self.analyse_held(self.held.len());
+        if matches!(self.stage, Stage::New) {
+            self.stage = Stage::Searching;
+        }
+        self.analyse(self.held.len() - self.done);
         let reading = match self.sums.reading() {
             Some(mut reading) if self.trains > 0 => {
                 reading.reason = reason(&reading);
@@ -117,20 +171,44 @@ impl Measurer {
         Outcome { reading, events: self.events, explanation: self.explanation }
     }
 
-    /// Analyses the first `count` samples held and forgets them.
-    fn analyse_held(&mut self, count: usize) {
+    /// Analyses the next `count` samples that are held.
+    fn analyse(&mut self, count: usize) {
         if count == 0 {
             return;
         }
-        let window = Window::new(&self.bank, &self.held[..count], self.rate_hz);
-        let from_s = self.held_from as f64 / self.rate_hz;
         let mut explanation = Vec::new();
-        match acquire::train(&window, &mut explanation) {
-            Ok(mut train) => {
-                train.shift(from_s);
-                self.sums.add(&train);
-                self.trains += 1;
-                self.events.extend(train.events(train.noise_s.unwrap_or(0.05 * train.period_s)));
+        let from_s = (self.held_from + self.done as u64) as f64 / self.rate_hz;
+        explanation.push(format!("window from {from_s:.1} s, {:.1} s long", count as f64 / self.rate_hz));
+        match &mut self.stage {
+            Stage::New => {
+                let window = Window::new(&self.bank, &self.held[..count], self.rate_hz);
+                let known = acquire::first(&window, &mut explanation);
+                self.stage = known.map_or(Stage::Searching, Stage::Following);
+            }
+            Stage::Searching => {
+                self.search(count, &mut explanation);
+                self.forget(count);
+            }
+            Stage::Following(_) => {
+                if !self.follow(count, &mut explanation) {
+                    explanation.push("the train is lost: looking anew".into());
+                    self.search(count, &mut explanation);
+                }
+                self.forget(count);
+            }
+        }
+        if self.options.explain {
+            self.explanation.append(&mut explanation);
+        }
+    }
+
+    /// Looks for a train in the next `count` samples from nothing.
+    fn search(&mut self, count: usize, explanation: &mut Vec<String>) {
+        let window = Window::new(&self.bank, &self.held[self.done..self.done + count], self.rate_hz);
+        match acquire::train(&window, explanation) {
+            Ok((train, known)) => {
+                self.stage = Stage::Following(known);
+                self.take(train, self.done, 0.0..f64::INFINITY);
             }
             Err(why) => {
                 self.refused = Some(why);
@@ -141,12 +219,36 @@ impl Measurer {
                 }
             }
         }
-        if self.options.explain {
-            self.explanation.push(format!("window from {from_s:.1} s, {:.1} s long", window.duration_s()));
-            self.explanation.append(&mut explanation);
-        }
-        self.held_from += count as u64;
-        self.held.drain(..count);
+    }
+
+    /// Follows the known train through the next `count` samples, with what is held on both sides; false if it is not there.
+    fn follow(&mut self, count: usize, explanation: &mut Vec<String>) -> bool {
+        let margin = self.samples(self.stage.margin_s());
+        let Stage::Following(known) = &mut self.stage else { return false };
+        let to = self.held.len().min(self.done + count + margin);
+        let window = Window::new(&self.bank, &self.held[..to], self.rate_hz);
+        let Some(train) = known.follow(&window, explanation) else { return false };
+        let own_s = self.done as f64 / self.rate_hz..(self.done + count) as f64 / self.rate_hz;
+        self.take(train, 0, own_s);
+        true
+    }
+
+    /// Takes the part of a train that lies within `own_s` (s from sample `at` of those held).
+    fn take(&mut self, train: Train, at: usize, own_s: Range<f64>) {
+        let Some(mut train) = train.within(&own_s) else { return };
+        train.shift((self.held_from + at as u64) as f64 / self.rate_hz);
+        self.sums.add(&train);
+        self.trains += 1;
+        self.events.extend(train.events(train.noise_s.unwrap_or(0.05 * train.period_s)));
+    }
+
+    /// Forgets `count` samples but for the margin that the next window needs.
+    fn forget(&mut self, count: usize) {
+        self.done += count;
+        let before = self.done.saturating_sub(self.samples(self.stage.margin_s()));
+        self.held_from += before as u64;
+        self.held.drain(..before);
+        self.done -= before;
     }
 }
 

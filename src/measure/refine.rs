@@ -31,7 +31,7 @@ pub struct Finder {
 /// Refines a hypothesis in place, twice, starting from the whitening of floor `floor`. Clicks at the times `foreign_s` (sorted)
 /// belong to other trains and are left to them.
 pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis, foreign_s: &[f64]) -> Finder {
-    let first = window.spectrum.whitening(FIND_HIGH_PASS_HZ, floor);
+    let first = window.spectrum().whitening(FIND_HIGH_PASS_HZ, floor);
     let half = (HALF_S.min(HALF_PERIODS * h.fit.period_s) * window.rate_hz) as usize;
     let shape = learn(whitened, &strongest_on_rhythm(h, window.rate_hz), half, h.shape.signed);
     let rest = without_clicks(whitened, h, &shape, window.rate_hz);
@@ -39,10 +39,9 @@ pub fn refine(window: &Window, whitened: &[f32], floor: f64, h: &mut Hypothesis,
     let second = noise.whitening(HIGH_PASS_HZ, FLOOR);
     let kernel = window.kernel(|f| first(f) * second(f));
     let finder = Finder { whitened: window.through(&kernel), kernel };
-    for _ in 0..2 {
-        if !again(window, &finder.whitened, h, foreign_s) {
-            break;
-        }
+    let before = h.shape.clone();
+    if again(window, &finder.whitened, h, foreign_s) && !same(&before, &h.shape) {
+        again(window, &finder.whitened, h, foreign_s);
     }
     finder
 }
@@ -65,6 +64,19 @@ fn again(window: &Window, whitened: &[f32], h: &mut Hypothesis, foreign_s: &[f64
         }
         _ => false,
     }
+}
+
+/// Match from which two shapes are the same: what would be found with the second is what was found with the first.
+const SAME: f32 = 0.98;
+
+fn same(a: &Shape, b: &Shape) -> bool {
+    let shorter = a.centre.min(b.centre);
+    let part = |s: &Shape| {
+        let mut v = s.vectors[0][s.centre - shorter..s.centre + shorter + 1].to_vec();
+        normalise(&mut v);
+        v
+    };
+    a.signed && b.signed && dot(&part(a), &part(b)) > SAME
 }
 
 fn strongest_on_rhythm(h: &Hypothesis, rate_hz: f64) -> Vec<f64> {

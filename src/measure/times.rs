@@ -8,8 +8,11 @@ use crate::clicks::timing::{Channel, Flatness, Reader, channels};
 use crate::rhythm::order::median;
 use crate::rhythm::statistics::robust;
 
-/// Clicks in a row by which channels are compared.
+/// Clicks in a row by which channels are compared, and clicks of a first look after which only those stay whose scatter is within
+/// this factor of the least.
 const TRIAL: usize = 500;
+const FIRST_TRIAL: usize = 120;
+const STAYS: f64 = 1.3;
 /// A channel must be better by this share to be preferred, and counts as near the best within this.
 const BETTER: f64 = 0.99;
 const NEAR: f64 = 1.1;
@@ -51,14 +54,14 @@ pub fn choose(window: &Window, whitened: &[f32], h: &Hypothesis, number: &[i64])
         times: start.to_vec(),
     };
     let mut tried: Vec<(f64, Vec<f64>)> = Vec::new();
-    for channel in channels(h.shape.signed) {
+    for channel in promising(window, start, numbers, h) {
         let Some((reader, times)) = read_by(window, channel, start, h) else { continue };
         let scatter = robust::scatter(&times, numbers);
         if scatter < BETTER * best.scatter {
             best = Trial {
                 scatter,
                 reader: Some((reader, channel.flatness)),
-                name: format!("{channel:?}"),
+                name: channel.to_string(),
                 times: times.clone(),
             };
         }
@@ -78,6 +81,24 @@ pub fn choose(window: &Window, whitened: &[f32], h: &Hypothesis, number: &[i64])
         noise_s: (by_noise * by_noise + between_s * between_s + LEAST_NOISE_S * LEAST_NOISE_S).sqrt(),
         channel: best.name,
     }
+}
+
+/// The channels that scatter little on a few clicks.
+fn promising(window: &Window, start: &[f64], numbers: &[i64], h: &Hypothesis) -> Vec<Channel> {
+    let all = channels(h.shape.signed);
+    if start.len() < 2 * FIRST_TRIAL {
+        return all;
+    }
+    let from = (start.len() - FIRST_TRIAL) / 2;
+    let part = from..from + FIRST_TRIAL;
+    let scatter = |channel: &Channel| {
+        let (_, times) = read_by(window, *channel, &start[part.clone()], h)?;
+        Some(robust::scatter(&times, &numbers[part.clone()]))
+    };
+    let scatters: Vec<Option<f64>> = all.iter().map(scatter).collect();
+    let least = scatters.iter().flatten().copied().fold(f64::INFINITY, f64::min);
+    let stays = |s: &Option<f64>| s.is_some_and(|s| s <= STAYS * least);
+    all.into_iter().zip(&scatters).filter(|(_, s)| stays(s)).map(|(c, _)| c).collect()
 }
 
 struct Trial {

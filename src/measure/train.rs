@@ -80,6 +80,23 @@ impl Train {
         }
     }
 
+    /// The part of the train within a range of time, s; none if that holds no click.
+    #[must_use]
+    pub fn within(mut self, range_s: &Range<f64>) -> Option<Self> {
+        let from = self.time_s.partition_point(|t| *t < range_s.start);
+        let to = self.time_s.partition_point(|t| *t < range_s.end);
+        if from >= to {
+            return None;
+        }
+        let inside = |r: &Range<usize>| r.start.clamp(from, to) - from..r.end.clamp(from, to) - from;
+        self.stretches = self.stretches.iter().map(inside).filter(|r| !r.is_empty()).collect();
+        self.time_s = self.time_s[from..to].to_vec();
+        self.number = self.number[from..to].to_vec();
+        self.size = self.size[from..to].to_vec();
+        self.extra.retain(|e| range_s.contains(&e.0));
+        Some(self)
+    }
+
     /// Moves the train by the start of its window in the recording.
     pub fn shift(&mut self, offset_s: f64) {
         self.time_s.iter_mut().for_each(|t| *t += offset_s);

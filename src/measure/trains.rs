@@ -21,6 +21,8 @@ const LARGER: f64 = 0.05;
 /// Fewest candidates left over that stand out of the noise (natural log of sigmas) for a search to be worth its time.
 const FEWEST: usize = 12;
 const STANDS_OUT: f64 = 1.6;
+/// Marks this far below that are looked at too.
+const SPREAD: f64 = 0.7;
 /// Marks this much under the train's median are its noise and ringing.
 const FAR_BELOW: f64 = 2.5;
 /// A second train needs this evidence, nats, in all and per firing, and this cover.
@@ -48,14 +50,17 @@ pub fn beside(h: &Hypothesis, duration_s: f64) -> Vec<Fit> {
 }
 
 fn best_of(c: &Candidates, rest: &[usize], duration_s: f64, typical: f64) -> Option<Fit> {
-    let part = c.pick(rest);
     let threshold = STANDS_OUT.max(typical - FAR_BELOW);
-    if part.mark.iter().filter(|m| **m > threshold).count() < FEWEST {
+    if rest.iter().filter(|&&i| c.mark[i] > threshold).count() < FEWEST {
         return None;
     }
-    let best =
-        search::rhythms(&part, duration_s, false, None).into_iter().max_by(|a, b| a.evidence.total_cmp(&b.evidence))?;
-    let fit = search::fit_among(c, rest, duration_s, Start::again(&best), DENSITY)?;
+    // A train whose median mark is above the threshold has few clicks far below it.
+    let rest: Vec<usize> = rest.iter().copied().filter(|&i| c.mark[i] > threshold - SPREAD).collect();
+    let part = c.pick(&rest);
+    let best = search::rhythms(&part, duration_s, false, search::SHORTEST_SLOW_S, None)
+        .into_iter()
+        .max_by(|a, b| a.evidence.total_cmp(&b.evidence))?;
+    let fit = search::fit_among(c, &rest, duration_s, Start::again(&best), DENSITY)?;
     let n = fit.chain.index.len() as f64;
     let sound =
         fit.evidence > EVIDENCE && fit.evidence > EVIDENCE_PER_FIRING * n && fit.cover > COVER && fit.jitter < LOOSEST;
@@ -70,13 +75,13 @@ fn left_over(taken: &[bool]) -> Vec<usize> {
 /// others' clicks, the others among what is left, then the train again among what the others leave.
 #[must_use]
 pub fn follow(c: &Candidates, duration_s: f64, lead: &Fit, others: &[Fit]) -> Option<(Fit, Vec<Fit>)> {
+    if others.is_empty() {
+        return search::fit_whole(c, duration_s, Start::onward(lead), DENSITY).map(|fit| (fit, Vec::new()));
+    }
     let between = others.iter().map(|o| o.marks.on.0).fold(f64::NEG_INFINITY, f64::max);
     let threshold = if lead.marks.on.0 - between > LARGER { 0.5 * (lead.marks.on.0 + between) } else { f64::MIN };
     let large: Vec<usize> = (0..c.len()).filter(|&i| c.mark[i] > threshold).collect();
     let first = search::fit_among(c, &large, duration_s, Start::onward(lead), DENSITY)?;
-    if others.is_empty() {
-        return Some((first, Vec::new()));
-    }
     let mut taken = vec![false; c.len()];
     claim(&mut taken, c, &first);
     let mut followed = Vec::new();

@@ -20,8 +20,7 @@ pub struct Window<'a> {
     pub x: Vec<f32>,
     /// Inner sample rate, Hz.
     pub rate_hz: f64,
-    /// Power spectrum in bins of about 90 Hz.
-    pub spectrum: Spectrum,
+    spectrum: OnceCell<Spectrum>,
     flattened: [OnceCell<Vec<f32>>; 3],
 }
 
@@ -41,8 +40,12 @@ impl<'a> Window<'a> {
     }
 
     fn of(bank: &'a FilterBank, x: Vec<f32>, rate_hz: f64) -> Self {
-        let spectrum = Spectrum::of_noise(&x, rate_hz);
-        Self { bank, x, rate_hz, spectrum, flattened: std::array::from_fn(|_| OnceCell::new()) }
+        Self { bank, x, rate_hz, spectrum: OnceCell::new(), flattened: std::array::from_fn(|_| OnceCell::new()) }
+    }
+
+    /// Power spectrum in bins of about 90 Hz; made once.
+    pub fn spectrum(&self) -> &Spectrum {
+        self.spectrum.get_or_init(|| Spectrum::of_noise(&self.x, self.rate_hz))
     }
 
     /// Duration, s.
@@ -90,7 +93,7 @@ impl<'a> Window<'a> {
     #[must_use]
     pub fn flattening(&self, flatness: Flatness) -> Kernel {
         let (high_pass_hz, floor) = flatness.settings();
-        self.kernel(self.spectrum.whitening(high_pass_hz, floor))
+        self.kernel(self.spectrum().whitening(high_pass_hz, floor))
     }
 
     /// The samples flattened for reading times; made once each.

@@ -328,9 +328,9 @@ fn evidence(
     let (rate_on, rate_off) = (n_on / duration_s, (n - n_on) / duration_s);
     let mut null = -n;
     let mut with = chain.score - off_rate * duration_s;
-    for (f_on, f_off) in binned.at(&densities.0).zip(binned.at(&densities.1)) {
-        null += (rate_on * f_on + rate_off * f_off + 1e-300).ln();
-        with += (off_rate * f_off).ln();
+    for ((count, f_on), f_off) in binned.counts().iter().zip(&densities.0).zip(&densities.1) {
+        null += count * (rate_on * f_on + rate_off * f_off + 1e-300).ln();
+        with += count * (off_rate * f_off).ln();
     }
     if steps.period.is_empty() {
         return f64::NEG_INFINITY;

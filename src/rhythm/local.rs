@@ -41,14 +41,7 @@ fn smooth_periods(period: &[f64]) -> Vec<f64> {
     let weight: Vec<f64> =
         (0..width).map(|i| 0.5 - 0.5 * (std::f64::consts::TAU * (i + 1) as f64 / (width + 1) as f64).cos()).collect();
     let total: f64 = weight.iter().sum();
-    (0..held.len())
-        .map(|i| {
-            weight
-                .iter()
-                .enumerate()
-                .map(|(j, w)| w * held[reflect(i as isize + j as isize - LOCAL_HALF as isize, held.len())])
-                .sum::<f64>()
-                / total
-        })
-        .collect()
+    let reach = LOCAL_HALF as isize;
+    let extended: Vec<f64> = (-reach..held.len() as isize + reach).map(|i| held[reflect(i, held.len())]).collect();
+    extended.windows(width).map(|near| near.iter().zip(&weight).map(|(x, w)| w * x).sum::<f64>() / total).collect()
 }

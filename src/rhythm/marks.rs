@@ -42,9 +42,12 @@ impl Binned {
         smooth(&count, total)
     }
 
-    /// Value of a density at each candidate.
-    pub fn at<'a>(&'a self, density: &'a Density) -> impl Iterator<Item = f64> + 'a {
-        self.bin.iter().map(move |&b| density[b as usize])
+    /// Number of candidates in each bin.
+    #[must_use]
+    pub fn counts(&self) -> [f64; BINS] {
+        let mut count = [0.0; BINS];
+        self.bin.iter().for_each(|&b| count[b as usize] += 1.0);
+        count
     }
 
     /// Log ratio of two densities at each candidate, held within −8..12.

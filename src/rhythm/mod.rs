@@ -14,6 +14,7 @@ pub mod presence;
 mod reading;
 pub mod search;
 pub mod statistics;
+mod unwrap;
 
 pub use reading::{FiringCounts, MainsJitter, OtherTrain, Reading, Stretch, Verdict};
 

@@ -26,10 +26,16 @@ pub fn running_median(x: &[f64], half: usize) -> Vec<f64> {
         .map(|i| {
             let middle = window[half];
             let (leaves, comes) = (at(i - reach), at(i + 1 + reach));
-            let from = window.partition_point(|v| v.total_cmp(&leaves).is_lt());
-            window.remove(from);
-            let to = window.partition_point(|v| v.total_cmp(&comes).is_lt());
-            window.insert(to, comes);
+            let from = window.partition_point(|v| *v < leaves);
+            let to = window.partition_point(|v| *v < comes);
+            // The values between the two places move by one.
+            if from < to {
+                window.copy_within(from + 1..to, from);
+                window[to - 1] = comes;
+            } else {
+                window.copy_within(to..from, to + 1);
+                window[to] = comes;
+            }
             middle
         })
         .collect()

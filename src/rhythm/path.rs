@@ -13,13 +13,14 @@
 //! −ln T and begin anew (drop-out) for `RESTART` more.
 
 use statrs::function::gamma::ln_gamma;
+use std::sync::LazyLock;
 
 /// Longest step, periods.
 pub const MOST_PERIODS: usize = 4;
 /// Cost of beginning anew after a drop-out, nats: about one false restart in 160 000 chances.
 const RESTART: f64 = 12.0;
-/// Density of a step that no jitter explains, in units of 1/T.
-const TAIL: f64 = 2e-3;
+/// Log density of a step that no jitter explains, in units of 1/T: ln 2·10⁻³.
+const LN_TAIL: f64 = -6.214_608_098_422_191;
 /// Relative jitter from which steps are taken as gamma distributed.
 pub const GAMMA_FROM: f64 = 0.12;
 /// A predecessor that cannot win even with the densest step is not looked at; this many nats of slack cover the gamma law,
@@ -49,14 +50,18 @@ pub struct Chain {
     pub steps: Vec<usize>,
 }
 
+/// The law of a step in units of the period: everything that does not depend on the two candidates is computed once.
 struct StepLaw {
-    jitter: f64,
-    ln_choice: [f64; MOST_PERIODS + 2],
-    /// −½·ln k − ln s − ln √2π of the Gaussian law.
-    gauss_const: [f64; MOST_PERIODS + 2],
-    /// −ln Γ(k/s²) of the gamma law.
-    gamma_const: [f64; MOST_PERIODS + 2],
-    ln_tail: f64,
+    /// (k − 1)·ln p_missed + ln(1 − p_missed).
+    ln_choice: [f64; MOST_PERIODS + 1],
+    /// What the density adds to that at its Gaussian peak; 1/(2·k·s²).
+    gauss_peak: [f64; MOST_PERIODS + 1],
+    gauss_curve: [f64; MOST_PERIODS + 1],
+    /// Constant of the gamma law, and its shape less one.
+    gamma_const: [f64; MOST_PERIODS + 1],
+    gamma_power: [f64; MOST_PERIODS + 1],
+    /// 1/s².
+    precision: f64,
     loose: bool,
     shortest: f64,
     /// The most that a step can add to a score, before −ln T.
@@ -65,40 +70,57 @@ struct StepLaw {
 
 impl StepLaw {
     fn new(law: Law) -> Self {
-        let mut me = Self {
-            jitter: law.jitter,
-            ln_choice: [0.0; MOST_PERIODS + 2],
-            gauss_const: [0.0; MOST_PERIODS + 2],
-            gamma_const: [0.0; MOST_PERIODS + 2],
-            ln_tail: TAIL.ln(),
+        let precision = 1.0 / (law.jitter * law.jitter);
+        let k = |k: usize| k.max(1) as f64;
+        let row = |f: &dyn Fn(f64) -> f64| std::array::from_fn(|i| f(k(i)));
+        Self {
+            ln_choice: row(&|k| (k - 1.0) * law.missed.ln() + (1.0 - law.missed).ln()),
+            gauss_peak: row(&|k| -0.5 * k.ln() - law.jitter.ln() - LN_SQRT_TAU),
+            gauss_curve: row(&|k| 0.5 * precision / k),
+            gamma_const: row(&|k| k * precision * precision.ln() - ln_gamma(k * precision)),
+            gamma_power: row(&|k| k * precision - 1.0),
+            precision,
             loose: law.jitter > GAMMA_FROM,
             shortest: (1.0 - 5.0 * law.jitter - 0.1).max(0.08),
-            hope: (-law.jitter.ln() - LN_SQRT_TAU).max(TAIL.ln()) + SLACK,
-        };
-        for k in 1..MOST_PERIODS + 2 {
-            let kf = k as f64;
-            me.ln_choice[k] = (kf - 1.0) * law.missed.ln() + (1.0 - law.missed).ln();
-            me.gauss_const[k] = -0.5 * kf.ln() - law.jitter.ln() - LN_SQRT_TAU;
-            me.gamma_const[k] = -ln_gamma(kf / (law.jitter * law.jitter));
+            hope: (-law.jitter.ln() - LN_SQRT_TAU).max(LN_TAIL) + SLACK,
         }
-        me
     }
 
-    /// Log density of a step of `length` over `k` periods of `period`.
-    fn ln_density(&self, length: f64, k: usize, period: f64, ln_period: f64) -> f64 {
-        let kf = k as f64;
-        let tail = self.ln_tail - ln_period;
+    /// Log density of a step of `ratio` periods taken for `k`, times the period.
+    #[inline]
+    fn ln_density(&self, ratio: f64, k: usize) -> f64 {
         let value = if self.loose {
-            let s2 = self.jitter * self.jitter;
-            let shape = kf / s2;
-            let x = length / (s2 * period);
-            (shape - 1.0) * x.ln() - x + self.gamma_const[k] - s2.ln() - ln_period
+            self.gamma_power[k] * ln_ratio(ratio) - ratio * self.precision + self.gamma_const[k]
         } else {
-            let z = (length - kf * period) / (self.jitter * period);
-            -0.5 * z * z / kf + self.gauss_const[k] - ln_period
+            let off = ratio - k as f64;
+            self.gauss_peak[k] - self.gauss_curve[k] * off * off
         };
-        value.max(tail)
+        value.max(LN_TAIL)
     }
+}
+
+/// Steps per unit of the table of logarithms, and its range: with straight lines between, within 7e-5 where a step is possible.
+const LN_STEPS: usize = 512;
+const LN_UNITS: usize = MOST_PERIODS + 1;
+
+/// Natural logarithm of a step's length in periods, 0.08 to 4.5.
+#[inline]
+fn ln_ratio(ratio: f64) -> f64 {
+    static TABLE: LazyLock<Vec<f64>> =
+        LazyLock::new(|| (0..=LN_STEPS * LN_UNITS + 1).map(|k| (k.max(1) as f64 / LN_STEPS as f64).ln()).collect());
+    let place = ratio * LN_STEPS as f64;
+    let k = (place as usize).min(LN_STEPS * LN_UNITS);
+    TABLE[k] + (place - k as f64) * (TABLE[k + 1] - TABLE[k])
+}
+
+/// What the search keeps of each candidate.
+#[derive(Clone, Copy)]
+struct Node {
+    time_s: f64,
+    /// Score less ln T: what it offers to a successor before the step; and the most that any up to here offers.
+    offer: f64,
+    most: f64,
+    per_s: f64,
 }
 
 /// Finds the best chain. `period_s` holds the expected period at each candidate, `gain` the gain of each.
@@ -106,94 +128,96 @@ impl StepLaw {
 pub fn best_chain(time_s: &[f64], gain: &[f64], period_s: &[f64], law: Law) -> Chain {
     let n = time_s.len();
     let step_law = StepLaw::new(law);
-    let mut score = vec![0.0f64; n];
-    let mut back = vec![(usize::MAX, 0usize); n];
-    let mut period = vec![0.0f64; n];
-    let mut ln_period = vec![0.0f64; n];
-    // The most that a predecessor offers before its step, and the most up to each: older ones that cannot win end the search.
-    let mut offer = vec![0.0f64; n];
-    let mut most = vec![f64::NEG_INFINITY; n];
-    let mut top = (f64::NEG_INFINITY, usize::MAX);
+    let mut nodes: Vec<Node> = Vec::with_capacity(n);
+    let mut back = Vec::with_capacity(n);
+    let mut top = (f64::NEG_INFINITY, NOWHERE);
+    let mut most = f64::NEG_INFINITY;
+    let (mut expected, mut ln_expected) = (f64::NAN, f64::NAN);
     for i in 0..n {
-        let expected = period_s[i];
-        let ln_expected = expected.ln();
-        let mut best = Step { score: -ln_expected, from: usize::MAX, steps: 0, period: expected };
-        if top.1 != usize::MAX && top.0 - RESTART - ln_expected > best.score {
-            best = Step { score: top.0 - RESTART - ln_expected, from: top.1, steps: 0, period: expected };
+        if period_s[i] != expected {
+            expected = period_s[i];
+            ln_expected = expected.ln();
         }
-        let limit = (MOST_PERIODS as f64 + 0.5) * expected * 1.25;
-        for j in (0..i).rev() {
-            let length = time_s[i] - time_s[j];
-            if length > limit || most[j] + step_law.hope <= best.score {
-                break;
-            }
-            if offer[j] + step_law.hope > best.score {
-                best.consider(&step_law, law.follow, j, length, score[j], period[j], ln_period[j]);
-            }
+        let mut best = Step { score: -ln_expected, from: NOWHERE, steps: 0, ratio: 0.0 };
+        if top.1 != NOWHERE && top.0 - RESTART > 0.0 {
+            best = Step { score: top.0 - RESTART - ln_expected, from: top.1, ..best };
         }
-        score[i] = best.score + gain[i];
-        back[i] = (best.from, best.steps);
-        period[i] = if law.follow > 0.0 && best.steps > 0 {
-            best.period.clamp(0.55 * expected, 1.8 * expected)
-        } else {
-            expected
-        };
-        ln_period[i] = if period[i] == expected { ln_expected } else { period[i].ln() };
-        offer[i] = score[i] - ln_period[i];
-        most[i] = if i > 0 { most[i - 1].max(offer[i]) } else { offer[i] };
-        if score[i] > top.0 {
-            top = (score[i], i);
+        best.look_back(&step_law, &nodes, time_s[i], (MOST_PERIODS as f64 + 0.5) * expected * 1.25);
+        let score = best.score + gain[i];
+        back.push((best.from, best.steps));
+        let (mut per_s, mut ln_period) = (1.0 / expected, ln_expected);
+        if law.follow > 0.0 && best.steps > 0 {
+            let before = 1.0 / nodes[best.from as usize].per_s;
+            let now = before * (1.0 + law.follow * (best.ratio / f64::from(best.steps) - 1.0));
+            let now = now.clamp(0.55 * expected, 1.8 * expected);
+            (per_s, ln_period) = (1.0 / now, now.ln());
+        }
+        let offer = score - ln_period;
+        most = f64::max(most, offer);
+        nodes.push(Node { time_s: time_s[i], offer, most, per_s });
+        if score > top.0 {
+            top = (score, i as u32);
         }
     }
     trace(&back, top)
 }
 
+/// No candidate.
+const NOWHERE: u32 = u32::MAX;
+
 struct Step {
     score: f64,
-    from: usize,
-    steps: usize,
-    period: f64,
+    from: u32,
+    steps: u32,
+    /// Length in the predecessor's periods.
+    ratio: f64,
 }
 
 impl Step {
-    #[allow(clippy::too_many_arguments, reason = "the innermost step of the search, called per pair of candidates")]
+    /// Looks at predecessors within `limit_s`, latest first, while one of them can still win.
     #[inline]
-    fn consider(
-        &mut self,
-        law: &StepLaw,
-        follow: f64,
-        from: usize,
-        length: f64,
-        score: f64,
-        period: f64,
-        ln_period: f64,
-    ) {
-        let ratio = length / period;
+    fn look_back(&mut self, law: &StepLaw, nodes: &[Node], time_s: f64, limit_s: f64) {
+        let mut needed = self.score - law.hope;
+        for (from, node) in nodes.iter().enumerate().rev() {
+            let length_s = time_s - node.time_s;
+            if length_s > limit_s || node.most <= needed {
+                break;
+            }
+            if node.offer > needed {
+                self.consider(law, from, node.offer, length_s * node.per_s);
+                needed = self.score - law.hope;
+            }
+        }
+    }
+
+    #[inline]
+    fn consider(&mut self, law: &StepLaw, from: usize, offer: f64, ratio: f64) {
         if ratio < law.shortest || ratio >= MOST_PERIODS as f64 + 0.5 {
             return;
         }
         let nearest = ((ratio + 0.5) as usize).max(1);
         let lowest = if law.loose && nearest > 1 { nearest - 1 } else { nearest };
         for k in lowest..=nearest {
-            let base = law.ln_choice[k] + score;
-            if base - ln_period + law.hope <= self.score {
+            let base = offer + law.ln_choice[k];
+            if base + law.hope <= self.score {
                 continue;
             }
-            let total = base + law.ln_density(length, k, period, ln_period);
+            let total = base + law.ln_density(ratio, k);
             if total > self.score {
-                *self = Self { score: total, from, steps: k, period: period + follow * (length / k as f64 - period) };
+                *self = Self { score: total, from: from as u32, steps: k as u32, ratio };
             }
         }
     }
 }
 
-fn trace(back: &[(usize, usize)], top: (f64, usize)) -> Chain {
+fn trace(back: &[(u32, u32)], top: (f64, u32)) -> Chain {
     let mut chain = Chain { score: top.0, ..Chain::default() };
     let mut i = top.1;
-    while i != usize::MAX {
-        chain.index.push(i);
-        chain.steps.push(back[i].1);
-        i = back[i].0;
+    while i != NOWHERE {
+        let (from, steps) = back[i as usize];
+        chain.index.push(i as usize);
+        chain.steps.push(steps as usize);
+        i = from;
     }
     chain.index.reverse();
     chain.steps.reverse();
@@ -219,7 +243,7 @@ mod tests {
                 let length = time_s[pair[1]] - time_s[pair[0]];
                 let k = ((length / period + 0.5) as usize).max(1);
                 let direct = if k <= MOST_PERIODS && length / period >= step_law.shortest {
-                    step_law.ln_choice[k] + step_law.ln_density(length, k, period, period.ln())
+                    step_law.ln_choice[k] + step_law.ln_density(length / period, k) - period.ln()
                 } else {
                     f64::NEG_INFINITY
                 };

@@ -10,6 +10,7 @@
 //!
 //! c0 and c1 are fitted by Whittle's likelihood over a grid, which gives the interval as well.
 
+use super::unwrap::unwrap;
 use crate::clicks::filter::FilterBank;
 use crate::estimate::{COVERAGE_95, Estimate};
 use realfft::RealFftPlanner;
@@ -19,6 +20,8 @@ use rustfft::num_complex::Complex32;
 const BAND: f64 = 0.12;
 /// Samples of the instantaneous frequency per band width.
 const OVERSAMPLE: f64 = 10.0;
+/// The phase is unwrapped this many times finer: where the amplitude nearly vanishes it turns fast.
+const UNWRAP: f64 = 4.0;
 /// The fit runs from this many cycles per recording to this share of the band.
 const LOWEST_CYCLES: f64 = 2.5;
 const HIGHEST: f64 = 0.9;
@@ -41,18 +44,17 @@ pub fn read(bank: &FilterBank, x: &[f32], sample_rate_hz: f64, line_hz: f64) -> 
     let kernel = bank.kernel_of_gain(sample_rate_hz, |f| (-0.5 * ((f - line_hz) / band).powi(2)).exp());
     let mut z: Vec<Complex32> = Vec::new();
     bank.apply_analytic(x, &kernel, &mut z);
-    let phase = unwrap(&z);
-    let cut = phase.len() / 25;
-    let phase = &phase[cut..phase.len().saturating_sub(cut)];
-    let stride = (sample_rate_hz / (OVERSAMPLE * band)).max(1.0) as usize;
-    let n = phase.len().saturating_sub(1) / stride;
+    let cut = z.len() / 25;
+    let stride = (sample_rate_hz / (UNWRAP * OVERSAMPLE * band)).max(1.0) as usize;
+    let phase = unwrap(&z[cut..z.len() - cut], stride, line_hz / sample_rate_hz);
+    let phase: Vec<f64> = phase.into_iter().step_by(UNWRAP as usize).collect();
+    let n = phase.len().saturating_sub(1);
     if n < 64 {
         return None;
     }
-    let step_s = stride as f64 / sample_rate_hz;
-    let rate_hz = (phase[n * stride] - phase[0]) / std::f64::consts::TAU / (n as f64 * step_s);
-    let frequency: Vec<f64> =
-        (0..n).map(|i| (phase[(i + 1) * stride] - phase[i * stride]) / (std::f64::consts::TAU * step_s)).collect();
+    let step_s = UNWRAP * stride as f64 / sample_rate_hz;
+    let rate_hz = (phase[n] - phase[0]) / std::f64::consts::TAU / (n as f64 * step_s);
+    let frequency: Vec<f64> = phase.windows(2).map(|p| (p[1] - p[0]) / (std::f64::consts::TAU * step_s)).collect();
     let period_s = 1.0 / rate_hz;
     let points = periodogram(&frequency, step_s, band);
     let scale = period_s.powi(3);
@@ -68,21 +70,6 @@ pub fn read(bank: &FilterBank, x: &[f32], sample_rate_hz: f64, line_hz: f64) -> 
         },
         rate_hz,
     })
-}
-
-fn unwrap(z: &[Complex32]) -> Vec<f64> {
-    let mut total = 0.0;
-    let mut last = 0.0f64;
-    z.iter()
-        .map(|v| {
-            let angle = f64::from(v.arg());
-            let mut step = angle - last;
-            step -= std::f64::consts::TAU * (step / std::f64::consts::TAU).round();
-            last = angle;
-            total += step;
-            total
-        })
-        .collect()
 }
 
 /// A point of the periodogram: (ν/b)², power.

@@ -15,10 +15,10 @@ pub const FAST_S: (f64, f64) = (1.0 / 4000.0, 0.7e-3);
 /// Step of the logarithmic grid.
 const GRID_STEP: f64 = 0.06;
 /// Candidates per expected firing on the grid, and in a fit.
-const GRID_DENSITY: f64 = 6.0;
+const GRID_DENSITY: f64 = 4.0;
 const FIT_DENSITY: f64 = 10.0;
 /// Length of the stretch on which a period is scored on the grid, and on which it is fitted: periods, and s at least.
-const GRID_STRETCH: (f64, f64) = (150.0, 0.35);
+const GRID_STRETCH: (f64, f64) = (100.0, 0.35);
 const FIT_STRETCH: (f64, f64) = (300.0, 0.7);
 /// Below this period the distance that maxima of noise keep looks like a rhythm, s.
 const NOISE_BELOW_S: f64 = 2e-3;
@@ -46,10 +46,11 @@ pub fn fit_among(c: &Candidates, among: &[usize], duration_s: f64, start: Start,
 }
 
 /// Fits the promising periods of one list of candidates, each on a stretch that holds enough firings; the evidence is
-/// brought to the whole duration. A period that is expected is tried too. In no order; the chains are those of the stretches.
+/// brought to the whole duration. Periods from `shortest_s` on are looked at, or those of fast trains; one that is expected is tried too. In no order; the chains
+/// are those of the stretches.
 #[must_use]
-pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, expected_s: Option<f64>) -> Vec<Fit> {
-    let (shortest, longest) = if fast { FAST_S } else { (SHORTEST_SLOW_S, LONGEST_S) };
+pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, shortest_s: f64, expected_s: Option<f64>) -> Vec<Fit> {
+    let (shortest, longest) = if fast { FAST_S } else { (shortest_s, LONGEST_S) };
     let longest = longest.min(duration_s / 4.0);
     if c.len() < 8 || longest <= shortest {
         return Vec::new();
@@ -73,10 +74,16 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, expected_s: Option<f
             found.extend(fit_all(c, duration_s, &[tight(first / 2.0), tight(first * 2.0)]));
         }
         if !strongest(&found).is_some_and(explains_nearly_all) {
-            found.extend(fit_all(c, duration_s, &loose_starts(c, duration_s)));
+            found.extend(fit_all(c, duration_s, &loose_starts(c, duration_s, shortest_s)));
         }
     }
     found
+}
+
+/// Fits of one period, its half and its double.
+#[must_use]
+pub fn rhythms_near(c: &Candidates, duration_s: f64, period_s: f64) -> Vec<Fit> {
+    fit_all(c, duration_s, &[period_s, period_s / 2.0, period_s * 2.0].map(tight))
 }
 
 /// Candidates with their indices in the order of falling marks: the strongest of any stretch are found without sorting again.
@@ -84,6 +91,9 @@ struct Ranked<'a> {
     candidates: &'a Candidates,
     order: Vec<u32>,
 }
+
+/// A stretch that holds less than one in so many of all candidates is sorted by itself.
+const SHORT_STRETCH: usize = 8;
 
 impl<'a> Ranked<'a> {
     fn new(candidates: &'a Candidates) -> Self {
@@ -95,6 +105,17 @@ impl<'a> Ranked<'a> {
 
     /// Indices of the strongest `count` of the stretch from one index up to another, strongest first.
     fn strongest(&self, from: usize, to: usize, count: usize) -> Vec<u32> {
+        if (to - from) * SHORT_STRETCH < self.order.len() {
+            let mark = &self.candidates.mark;
+            let falling = |a: &u32, b: &u32| mark[*b as usize].total_cmp(&mark[*a as usize]);
+            let mut inside: Vec<u32> = (from as u32..to as u32).collect();
+            if count < inside.len() {
+                inside.select_nth_unstable_by(count, falling);
+                inside.truncate(count);
+            }
+            inside.sort_unstable_by(falling);
+            return inside;
+        }
         let inside = self.order.iter().copied().filter(|&i| (from..to).contains(&(i as usize)));
         inside.take(count).collect()
     }
@@ -179,15 +200,23 @@ fn grid_score(c: &Ranked, range: Range<usize>, duration_s: f64, period_s: f64) -
     let threshold = mark(keep[((0.9 * expected) as usize).min(keep.len() - 1)]) + 0.7f64.ln();
     keep.sort_unstable();
     let off_rate = (keep.len() as f64 - expected).max(0.3 * expected) / duration_s;
-    let gain: Vec<f64> = keep.iter().map(|&i| (4.0 * (mark(i) - threshold)).clamp(-4.0, 3.0) - off_rate.ln()).collect();
+    let ln_off = off_rate.ln();
+    let soft: Vec<f64> = keep.iter().map(|&i| (4.0 * (mark(i) - threshold)).clamp(-4.0, 3.0)).collect();
+    let gain: Vec<f64> = soft.iter().map(|s| s - ln_off).collect();
     let time_s: Vec<f64> = keep.iter().map(|&i| c.candidates.time_s[i as usize]).collect();
     let law = Law { jitter: 0.06, missed: 0.05, follow: 0.15 };
     let chain = best_chain(&time_s, &gain, &vec![period_s; keep.len()], law);
     // Against the same candidates with the same two kinds of marks and no rhythm.
     let on = chain.index.len() as f64;
     let odds = on / duration_s / off_rate;
-    let null: f64 = gain.iter().map(|g| (1.0 + odds * (g + off_rate.ln()).exp()).ln()).sum();
-    Some(chain.score - null + on)
+    Some(chain.score - null_of_soft(&soft, odds) + on)
+}
+
+/// Σ ln(1 + odds·eᵍ) over soft gains of −4..3, each rounded to the nearest of a row of levels.
+fn null_of_soft(soft: &[f64], odds: f64) -> f64 {
+    const PER_UNIT: f64 = 16.0;
+    let levels: [f64; 113] = std::array::from_fn(|k| (odds * (k as f64 / PER_UNIT - 4.0).exp()).ln_1p());
+    soft.iter().map(|g| levels[(((g + 4.0) * PER_UNIT).round() as usize).min(112)]).sum()
 }
 
 /// The best local maxima, period and score: of each side of 2 ms a few, since noise keeps a distance at short periods and its
@@ -207,11 +236,11 @@ fn local_maxima(grid: &[(f64, f64)], fast: bool) -> Vec<(f64, f64)> {
 }
 
 /// The two best starts for trains with 15 to 40 % jitter, by short fits over a coarse row of periods.
-fn loose_starts(c: &Candidates, duration_s: f64) -> Vec<Start> {
+fn loose_starts(c: &Candidates, duration_s: f64, shortest_s: f64) -> Vec<Start> {
     let mut found: Vec<(f64, f64)> = (0..LOOSE_COUNT)
         .map(|k| LOOSE_FIRST_S * LOOSE_RATIO.powi(k as i32))
         .chain(period_of_the_clear(c, duration_s))
-        .filter(|t| *t <= duration_s / 10.0)
+        .filter(|t| (shortest_s..duration_s / 10.0).contains(t))
         .filter_map(|period_s| {
             let start = Start { period_s, jitter: 0.3, follow: 0.0, gains: FirstGains::Steep, rounds: 3 };
             let fitted = fit_stretch(c, duration_s, start, 6.0)?;

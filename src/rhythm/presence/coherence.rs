@@ -3,6 +3,7 @@
 //! has no such tie.
 
 use crate::clicks::filter::FilterBank;
+use crate::rhythm::unwrap::unwrap;
 use rustfft::FftPlanner;
 use rustfft::num_complex::{Complex32, Complex64};
 
@@ -12,6 +13,10 @@ const BAND: f64 = 0.08;
 const RANGE: (f64, f64) = (0.15, 0.4);
 /// Lowest ν, Hz.
 const LEAST_HZ: f64 = 100.0;
+/// Longest stretch looked at, s.
+const LONGEST_S: f64 = 6.0;
+/// Samples of the phase per band width.
+const FINE: f64 = 32.0;
 /// Cycles for the growth of the phase variance.
 const CYCLES: [f64; 3] = [6.0, 30.0, 60.0];
 
@@ -39,17 +44,20 @@ pub fn of_line(bank: &FilterBank, x: &[f32], rate_hz: f64, line_hz: f64) -> Opti
     let kernel = bank.kernel_of_gain(rate_hz, |f| (-0.5 * ((f - line_hz) / band).powi(2)).exp());
     let mut z: Vec<Complex32> = Vec::new();
     bank.apply_analytic(x, &kernel, &mut z);
-    let cut = z.len() / 20;
+    // The middle of a long window says what there is to say.
+    let most = (LONGEST_S * rate_hz) as usize;
+    let cut = (z.len() / 20).max(z.len().saturating_sub(most) / 2);
     let (z, x) = (&z[cut..z.len() - cut], &x[cut..x.len() - cut]);
-    let stride = ((rate_hz / (8.0 * band)) as usize).max(1);
-    let phase = unwrapped(z);
+    let fine = ((rate_hz / (FINE * band)) as usize).max(1);
+    let phase = unwrap(z, fine, line_hz / rate_hz);
+    let stride = ((rate_hz / (8.0 * band)) as usize / fine).max(1);
     let count = phase.len().saturating_sub(1) / stride;
     if count < 40 {
         return None;
     }
-    let step = stride as f64 / rate_hz * std::f64::consts::TAU;
-    let mut rates: Vec<f64> = (0..count).map(|i| (phase[(i + 1) * stride] - phase[i * stride]) / step).collect();
-    let amplitude: Vec<f64> = (0..count).map(|i| f64::from(z[i * stride].norm())).collect();
+    let step = (stride * fine) as f64 / rate_hz * std::f64::consts::TAU;
+    let rates: Vec<f64> = (0..count).map(|i| (phase[(i + 1) * stride] - phase[i * stride]) / step).collect();
+    let amplitude: Vec<f64> = (0..count).map(|i| f64::from(z[i * stride * fine].norm())).collect();
     let middle = crate::rhythm::order::median(&rates);
     let typical = crate::rhythm::order::median(&amplitude);
     let stable = rates
@@ -58,40 +66,25 @@ pub fn of_line(bank: &FilterBank, x: &[f32], rate_hz: f64, line_hz: f64) -> Opti
         .filter(|(f, a)| (**f - middle).abs() < 0.06 * line_hz && **a > 0.3 * typical)
         .count() as f64
         / count as f64;
-    rates.clear();
     let mean = amplitude.iter().sum::<f64>() / count as f64;
     let spread = (amplitude.iter().map(|a| (a - mean).powi(2)).sum::<f64>() / count as f64).sqrt();
-    let (jitter, growth) = phase_growth(&phase, rate_hz, middle);
+    let (jitter, growth) = phase_growth(&phase, rate_hz / fine as f64, middle);
     Some(LineCharacter {
         frequency_hz: middle,
         stable,
         jitter,
         growth,
         amplitude_cv: spread / mean.max(1e-30),
-        coherence: coherence(x, &phase, rate_hz, middle),
+        coherence: coherence(x, z, rate_hz, middle),
     })
-}
-
-fn unwrapped(z: &[Complex32]) -> Vec<f64> {
-    let (mut total, mut last) = (0.0f64, 0.0f64);
-    z.iter()
-        .map(|v| {
-            let angle = f64::from(v.arg());
-            let step = angle - last;
-            total += step - std::f64::consts::TAU * (step / std::f64::consts::TAU).round();
-            last = angle;
-            total
-        })
-        .collect()
 }
 
 fn phase_growth(phase: &[f64], rate_hz: f64, line_hz: f64) -> (f64, f64) {
     let slope = (phase[phase.len() - 1] - phase[0]) / (phase.len() - 1) as f64;
     let variance = |cycles: f64| {
         let lag = ((cycles / line_hz * rate_hz) as usize).clamp(1, phase.len() - 1);
-        let sum: f64 =
-            (0..phase.len() - lag).step_by(7).map(|i| (phase[i + lag] - phase[i] - slope * lag as f64).powi(2)).sum();
-        sum / (phase.len() - lag).div_ceil(7) as f64
+        let sum: f64 = (0..phase.len() - lag).map(|i| (phase[i + lag] - phase[i] - slope * lag as f64).powi(2)).sum();
+        sum / (phase.len() - lag) as f64
     };
     let v = CYCLES.map(variance);
     let early = (v[1] - v[0]).max(1e-12);
@@ -100,12 +93,14 @@ fn phase_growth(phase: &[f64], rate_hz: f64, line_hz: f64) -> (f64, f64) {
 }
 
 /// Multiple coherence of the audio at ν with the audio demodulated by the line's phase at ν and −ν, less what chance gives.
-fn coherence(x: &[f32], phase: &[f64], rate_hz: f64, line_hz: f64) -> f64 {
+fn coherence(x: &[f32], z: &[Complex32], rate_hz: f64, line_hz: f64) -> f64 {
     let length = 1usize << ((rate_hz * (24.0 / line_hz).max(0.02)).log2().round() as u32);
     if x.len() < 2 * length {
         return 0.0;
     }
-    let fft = FftPlanner::<f64>::new().plan_fft_forward(length);
+    let fft = FftPlanner::<f32>::new().plan_fft_forward(length);
+    let window: Vec<f32> =
+        (0..length).map(|i| (0.5 - 0.5 * (std::f32::consts::TAU * i as f32 / length as f32).cos()).powi(2)).collect();
     let step_hz = rate_hz / length as f64;
     let from = ((RANGE.0 * line_hz).max(LEAST_HZ) / step_hz).ceil() as usize;
     let to = (RANGE.1 * line_hz / step_hz).floor() as usize;
@@ -117,21 +112,21 @@ fn coherence(x: &[f32], phase: &[f64], rate_hz: f64, line_hz: f64) -> f64 {
     let mut gram = vec![(0.0f64, 0.0f64, Complex64::default()); bins];
     let mut cross = vec![(Complex64::default(), Complex64::default(), 0.0f64); bins];
     let mut blocks = 0usize;
-    let mut audio = vec![Complex64::default(); length];
-    let mut line = vec![Complex64::default(); length];
+    let mut audio = vec![Complex32::default(); length];
+    let mut line = vec![Complex32::default(); length];
     let mut start = 0;
     while start + length <= x.len() {
-        for i in 0..length {
-            let w = (0.5 - 0.5 * (std::f64::consts::TAU * i as f64 / length as f64).cos()).powi(2);
-            let v = f64::from(x[start + i]) * w;
-            audio[i] = Complex64::new(v, 0.0);
-            line[i] = Complex64::from_polar(v, -phase[start + i]);
+        for (i, w) in window.iter().enumerate() {
+            let (v, z) = (x[start + i] * w, z[start + i]);
+            audio[i] = Complex32::new(v, 0.0);
+            line[i] = z.conj() * (v / z.norm_sqr().max(f32::MIN_POSITIVE).sqrt());
         }
         fft.process(&mut audio);
         fft.process(&mut line);
         for b in 0..bins {
             let k = from + b;
-            let (y, p, m) = (audio[k], line[k], line[length - k].conj());
+            let double = |c: Complex32| Complex64::new(f64::from(c.re), f64::from(c.im));
+            let (y, p, m) = (double(audio[k]), double(line[k]), double(line[length - k].conj()));
             gram[b].0 += p.norm_sqr();
             gram[b].1 += m.norm_sqr();
             gram[b].2 += p.conj() * m;

@@ -56,6 +56,8 @@ const CROWDED_OFF: f64 = 0.45;
 /// Six lines with this share of the energy are tones unless clicks stand out by this factor.
 const SIX_LINES: f64 = 0.9;
 const CLEAR_OF_TONES: f64 = 1.2;
+/// So are they, however they stand out, with this share of the energy in six lines and less scatter than any gap has.
+const CHORD: (f64, f64) = (0.97, 1e-3);
 /// Clicks that stand out by less than this must not have more than this share of the energy in six lines, nor a line that is
 /// off its frequency in more than this share of the time at less than this scatter.
 const UNCLEAR: f64 = 2.0;
@@ -257,7 +259,9 @@ impl Heard {
             Some("what repeats hardly stands out of tones or a voice")
         } else if self.cover < PARTLY.0 && c.clear < PARTLY.1 && c.alike < PARTLY.2 {
             Some("a rhythm that hardly stands out holds only here and there")
-        } else if self.tones.six > SIX_LINES && c.clear < CLEAR_OF_TONES && !crowded {
+        } else if (self.tones.six > SIX_LINES && c.clear < CLEAR_OF_TONES && !crowded)
+            || (self.tones.six > CHORD.0 && self.scatter < CHORD.1)
+        {
             Some("the sound is a handful of tones")
         } else {
             None

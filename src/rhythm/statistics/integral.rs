@@ -9,53 +9,51 @@ use crate::estimate::{COVERAGE_95, Estimate};
 const NEGATIVE: f64 = 0.15;
 /// Finer memories and shares between them for the integral: as many as the posterior's width asks for, within these.
 const FINE: (usize, usize) = (8, 32);
-/// Nats below the best node within which the space between nodes is looked at, and below the best point within which points
-/// count.
+/// Nats below the best node within which the space between nodes is looked at, and below the best cell within which cells
+/// count: what lies beyond weighs a hundred-thousandth.
 const NODE_REACH: f64 = 30.0;
-const POINT_REACH: f64 = 20.0;
-/// Scales about the residual one, and their reach in standard deviations of ln s².
-const SCALES: usize = 41;
-const SCALE_REACH: f64 = 4.5;
+const CELL_REACH: f64 = 12.0;
+/// Scales about the residual one, and their reach in standard deviations of ln s²: half a standard deviation apart, where the
+/// trapezoid rule is exact to 1e-8 for a normal law.
+const SCALES: usize = 17;
+const SCALE_REACH: f64 = 4.0;
+/// Bins of a quantity's logarithm, between its extremes.
+const BINS: usize = 4096;
 /// Log standard deviation of the prior of the timing noise below and above the prediction, which is rather too high.
 const NOISE_PRIOR_LN_SD: (f64, f64) = (0.7, 0.5);
 
 impl PosteriorGrid {
-    /// Points of the posterior with their weights.
+    /// The posterior near its maximum, as weights of cells and scales.
     pub(super) fn weigh(&self, noise_s: Option<f64>) -> Weighted {
+        let ln_noise = noise_s.map(f64::ln);
         let mut cells = self.fine_cells();
         for c in &mut cells {
-            c.ln += noise_s.map_or(0.0, |n| ln_noise_prior(0.5 * (c.cell.rest() / self.freedom * c.u).ln() - n.ln()));
+            c.ln_scale = c.cell.ln_rest - self.freedom.ln();
+            c.off = ln_noise.map_or(0.0, |n| 0.5 * (c.ln_scale + c.u.ln()) - n);
+            c.ln += if ln_noise.is_some() { ln_noise_prior(c.off) } else { 0.0 };
         }
         let top = cells.iter().map(|c| c.ln).fold(f64::NEG_INFINITY, f64::max);
-        cells.retain(|c| c.ln > top - POINT_REACH);
+        cells.retain(|c| c.ln > top - CELL_REACH);
         let reach = SCALE_REACH * (2.0 / self.freedom).sqrt();
-        let scales: Vec<f64> = (0..SCALES).map(|k| reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0)).collect();
-        let mut points = Vec::with_capacity(cells.len() * SCALES);
-        for c in &cells {
-            let middle = (c.cell.rest() / self.freedom).ln();
-            let at_middle = noise_s.map_or(0.0, |n| ln_noise_prior(0.5 * (middle + c.u.ln()) - n.ln()));
-            for &d in &scales {
-                // −½(ν ln s² + S/s²) about its maximum at s² = S/ν.
-                let mut ln = c.ln - 0.5 * self.freedom * (d + (-d).exp() - 1.0);
-                if let Some(noise) = noise_s {
-                    ln += ln_noise_prior(0.5 * (middle + d + c.u.ln()) - noise.ln()) - at_middle;
-                }
-                points.push(Point {
-                    ln,
-                    scale: (middle + d).exp(),
-                    u: c.u,
-                    rho: c.rho,
-                    period_s: c.cell.period_s,
-                    period_variance: c.cell.ln_period_variance.exp(),
-                });
-            }
-        }
-        let top = points.iter().map(|p| p.ln).fold(f64::NEG_INFINITY, f64::max);
-        points.retain(|p| p.ln > top - POINT_REACH);
-        points.iter_mut().for_each(|p| p.ln = (p.ln - top).exp());
-        let total: f64 = points.iter().map(|p| p.ln).sum();
-        points.iter_mut().for_each(|p| p.ln /= total);
-        Weighted { points }
+        let step: [f64; SCALES] = std::array::from_fn(|k| reach * (2.0 * k as f64 / (SCALES - 1) as f64 - 1.0));
+        // −½(ν ln s² + S/s²) about its maximum at s² = S/ν.
+        let ln_likelihood = step.map(|d| -0.5 * self.freedom * (d + (-d).exp() - 1.0));
+        let mut weights: Vec<[f64; SCALES]> = cells
+            .iter()
+            .map(|c| {
+                std::array::from_fn(|k| {
+                    let prior = if ln_noise.is_some() {
+                        ln_noise_prior(c.off + 0.5 * step[k]) - ln_noise_prior(c.off)
+                    } else {
+                        0.0
+                    };
+                    (c.ln - top + ln_likelihood[k] + prior).exp()
+                })
+            })
+            .collect();
+        let total: f64 = weights.iter().flatten().sum();
+        weights.iter_mut().flatten().for_each(|w| *w /= total);
+        Weighted { cells, step, weights }
     }
 
     /// The cells of a finer grid near the maximum, each with the log of its profile likelihood and prior (of memory and share).
@@ -76,7 +74,7 @@ impl PosteriorGrid {
             let best = (0..MEMORIES).max_by(|&a, &b| value[a].total_cmp(&value[b])).unwrap_or(NONE);
             let mut push = |place: f64, weight: f64, cell: LnCell| {
                 let ln = profile(&cell) + weight.ln() + 0.5 * (u * (1.0 - u)).ln();
-                cells.push(FineCell { ln, u, rho: memory(place), cell });
+                cells.push(FineCell { ln, u, rho: memory(place), ln_scale: 0.0, off: 0.0, cell });
             };
             if let Some(cell) = column[NONE] {
                 push(NONE as f64, 0.5, cell);
@@ -139,12 +137,6 @@ struct LnCell {
     ln_period_variance: f64,
 }
 
-impl LnCell {
-    fn rest(&self) -> f64 {
-        self.ln_rest.exp()
-    }
-}
-
 impl Cell {
     fn ln(&self) -> Option<LnCell> {
         self.live.then(|| LnCell {
@@ -158,46 +150,60 @@ impl Cell {
 
 /// A cell of the finer grid.
 struct FineCell {
+    /// Log of its profile likelihood and prior.
     ln: f64,
     u: f64,
     rho: f64,
+    /// ln s² of the residual sum.
+    ln_scale: f64,
+    /// Log of its timing noise over the predicted one.
+    off: f64,
     cell: LnCell,
 }
 
-/// A point of the posterior.
-struct Point {
-    /// Log weight, then weight.
-    ln: f64,
-    scale: f64,
-    u: f64,
-    rho: f64,
-    period_s: f64,
-    period_variance: f64,
-}
-
-/// The posterior as weighted points.
+/// The posterior: the weight of each cell at each scale.
 pub(super) struct Weighted {
-    points: Vec<Point>,
+    cells: Vec<FineCell>,
+    step: [f64; SCALES],
+    weights: Vec<[f64; SCALES]>,
 }
 
 impl Weighted {
-    fn mean(&self, f: impl Fn(&Point) -> f64) -> f64 {
-        self.points.iter().map(|p| p.ln * f(p)).sum()
+    /// Mean of a quantity of the cell and of s².
+    fn mean(&self, f: impl Fn(&FineCell, f64) -> f64) -> f64 {
+        let factor = self.step.map(f64::exp);
+        self.cells
+            .iter()
+            .zip(&self.weights)
+            .map(|(c, w)| {
+                let scale = c.ln_scale.exp();
+                w.iter().zip(&factor).map(|(w, d)| w * f(c, scale * d)).sum::<f64>()
+            })
+            .sum()
     }
 
-    /// Median and central 95 % of a positive quantity; the standard uncertainty is a quarter of the interval on its log scale.
-    fn quantiles(&self, f: impl Fn(&Point) -> f64, widen: f64) -> Estimate {
-        let mut pairs: Vec<(f64, f64)> = self.points.iter().map(|p| (f(p), p.ln)).collect();
-        pairs.sort_by(|a, b| a.0.total_cmp(&b.0));
+    /// Median and central 95 % of a standard deviation whose square is s² times a factor of the cell, given by its logarithm;
+    /// the standard uncertainty is a quarter of the interval.
+    fn quantiles(&self, ln_factor: impl Fn(&FineCell) -> f64, widen: f64) -> Estimate {
+        let middle: Vec<f64> = self.cells.iter().map(|c| c.ln_scale + ln_factor(c)).collect();
+        let low = middle.iter().copied().fold(f64::INFINITY, f64::min) + self.step[0];
+        let high = middle.iter().copied().fold(f64::NEG_INFINITY, f64::max) + self.step[SCALES - 1];
+        let per_bin = ((high - low) / BINS as f64).max(1e-12);
+        let mut sums = vec![0.0f64; BINS + 1];
+        for (m, weights) in middle.iter().zip(&self.weights) {
+            for (d, w) in self.step.iter().zip(weights) {
+                sums[(((m + d - low) / per_bin) as usize).min(BINS)] += w;
+            }
+        }
         let at = |q: f64| {
             let mut sum = 0.0;
-            for &(x, w) in &pairs {
+            for (bin, w) in sums.iter().enumerate() {
                 if sum + w >= q {
-                    return x;
+                    return (0.5 * (low + per_bin * (bin as f64 + (q - sum) / w))).exp();
                 }
                 sum += w;
             }
-            pairs[pairs.len() - 1].0
+            (0.5 * high).exp()
         };
         let value = at(0.5).max(1e-15);
         let low = value * (at(0.025).max(1e-15) / value).powf(widen);
@@ -208,16 +214,17 @@ impl Weighted {
     /// Figures of the posterior.
     pub(super) fn summary(&self, freedom: f64, excess: f64) -> Posterior {
         let widen = (1.0 + 0.5 * excess.max(0.0)).sqrt();
-        let period = self.mean(|p| p.period_s);
-        let variance = self.mean(|p| p.scale * p.period_variance + (p.period_s - period).powi(2));
+        let period = self.mean(|c, _| c.cell.period_s);
+        let variance =
+            self.mean(|c, scale| scale * c.cell.ln_period_variance.exp() + (c.cell.period_s - period).powi(2));
         Posterior {
-            jitter_s: self.quantiles(|p| (p.scale * (1.0 - p.u)).sqrt(), widen),
-            timing_noise_s: self.quantiles(|p| (p.scale * p.u).sqrt(), 1.0),
-            cycle_jitter_s: self.quantiles(|p| (2.0 * (1.0 - p.rho) * p.scale * (1.0 - p.u)).sqrt(), widen),
-            memory: self.mean(|p| p.rho),
-            memory_probability: self.mean(|p| if p.rho == 0.0 { 0.0 } else { 1.0 }),
+            jitter_s: self.quantiles(|c| (1.0 - c.u).ln(), widen),
+            timing_noise_s: self.quantiles(|c| c.u.ln(), 1.0),
+            cycle_jitter_s: self.quantiles(|c| (2.0 * (1.0 - c.rho) * (1.0 - c.u)).ln(), widen),
+            memory: self.mean(|c, _| c.rho),
+            memory_probability: self.mean(|c, _| if c.rho == 0.0 { 0.0 } else { 1.0 }),
             period_s: (period, variance.sqrt()),
-            long_run_variance_s2: self.mean(|p| p.scale * (1.0 - p.u) * (1.0 + p.rho) / (1.0 - p.rho)),
+            long_run_variance_s2: self.mean(|c, scale| scale * (1.0 - c.u) * (1.0 + c.rho) / (1.0 - c.rho)),
             freedom,
         }
     }

@@ -6,7 +6,7 @@
 //! predicts, and holds half its weight at no memory. The whole posterior is used, not its maximum: near σ_e ≫ σ_T or with
 //! memory under timing noise the maximum is lucky and its curvature says nothing.
 
-use super::whiten::Block;
+use super::whiten::{Block, LANES, Pass};
 use crate::estimate::Estimate;
 
 /// Memories on the grid: artanh ρ from −0.6 in equal steps (ρ from −0.54 to 0.976).
@@ -80,6 +80,14 @@ pub(super) fn memory(i: f64) -> f64 {
     if i == NONE as f64 { 0.0 } else { (MEMORY_STEP * (i - NONE as f64)).tanh() }
 }
 
+/// A pass for each of a row of shares.
+fn passes<'a>(block: &'a Block, shares: &'a [f64], rho: f64) -> impl Iterator<Item = Pass> + 'a {
+    shares.chunks(LANES).flat_map(move |chunk| {
+        let lanes = std::array::from_fn(|l| chunk[l.min(chunk.len() - 1)]);
+        block.passes(lanes, [rho; LANES]).into_iter().take(chunk.len())
+    })
+}
+
 impl PosteriorGrid {
     /// Adds a block: click times (s) with firing numbers, ascending. Blocks of under five clicks say nothing and are left out.
     pub fn add(&mut self, time_s: &[f64], number: &[i64]) {
@@ -91,12 +99,10 @@ impl PosteriorGrid {
             self.screen(&block);
         }
         for r in 0..MEMORIES {
-            for s in 0..SHARES {
-                let cell = &mut self.cells[r * SHARES + s];
-                if !cell.live {
-                    continue;
-                }
-                let pass = block.pass(share(s as f64), memory(r as f64));
+            let live: Vec<usize> = (r * SHARES..(r + 1) * SHARES).filter(|&c| self.cells[c].live).collect();
+            let shares: Vec<f64> = live.iter().map(|c| share((c - r * SHARES) as f64)).collect();
+            for (&c, pass) in live.iter().zip(passes(&block, &shares, memory(r as f64))) {
+                let cell = &mut self.cells[c];
                 cell.rest += pass.rest;
                 cell.ln_det += pass.ln_det;
                 cell.period_s = pass.beta[0] / block.span;
@@ -109,13 +115,10 @@ impl PosteriorGrid {
 
     /// Rules out cells that lie far below the best on a coarse grid: most of the time goes where something is to be told.
     fn screen(&mut self, block: &Block) {
-        let coarse: Vec<usize> = (0..SHARES).step_by(SCREEN_STEP).collect();
-        let ln = |rho: f64, s: usize| {
-            let pass = block.pass(share(s as f64), rho);
-            -0.5 * (block.freedom() * pass.rest.ln() + pass.ln_det)
-        };
+        let coarse: Vec<f64> = (0..SHARES).step_by(SCREEN_STEP).map(|s| share(s as f64)).collect();
+        let ln = |pass: Pass| -0.5 * (block.freedom() * pass.rest.ln() + pass.ln_det);
         let table: Vec<Vec<f64>> =
-            (0..MEMORIES).map(|r| coarse.iter().map(|&s| ln(memory(r as f64), s)).collect()).collect();
+            (0..MEMORIES).map(|r| passes(block, &coarse, memory(r as f64)).map(ln).collect()).collect();
         let top = table.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max);
         for r in 0..MEMORIES {
             for s in 0..SHARES {

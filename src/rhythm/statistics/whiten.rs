@@ -51,112 +51,149 @@ impl Block {
     }
 
     /// One pass for a share `u` = σ_e²/(σ_e² + σ_T²) and memory `rho`.
+    #[cfg(test)]
     #[must_use]
     pub fn pass(&self, u: f64, rho: f64) -> Pass {
+        self.passes([u; LANES], [rho; LANES])[0]
+    }
+
+    /// Passes for several pairs of share and memory side by side: each step waits for the one before, so that one pair alone
+    /// would leave most of the processor idle.
+    #[must_use]
+    pub fn passes(&self, u: [f64; LANES], rho: [f64; LANES]) -> [Pass; LANES] {
         let mut sums = Sums::default();
-        let mut ln_f = 0.0;
-        if rho == 0.0 {
+        let mut ln_f = [0.0; LANES];
+        if rho == [0.0; LANES] {
             self.filter_white(u, &mut sums, &mut ln_f);
         } else {
             self.filter_memory(u, rho, &mut sums, &mut ln_f);
         }
-        sums.solve(ln_f)
+        std::array::from_fn(|l| sums.solve(l, ln_f[l]))
     }
 
     /// Without memory one state is enough: a missed firing only adds variance.
-    fn filter_white(&self, u: f64, sums: &mut Sums, ln_f: &mut f64) {
-        let q = 1.0 - u;
-        let mut s = self.rows[0];
+    fn filter_white(&self, u: Lanes, sums: &mut Sums, ln_f: &mut Lanes) {
+        let mut s: [Lanes; COLUMNS] = self.rows[0].map(|v| [v; LANES]);
         let mut p = u;
-        let mut product = 1.0f64;
+        let mut product = [1.0; LANES];
         for (row, &steps) in self.rows[1..].iter().zip(&self.steps) {
-            p += f64::from(steps) * q;
-            let f = p + u;
-            let inv = 1.0 / f;
-            product *= f;
-            if !(1e-200..1e200).contains(&product) {
-                *ln_f += product.ln();
-                product = 1.0;
+            let steps = f64::from(steps);
+            let mut inv = [0.0; LANES];
+            for l in 0..LANES {
+                p[l] += steps * (1.0 - u[l]);
+                let f = p[l] + u[l];
+                inv[l] = 1.0 / f;
+                product[l] *= f;
             }
-            let gain = p * inv;
-            let v = [row[0] - s[0], row[1] - s[1], row[2] - s[2]];
-            sums.add(&v, inv);
-            for (state, v) in s.iter_mut().zip(&v) {
-                *state += gain * v;
-            }
-            p = u * gain;
-        }
-        *ln_f += product.ln();
-    }
-
-    fn filter_memory(&self, u: f64, rho: f64, sums: &mut Sums, ln_f: &mut f64) {
-        let q = (1.0 - rho * rho) * (1.0 - u);
-        let mut s = self.rows[0];
-        let mut a = [0.0; COLUMNS];
-        let (mut pss, mut psa, mut paa) = (u, 0.0, 1.0 - u);
-        let mut product = 1.0f64;
-        for (row, &steps) in self.rows[1..].iter().zip(&self.steps) {
-            for _ in 0..steps {
-                let next_aa = rho * rho * paa + q;
-                let next_sa = rho * psa + next_aa;
-                pss += 2.0 * rho * psa + next_aa;
-                psa = next_sa;
-                paa = next_aa;
-                for c in 0..COLUMNS {
-                    a[c] *= rho;
-                    s[c] += a[c];
+            take_logs(&mut product, ln_f);
+            let mut v = [[0.0; LANES]; COLUMNS];
+            for c in 0..COLUMNS {
+                for l in 0..LANES {
+                    v[c][l] = row[c] - s[c][l];
+                    s[c][l] += p[l] * inv[l] * v[c][l];
                 }
             }
-            let f = pss + u;
-            let inv = 1.0 / f;
-            product *= f;
-            if !(1e-200..1e200).contains(&product) {
-                *ln_f += product.ln();
-                product = 1.0;
+            for l in 0..LANES {
+                p[l] *= u[l] * inv[l];
             }
-            let (k_s, k_a) = (pss * inv, psa * inv);
-            let v = [row[0] - s[0], row[1] - s[1], row[2] - s[2]];
-            sums.add(&v, inv);
-            for c in 0..COLUMNS {
-                s[c] += k_s * v[c];
-                a[c] += k_a * v[c];
-            }
-            paa -= k_a * psa;
-            psa -= k_a * pss;
-            pss -= k_s * pss;
+            sums.add(&v, &inv);
         }
-        *ln_f += product.ln();
+        add_logs(&product, ln_f);
     }
+
+    fn filter_memory(&self, u: Lanes, rho: Lanes, sums: &mut Sums, ln_f: &mut Lanes) {
+        let q: Lanes = std::array::from_fn(|l| (1.0 - rho[l] * rho[l]) * (1.0 - u[l]));
+        let mut s: [Lanes; COLUMNS] = self.rows[0].map(|v| [v; LANES]);
+        let mut a = [[0.0; LANES]; COLUMNS];
+        let (mut pss, mut psa, mut paa): (Lanes, Lanes, Lanes) = (u, [0.0; LANES], u.map(|u| 1.0 - u));
+        let mut product = [1.0; LANES];
+        for (row, &steps) in self.rows[1..].iter().zip(&self.steps) {
+            for _ in 0..steps {
+                for l in 0..LANES {
+                    let next_aa = rho[l] * rho[l] * paa[l] + q[l];
+                    let next_sa = rho[l] * psa[l] + next_aa;
+                    pss[l] += 2.0 * rho[l] * psa[l] + next_aa;
+                    psa[l] = next_sa;
+                    paa[l] = next_aa;
+                }
+                for c in 0..COLUMNS {
+                    for l in 0..LANES {
+                        a[c][l] *= rho[l];
+                        s[c][l] += a[c][l];
+                    }
+                }
+            }
+            let mut inv = [0.0; LANES];
+            for l in 0..LANES {
+                let f = pss[l] + u[l];
+                inv[l] = 1.0 / f;
+                product[l] *= f;
+            }
+            take_logs(&mut product, ln_f);
+            let mut v = [[0.0; LANES]; COLUMNS];
+            for c in 0..COLUMNS {
+                for l in 0..LANES {
+                    v[c][l] = row[c] - s[c][l];
+                    s[c][l] += pss[l] * inv[l] * v[c][l];
+                    a[c][l] += psa[l] * inv[l] * v[c][l];
+                }
+            }
+            for l in 0..LANES {
+                paa[l] -= psa[l] * inv[l] * psa[l];
+                psa[l] -= psa[l] * inv[l] * pss[l];
+                pss[l] -= pss[l] * inv[l] * pss[l];
+            }
+            sums.add(&v, &inv);
+        }
+        add_logs(&product, ln_f);
+    }
+}
+
+/// Passes computed side by side.
+pub const LANES: usize = 4;
+type Lanes = [f64; LANES];
+
+/// Takes the logarithm of products before they leave the range of numbers.
+#[inline]
+fn take_logs(product: &mut Lanes, ln_f: &mut Lanes) {
+    if product.iter().any(|p| !(1e-200..1e200).contains(p)) {
+        add_logs(product, ln_f);
+        *product = [1.0; LANES];
+    }
+}
+
+fn add_logs(product: &Lanes, ln_f: &mut Lanes) {
+    ln_f.iter_mut().zip(product).for_each(|(ln, p)| *ln += p.ln());
 }
 
 /// Sums of products of the whitened columns.
 #[derive(Default)]
 struct Sums {
-    yy: f64,
-    xy: [f64; 2],
-    xx: [f64; 3],
+    yy: Lanes,
+    xy: [Lanes; 2],
+    xx: [Lanes; 3],
 }
 
 impl Sums {
     #[inline]
-    fn add(&mut self, v: &[f64; COLUMNS], inv: f64) {
-        let w = [v[0] * inv, v[1] * inv, v[2] * inv];
-        self.yy += w[0] * v[0];
-        self.xy[0] += w[0] * v[1];
-        self.xy[1] += w[0] * v[2];
-        self.xx[0] += w[1] * v[1];
-        self.xx[1] += w[1] * v[2];
-        self.xx[2] += w[2] * v[2];
+    fn add(&mut self, v: &[Lanes; COLUMNS], inv: &Lanes) {
+        for l in 0..LANES {
+            let w = [v[0][l] * inv[l], v[1][l] * inv[l], v[2][l] * inv[l]];
+            self.yy[l] += w[0] * v[0][l];
+            self.xy[0][l] += w[0] * v[1][l];
+            self.xy[1][l] += w[0] * v[2][l];
+            self.xx[0][l] += w[1] * v[1][l];
+            self.xx[1][l] += w[1] * v[2][l];
+            self.xx[2][l] += w[2] * v[2][l];
+        }
     }
 
-    fn solve(&self, ln_f: f64) -> Pass {
-        let det = (self.xx[0] * self.xx[2] - self.xx[1] * self.xx[1]).max(1e-300);
-        let beta = [
-            (self.xx[2] * self.xy[0] - self.xx[1] * self.xy[1]) / det,
-            (self.xx[0] * self.xy[1] - self.xx[1] * self.xy[0]) / det,
-        ];
-        let rest = (self.yy - beta[0] * self.xy[0] - beta[1] * self.xy[1]).max(1e-300);
-        Pass { rest, ln_det: ln_f + det.ln(), beta, mean_variance: self.xx[2] / det }
+    fn solve(&self, l: usize, ln_f: f64) -> Pass {
+        let (yy, xy, xx) = (self.yy[l], self.xy.map(|v| v[l]), self.xx.map(|v| v[l]));
+        let det = (xx[0] * xx[2] - xx[1] * xx[1]).max(1e-300);
+        let beta = [(xx[2] * xy[0] - xx[1] * xy[1]) / det, (xx[0] * xy[1] - xx[1] * xy[0]) / det];
+        let rest = (yy - beta[0] * xy[0] - beta[1] * xy[1]).max(1e-300);
+        Pass { rest, ln_det: ln_f + det.ln(), beta, mean_variance: xx[2] / det }
     }
 }
 
@@ -199,9 +236,9 @@ mod tests {
         let mut sums = Sums::default();
         let (y, a, b) = (solve(0), solve(1), solve(2));
         for i in 0..n {
-            sums.add(&[y[i], a[i], b[i]], 1.0);
+            sums.add(&[[y[i]; LANES], [a[i]; LANES], [b[i]; LANES]], &[1.0; LANES]);
         }
-        let pass = sums.solve(l.iter().enumerate().map(|(i, r)| 2.0 * r[i].ln()).sum());
+        let pass = sums.solve(0, l.iter().enumerate().map(|(i, r)| 2.0 * r[i].ln()).sum());
         (pass.rest, pass.ln_det)
     }
 
