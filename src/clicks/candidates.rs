@@ -124,19 +124,24 @@ const SIDE_LOBE: (f32, f64) = (1.25, 0.4e-3);
 #[must_use]
 pub fn find(output: &[f32], rate_hz: f64, apart_s: f64) -> Candidates {
     let scale = robust_sd(output) + 1e-12;
-    let top = output.iter().copied().fold(0.0f32, f32::max);
-    let floor = 1e-9 * top;
     let reach = (apart_s * rate_hz) as usize;
     let lobe_reach = (SIDE_LOBE.1.max(apart_s) * rate_hz) as usize;
-    let mut found: Vec<(f64, f32)> = Vec::new();
-    for i in 1..output.len().saturating_sub(1) {
+    let turns = Turns::of(output);
+    let mut found: Vec<(f64, f32)> = Vec::with_capacity(turns.tops.len());
+    let (mut near, mut about) = (0, 0);
+    for &top in &turns.tops {
+        let i = top as usize;
+        if reach > 1 {
+            let (first, last) = (i.saturating_sub(reach), (i + reach).min(output.len() - 1));
+            if !is_largest(output, &turns.tops, &mut near, i, (first, last)) {
+                continue;
+            }
+            let (first, last) = (i.saturating_sub(lobe_reach), (i + lobe_reach).min(output.len() - 1));
+            if is_side_lobe(output, &turns.dips, &mut about, i, (first, last)) {
+                continue;
+            }
+        }
         let (a, b, c) = (output[i - 1], output[i], output[i + 1]);
-        if !(b > a && b >= c && b > floor) {
-            continue;
-        }
-        if reach > 1 && !stands_alone(output, i, reach, lobe_reach) {
-            continue;
-        }
         let bend = a - 2.0 * b + c;
         let shift = if bend < 0.0 { 0.5 * (a - c) / bend } else { 0.0 };
         found.push(((i as f64 + f64::from(shift)) / rate_hz, b - 0.25 * (a - c) * shift));
@@ -149,15 +154,47 @@ pub fn find(output: &[f32], rate_hz: f64, apart_s: f64) -> Candidates {
     }
 }
 
-/// True if the maximum at `i` is the largest within ± `reach` and no side lobe of a swing the other way within ± `lobe_reach`.
-#[inline]
-fn stands_alone(output: &[f32], i: usize, reach: usize, lobe_reach: usize) -> bool {
-    let b = output[i];
-    let near = &output[i.saturating_sub(reach)..(i + reach + 1).min(output.len())];
-    let about = &output[i.saturating_sub(lobe_reach)..(i + lobe_reach + 1).min(output.len())];
-    // Folds without a way out early, so that the compiler may use vector registers.
-    near.iter().fold(0.0f32, |m, &v| if v > m { v } else { m }) <= b * 1.0001
-        && about.iter().fold(0.0f32, |m, &v| if v < m { v } else { m }) >= -b * SIDE_LOBE.0
+/// Places of the positive local maxima and of the negative local minima: what is extreme in any range lies on one of them or at the
+/// range's ends.
+struct Turns {
+    tops: Vec<u32>,
+    dips: Vec<u32>,
+}
+
+impl Turns {
+    fn of(x: &[f32]) -> Self {
+        let floor = 1e-9 * x.iter().fold(0.0f32, |m, &v| if v > m { v } else { m });
+        let (mut tops, mut dips) = (Vec::with_capacity(x.len() / 6), Vec::with_capacity(x.len() / 6));
+        for (i, w) in x.windows(3).enumerate() {
+            let (a, b, c) = (w[0], w[1], w[2]);
+            if b > a && b >= c {
+                if b > floor {
+                    tops.push(i as u32 + 1);
+                }
+            } else if b < a && b <= c && b < 0.0 {
+                dips.push(i as u32 + 1);
+            }
+        }
+        Self { tops, dips }
+    }
+}
+
+/// The places of `all` within a range; `from` remembers where the last range began.
+fn within<'a>(all: &'a [u32], from: &mut usize, (first, last): (usize, usize)) -> impl Iterator<Item = usize> + 'a {
+    while *from < all.len() && (all[*from] as usize) < first {
+        *from += 1;
+    }
+    all[*from..].iter().map(|&i| i as usize).take_while(move |&i| i <= last)
+}
+
+fn is_largest(x: &[f32], tops: &[u32], from: &mut usize, i: usize, range: (usize, usize)) -> bool {
+    let most = x[i] * 1.0001;
+    x[range.0] <= most && x[range.1] <= most && within(tops, from, range).all(|k| x[k] <= most)
+}
+
+fn is_side_lobe(x: &[f32], dips: &[u32], from: &mut usize, i: usize, range: (usize, usize)) -> bool {
+    let least = -x[i] * SIDE_LOBE.0;
+    x[range.0] < least || x[range.1] < least || within(dips, from, range).any(|k| x[k] < least)
 }
 
 fn keep_strongest(found: &mut Vec<(f64, f32)>, most: usize) {

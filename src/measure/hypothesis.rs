@@ -2,7 +2,8 @@
 
 use super::window::Window;
 use crate::clicks::candidates::{self, Candidates};
-use crate::clicks::shape::{FirstLook, Shape, first_look};
+use crate::clicks::shape::{FirstLook, Shape, first_look, pieces};
+use crate::clicks::snippet::dot;
 use crate::rhythm::fit::{Fit, Start};
 use crate::rhythm::search;
 use rustfft::num_complex::Complex32;
@@ -65,7 +66,7 @@ const APART_PERIODS: f64 = 0.35;
 /// The period taken for that before one is known, s.
 const FIRST_PERIOD_S: f64 = 1e-3;
 /// Candidates per expected firing when the best is fitted to all of the window.
-pub const DENSITY: f64 = 14.0;
+pub const DENSITY: f64 = 8.0;
 
 /// How far apart clicks of a shape are told apart, s; `fast` trains of overlapping clicks take every maximum.
 #[must_use]
@@ -90,6 +91,9 @@ pub fn best(window: &Window, whitened: &[f32], reach: Reach, explanation: &mut V
     let mut best: Option<Hypothesis> = None;
     let mut output = Vec::new();
     for (turn, shape) in shapes(&look).into_iter().enumerate() {
+        if best.as_ref().is_some_and(|b| rules_out(b, &shape, whitened, window.rate_hz)) {
+            continue;
+        }
         candidates::matched_output(window.bank, whitened, &shape, &mut output);
         for fast in [false, true] {
             let Some(search) = worth(best.as_ref(), turn, fast, reach) else { continue };
@@ -136,6 +140,25 @@ fn worth(best: Option<&Hypothesis>, turn: usize, fast: bool, reach: Reach) -> Op
         return (both || best.fast == fast).then_some(Search::Near(best.fit.period_s));
     }
     Some(Search::All)
+}
+
+/// Clicks looked at for their sign, at most and at least: of fewer the shapes are those of noise.
+const SIGNS: (usize, usize) = (200, 100);
+
+/// True if a proven rhythm of unsigned clicks shows that a sign is not that of the clicks: then one sign shows the rhythm no better.
+fn rules_out(best: &Hypothesis, shape: &Shape, whitened: &[f32], rate_hz: f64) -> bool {
+    if best.shape.signed || !shape.signed || !best.fit.is_proven() || best.shape.centre != shape.centre {
+        return false;
+    }
+    let times = best.fit.times_s(&best.candidates);
+    if times.len() < SIGNS.1 {
+        return false;
+    }
+    let stride = times.len().div_ceil(SIGNS.0);
+    let positions: Vec<f64> = times.iter().step_by(stride).map(|t| t * rate_hz).collect();
+    let rows = pieces(whitened, &positions, shape.centre);
+    let agree = rows.iter().filter(|row| dot(row, &shape.vectors[0]) > 0.0).count();
+    (agree as f64) < SIGNED * rows.len() as f64
 }
 
 /// Evidences nearer than this share are alike; the larger clicks then decide (natural log of the ratio): a side lobe keeps the

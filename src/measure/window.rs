@@ -21,7 +21,7 @@ pub struct Window<'a> {
     /// Inner sample rate, Hz.
     pub rate_hz: f64,
     spectrum: OnceCell<Spectrum>,
-    flattened: [OnceCell<Vec<f32>>; 3],
+    flattened: OnceCell<Vec<Vec<f32>>>,
 }
 
 impl<'a> Window<'a> {
@@ -40,7 +40,7 @@ impl<'a> Window<'a> {
     }
 
     fn of(bank: &'a FilterBank, x: Vec<f32>, rate_hz: f64) -> Self {
-        Self { bank, x, rate_hz, spectrum: OnceCell::new(), flattened: std::array::from_fn(|_| OnceCell::new()) }
+        Self { bank, x, rate_hz, spectrum: OnceCell::new(), flattened: OnceCell::new() }
     }
 
     /// Power spectrum in bins of about 90 Hz; made once.
@@ -96,9 +96,13 @@ impl<'a> Window<'a> {
         self.kernel(self.spectrum().whitening(high_pass_hz, floor))
     }
 
-    /// The samples flattened for reading times; made once each.
+    /// The samples flattened for reading times; all flattenings are made together, once.
     pub fn flat(&self, flatness: Flatness) -> &[f32] {
-        self.flattened[flatness as usize].get_or_init(|| self.through(&self.flattening(flatness)))
+        let all = self.flattened.get_or_init(|| {
+            let kernels = Flatness::ALL.map(|flatness| self.flattening(flatness));
+            self.bank.apply_all(&self.x, &kernels.each_ref())
+        });
+        &all[flatness as usize]
     }
 }
 

@@ -6,9 +6,9 @@
 //! no rhythm: both sides are then given the regularity of a gamma law.
 
 use super::local::local_period;
-use super::marks::Binned;
+use super::marks::{Binned, Density};
 use super::order::median;
-use super::path::{Chain, Law, best_chain};
+use super::path::{Chain, Law, MOST_PERIODS, best_chain};
 use crate::clicks::Candidates;
 use crate::clicks::candidates::nth_largest;
 use statrs::distribution::{ContinuousCDF, Gamma};
@@ -175,6 +175,12 @@ impl Start {
 /// Fewest firings of a chain that is looked at.
 const FEWEST: usize = 5;
 
+/// What a round gives: the chain, its steps, which candidates are on it, and the densities of the marks on and off it.
+type Round = (Chain, Steps, Vec<bool>, (Density, Density));
+
+/// A fit whose chain is the same as in the round before, and whose jitter changed by less than this share, has come to its end.
+const SETTLED: f64 = 0.02;
+
 /// Fits a rhythm; none if no chain of five candidates is found.
 #[must_use]
 pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
@@ -183,9 +189,9 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
     }
     let binned = Binned::new(&c.mark);
     let (mut gain, mut off_rate) = first_gain(c, duration_s, start);
-    let mut law = Law { jitter: start.jitter, missed: 0.05, follow: start.follow };
+    let mut law = Law { jitter: start.jitter, missed: 0.05, follow: start.follow, longest: MOST_PERIODS };
     let mut periods = vec![start.period_s; c.len()];
-    let mut last = None;
+    let mut last: Option<Round> = None;
     for round in 0..start.rounds {
         let chain = chain_of_hopeful(c, &gain, off_rate.ln(), &periods, law, round == 0);
         if chain.index.len() < FEWEST {
@@ -194,6 +200,7 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         periods = local_period(c, &chain, start.period_s);
         law.follow = if round >= 1 { 0.0 } else { start.follow };
         let steps = Steps::of(c, &chain, &periods);
+        let before = law.jitter;
         law.jitter = steps.jitter(law.jitter);
         law.missed = if steps.long_by_chance(law.jitter) { NONE_MISSED } else { steps.missed() };
         let mut on = vec![false; c.len()];
@@ -202,7 +209,13 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         let off = (c.len() - chain.index.len()).max(1) as f64;
         gain = binned.gain(&densities.0, &densities.1);
         off_rate = (off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s);
+        let settled = round > 0
+            && (law.jitter / before - 1.0).abs() < SETTLED
+            && last.as_ref().is_some_and(|(before, ..): &Round| before.index == chain.index);
         last = Some((chain, steps, on, densities));
+        if settled {
+            break;
+        }
     }
     let (chain, steps, on, densities) = last?;
     let evidence = evidence(c, duration_s, &binned, &chain, &on, &densities, off_rate, &steps);
@@ -320,7 +333,7 @@ fn evidence(
     binned: &Binned,
     chain: &Chain,
     on: &[bool],
-    densities: &(super::marks::Density, super::marks::Density),
+    densities: &(Density, Density),
     off_rate: f64,
     steps: &Steps,
 ) -> f64 {

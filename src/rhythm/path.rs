@@ -37,6 +37,8 @@ pub struct Law {
     pub missed: f64,
     /// How fast the period follows the chain, 0..1; 0 keeps to the given periods.
     pub follow: f64,
+    /// Longest step, periods: at most [`MOST_PERIODS`].
+    pub longest: usize,
 }
 
 /// The best chain.
@@ -64,6 +66,7 @@ struct StepLaw {
     precision: f64,
     loose: bool,
     shortest: f64,
+    longest: f64,
     /// The most that a step can add to a score, before −ln T.
     hope: f64,
 }
@@ -82,6 +85,7 @@ impl StepLaw {
             precision,
             loose: law.jitter > GAMMA_FROM,
             shortest: (1.0 - 5.0 * law.jitter - 0.1).max(0.08),
+            longest: law.longest.min(MOST_PERIODS) as f64 + 0.5,
             hope: (-law.jitter.ln() - LN_SQRT_TAU).max(LN_TAIL) + SLACK,
         }
     }
@@ -142,7 +146,7 @@ pub fn best_chain(time_s: &[f64], gain: &[f64], period_s: &[f64], law: Law) -> C
         if top.1 != NOWHERE && top.0 - RESTART > 0.0 {
             best = Step { score: top.0 - RESTART - ln_expected, from: top.1, ..best };
         }
-        best.look_back(&step_law, &nodes, time_s[i], (MOST_PERIODS as f64 + 0.5) * expected * 1.25);
+        best.look_back(&step_law, &nodes, time_s[i], step_law.longest * expected * 1.25);
         let score = best.score + gain[i];
         back.push((best.from, best.steps));
         let (mut per_s, mut ln_period) = (1.0 / expected, ln_expected);
@@ -192,7 +196,7 @@ impl Step {
 
     #[inline]
     fn consider(&mut self, law: &StepLaw, from: usize, offer: f64, ratio: f64) {
-        if ratio < law.shortest || ratio >= MOST_PERIODS as f64 + 0.5 {
+        if ratio < law.shortest || ratio >= law.longest {
             return;
         }
         let nearest = ((ratio + 0.5) as usize).max(1);
@@ -265,7 +269,7 @@ mod tests {
             let mut time_s: Vec<f64> = (0..11).map(|_| uniform() * 8.0).collect();
             time_s.sort_by(f64::total_cmp);
             let gain: Vec<f64> = (0..11).map(|_| uniform() * 8.0 - 3.0).collect();
-            let law = Law { jitter: 0.08, missed: 0.1, follow: 0.0 };
+            let law = Law { jitter: 0.08, missed: 0.1, follow: 0.0, longest: MOST_PERIODS };
             let found = best_chain(&time_s, &gain, &[1.0; 11], law);
             let want = exhaustive(&time_s, &gain, 1.0, law);
             // Restarts from a score that is not the best so far are not looked for: they never win.
@@ -277,7 +281,7 @@ mod tests {
     fn a_gap_in_a_clock_is_counted_as_missed() {
         let time_s: Vec<f64> = (0..20).filter(|n| n % 7 != 5).map(f64::from).collect();
         let n = time_s.len();
-        let law = Law { jitter: 0.02, missed: 0.1, follow: 0.0 };
+        let law = Law { jitter: 0.02, missed: 0.1, follow: 0.0, longest: MOST_PERIODS };
         let chain = best_chain(&time_s, &vec![3.0; n], &vec![1.0; n], law);
         assert_eq!(chain.index.len(), n);
         assert_eq!(chain.steps.iter().sum::<usize>(), 18);

@@ -51,7 +51,7 @@ fn the_best_chain_is_the_best_of_all_for_tight_and_loose_trains_and_changing_per
         let gain: Vec<f64> = (0..11).map(|_| 8.0 * random.uniform() - 3.0).collect();
         let period: Vec<f64> = (0..11).map(|i| 0.9 + 0.02 * f64::from(i)).collect();
         for jitter in [0.02, 0.1, 0.2, 0.35] {
-            let law = Law { jitter, missed: 0.1, follow: 0.0 };
+            let law = Law { jitter, missed: 0.1, follow: 0.0, longest: super::path::MOST_PERIODS };
             let (fast, plain) =
                 (best_chain(&time_s, &gain, &period, law).score, best_of_all(&time_s, &gain, &period, law));
             assert!((fast - plain).abs() < 1e-9, "case {case}, jitter {jitter}: {fast} against {plain}");

@@ -12,14 +12,16 @@ pub const LONGEST_S: f64 = 4.0;
 pub const SHORTEST_SLOW_S: f64 = 0.55e-3;
 /// The search for fast trains, s.
 pub const FAST_S: (f64, f64) = (1.0 / 4000.0, 0.7e-3);
-/// Step of the logarithmic grid.
-const GRID_STEP: f64 = 0.06;
+/// Step of the logarithmic grid, and jitter allowed for on it.
+const GRID_STEP: f64 = 0.08;
 /// Candidates per expected firing on the grid, and in a fit.
 const GRID_DENSITY: f64 = 4.0;
-const FIT_DENSITY: f64 = 10.0;
+const FIT_DENSITY: f64 = 6.0;
+/// Longest step on the grid, periods.
+const GRID_LONGEST: usize = 2;
 /// Length of the stretch on which a period is scored on the grid, and on which it is fitted: periods, and s at least.
 const GRID_STRETCH: (f64, f64) = (100.0, 0.35);
-const FIT_STRETCH: (f64, f64) = (300.0, 0.7);
+const FIT_STRETCH: (f64, f64) = (200.0, 0.7);
 /// Below this period the distance that maxima of noise keep looks like a rhythm, s.
 const NOISE_BELOW_S: f64 = 2e-3;
 /// Loose starts: first period and ratio.
@@ -204,7 +206,7 @@ fn grid_score(c: &Ranked, range: Range<usize>, duration_s: f64, period_s: f64) -
     let soft: Vec<f64> = keep.iter().map(|&i| (4.0 * (mark(i) - threshold)).clamp(-4.0, 3.0)).collect();
     let gain: Vec<f64> = soft.iter().map(|s| s - ln_off).collect();
     let time_s: Vec<f64> = keep.iter().map(|&i| c.candidates.time_s[i as usize]).collect();
-    let law = Law { jitter: 0.06, missed: 0.05, follow: 0.15 };
+    let law = Law { jitter: GRID_STEP, missed: 0.05, follow: 0.15, longest: GRID_LONGEST };
     let chain = best_chain(&time_s, &gain, &vec![period_s; keep.len()], law);
     // Against the same candidates with the same two kinds of marks and no rhythm.
     let on = chain.index.len() as f64;

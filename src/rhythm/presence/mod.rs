@@ -174,11 +174,12 @@ impl Heard {
     #[must_use]
     pub fn describe(&self) -> String {
         let mut text = format!(
-            "presence: {} firings at {:.2} /s, {:.2} nats each, cover {:.2}; six lines hold {:.2} of the energy, {} harmonics alike",
+            "presence: {} firings at {:.2} /s, {:.2} nats each, cover {:.2}, scatter {:.2} %; six lines hold {:.2} of the energy, {} harmonics alike",
             self.firings,
             self.rate_hz,
             self.evidence / self.firings.max(1) as f64,
             self.cover,
+            100.0 * self.scatter,
             self.tones.six,
             self.tones.harmonics
         );

@@ -67,29 +67,48 @@ impl PosteriorGrid {
             .collect();
         let profile = |c: &LnCell| -0.5 * (self.freedom * c.ln_rest + c.ln_det);
         let top = columns.iter().flat_map(|(_, c)| c.iter().flatten()).map(profile).fold(f64::NEG_INFINITY, f64::max);
+        let places: Vec<Vec<Place>> = (0..MEMORIES - 1)
+            .map(|r| (0..fine).map(|f| Place::new(r as f64 + (f as f64 + 0.5) / fine as f64, fine)).collect())
+            .collect();
+        let none = Place { place: NONE as f64, rho: 0.0, ln_weight: 0.5f64.ln() };
         let mut cells = Vec::new();
         for (place, column) in &columns {
             let u = share(*place);
+            let ln_share = 0.5 * (u * (1.0 - u)).ln();
             let value: Vec<f64> = column.iter().map(|c| c.as_ref().map_or(f64::NEG_INFINITY, profile)).collect();
             let best = (0..MEMORIES).max_by(|&a, &b| value[a].total_cmp(&value[b])).unwrap_or(NONE);
-            let mut push = |place: f64, weight: f64, cell: LnCell| {
-                let ln = profile(&cell) + weight.ln() + 0.5 * (u * (1.0 - u)).ln();
-                cells.push(FineCell { ln, u, rho: memory(place), ln_scale: 0.0, off: 0.0, cell });
+            let mut push = |at: &Place, cell: LnCell| {
+                let ln = profile(&cell) + at.ln_weight + ln_share;
+                cells.push(FineCell { ln, u, rho: at.rho, ln_scale: 0.0, off: 0.0, cell });
             };
             if let Some(cell) = column[NONE] {
-                push(NONE as f64, 0.5, cell);
+                push(&none, cell);
             }
             for r in 0..MEMORIES - 1 {
                 let near = best.abs_diff(r) <= 2 || value[r].max(value[r + 1]) > top - NODE_REACH;
-                for f in (0..fine).filter(|_| near) {
-                    let place = r as f64 + (f as f64 + 0.5) / fine as f64;
-                    if let Some(cell) = between(column, place) {
-                        push(place, memory_density(memory(place)) * MEMORY_STEP / fine as f64, cell);
+                for at in places[r].iter().filter(|_| near) {
+                    if let Some(cell) = between(column, at.place) {
+                        push(at, cell);
                     }
                 }
             }
         }
         cells
+    }
+}
+
+/// A memory between the nodes.
+struct Place {
+    place: f64,
+    rho: f64,
+    /// Log of the prior's weight.
+    ln_weight: f64,
+}
+
+impl Place {
+    fn new(place: f64, fine: usize) -> Self {
+        let rho = memory(place);
+        Self { place, rho, ln_weight: (memory_density(rho) * MEMORY_STEP / fine as f64).ln() }
     }
 }
 

@@ -111,6 +111,24 @@ impl PosteriorGrid {
         }
         self.freedom += block.freedom();
         self.blocks += 1;
+        if self.freedom >= SCREEN_FROM as f64 {
+            self.prune();
+        }
+    }
+
+    /// Rules out cells far below the best of those that are left: later blocks are spent where something is to be told.
+    fn prune(&mut self) {
+        let ln = |c: &Cell| if c.live { -0.5 * (self.freedom * c.rest.ln() + c.ln_det) } else { f64::NEG_INFINITY };
+        let values: Vec<f64> = self.cells.iter().map(ln).collect();
+        let top = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+        for r in 0..MEMORIES {
+            for s in 0..SHARES {
+                let rows = r.saturating_sub(2)..(r + 3).min(MEMORIES);
+                let shares = s.saturating_sub(2)..(s + 3).min(SHARES);
+                let mut near = rows.flat_map(|r| values[r * SHARES..][shares.clone()].iter());
+                self.cells[r * SHARES + s].live &= near.any(|v| *v > top - SCREEN_OUT);
+            }
+        }
     }
 
     /// Rules out cells that lie far below the best on a coarse grid: most of the time goes where something is to be told.
