@@ -57,7 +57,7 @@ const CROWDED_OFF: f64 = 0.45;
 const SIX_LINES: f64 = 0.9;
 const CLEAR_OF_TONES: f64 = 1.2;
 /// So are they, however they stand out, with this share of the energy in six lines and less scatter than any gap has.
-const CHORD: (f64, f64) = (0.97, 1e-3);
+const CHORD: (f64, f64) = (0.99, 2e-3);
 /// Clicks that stand out by less than this must not have more than this share of the energy in six lines, nor a line that is
 /// off its frequency in more than this share of the time at less than this scatter.
 const UNCLEAR: f64 = 2.0;
