@@ -70,15 +70,23 @@ fn peak(window: &Window) -> f32 {
     window.x.iter().fold(0.0f32, |m, v| m.max(v.abs()))
 }
 
-/// Looks in the most active part of a window for a train that can be followed.
-pub fn first(window: &Window, explanation: &mut Vec<String>) -> Option<Known> {
+/// Looks in the most active part of a window for a train that can be followed; the error is what was found instead.
+pub fn first(window: &Window, explanation: &mut Vec<String>) -> Result<Known, Hint> {
     if window.duration_s() <= 1.5 * LEARN_S || peak(window) < SILENCE {
-        return None;
+        return Err(Hint::default());
     }
     match part(&window.most_active_part(LEARN_S), FLOORS[0], explanation) {
-        Ok(Part::Known(known)) => Some(known),
-        _ => None,
+        Ok(Part::Known(known)) => Ok(known),
+        Ok(Part::TooLittle(period_s)) => Err(Hint { period_s: Some(period_s) }),
+        Err(_) => Err(Hint::default()),
     }
+}
+
+/// What an earlier look has found.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct Hint {
+    /// A period of which there was too little to follow, s.
+    period_s: Option<f64>,
 }
 
 /// What the most active part teaches: a train that can be followed, or that there is one of this period (s) but too little of it.
@@ -98,7 +106,7 @@ fn part(part: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Part
 
 /// Looks for a train, and for the way to follow it further; lines of the explanation are appended. The error is the reason in
 /// words.
-pub fn train(window: &Window, explanation: &mut Vec<String>) -> Result<(Train, Known), &'static str> {
+pub fn train(window: &Window, hint: Hint, explanation: &mut Vec<String>) -> Result<(Train, Known), &'static str> {
     if peak(window) < SILENCE {
         return Err("the recording is silent");
     }
@@ -109,7 +117,8 @@ pub fn train(window: &Window, explanation: &mut Vec<String>) -> Result<(Train, K
     let mut reason = NOTHING;
     for floor in FLOORS {
         let mut reach = Reach::ALL;
-        match active.as_ref().map(|active| part(active, floor, explanation)) {
+        let hinted = hint.period_s.filter(|_| floor == FLOORS[0]).map(|period_s| Ok(Part::TooLittle(period_s)));
+        match hinted.or_else(|| active.as_ref().map(|active| part(active, floor, explanation))) {
             None => {}
             Some(Ok(Part::Known(mut known))) => match known.follow(window, explanation) {
                 Some(train) => return Ok((train, known)),

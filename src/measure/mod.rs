@@ -25,7 +25,7 @@ use crate::estimate::Estimate;
 use crate::firing::Event;
 use crate::rhythm::{FiringCounts, Reading, Verdict};
 use accumulate::Accumulator;
-use acquire::Known;
+use acquire::{Hint, Known};
 use std::ops::Range;
 use train::Train;
 use window::Window;
@@ -82,8 +82,8 @@ pub struct Measurer {
 enum Stage {
     /// Nothing was tried yet.
     New,
-    /// Nothing is known.
-    Searching,
+    /// Nothing is known but what an earlier look has found.
+    Searching(Hint),
     /// A train is known.
     Following(Known),
 }
@@ -94,7 +94,7 @@ impl Stage {
         match self {
             Self::New => FIRST_S,
             Self::Following(known) if known.is_quick() => FOLLOW_S,
-            Self::Searching | Self::Following(_) => WHOLE_S,
+            Self::Searching(_) | Self::Following(_) => WHOLE_S,
         }
     }
 
@@ -102,7 +102,7 @@ impl Stage {
     fn margin_s(&self) -> f64 {
         match self {
             Self::Following(known) => known.periods_s(MARGIN_S.1).clamp(MARGIN_S.0, MARGIN_S.2),
-            Self::New | Self::Searching => 0.0,
+            Self::New | Self::Searching(_) => 0.0,
         }
     }
 }
@@ -157,7 +157,7 @@ impl Measurer {
     #[must_use]
     pub fn finish(mut self) -> Outcome {
         if matches!(self.stage, Stage::New) {
-            self.stage = Stage::Searching;
+            self.stage = Stage::Searching(Hint::default());
         }
         self.analyse(self.held.len() - self.done);
         let reading = match self.sums.reading() {
@@ -183,16 +183,17 @@ impl Measurer {
             Stage::New => {
                 let window = Window::new(&self.bank, &self.held[..count], self.rate_hz);
                 let known = acquire::first(&window, &mut explanation);
-                self.stage = known.map_or(Stage::Searching, Stage::Following);
+                self.stage = known.map_or_else(Stage::Searching, Stage::Following);
             }
-            Stage::Searching => {
-                self.search(count, &mut explanation);
+            Stage::Searching(hint) => {
+                let hint = std::mem::take(hint);
+                self.search(count, hint, &mut explanation);
                 self.forget(count);
             }
             Stage::Following(_) => {
                 if !self.follow(count, &mut explanation) {
                     explanation.push("the train is lost: looking anew".into());
-                    self.search(count, &mut explanation);
+                    self.search(count, Hint::default(), &mut explanation);
                 }
                 self.forget(count);
             }
@@ -203,9 +204,9 @@ impl Measurer {
     }
 
     /// Looks for a train in the next `count` samples from nothing.
-    fn search(&mut self, count: usize, explanation: &mut Vec<String>) {
+    fn search(&mut self, count: usize, hint: Hint, explanation: &mut Vec<String>) {
         let window = Window::new(&self.bank, &self.held[self.done..self.done + count], self.rate_hz);
-        match acquire::train(&window, explanation) {
+        match acquire::train(&window, hint, explanation) {
             Ok((train, known)) => {
                 self.stage = Stage::Following(known);
                 self.take(train, self.done, 0.0..f64::INFINITY);

@@ -20,8 +20,8 @@ const FIT_DENSITY: f64 = 6.0;
 /// Longest step on the grid, periods.
 const GRID_LONGEST: usize = 2;
 /// Length of the stretch on which a period is scored on the grid, and on which it is fitted: periods, and s at least.
-const GRID_STRETCH: (f64, f64) = (100.0, 0.35);
-const FIT_STRETCH: (f64, f64) = (200.0, 0.7);
+const GRID_STRETCH: (f64, f64) = (100.0, 0.2);
+const FIT_STRETCH: (f64, f64) = (200.0, 0.35);
 /// Below this period the distance that maxima of noise keep looks like a rhythm, s.
 const NOISE_BELOW_S: f64 = 2e-3;
 /// Loose starts: first period and ratio.
