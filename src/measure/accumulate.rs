@@ -59,10 +59,13 @@ impl Accumulator {
         self.counts.on_rhythm += train.time_s.len() as u64;
         self.counts.missed += train.missed();
         self.counts.extra += train.extra.len() as u64;
-        for range in &train.stretches {
+        for (i, range) in train.stretches.iter().enumerate() {
             let (time_s, number) = (&train.time_s[range.clone()], &train.number[range.clone()]);
-            self.add_time(time_s[0], time_s[time_s.len() - 1], train.period_s);
-            self.gather(time_s, number, train.period_s);
+            // Only the first can go on with the last of the window before.
+            let ends_s = self.gathered.time_s.last().copied().filter(|_| i == 0);
+            let goes_on = ends_s.is_some_and(|t| time_s[0] - t < super::train::LONGEST_MISS * train.period_s);
+            self.add_time(time_s[0], time_s[time_s.len() - 1], goes_on);
+            self.gather(time_s, number, train.period_s, goes_on);
         }
         if self.others.is_empty() {
             self.others.clone_from(&train.others);
@@ -77,13 +80,11 @@ impl Accumulator {
         }
     }
 
-    /// Takes the clicks of a stretch, which goes on with the one before if it begins where that ended (the next window).
-    fn gather(&mut self, time_s: &[f64], number: &[i64], period_s: f64) {
+    /// Takes the clicks of a stretch, alone or behind those of the window before.
+    fn gather(&mut self, time_s: &[f64], number: &[i64], period_s: f64, goes_on: bool) {
         let own = &mut self.gathered;
-        let steps = own.time_s.last().map(|last| (time_s[0] - last) / period_s);
-        if let (Some(steps), Some(&last)) = (steps, own.number.last())
-            && steps < super::train::LONGEST_MISS
-        {
+        if let (true, Some(&last_s), Some(&last)) = (goes_on, own.time_s.last(), own.number.last()) {
+            let steps = (time_s[0] - last_s) / period_s;
             // The click on the border of two windows may be in both.
             let from = usize::from(steps < 0.5);
             let steps = steps.round() as i64;
@@ -113,14 +114,13 @@ impl Accumulator {
         self.duration_s += time_s[time_s.len() - 1] - time_s[0];
     }
 
-    /// Lists a stretch; one that begins where the last ended (the next window) goes on with it.
-    fn add_time(&mut self, from_s: f64, to_s: f64, period_s: f64) {
-        if let Some(last) = self.stretches.last_mut()
-            && from_s - last.to_s < super::train::LONGEST_MISS * period_s
-        {
-            last.to_s = to_s;
-        } else if self.stretches.len() < MOST_STRETCHES {
-            self.stretches.push(Stretch { from_s, to_s });
+    /// Lists a stretch, or lets it go on with the last.
+    fn add_time(&mut self, from_s: f64, to_s: f64, goes_on: bool) {
+        let listed = self.stretches.len();
+        match self.stretches.last_mut() {
+            Some(last) if goes_on => last.to_s = to_s,
+            _ if listed < MOST_STRETCHES => self.stretches.push(Stretch { from_s, to_s }),
+            _ => {}
         }
     }
 

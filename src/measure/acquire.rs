@@ -5,7 +5,7 @@
 //! too few firings, are learnt on the whole window.
 
 use super::hypothesis::Reach;
-use super::learn::{Learnt, learn};
+use super::learn::{Learnt, Lesson, learn, learn_known};
 use super::model::Model;
 use super::overlap;
 use super::train::Train;
@@ -22,8 +22,6 @@ const LEARN_S: f64 = 4.0;
 /// Shortest period that the whole window is searched for when the part has none: the part holds 80 firings of it.
 const SLOW_S: f64 = LEARN_S / 80.0;
 
-/// A period learnt from too few firings may be a multiple up to this.
-const NEARLY: f64 = 4.5;
 /// The least that can be said.
 const NOTHING: &str = "no clicks stand out";
 
@@ -77,22 +75,21 @@ pub fn first(window: &Window, explanation: &mut Vec<String>) -> Result<Known, Hi
     }
     match part(&window.most_active_part(LEARN_S), FLOORS[0], explanation) {
         Ok(Part::Known(known)) => Ok(known),
-        Ok(Part::TooLittle(period_s)) => Err(Hint { period_s: Some(period_s) }),
+        Ok(Part::TooLittle(model)) => Err(Hint { model: Some(model) }),
         Err(_) => Err(Hint::default()),
     }
 }
 
-/// What an earlier look has found.
-#[derive(Debug, Clone, Copy, Default)]
+/// What an earlier look has found: a train of which there was too little to follow it.
+#[derive(Default)]
 pub struct Hint {
-    /// A period of which there was too little to follow, s.
-    period_s: Option<f64>,
+    model: Option<Box<Model>>,
 }
 
-/// What the most active part teaches: a train that can be followed, or that there is one of this period (s) but too little of it.
+/// What the most active part teaches: a train that can be followed, or one of which there is too little.
 enum Part {
     Known(Known),
-    TooLittle(f64),
+    TooLittle(Box<Model>),
 }
 
 fn part(part: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Part, &'static str> {
@@ -100,13 +97,15 @@ fn part(part: &Window, floor: f64, explanation: &mut Vec<String>) -> Result<Part
     match learn(part, floor, Reach::ALL, explanation)? {
         Learnt::Clicks(lesson) if lesson.model.is_enough() => Ok(Part::Known(Known::Clicks(Box::new(lesson.model)))),
         Learnt::Line(line) => Ok(Part::Known(Known::Line(line.line.frequency_hz))),
-        Learnt::Clicks(lesson) => Ok(Part::TooLittle(lesson.model.period_s())),
+        Learnt::Clicks(lesson) => Ok(Part::TooLittle(Box::new(lesson.model))),
     }
 }
 
-/// Looks for a train, and for the way to follow it further; lines of the explanation are appended. The error is the reason in
-/// words.
-pub fn train(window: &Window, hint: Hint, explanation: &mut Vec<String>) -> Result<(Train, Known), &'static str> {
+/// A train with the way to follow it further, or the reason in words why there is none.
+type Found = Result<(Train, Known), &'static str>;
+
+/// Looks for a train in a window; lines of the explanation are appended.
+pub fn train(window: &Window, mut hint: Hint, explanation: &mut Vec<String>) -> Found {
     if peak(window) < SILENCE {
         return Err("the recording is silent");
     }
@@ -117,17 +116,22 @@ pub fn train(window: &Window, hint: Hint, explanation: &mut Vec<String>) -> Resu
     let mut reason = NOTHING;
     for floor in FLOORS {
         let mut reach = Reach::ALL;
-        let hinted = hint.period_s.filter(|_| floor == FLOORS[0]).map(|period_s| Ok(Part::TooLittle(period_s)));
+        let hinted = hint.model.take().map(|model| Ok(Part::TooLittle(model)));
         match hinted.or_else(|| active.as_ref().map(|active| part(active, floor, explanation))) {
             None => {}
             Some(Ok(Part::Known(mut known))) => match known.follow(window, explanation) {
                 Some(train) => return Ok((train, known)),
                 None => explanation.push("the rhythm is lost in the rest: learning on the whole window".into()),
             },
-            Some(Ok(Part::TooLittle(period_s))) => {
+            Some(Ok(Part::TooLittle(model))) => {
+                let period_s = model.period_s();
                 explanation
                     .push(format!("too few firings of {:.3} ms there: learning on the whole window", 1e3 * period_s));
-                reach = Reach { expected_s: Some(period_s), ..Reach::slow(period_s / NEARLY) };
+                match whole_of(window, floor, &model, explanation) {
+                    Ok(found) => return Ok(found),
+                    Err(why) => explanation.push(format!("refused: {why}")),
+                }
+                reach = Reach { expected_s: Some(period_s), ..Reach::ALL };
             }
             Some(Err(why)) => {
                 explanation.push(format!("refused: {why}; slow rhythms are looked for in the whole window"));
@@ -136,10 +140,7 @@ pub fn train(window: &Window, hint: Hint, explanation: &mut Vec<String>) -> Resu
             }
         }
         match learn(window, floor, reach, explanation) {
-            Ok(Learnt::Clicks(lesson)) => {
-                let train = lesson.model.train_of(window, &lesson.hypothesis, &lesson.others);
-                return Ok((train, Known::Clicks(Box::new(lesson.model))));
-            }
+            Ok(Learnt::Clicks(lesson)) => return Ok(taught(window, *lesson)),
             Ok(Learnt::Line(line)) => {
                 let line_hz = line.line.frequency_hz;
                 return overlap::by_line(window, line_hz, explanation).map(|train| (train, Known::Line(line_hz)));
@@ -153,4 +154,15 @@ pub fn train(window: &Window, hint: Hint, explanation: &mut Vec<String>) -> Resu
         }
     }
     Err(reason)
+}
+
+/// Learns a slow train from the whole window, beginning with what a part of it has taught.
+fn whole_of(window: &Window, floor: f64, model: &Model, explanation: &mut Vec<String>) -> Found {
+    let h = model.hypothesis_in(window).ok_or("the rhythm is lost in the rest")?;
+    learn_known(window, floor, h, explanation).map(|lesson| taught(window, lesson))
+}
+
+fn taught(window: &Window, lesson: Lesson) -> (Train, Known) {
+    let train = lesson.model.train_of(window, &lesson.hypothesis, &lesson.others);
+    (train, Known::Clicks(Box::new(lesson.model)))
 }

@@ -33,7 +33,7 @@ pub struct Lesson {
 
 /// Learns from a window, its spectrum flattened down to `floor`. The error is the reason in words why there is nothing to learn.
 pub fn learn(window: &Window, floor: f64, reach: Reach, explanation: &mut Vec<String>) -> Result<Learnt, &'static str> {
-    let whitened = window.through(&window.kernel(window.spectrum().whitening(FIND_HIGH_PASS_HZ, floor)));
+    let whitened = whitened(window, floor);
     let clicks = hypothesis::best(window, &whitened, reach, explanation);
     let line = if reach.is_all() { overlap::best_line(window, explanation) } else { None };
     if line.as_ref().is_some_and(|l| overlap::line_wins(l, clicks.as_ref())) {
@@ -44,8 +44,36 @@ pub fn learn(window: &Window, floor: f64, reach: Reach, explanation: &mut Vec<St
     {
         return Err("the clicks and the line at the rate tell different rates");
     }
-    let Some(mut h) = clicks else { return Err("no clicks stand out") };
-    let (finder, others) = sort_out(window, &whitened, floor, &mut h, explanation)?;
+    let Some(h) = clicks else { return Err("no clicks stand out") };
+    let line_s = line.map(|l| l.fit.period_s);
+    teach(window, &whitened, floor, h, line_s, explanation).map(|lesson| Learnt::Clicks(Box::new(lesson)))
+}
+
+/// Learns from a window in which a rhythm is known already.
+pub fn learn_known(
+    window: &Window,
+    floor: f64,
+    h: Hypothesis,
+    explanation: &mut Vec<String>,
+) -> Result<Lesson, &'static str> {
+    let whitened = whitened(window, floor);
+    teach(window, &whitened, floor, h, None, explanation)
+}
+
+fn whitened(window: &Window, floor: f64) -> Vec<f32> {
+    window.through(&window.kernel(window.spectrum().whitening(FIND_HIGH_PASS_HZ, floor)))
+}
+
+/// What a hypothesis teaches; `line_s` is the period of a line that stands out beside it.
+fn teach(
+    window: &Window,
+    whitened: &[f32],
+    floor: f64,
+    mut h: Hypothesis,
+    line_s: Option<f64>,
+    explanation: &mut Vec<String>,
+) -> Result<Lesson, &'static str> {
+    let (finder, others) = sort_out(window, whitened, floor, &mut h, explanation)?;
     check_presence(window, &h, explanation)?;
     let chain_times = h.fit.times_s(&h.candidates);
     let (numbers, _) = number(&chain_times, &h.fit.chain.steps, h.fit.period_s);
@@ -56,9 +84,9 @@ pub fn learn(window: &Window, floor: f64, reach: Reach, explanation: &mut Vec<St
         1e6 * timing.noise_s
     ));
     let overlaps = h.fit.period_s < overlap::PHASE_BELOW_S
-        && line.is_some_and(|l| (l.fit.period_s / h.fit.period_s - 1.0).abs() < 0.03);
+        && line_s.is_some_and(|line_s| (line_s / h.fit.period_s - 1.0).abs() < 0.03);
     let model = Model::new(window, &h, &others, &finder, timing, overlaps);
-    Ok(Learnt::Clicks(Box::new(Lesson { hypothesis: h, others, model })))
+    Ok(Lesson { hypothesis: h, others, model })
 }
 
 /// Refines a hypothesis and tells the trains that are heard apart; afterwards the hypothesis is the train with the largest

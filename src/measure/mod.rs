@@ -15,6 +15,7 @@ mod model;
 mod multiples;
 mod overlap;
 mod refine;
+mod slips;
 mod times;
 mod train;
 mod trains;

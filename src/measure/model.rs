@@ -96,22 +96,14 @@ impl Model {
     #[must_use]
     pub fn train_of(&self, window: &Window, h: &Hypothesis, others: &[Fit]) -> Train {
         let flat = self.timing.reader.as_ref().map_or(&[][..], |(_, flatness)| window.flat(*flatness));
-        self.finish(window, h, others, window.flat(Flatness::Plain), flat)
+        self.finish(window, h, others, window.flat(Flatness::Plain), flat).without_slips()
     }
 
     /// Follows the train through another window; none if it is lost there. What the window tells of its period and its marks is taken
     /// on, so that a slow drift is followed from window to window.
     pub fn follow(&mut self, window: &Window, explanation: &mut Vec<String>) -> Option<Train> {
-        let mut kernels: Vec<&Kernel> = self.find.iter().collect();
-        kernels.push(&self.plain);
-        kernels.extend(&self.flat);
-        let mut outputs = window.bank.apply_all(&window.x, &kernels);
-        let flat = self.flat.as_ref().and_then(|_| outputs.pop()).unwrap_or_default();
-        let plain = outputs.pop().unwrap_or_default();
-        let output = candidates::joined(outputs, self.shape.signed);
-        let apart = apart_s(&self.shape, window.rate_hz, self.fit.period_s, self.fast);
-        let found = candidates::find(&output, window.rate_hz, apart).over(self.scale);
-        let (fit, others) = trains::follow(&found, window.duration_s(), &self.fit, &self.others)?;
+        let trace = self.trace(window)?;
+        let fit = &trace.hypothesis.fit;
         explanation.push(format!(
             "followed through {:.1} s: {} firings, evidence {:.0} nats, covers {:.0} %",
             window.duration_s(),
@@ -122,17 +114,37 @@ impl Model {
         if fit.each < LEAST_EVIDENCE * self.each {
             return None;
         }
-        let h = Hypothesis { fit, candidates: found, shape: self.shape.clone(), fast: self.fast };
-        let train = self.finish(window, &h, &others, &plain, &flat);
+        let train = self.finish(window, &trace.hypothesis, &trace.others, &trace.plain, &trace.flat);
         let strays = train.extra.len() as f64 / train.time_s.len() as f64;
         if strays >= MOST_STRAYS {
             return None;
         }
-        self.fit = h.fit;
-        if others.len() == self.others.len() {
-            self.others = others;
+        self.fit = trace.hypothesis.fit;
+        if trace.others.len() == self.others.len() {
+            self.others = trace.others;
         }
-        Some(train)
+        Some(train.without_slips())
+    }
+
+    /// The rhythm in another window, as a hypothesis to learn from.
+    #[must_use]
+    pub fn hypothesis_in(&self, window: &Window) -> Option<Hypothesis> {
+        self.trace(window).map(|trace| trace.hypothesis)
+    }
+
+    fn trace(&self, window: &Window) -> Option<Trace> {
+        let mut kernels: Vec<&Kernel> = self.find.iter().collect();
+        kernels.push(&self.plain);
+        kernels.extend(&self.flat);
+        let mut outputs = window.bank.apply_all(&window.x, &kernels);
+        let flat = self.flat.as_ref().and_then(|_| outputs.pop()).unwrap_or_default();
+        let plain = outputs.pop().unwrap_or_default();
+        let output = candidates::joined(outputs, self.shape.signed);
+        let apart = apart_s(&self.shape, window.rate_hz, self.fit.period_s, self.fast);
+        let found = candidates::find(&output, window.rate_hz, apart).over(self.scale);
+        let (fit, others) = trains::follow(&found, window.duration_s(), &self.fit, &self.others)?;
+        let hypothesis = Hypothesis { fit, candidates: found, shape: self.shape.clone(), fast: self.fast };
+        Some(Trace { hypothesis, others, plain, flat })
     }
 
     fn finish(&self, window: &Window, h: &Hypothesis, others: &[Fit], plain: &[f32], flat: &[f32]) -> Train {
@@ -146,6 +158,14 @@ impl Model {
         }
         train
     }
+}
+
+/// A train found again in another window: with the trains beside it, and the signals that its sizes and times are read in.
+struct Trace {
+    hypothesis: Hypothesis,
+    others: Vec<Fit>,
+    plain: Vec<f32>,
+    flat: Vec<f32>,
 }
 
 /// The flattened signal for reading sizes is scaled by its gain: this takes it back to full scale.

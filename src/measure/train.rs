@@ -80,6 +80,39 @@ impl Train {
         }
     }
 
+    /// The train without its slips: their clicks are off the rhythm, and a stretch ends at each.
+    #[must_use]
+    pub fn without_slips(mut self) -> Self {
+        let mut slips: Vec<Range<usize>> = Vec::new();
+        let mut stretches = Vec::new();
+        let struck_s: Vec<f64> = self.extra.iter().map(|e| e.0).collect();
+        for stretch in &self.stretches {
+            let mut from = stretch.start;
+            for slip in super::slips::slips(&self.time_s[stretch.clone()], &self.number[stretch.clone()]) {
+                let slip = super::slips::with_strikes(slip, &self.time_s[stretch.clone()], &struck_s);
+                let slip = (slip.start + stretch.start).max(from)..slip.end + stretch.start;
+                stretches.push(from..slip.start);
+                from = slip.end;
+                slips.push(slip);
+            }
+            stretches.push(from..stretch.end);
+        }
+        if slips.is_empty() {
+            return self;
+        }
+        self.extra.extend(slips.iter().flat_map(|b| b.clone()).map(|i| (self.time_s[i], self.size[i])));
+        self.extra.sort_by(|a, b| a.0.total_cmp(&b.0));
+        let mut rest = Self { time_s: Vec::new(), number: Vec::new(), size: Vec::new(), stretches: Vec::new(), ..self };
+        for stretch in stretches.into_iter().filter(|s| !s.is_empty()) {
+            let from = rest.time_s.len();
+            rest.time_s.extend_from_slice(&self.time_s[stretch.clone()]);
+            rest.number.extend_from_slice(&self.number[stretch.clone()]);
+            rest.size.extend_from_slice(&self.size[stretch]);
+            rest.stretches.push(from..rest.time_s.len());
+        }
+        rest
+    }
+
     /// The part of the train within a range of time, s; none if that holds no click.
     #[must_use]
     pub fn within(mut self, range_s: &Range<f64>) -> Option<Self> {

@@ -65,7 +65,7 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, shortest_s: f64, exp
         && let Some(fit) = fit_all(c, duration_s, &[tight(first)]).pop()
         && beyond_doubt(&fit)
     {
-        let beside = fit_all(c, duration_s, &[tight(fit.period_s / 2.0), tight(fit.period_s * 2.0)]);
+        let beside = fit_all(c, duration_s, &multiples(fit.period_s));
         return std::iter::once(fit).chain(beside).collect();
     }
     let expected = expected_s.filter(|_| !fast);
@@ -73,7 +73,7 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, shortest_s: f64, exp
     let mut found: Vec<Fit> = fit_all(c, duration_s, &starts);
     if !fast {
         if let Some(first) = strongest(&found).map(|f| f.period_s) {
-            found.extend(fit_all(c, duration_s, &[tight(first / 2.0), tight(first * 2.0)]));
+            found.extend(fit_all(c, duration_s, &multiples(first)));
         }
         if !strongest(&found).is_some_and(explains_nearly_all) {
             found.extend(fit_all(c, duration_s, &loose_starts(c, duration_s, shortest_s)));
@@ -82,10 +82,17 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, shortest_s: f64, exp
     found
 }
 
-/// Fits of one period, its half and its double.
+/// Fits of one period and of those that it may be a multiple or a fraction of.
 #[must_use]
 pub fn rhythms_near(c: &Candidates, duration_s: f64, period_s: f64) -> Vec<Fit> {
-    fit_all(c, duration_s, &[period_s, period_s / 2.0, period_s * 2.0].map(tight))
+    let mut found = fit_all(c, duration_s, &[tight(period_s)]);
+    found.extend(fit_all(c, duration_s, &multiples(period_s)));
+    found
+}
+
+/// Where every second or third firing stands out, the rhythm has half or a third of the period.
+fn multiples(period_s: f64) -> [Start; 3] {
+    [period_s / 2.0, period_s / 3.0, period_s * 2.0].map(tight)
 }
 
 /// Candidates with their indices in the order of falling marks: the strongest of any stretch are found without sorting again.
