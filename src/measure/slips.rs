@@ -51,18 +51,32 @@ pub fn slips(time_s: &[f64], number: &[i64]) -> Vec<Range<usize>> {
     found
 }
 
-/// A slip made wider by the periods beside it that hold an extra click (`extra_s` ascending): there the gap fires early already, or still.
+/// A size is odd if its logarithm is off by this much and by this many deviations.
+const ODD: (f64, f64) = (0.2, 5.0);
+
+/// Which sizes are not those of the rhythm.
 #[must_use]
-pub fn with_strikes(slip: Range<usize>, time_s: &[f64], extra_s: &[f64]) -> Range<usize> {
-    let struck = |from_s: f64, to_s: f64| {
-        let next = extra_s.partition_point(|t| *t <= from_s);
-        extra_s.get(next).is_some_and(|t| *t < to_s)
+pub fn odd_sizes(size: &[f32]) -> Vec<bool> {
+    let ln: Vec<f64> = size.iter().map(|s| f64::from(s.max(1e-9)).ln()).collect();
+    let middle = median(&ln);
+    let off: Vec<f64> = ln.iter().map(|l| (l - middle).abs()).collect();
+    let limit = ODD.0.max(ODD.1 * 1.4826 * median(&off));
+    off.iter().map(|o| *o > limit).collect()
+}
+
+/// A slip made wider by what beside it is of another kind: periods that hold an extra click (`extra_s` ascending) and clicks of odd
+/// size. There the gap fires early already, or still.
+#[must_use]
+pub fn widened(slip: Range<usize>, time_s: &[f64], odd: &[bool], extra_s: &[f64]) -> Range<usize> {
+    let struck = |from: usize, to: usize| {
+        let next = extra_s.partition_point(|t| *t <= time_s[from]);
+        extra_s.get(next).is_some_and(|t| *t < time_s[to])
     };
     let Range { mut start, mut end } = slip;
-    while start > 1 && struck(time_s[start - 2], time_s[start - 1]) {
+    while start > 1 && (odd[start - 1] || struck(start - 2, start - 1)) {
         start -= 1;
     }
-    while end + 1 < time_s.len() && struck(time_s[end], time_s[end + 1]) {
+    while end + 1 < time_s.len() && (odd[end] || struck(end, end + 1)) {
         end += 1;
     }
     start..end
@@ -98,10 +112,13 @@ mod tests {
     }
 
     #[test]
-    fn a_slip_takes_the_struck_periods_beside_it_along() {
+    fn a_slip_takes_struck_periods_and_odd_clicks_beside_it_along() {
         let time_s: Vec<f64> = (0..20).map(f64::from).collect();
-        assert_eq!(with_strikes(10..12, &time_s, &[7.5, 8.5, 12.4, 15.5]), 8..13);
-        assert_eq!(with_strikes(1..19, &time_s, &[0.5, 18.5]), 1..19);
+        let size: Vec<f32> =
+            (0..20).map(|n| if (13..15).contains(&n) { 0.6 } else { 1.0 + 0.01 * (n % 3) as f32 }).collect();
+        let odd = odd_sizes(&size);
+        assert_eq!(widened(10..12, &time_s, &odd, &[7.5, 8.5, 12.4, 17.5]), 8..15);
+        assert_eq!(widened(1..19, &time_s, &odd, &[0.5, 18.5]), 1..19);
     }
 
     #[test]

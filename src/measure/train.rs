@@ -85,11 +85,12 @@ impl Train {
     pub fn without_slips(mut self) -> Self {
         let mut slips: Vec<Range<usize>> = Vec::new();
         let mut stretches = Vec::new();
+        let odd = super::slips::odd_sizes(&self.size);
         let struck_s: Vec<f64> = self.extra.iter().map(|e| e.0).collect();
         for stretch in &self.stretches {
             let mut from = stretch.start;
             for slip in super::slips::slips(&self.time_s[stretch.clone()], &self.number[stretch.clone()]) {
-                let slip = super::slips::with_strikes(slip, &self.time_s[stretch.clone()], &struck_s);
+                let slip = super::slips::widened(slip, &self.time_s[stretch.clone()], &odd[stretch.clone()], &struck_s);
                 let slip = (slip.start + stretch.start).max(from)..slip.end + stretch.start;
                 stretches.push(from..slip.start);
                 from = slip.end;
