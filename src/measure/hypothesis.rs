@@ -63,6 +63,9 @@ const APART_S: f64 = 0.2e-3;
 /// … or nearer than the click's swings and a little, s, but not this share of the period.
 const SWING_MORE_S: f64 = 0.1e-3;
 const APART_PERIODS: f64 = 0.35;
+/// Of a slow train, nor so near in periods up to this many s: which of a click's swings is the click is told by its size, not by what
+/// makes the rhythm most regular.
+const SLOW_APART: (f64, f64) = (0.05, 1e-3);
 /// The period taken for that before one is known, s.
 const FIRST_PERIOD_S: f64 = 1e-3;
 /// Candidates per expected firing when the best is fitted to all of the window.
@@ -75,7 +78,8 @@ pub fn apart_s(shape: &Shape, rate_hz: f64, period_s: f64, fast: bool) -> f64 {
         return 0.0;
     }
     let swings_s = shape.swings() as f64 / rate_hz + SWING_MORE_S;
-    swings_s.min(APART_PERIODS * period_s).max(APART_S)
+    let slow_s = (SLOW_APART.0 * period_s).min(SLOW_APART.1);
+    swings_s.min(APART_PERIODS * period_s).max(APART_S).max(slow_s)
 }
 
 /// Looks for the best rhythm; lines of the explanation are appended.

@@ -117,8 +117,12 @@ fn sort_out(
         h.fit.evidence = h.fit.evidence.max(evidence);
         multiples::settle(h, duration_s, explanation)?;
         others = trains::beside(h, duration_s);
+        let joined = multiples::join(h, &others, duration_s, explanation);
+        if joined {
+            others = trains::beside(h, duration_s);
+        }
         round += 1;
-        if round == ROUNDS || trains::largest(h, &others).is_none() {
+        if round == ROUNDS || (!joined && trains::largest(h, &others).is_none()) {
             break;
         }
     }
@@ -129,10 +133,14 @@ fn sort_out(
         ));
     }
     explanation.push(format!(
-        "refined: period {:.5} ms, {} firings, evidence {:.0} nats",
+        "refined: period {:.5} ms, {} firings, evidence {:.0} nats; marks {:.2} ± {:.2} on it, {:.2} ± {:.2} off it",
         1e3 * h.fit.period_s,
         h.fit.chain.index.len(),
-        h.fit.evidence
+        h.fit.evidence,
+        h.fit.marks.on.0,
+        h.fit.marks.on.1,
+        h.fit.marks.off.0,
+        h.fit.marks.off.1
     ));
     Ok((finder, others))
 }

@@ -69,6 +69,14 @@ impl Fit {
         self.chain.index.iter().map(|&i| c.mark[i]).collect()
     }
 
+    /// Where the marks of all candidates lie that are on the rhythm and off it.
+    #[must_use]
+    pub fn marks_among(&self, c: &Candidates) -> MarkLaw {
+        let mut on = vec![false; c.len()];
+        self.chain.index.iter().for_each(|&i| on[i] = true);
+        MarkLaw::of(&c.mark, &on)
+    }
+
     /// True if the train fills the time, or fires in long stretches of strong evidence with silence between.
     #[must_use]
     pub fn fills_its_time(&self) -> bool {
@@ -172,6 +180,22 @@ impl Start {
     }
 }
 
+/// Deviations by which marks on a loose rhythm stand above those off it for their gains to be held.
+const APART: f64 = 6.0;
+
+impl Start {
+    /// True if known gains are not learnt anew: a loose train whose clicks stand clear of noise would take noise into its long periods,
+    /// and learn that noise belongs to it.
+    fn holds_gains(&self) -> bool {
+        match self.gains {
+            FirstGains::Known(marks) if self.jitter > super::path::GAMMA_FROM => {
+                marks.on.0 - marks.off.0 > APART * marks.on.1.max(0.5 * marks.off.1)
+            }
+            _ => false,
+        }
+    }
+}
+
 /// Fewest firings of a chain that is looked at.
 const FEWEST: usize = 5;
 
@@ -189,11 +213,12 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
     }
     let binned = Binned::new(&c.mark);
     let (mut gain, mut off_rate) = first_gain(c, duration_s, start);
+    let held = start.holds_gains();
     let mut law = Law { jitter: start.jitter, missed: 0.05, follow: start.follow, longest: MOST_PERIODS };
     let mut periods = vec![start.period_s; c.len()];
     let mut last: Option<Round> = None;
     for round in 0..start.rounds {
-        let chain = chain_of_hopeful(c, &gain, off_rate.ln(), &periods, law, round == 0);
+        let mut chain = chain_of_hopeful(c, &gain, off_rate.ln(), &periods, law, round == 0);
         if chain.index.len() < FEWEST {
             return None;
         }
@@ -207,7 +232,13 @@ pub fn fit(c: &Candidates, duration_s: f64, start: Start) -> Option<Fit> {
         chain.index.iter().for_each(|&i| on[i] = true);
         let densities = (binned.density(|i| on[i]), binned.density(|i| !on[i]));
         let off = (c.len() - chain.index.len()).max(1) as f64;
-        gain = binned.gain(&densities.0, &densities.1);
+        let learnt = binned.gain(&densities.0, &densities.1);
+        if held {
+            // The evidence is that of the marks as they are.
+            chain.score += chain.index.iter().map(|&i| learnt[i] - gain[i]).sum::<f64>();
+        } else {
+            gain = learnt;
+        }
         off_rate = (off / duration_s).max(0.02 * chain.index.len() as f64 / duration_s);
         let settled = round > 0
             && (law.jitter / before - 1.0).abs() < SETTLED

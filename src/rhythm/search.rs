@@ -77,6 +77,7 @@ pub fn rhythms(c: &Candidates, duration_s: f64, fast: bool, shortest_s: f64, exp
         }
         if !strongest(&found).is_some_and(explains_nearly_all) {
             found.extend(fit_all(c, duration_s, &loose_starts(c, duration_s, shortest_s)));
+            found.extend(loose_among_the_clear(c, duration_s));
         }
     }
     found
@@ -158,8 +159,12 @@ fn fit_all(c: &Candidates, duration_s: f64, starts: &[Start]) -> Vec<Fit> {
 /// A loose train at a very short period is what noise looks like: (period, s, and the most jitter below it).
 const NOISE_LOOKS: [(f64, f64); 2] = [(0.7e-3, 0.12), (1.2e-3, 0.25)];
 
+/// So is one whose marks are of two kinds, clicks and noise: their standard deviation is above this.
+const MIXED: f64 = 1.0;
+
 fn looks_like_noise(f: &Fit) -> bool {
-    NOISE_LOOKS.iter().any(|&(period_s, jitter)| f.period_s < period_s && f.jitter > jitter)
+    (f.is_loose() && f.marks.on.1 > MIXED)
+        || NOISE_LOOKS.iter().any(|&(period_s, jitter)| f.period_s < period_s && f.jitter > jitter)
 }
 
 /// The candidates of the middle stretch for a period, with its length.
@@ -267,10 +272,39 @@ fn loose_starts(c: &Candidates, duration_s: f64, shortest_s: f64) -> Vec<Start> 
 /// The mean spacing of the candidates above the widest gap in the sorted marks: where clicks stand clear of noise these are the
 /// clicks, however loose their rhythm.
 fn period_of_the_clear(c: &Candidates, duration_s: f64) -> Option<f64> {
+    widest_gap(c, duration_s).map(|gap| duration_s / gap.above as f64)
+}
+
+/// The widest gap in the sorted marks.
+struct Gap {
+    /// Candidates above it.
+    above: usize,
+    /// Marks at its two ends, the larger first.
+    between: (f64, f64),
+}
+
+fn widest_gap(c: &Candidates, duration_s: f64) -> Option<Gap> {
     let mut marks = c.mark.clone();
     marks.sort_by(|a, b| b.total_cmp(a));
     let most = ((duration_s / LOOSE_FIRST_S) as usize).min(marks.len() * 9 / 10);
-    let width = |rank: usize| marks[rank * 19 / 20] - marks[(rank * 21 / 20).min(marks.len() - 1)];
-    let rank = (20..most).max_by(|&a, &b| width(a).total_cmp(&width(b)))?;
-    Some(duration_s / rank as f64)
+    let ends = |rank: usize| (marks[rank * 19 / 20], marks[(rank * 21 / 20).min(marks.len() - 1)]);
+    let width = |rank: usize| ends(rank).0 - ends(rank).1;
+    let above = (20..most).max_by(|&a, &b| width(a).total_cmp(&width(b)))?;
+    Some(Gap { above, between: ends(above) })
+}
+
+/// Width of the gap from which clicks are told from noise by their marks alone.
+const CLEAR_GAP: f64 = 0.8;
+
+/// A loose rhythm of the candidates that stand clear of noise: among all of them a loose train takes noise into its long periods.
+fn loose_among_the_clear(c: &Candidates, duration_s: f64) -> Option<Fit> {
+    let gap = widest_gap(c, duration_s).filter(|gap| gap.between.0 - gap.between.1 > CLEAR_GAP)?;
+    let middle = 0.5 * (gap.between.0 + gap.between.1);
+    let clear: Vec<usize> = (0..c.len()).filter(|&i| c.mark[i] > middle).collect();
+    let period_s = duration_s / clear.len() as f64;
+    let start = Start { period_s, jitter: 0.3, follow: 0.0, gains: FirstGains::Steep, rounds: 5 };
+    let mut found = fit(&c.pick(&clear), duration_s, start)?;
+    found.chain.index.iter_mut().for_each(|i| *i = clear[*i]);
+    found.marks = found.marks_among(c);
+    Some(found)
 }

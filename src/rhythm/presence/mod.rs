@@ -56,6 +56,8 @@ const CROWDED_OFF: f64 = 0.45;
 /// Six lines with this share of the energy are tones unless clicks stand out by this factor.
 const SIX_LINES: f64 = 0.9;
 const CLEAR_OF_TONES: f64 = 1.2;
+/// Clicks that stand out by less than this are lost in what lies between them, unless they have a line that holds.
+const LOST: f64 = 1.2;
 /// So are they, however they stand out, with this share of the energy in six lines and less scatter than any gap has.
 const CHORD: (f64, f64) = (0.99, 2e-3);
 /// Clicks that stand out by less than this must not have more than this share of the energy in six lines, nor a line that is
@@ -252,6 +254,8 @@ impl Heard {
             Some("what repeats has no line at its rate")
         } else if buzz {
             Some("what is heard keeps step with the mains and does not stand out like clicks: hum or buzz")
+        } else if c.clear < LOST && self.rate_hz < CROWDED_HZ && !(coherent || self.line_holds()) {
+            Some("what repeats does not stand out of what lies between")
         } else if c.clear < UNCLEAR
             && self.rate_hz < CROWDED_HZ
             && !(coherent || self.line_holds())
