@@ -4,7 +4,7 @@
 use super::train::Train;
 use crate::estimate::{COVERAGE_95, Estimate};
 use crate::rhythm::statistics::structure::{self, Structure};
-use crate::rhythm::statistics::{Posterior, PosteriorGrid, robust};
+use crate::rhythm::statistics::{NoiseRange, Posterior, PosteriorGrid, robust};
 use crate::rhythm::{FiringCounts, MainsJitter, OtherTrain, Reading, Stretch, Verdict};
 
 /// Clicks per block of the posterior: long enough for memory of 0.97, short enough that a slow wander is taken by the line.
@@ -43,7 +43,8 @@ pub struct Accumulator {
     steps: f64,
     duration_s: f64,
     pieces: Vec<Piece>,
-    noise_ln_sum: (f64, f64),
+    /// Weighted logarithms of the ends of the range of timing noise, and the weight.
+    noise_ln_sum: (f64, f64, f64),
     excess: (f64, f64),
     drift_variance: (f64, f64),
     mains: Vec<(f64, f64, f64, f64)>,
@@ -71,9 +72,10 @@ impl Accumulator {
             self.others.clone_from(&train.others);
         }
         let n = train.time_s.len() as f64;
-        if let Some(noise) = train.noise_s {
-            self.noise_ln_sum.0 += n * noise.ln();
-            self.noise_ln_sum.1 += n;
+        if let Some(noise) = train.noise {
+            self.noise_ln_sum.0 += n * noise.least_s.ln();
+            self.noise_ln_sum.1 += n * noise.most_s.ln();
+            self.noise_ln_sum.2 += n;
         }
         if let Some(phase) = train.phase_jitter_s {
             self.phase.push((phase, n));
@@ -161,9 +163,11 @@ impl Accumulator {
     }
 
     fn settled_reading(&self) -> Option<Reading> {
-        let noise_s = (self.noise_ln_sum.1 > 0.0).then(|| (self.noise_ln_sum.0 / self.noise_ln_sum.1).exp());
+        let (least, most, weight) = self.noise_ln_sum;
+        let noise =
+            (weight > 0.0).then(|| NoiseRange { least_s: (least / weight).exp(), most_s: (most / weight).exp() });
         let excess = if self.excess.1 > 0.0 { self.excess.0 / self.excess.1 } else { 0.0 };
-        let posterior = self.grid.posterior(noise_s, excess)?;
+        let posterior = self.grid.posterior(noise, excess)?;
         let period = self.duration_s / self.steps;
         let mut notes = Vec::new();
         let random = self.random_jitter(&posterior, period, &mut notes);
@@ -199,7 +203,7 @@ impl Accumulator {
     /// The random part: by intervals, or by the phase of the line where clicks overlap and intervals see memory that may not be.
     fn random_jitter(&self, posterior: &Posterior, period_s: f64, notes: &mut Vec<String>) -> Estimate {
         let Some(phase) = self.phase_jitter().map(overlapping) else { return posterior.jitter_s };
-        let no_clicks = self.noise_ln_sum.1 == 0.0;
+        let no_clicks = self.noise_ln_sum.2 == 0.0;
         let hidden = posterior.memory_probability > 0.5 || posterior.timing_noise_s.value > posterior.jitter_s.value;
         let part = (phase.value / posterior.jitter_s.value).ln();
         if no_clicks || hidden {

@@ -79,9 +79,10 @@ fn teach(
     let (numbers, _) = number(&chain_times, &h.fit.chain.steps, h.fit.period_s);
     let timing = times::choose(window, &finder.whitened, &h, &numbers);
     explanation.push(format!(
-        "times read with {}, expected timing noise {:.2} µs",
+        "times read with {}, expected timing noise {:.2} to {:.2} µs",
         timing.channel,
-        1e6 * timing.noise_s
+        1e6 * timing.noise.least_s,
+        1e6 * timing.noise.most_s
     ));
     let overlaps = h.fit.period_s < overlap::PHASE_BELOW_S
         && line_s.is_some_and(|line_s| (line_s / h.fit.period_s - 1.0).abs() < 0.03);

@@ -241,7 +241,7 @@ impl Measurer {
         train.shift((self.held_from + at as u64) as f64 / self.rate_hz);
         self.sums.add(&train);
         self.trains += 1;
-        self.events.extend(train.events(train.noise_s.unwrap_or(0.05 * train.period_s)));
+        self.events.extend(train.events(train.noise.map_or(0.05 * train.period_s, |noise| noise.most_s)));
     }
 
     /// Forgets `count` samples but for the margin that the next window needs.

@@ -149,7 +149,7 @@ impl Model {
 
     fn finish(&self, window: &Window, h: &Hypothesis, others: &[Fit], plain: &[f32], flat: &[f32]) -> Train {
         let time_s = self.timing.read(flat, &h.fit.times_s(&h.candidates));
-        let mut train = Train::of_clicks(h, others, time_s, self.timing.noise_s, plain, window.rate_hz);
+        let mut train = Train::of_clicks(h, others, time_s, self.timing.noise, plain, window.rate_hz);
         train.size.iter_mut().for_each(|s| *s *= self.plain_scale);
         train.extra.iter_mut().for_each(|e| e.1 *= self.plain_scale);
         if self.overlaps {

@@ -109,7 +109,7 @@ pub fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> 
         number,
         stretches,
         extra: Vec::new(),
-        noise_s: None,
+        noise: None,
         phase_jitter_s: Some(read.jitter_s),
         period_s: line.fit.period_s,
         others: Vec::new(),

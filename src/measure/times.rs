@@ -6,7 +6,7 @@ use crate::clicks::shape::pieces;
 use crate::clicks::snippet::dot;
 use crate::clicks::timing::{Channel, Flatness, Reader, channels};
 use crate::rhythm::order::median;
-use crate::rhythm::statistics::robust;
+use crate::rhythm::statistics::{NoiseRange, robust};
 
 /// Clicks in a row by which channels are compared, and clicks of a first look after which only those stay whose scatter is within
 /// this factor of the least.
@@ -23,8 +23,8 @@ const LEAST_NOISE_S: f64 = 2e-7;
 pub struct Timing {
     /// The reader with its flattening, or none: the times as found.
     pub reader: Option<(Reader, Flatness)>,
-    /// Timing noise that the audio's noise predicts, s.
-    pub noise_s: f64,
+    /// Timing noise to expect.
+    pub noise: NoiseRange,
     /// Which channel, in words.
     pub channel: String,
 }
@@ -78,7 +78,10 @@ pub fn choose(window: &Window, whitened: &[f32], h: &Hypothesis, number: &[i64])
     let between_s = between_s.min(by_misfit);
     Timing {
         reader: best.reader,
-        noise_s: (by_noise * by_noise + between_s * between_s + LEAST_NOISE_S * LEAST_NOISE_S).sqrt(),
+        noise: NoiseRange {
+            least_s: by_noise.hypot(LEAST_NOISE_S),
+            most_s: by_noise.hypot(between_s).hypot(LEAST_NOISE_S),
+        },
         channel: best.name,
     }
 }

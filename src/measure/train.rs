@@ -7,6 +7,7 @@ use crate::firing::{Event, EventKind};
 use crate::rhythm::OtherTrain;
 use crate::rhythm::fit::Fit;
 use crate::rhythm::order::median;
+use crate::rhythm::statistics::NoiseRange;
 use std::ops::Range;
 
 /// A drop-out of more periods than this ends a stretch; a shorter one counts as missed clicks.
@@ -25,8 +26,8 @@ pub struct Train {
     pub stretches: Vec<Range<usize>>,
     /// Times and sizes of clicks off the rhythm.
     pub extra: Vec<(f64, f32)>,
-    /// Timing noise predicted from the audio's noise, s.
-    pub noise_s: Option<f64>,
+    /// Timing noise to expect.
+    pub noise: Option<NoiseRange>,
     /// Jitter read from the phase of the line, where clicks overlap, s.
     pub phase_jitter_s: Option<Estimate>,
     /// Mean local period, s.
@@ -63,7 +64,14 @@ pub fn number(time_s: &[f64], steps: &[usize], period_s: f64) -> (Vec<i64>, Vec<
 impl Train {
     /// The train of separate clicks of a hypothesis, with the trains heard beside it.
     #[must_use]
-    pub fn of_clicks(h: &Hypothesis, others: &[Fit], time_s: Vec<f64>, noise_s: f64, x: &[f32], rate_hz: f64) -> Self {
+    pub fn of_clicks(
+        h: &Hypothesis,
+        others: &[Fit],
+        time_s: Vec<f64>,
+        noise: NoiseRange,
+        x: &[f32],
+        rate_hz: f64,
+    ) -> Self {
         let (number, stretches) = number(&time_s, &h.fit.chain.steps, h.fit.period_s);
         let foreign_s = trains::times_of(&h.candidates, others);
         let extra = extras(h, &foreign_s).into_iter().map(|t| (t, size_at(x, t * rate_hz, rate_hz))).collect();
@@ -73,7 +81,7 @@ impl Train {
             number,
             stretches,
             extra,
-            noise_s: Some(noise_s),
+            noise: Some(noise),
             phase_jitter_s: None,
             period_s: h.fit.period_s,
             others: trains::figures_of(h, others),

@@ -4,6 +4,7 @@ use super::{Bound, Cell, Errors, HEAD, on_all_cores};
 use crate::measure::accumulate::Accumulator;
 use crate::measure::train::Train;
 use crate::model::random::Random;
+use crate::rhythm::statistics::NoiseRange;
 use std::f64::consts::TAU;
 
 /// Timing noise of a click of the default receiver, s, with the noise of the audio 0 dB under its peak: the bound of its arrival
@@ -50,7 +51,7 @@ impl Kind {
             size: vec![0.5; self.clicks],
             stretches: std::iter::once(0..self.clicks).collect(),
             extra: Vec::new(),
-            noise_s: Some(noise_s),
+            noise: Some(NoiseRange::of(noise_s)),
             phase_jitter_s: None,
             period_s,
             others: Vec::new(),

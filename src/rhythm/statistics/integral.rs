@@ -1,12 +1,13 @@
 //! The integral over the posterior's grid: finer cells between the nodes by interpolation, scales at each, and quantiles of what
 //! they weigh.
 
+use super::noise::NoiseRange;
 use super::posterior::{Cell, MEMORIES, MEMORY_STEP, NONE, Posterior, PosteriorGrid, SHARES, memory, share};
 use crate::estimate::{COVERAGE_95, Estimate};
 
 /// Weight of negative memory in the prior, against positive: a gap that alternates is rare, and negative memory is what timing
 /// noise looks like where its prediction is too low.
-const NEGATIVE: f64 = 0.15;
+const NEGATIVE: f64 = 0.05;
 /// Finer memories and shares between them for the integral: as many as the posterior's width asks for, within these.
 const FINE: (usize, usize) = (8, 32);
 /// Nats below the best node within which the space between nodes is looked at, and below the best cell within which cells
@@ -19,18 +20,16 @@ const SCALES: usize = 17;
 const SCALE_REACH: f64 = 4.0;
 /// Bins of a quantity's logarithm, between its extremes.
 const BINS: usize = 4096;
-/// Log standard deviation of the prior of the timing noise below and above the prediction, which is rather too high.
-const NOISE_PRIOR_LN_SD: (f64, f64) = (0.7, 0.5);
-
 impl PosteriorGrid {
     /// The posterior near its maximum, as weights of cells and scales.
-    pub(super) fn weigh(&self, noise_s: Option<f64>) -> Weighted {
-        let ln_noise = noise_s.map(f64::ln);
+    pub(super) fn weigh(&self, noise: Option<NoiseRange>) -> Weighted {
+        let noise = noise.map(NoiseRange::ln);
+        let ln_prior = |ln_noise: f64| noise.map_or(0.0, |n| n.ln_prior(ln_noise));
         let mut cells = self.fine_cells();
         for c in &mut cells {
             c.ln_scale = c.cell.ln_rest - self.freedom.ln();
-            c.off = ln_noise.map_or(0.0, |n| 0.5 * (c.ln_scale + c.u.ln()) - n);
-            c.ln += if ln_noise.is_some() { ln_noise_prior(c.off) } else { 0.0 };
+            c.ln_noise = 0.5 * (c.ln_scale + c.u.ln());
+            c.ln += ln_prior(c.ln_noise);
         }
         let top = cells.iter().map(|c| c.ln).fold(f64::NEG_INFINITY, f64::max);
         cells.retain(|c| c.ln > top - CELL_REACH);
@@ -42,11 +41,7 @@ impl PosteriorGrid {
             .iter()
             .map(|c| {
                 std::array::from_fn(|k| {
-                    let prior = if ln_noise.is_some() {
-                        ln_noise_prior(c.off + 0.5 * step[k]) - ln_noise_prior(c.off)
-                    } else {
-                        0.0
-                    };
+                    let prior = ln_prior(c.ln_noise + 0.5 * step[k]) - ln_prior(c.ln_noise);
                     (c.ln - top + ln_likelihood[k] + prior).exp()
                 })
             })
@@ -79,7 +74,7 @@ impl PosteriorGrid {
             let best = (0..MEMORIES).max_by(|&a, &b| value[a].total_cmp(&value[b])).unwrap_or(NONE);
             let mut push = |at: &Place, cell: LnCell| {
                 let ln = profile(&cell) + at.ln_weight + ln_share;
-                cells.push(FineCell { ln, u, rho: at.rho, ln_scale: 0.0, off: 0.0, cell });
+                cells.push(FineCell { ln, u, rho: at.rho, ln_scale: 0.0, ln_noise: 0.0, cell });
             };
             if let Some(cell) = column[NONE] {
                 push(&none, cell);
@@ -110,12 +105,6 @@ impl Place {
         let rho = memory(place);
         Self { place, rho, ln_weight: (memory_density(rho) * MEMORY_STEP / fine as f64).ln() }
     }
-}
-
-/// Log of the prior of the timing noise, `off` its natural log over the prediction.
-fn ln_noise_prior(off: f64) -> f64 {
-    let z = off / if off < 0.0 { NOISE_PRIOR_LN_SD.0 } else { NOISE_PRIOR_LN_SD.1 };
-    -0.5 * z * z
 }
 
 /// Prior density of artanh ρ beside the half that lies on no memory: flat in ρ over the positive range and thin over the
@@ -175,8 +164,8 @@ struct FineCell {
     rho: f64,
     /// ln s² of the residual sum.
     ln_scale: f64,
-    /// Log of its timing noise over the predicted one.
-    off: f64,
+    /// Log of its timing noise.
+    ln_noise: f64,
     cell: LnCell,
 }
 

@@ -6,6 +6,7 @@
 //! Raw differences of click times would read √(σ_T² + 2σ_e²) instead of σ_T (Wing and Kristofferson 1973, two-level timing).
 
 mod integral;
+mod noise;
 #[cfg(test)]
 mod plain;
 pub mod posterior;
@@ -13,4 +14,5 @@ pub mod robust;
 pub mod structure;
 mod whiten;
 
+pub use noise::NoiseRange;
 pub use posterior::{Posterior, PosteriorGrid};

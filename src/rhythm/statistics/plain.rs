@@ -11,12 +11,12 @@ fn plain_posterior(time_s: &[f64], number: &[i64], noise_s: Option<f64>) -> [f64
     let freedom = block.freedom();
     let most = (0.2 * 11.0f64).tanh();
     let least = (-0.6f64).tanh();
-    // Half of the prior on no memory; the rest flat over the positive range, and 0.15 of that over the negative one.
+    // Half of the prior on no memory; the rest flat over the positive range, and a twentieth of that over the negative one.
     const MEMORIES: usize = 160;
     let width = (most - least) / MEMORIES as f64;
-    let density = 0.5 / (most - 0.15 * least);
+    let density = 0.5 / (most - 0.05 * least);
     let memories = (0..MEMORIES).map(|i| least + (i as f64 + 0.5) * width).map(|rho| {
-        let weight = density * width * if rho < 0.0 { 0.15 } else { 1.0 };
+        let weight = density * width * if rho < 0.0 { 0.05 } else { 1.0 };
         (rho, weight)
     });
     let memories: Vec<(f64, f64)> = std::iter::once((0.0, 0.5)).chain(memories).collect();
@@ -32,7 +32,11 @@ fn plain_posterior(time_s: &[f64], number: &[i64], noise_s: Option<f64>) -> [f64
                     + 0.5 * (u * (1.0 - u)).ln();
                 if let Some(noise_s) = noise_s {
                     let off = ((scale * u).sqrt() / noise_s).ln();
-                    ln -= 0.5 * (off / if off < 0.0 { 0.7 } else { 0.5 }).powi(2);
+                    ln += if off < 0.0 {
+                        -0.5 * (off / 0.7).powi(2)
+                    } else {
+                        ((-2.0 * off * off).exp() + if off < 3.5 { 0.03 } else { 1e-30 }).ln()
+                    };
                 }
                 points.push(((scale * (1.0 - u)).sqrt(), ln));
             }
@@ -70,7 +74,7 @@ fn the_grid_gives_the_median_and_the_interval_of_plain_summation() {
         let noise_s = told.then_some(noise);
         let mut grid = PosteriorGrid::default();
         grid.add(&time_s, &number);
-        let fast = grid.posterior(noise_s, 0.0).expect("clicks enough").jitter_s;
+        let fast = grid.posterior(noise_s.map(super::noise::NoiseRange::of), 0.0).expect("clicks enough").jitter_s;
         let plain = plain_posterior(&time_s, &number, noise_s);
         for (fast, plain) in [fast.value, fast.low, fast.high].into_iter().zip(plain) {
             // Steps of the two lattices, a third of a standard deviation of the scale at most; the interval is wide against that.

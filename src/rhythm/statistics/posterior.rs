@@ -6,6 +6,7 @@
 //! predicts, and holds half its weight at no memory. The whole posterior is used, not its maximum: near σ_e ≫ σ_T or with
 //! memory under timing noise the maximum is lucky and its curvature says nothing.
 
+use super::noise::NoiseRange;
 use super::whiten::{Block, LANES, Pass};
 use crate::estimate::Estimate;
 
@@ -156,17 +157,17 @@ impl PosteriorGrid {
         self.freedom
     }
 
-    /// Evaluates the posterior. `noise_s` is the timing noise that the audio's noise predicts, if known; `excess` the excess
+    /// Evaluates the posterior. `noise` is where the audio lets the timing noise be expected, if known; `excess` the excess
     /// kurtosis of the periods (widens the interval of the jitter by √(1 + κ/2)).
     #[must_use]
-    pub fn posterior(&self, noise_s: Option<f64>, excess: f64) -> Option<Posterior> {
+    pub fn posterior(&self, noise: Option<NoiseRange>, excess: f64) -> Option<Posterior> {
         if self.freedom < 2.0 {
             return None;
         }
         // The grid ends at a share of 3e-4: a prior beyond it would pull the scale instead of the share.
         let smallest = self.cells.iter().filter(|c| c.live).map(|c| c.rest).fold(f64::INFINITY, f64::min);
         let least = LEAST_NOISE_SHARE * (smallest / self.freedom * share(0.0)).sqrt();
-        let weighted = self.weigh(noise_s.map(|n| n.max(least)));
+        let weighted = self.weigh(noise.map(|n| n.at_least(least)));
         Some(weighted.summary(self.freedom, excess))
     }
 }
@@ -203,7 +204,7 @@ mod tests {
                 let (t, n) = train(400, jitter, noise, 0.0, seed);
                 let mut grid = PosteriorGrid::default();
                 grid.add(&t, &n);
-                let p = grid.posterior(Some(noise), 0.0).unwrap();
+                let p = grid.posterior(Some(NoiseRange::of(noise)), 0.0).unwrap();
                 inside += usize::from((p.jitter_s.low..p.jitter_s.high).contains(&jitter));
             }
             // 95 % of 40 with a binomial spread of 1.4: at least 34.
@@ -230,7 +231,7 @@ mod tests {
                 let (t, n) = train(2500, 0.02, 0.001, rho, 100 + seed);
                 let mut grid = PosteriorGrid::default();
                 grid.add(&t, &n);
-                let p = grid.posterior(Some(0.001), 0.0).unwrap();
+                let p = grid.posterior(Some(NoiseRange::of(0.001)), 0.0).unwrap();
                 inside += usize::from((p.jitter_s.low..p.jitter_s.high).contains(&0.02));
             }
             // As above.
