@@ -55,12 +55,12 @@ fn best_of(c: &Candidates, rest: &[usize], duration_s: f64, typical: f64) -> Opt
         return None;
     }
     // A train whose median mark is above the threshold has few clicks far below it.
-    let rest: Vec<usize> = rest.iter().copied().filter(|&i| c.mark[i] > threshold - SPREAD).collect();
-    let part = c.pick(&rest);
+    let large: Vec<usize> = rest.iter().copied().filter(|&i| c.mark[i] > threshold - SPREAD).collect();
+    let part = c.pick(&large);
     let best = search::rhythms(&part, duration_s, false, search::SHORTEST_SLOW_S, None)
         .into_iter()
         .max_by(|a, b| a.evidence.total_cmp(&b.evidence))?;
-    let fit = search::fit_among(c, &rest, duration_s, Start::again(&best), DENSITY)?;
+    let fit = search::fit_among(c, rest, duration_s, Start::again(&best), DENSITY)?;
     let n = fit.chain.index.len() as f64;
     let sound =
         fit.evidence > EVIDENCE && fit.evidence > EVIDENCE_PER_FIRING * n && fit.cover > COVER && fit.jitter < LOOSEST;

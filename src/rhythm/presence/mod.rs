@@ -64,6 +64,8 @@ const CHORD: (f64, f64) = (0.99, 2e-3);
 /// off its frequency in more than this share of the time at less than this scatter.
 const UNCLEAR: f64 = 2.0;
 const MANY_TONES: f64 = 0.5;
+/// Nor, standing out by less than this, be less alike than this (an engine's beats).
+const UNSURE: (f64, f64) = (1.8, 0.85);
 const WANDERING: (f64, f64) = (0.12, 0.7);
 /// A rate on a mains multiple, within this, with this share of the energy in mains lines is buzz unless clicks stand out by
 /// this factor …
@@ -257,9 +259,10 @@ impl Heard {
         } else if c.clear < LOST && self.rate_hz < CROWDED_HZ && !(coherent || self.line_holds()) {
             Some("what repeats does not stand out of what lies between")
         } else if c.clear < UNCLEAR
-            && self.rate_hz < CROWDED_HZ
             && !(coherent || self.line_holds())
-            && (self.tones.six > MANY_TONES || self.line_wanders())
+            && ((self.rate_hz < CROWDED_HZ
+                && (self.tones.six > MANY_TONES || (c.clear < UNSURE.0 && c.alike < UNSURE.1)))
+                || self.line_wanders())
         {
             Some("what repeats hardly stands out of tones or a voice")
         } else if self.cover < PARTLY.0 && c.clear < PARTLY.1 && c.alike < PARTLY.2 {
