@@ -214,7 +214,7 @@ fn a_measurement_is_compared_with_the_truth_of_its_clip() {
             .expect("it runs")
     };
     let text = said(&measure(&["--truth", "supply-01.json"]));
-    assert!(text.contains("the gap in the clip was found") && text.contains("covered"), "{text}");
+    assert!(text.contains("the gap in the clip was found") && text.contains("inside the 95 % interval"), "{text}");
     let output = measure(&["--truth", "supply-01.json", "--json"]);
     let json: serde_json::Value = serde_json::from_slice(&output.stdout).expect("JSON");
     assert_eq!(json["format"], "gaptone.measurement/1");
@@ -223,7 +223,7 @@ fn a_measurement_is_compared_with_the_truth_of_its_clip() {
     assert!(off.abs() < 2.0, "{off}");
     // The truth of another clip is far off, and a file that is no truth is refused.
     let other = measure(&["--truth", "supply-02.json"]);
-    assert!(said(&other).contains("NOT covered"), "{}", said(&other));
+    assert!(said(&other).contains("OUTSIDE the 95 % interval"), "{}", said(&other));
     let wrong = measure(&["--truth", "index.json"]);
     assert_eq!(wrong.status.code(), Some(1));
     assert!(said(&wrong).contains("is no truth file"), "{}", said(&wrong));

@@ -23,10 +23,16 @@ fn unit() -> Complex {
 #[test]
 fn a_square_law_detector_gives_the_square_and_a_synchronous_one_the_part_in_phase() {
     let z = Complex::from_polar(0.6, 1.1);
-    assert!((detector(DetectorKind::Envelope).step(z, unit()) - 0.6).abs() < 1e-15);
-    assert!((detector(DetectorKind::SquareLaw).step(z, unit()) - 0.36).abs() < 1e-15);
+    // The first step leads there from zero.
+    let second = |kind, reference| {
+        let mut detector = detector(kind);
+        detector.step(z, reference);
+        detector.step(z, reference)
+    };
+    assert!((second(DetectorKind::Envelope, unit()) - 0.6).abs() < 1e-15);
+    assert!((second(DetectorKind::SquareLaw, unit()) - 0.36).abs() < 1e-15);
     let reference = Complex::from_polar(1.0, 0.8);
-    assert!((detector(DetectorKind::Synchronous).step(z, reference) - 0.6 * 0.3f64.cos()).abs() < 1e-15);
+    assert!((second(DetectorKind::Synchronous, reference) - 0.6 * 0.3f64.cos()).abs() < 1e-15);
 }
 
 #[test]

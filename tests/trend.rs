@@ -181,6 +181,21 @@ fn any_figure_can_be_charted() {
     assert_eq!(analyse(&without, &Options::default()).charted, Charted::FiringRate);
 }
 
+#[test]
+fn a_gap_that_does_not_change_gets_a_step_in_one_log_of_a_hundred_however_long_the_log() {
+    for (entries, logs, most) in [(100, 400, 10), (1000, 200, 7), (10_000, 20, 2)] {
+        let told = (0..logs)
+            .filter(|seed| {
+                let log = Gap::default().entries(entries, 40_000 + seed);
+                analyse(&log, &Options::default()).change_point.is_some()
+            })
+            .count();
+        println!("in control: a step in {told} of {logs} logs of {entries} entries");
+        // With a chance of 1 % more than these come up in one run of 500 (binomial).
+        assert!(told <= most, "{told} of {logs} logs of {entries}");
+    }
+}
+
 /// Figures for a person; run with --ignored --nocapture.
 #[test]
 #[ignore = "prints a table"]

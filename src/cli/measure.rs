@@ -11,6 +11,7 @@ use super::listen::{HeardRecording, Listener};
 use super::log::Log;
 use super::progress::Progress;
 use crate::audio::Span;
+use crate::bench::{Bench, Quantity};
 use crate::firing::Event;
 use crate::model::truth::Truth;
 use crate::report::{self, Differences, Measurement, Report, WithTruth};
@@ -26,9 +27,10 @@ use std::sync::mpsc;
 /// # Errors
 /// Wrong usage, a bench that cannot be used, a place for events that cannot be written.
 pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
-    let task = Task::new(arguments)?;
-    let mut results =
-        Results { json: arguments.json, truth: truth(arguments)?, log: log(arguments)?, ..Results::default() };
+    let (bench, supply) = bench(arguments)?;
+    let task = Task::new(arguments, bench.as_ref(), supply)?;
+    let log = Log::new(&arguments.log, bench.as_ref(), supply)?;
+    let mut results = Results { json: arguments.json, truth: truth(arguments)?, log, ..Results::default() };
     if arguments.difference {
         if arguments.recordings.len() != 2 {
             return Err(Failure::usage("--difference compares two recordings; name exactly two"));
@@ -81,7 +83,7 @@ struct Task<'a> {
 
 impl<'a> Task<'a> {
     /// Checks everything that can be checked before any audio is read.
-    fn new(arguments: &'a MeasureArguments) -> Result<Self, Failure> {
+    fn new(arguments: &'a MeasureArguments, bench: Option<&Bench>, supply: Option<Quantity>) -> Result<Self, Failure> {
         let recordings = &arguments.recordings;
         let span = Span { from_s: arguments.from.unwrap_or(0.0), to_s: arguments.to };
         if span.to_s.is_some_and(|to_s| to_s <= span.from_s) {
@@ -99,7 +101,8 @@ impl<'a> Task<'a> {
             }
             files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
         }
-        let voltage = voltmeter(arguments)?;
+        let told = |error| Failure::usage(format!("{}: {error}", arguments.bench.as_deref().unwrap_or_default()));
+        let voltage = bench.map(|bench| VoltageMeter::new(bench, supply)).transpose().map_err(told)?;
         let voltage = if arguments.budget { voltage.map(VoltageMeter::with_all_budgets) } else { voltage };
         Ok(Self {
             listener: Listener { channel: arguments.channel.unwrap_or_default(), span, explain: arguments.explain },
@@ -187,20 +190,12 @@ fn truth(arguments: &MeasureArguments) -> Result<Option<Truth>, Failure> {
         .map_err(|error| Failure::Told(Exit::File, format!("{name}: is no truth file of a rendered clip ({error})")))
 }
 
-/// The voltmeter of the bench; none without a bench.
-fn voltmeter(arguments: &MeasureArguments) -> Result<Option<VoltageMeter>, Failure> {
-    let Some(name) = &arguments.bench else { return Ok(None) };
+/// The bench, and the supply that stands for its own.
+fn bench(arguments: &MeasureArguments) -> Result<(Option<Bench>, Option<Quantity>), Failure> {
+    let Some(name) = &arguments.bench else { return Ok((None, None)) };
     let bench = bench_file::load(name)?;
     let supply = arguments.supply.as_deref().map(|text| bench_file::supply(text, &bench)).transpose()?;
-    VoltageMeter::new(&bench, supply).map(Some).map_err(|error| Failure::usage(format!("{name}: {error}")))
-}
-
-/// The log, if one is kept.
-fn log(arguments: &MeasureArguments) -> Result<Option<Log>, Failure> {
-    let bench = arguments.bench.as_deref().filter(|_| arguments.log.log.is_some()).map(bench_file::load).transpose()?;
-    let given = bench.as_ref().zip(arguments.supply.as_deref());
-    let supply = given.map(|(bench, text)| bench_file::supply(text, bench)).transpose()?;
-    Log::new(&arguments.log, bench.as_ref(), supply)
+    Ok((Some(bench), supply))
 }
 
 /// Results as they come in, put out in the order of the arguments.

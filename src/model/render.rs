@@ -174,10 +174,11 @@ impl<I: Iterator<Item = Firing>> Renderer<I> {
         });
         let recorder = Recorder::new(settings.recorder, output_rate_hz, settings.seed);
         let run_in = (run_in_s(receiver) * output_rate_hz).ceil() as i64;
+        let chain = Chain::new(receiver, rate_hz, -run_in * factor as i64, settings.seed);
         let mut renderer = Self {
             firings: firings.into_iter().peekable(),
-            chain: Chain::new(receiver, rate_hz, -run_in * factor as i64, settings.seed),
-            decimator: Decimator::new(factor),
+            decimator: Decimator::new(factor, |cycles| chain.to_give_back(cycles)),
+            chain,
             hum,
             recorder,
             reference_voltage_v: settings.reference_voltage_v,
@@ -268,7 +269,7 @@ impl IsolatedClick {
     fn of(receiver: &ReceiverSettings, rate_hz: f64, factor: usize) -> Self {
         let bare = bare(receiver);
         let mut chain = Chain::new(&bare, rate_hz, 0, 0);
-        let mut decimator = Decimator::new(factor);
+        let mut decimator = Decimator::new(factor, |cycles| chain.to_give_back(cycles));
         let length = (run_in_s(&bare) * rate_hz) as usize + 2 * decimator.delay() as usize + 16;
         let mut audio = Vec::with_capacity(length);
         for k in 0..length {
@@ -330,3 +331,6 @@ fn loudest(settings: &RenderSettings, rate_hz: f64, click_peak: f64) -> f64 {
     let hum = receiver.hum.map_or(0.0, |hum| hum.amplitude * (1.0 + hum.buzz)) * click_peak;
     loudest + hum
 }
+
+#[cfg(test)]
+mod brute_force;

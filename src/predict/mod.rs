@@ -27,7 +27,7 @@ pub use ripple::{LockRange, LockedPattern, RippleForecast};
 pub use target::{Alternative, Sweep, Target, supply_for_rate, sweep, target};
 pub use text::{sweep_text, text};
 
-use crate::bench::Bench;
+use crate::bench::{Bench, si};
 use crate::estimate::Estimate;
 use crate::model::breakdown::{GapVoltage, NoGapVoltage};
 use propagate::Propagated;
@@ -67,7 +67,10 @@ pub enum PredictError {
     Missing(String),
     /// No supply setting gives the rate.
     #[error(
-        "no supply setting up to {most_v} V gives {rate_hz} firings a second; the bench reaches {low_hz:.4} to {high_hz:.4}"
+        "no supply setting up to {} gives {rate_hz} firings a second; the bench reaches {} to {}",
+        si(*most_v, "V", 4),
+        si(*low_hz, "", 4),
+        si(*high_hz, "", 4)
     )]
     Unreachable {
         /// Rate asked for, Hz.

@@ -385,3 +385,13 @@ proptest! {
         prop_assert!(text(&found).contains("Cautions"));
     }
 }
+
+#[test]
+fn a_rate_out_of_reach_is_told_with_no_more_digits_than_help() {
+    let error =
+        PredictError::Unreachable { rate_hz: 5e5, low_hz: 0.123_456_789, high_hz: 61_234.567, most_v: 99_999.999 };
+    assert_eq!(
+        error.to_string(),
+        "no supply setting up to 100.0 kV gives 500000 firings a second; the bench reaches 0.1235 to 61230"
+    );
+}

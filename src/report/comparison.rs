@@ -147,17 +147,29 @@ pub fn comparison_text(comparison: &Comparison) -> String {
     }
     for figure in &comparison.figures {
         let line = match (figure.measured, figure.intervals) {
-            (Some(measured), Some(intervals)) => format!(
-                "measured {:<22} {:>6} half intervals off: {}",
-                in_units(&figure.quantity, measured.value),
-                signed(intervals, 2),
-                if figure.covered() { "covered" } else { "NOT covered" }
-            ),
+            (Some(measured), Some(intervals)) => {
+                format!("measured {:<22} {}", in_units(&figure.quantity, measured.value), distance(intervals))
+            }
             _ => "not measured".to_owned(),
         };
         let _ = writeln!(text, "  {:<28} {:<22} {line}", figure.quantity, in_units(&figure.quantity, figure.truth));
     }
     text
+}
+
+/// How far off a figure is, in words.
+fn distance(intervals: f64) -> String {
+    let side = if intervals > 0.0 { "above" } else { "below" };
+    match intervals.abs() {
+        0.0 => "is the truth".to_owned(),
+        off if off <= 1.0 => {
+            format!("{side} the truth, which is inside the 95 % interval, {:.0} % of the way to its end", 100.0 * off)
+        }
+        off if off.is_finite() => {
+            format!("{side} the truth, which is OUTSIDE the 95 % interval, {off:.2} times as far as its end")
+        }
+        _ => format!("{side} the truth; its interval has no width"),
+    }
 }
 
 /// A figure in the unit that the name of its quantity ends in, to six digits.
@@ -196,6 +208,13 @@ mod tests {
         assert_eq!(in_units("period_jitter_s", 14.64e-6), "14.6400 µs");
         assert_eq!(in_units("gap_voltage_v", 5200.0), "5.20000 kV");
         assert_eq!(in_units("drift_per_s", -1e-8), "+0.000 % per minute");
+    }
+
+    #[test]
+    fn distances_are_told_in_words() {
+        assert_eq!(distance(0.414), "above the truth, which is inside the 95 % interval, 41 % of the way to its end");
+        assert_eq!(distance(-1.3), "below the truth, which is OUTSIDE the 95 % interval, 1.30 times as far as its end");
+        assert_eq!(distance(0.0), "is the truth");
     }
 
     #[test]

@@ -275,9 +275,17 @@ pub fn write_trend_csv(out: &mut impl io::Write, trend: &Trend) -> io::Result<()
     Ok(())
 }
 
-/// Eight significant digits: more than any figure is worth, and no tail of rounding.
+/// Eight significant digits: more than any figure is worth, and no tail of rounding. A whole number times or over an exact power
+/// of ten is the nearest number to that decimal, so that it is written with these digits and no more.
 fn rounded(value: f64) -> f64 {
-    format!("{value:.7e}").parse().unwrap_or(value)
+    /// Powers of ten up to this one are exact.
+    const EXACT: i32 = 22;
+    let power = 7 - value.abs().log10().floor() as i32;
+    match power {
+        _ if value == 0.0 || power.abs() > EXACT => value,
+        0.. => (value * 10f64.powi(power)).round() / 10f64.powi(power),
+        _ => (value / 10f64.powi(-power)).round() * 10f64.powi(-power),
+    }
 }
 
 /// A field in quotes where CSV needs them (RFC 4180).
@@ -286,5 +294,32 @@ fn quoted(field: &str) -> String {
         format!("\"{}\"", field.replace('"', "\"\""))
     } else {
         field.to_owned()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn eight_digits_are_written_without_a_tail() {
+        for (value, written) in [
+            (7_103.123_456_789, "7103.1235"),
+            (0.1 + 0.2, "0.3"),
+            (-1.234_567_891e-5, "-0.000012345679"),
+            (9.999_999_999, "10"),
+            (123_456_789_012.0, "123456790000"),
+            (0.0, "0"),
+            (1e-30, "0.000000000000000000000000000001"),
+        ] {
+            assert_eq!(rounded(value).to_string(), written);
+        }
+        // As the decimal formatting of the standard library rounds, for many sizes.
+        for k in 1..20_000 {
+            let value = (f64::from(k) * 0.377).rem_euclid(40.0).exp2() * 1e-6;
+            let slow: f64 = format!("{value:.7e}").parse().expect("a number");
+            assert!((rounded(value) - slow).abs() <= 1.1e-7 * value, "{value}");
+            assert!(rounded(value).to_string().trim_start_matches(['0', '.']).replace('.', "").len() <= 8, "{value}");
+        }
     }
 }

@@ -67,6 +67,25 @@ pub fn step(values: &[f64]) -> Option<Step> {
     Some(Step { at, interval: (interval.0 + 1, interval.1 + 1), before, after, difference, squares })
 }
 
+/// Standard uncertainties that the best step of `count` values without one exceeds with the given probability. The best of many
+/// places looks like a step by chance, and the more so the longer the series.
+///
+/// Vostrikova 1981 (from memory), for the largest standardised difference over all places: P = x·φ(x)·(T − T/x² + 4/x²) with
+/// φ the normal density and T = 2·ln((1 − h)/h), h the share of the series that a side has at least.
+#[must_use]
+pub fn clear(count: usize, probability: f64) -> f64 {
+    let h = 1.0 / (count as f64).max(4.0);
+    let t = 2.0 * ((1.0 - h) / h).ln();
+    let chance = |x: f64| x * (-0.5 * x * x).exp() / std::f64::consts::TAU.sqrt() * (t - t / (x * x) + 4.0 / (x * x));
+    let (mut low, mut high) = (2.0, 8.0);
+    while high - low > 1e-6 {
+        let middle = 0.5 * (low + high);
+        if chance(middle) > probability { low = middle } else { high = middle }
+    }
+    // Student's distribution of short series has heavier tails than the normal one that the formula is for.
+    high * (1.0 + (high * high + 1.0) / (4.0 * (count as f64 - 2.0).max(1.0)))
+}
+
 /// First and last index of the most probable places that together hold the coverage.
 fn most_probable(log_probability: &[f64], best: f64) -> (usize, usize) {
     let mut places: Vec<(usize, f64)> =

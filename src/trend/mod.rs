@@ -42,8 +42,8 @@ pub const REFERENCE: usize = 20;
 /// Fewest entries from which limits are drawn.
 pub const FEWEST: usize = 8;
 
-/// Standard uncertainties by which a step must stand out: the best of many places for a step looks like one by chance.
-const CLEAR: f64 = 3.0;
+/// Logs of a gap that does not change in which a step is told all the same, one in so many.
+const CHANCE: f64 = 0.01;
 
 /// What is asked of a log.
 #[derive(Debug, Clone, Default)]
@@ -132,7 +132,8 @@ pub fn analyse(entries: &[Entry], options: &Options) -> Trend {
     if let Some(limits) = &limits {
         alarms = alarms::find(&mut points, limits);
         wide_moving_ranges = points.iter().filter(|point| point.moving_range > Some(limits.moving_range_high)).count();
-        let is_clear = |step: &change::Step| step.difference.value.abs() > CLEAR * step.difference.u;
+        let clear = change::clear(values.len(), CHANCE);
+        let is_clear = |step: &change::Step| step.difference.value.abs() > clear * step.difference.u;
         let step = change::step(&values).filter(|step| !alarms.is_empty() && is_clear(step));
         wear = wear::wear(&points, &values, step.as_ref(), limits, points::has_hour_meter(&used));
         change_point = step.map(|step| at_its_time(&step, &points));

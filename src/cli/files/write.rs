@@ -42,6 +42,7 @@ pub fn write_atomically(
         }
         _ => {}
     }
+    remove_left_behind(path);
     let mut temporary = Temporary { path: temporary_path(path), kept: false };
     let file = File::create_new(&temporary.path).map_err(not_writable)?;
     let file = fill(file, content).map_err(not_writable)?;
@@ -98,6 +99,26 @@ fn temporary_path(path: &Path) -> PathBuf {
     path.with_file_name(format!(".{name}.{}.part", std::process::id()))
 }
 
+/// Removes what runs that were killed left behind while they wrote the same file. Only where it can be told that the run is
+/// gone (Linux); what cannot be removed is left alone.
+fn remove_left_behind(path: &Path) {
+    let processes = Path::new("/proc");
+    let (Some(name), Some(folder)) = (path.file_name(), path.parent()) else { return };
+    if !processes.join("self").exists() {
+        return;
+    }
+    let beginning = format!(".{}.", name.to_string_lossy());
+    let folder = if folder.as_os_str().is_empty() { Path::new(".") } else { folder };
+    for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
+        let found = entry.file_name();
+        let process = found.to_str().and_then(|name| name.strip_prefix(&beginning)?.strip_suffix(".part"));
+        let number = process.filter(|process| process.parse::<u32>().is_ok());
+        if number.is_some_and(|number| !processes.join(number).exists()) {
+            let _ = fs::remove_file(entry.path());
+        }
+    }
+}
+
 pub(super) fn not_writable(error: io::Error) -> FileError {
     match error.kind() {
         io::ErrorKind::NotFound => FileError::Broken("cannot be written: there is no such folder".to_owned()),
@@ -145,6 +166,22 @@ mod tests {
         write_atomically(path.to_str().expect("UTF-8"), |out| out.write_all(b"new")).expect("written");
         assert_eq!(fs::read_to_string(&path).expect("read"), "new");
         assert_eq!(names_in(folder.path()), ["out.csv"]);
+    }
+
+    #[cfg(target_os = "linux")]
+    #[test]
+    fn what_a_killed_run_left_behind_goes_with_the_next_writing_of_the_same_file_and_nothing_else() {
+        let folder = tempfile::tempdir().expect("a temporary folder");
+        // Process numbers of Linux end at 4194304; the first process always lives.
+        for name in [".out.csv.4999999.part", ".out.csv.1.part", ".out.csv.x.part", ".other.csv.4999999.part"] {
+            fs::write(folder.path().join(name), "half").expect("written");
+        }
+        let path = folder.path().join("out.csv");
+        write_atomically(path.to_str().expect("UTF-8"), |out| out.write_all(b"new")).expect("written");
+        assert_eq!(
+            names_in(folder.path()),
+            [".other.csv.4999999.part", ".out.csv.1.part", ".out.csv.x.part", "out.csv"]
+        );
     }
 
     #[test]

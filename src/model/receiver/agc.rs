@@ -1,9 +1,12 @@
 //! Automatic gain control by one of three laws. A firing rate far above 1/decay looks to it like a steady carrier; a slow train
 //! is turned down after each click.
 //!
-//! Over one internal step the level is held, and the step of each law is exact.
+//! Over one internal step the level is held at its mean, and the step of each law is exact; a step in which attack and decay
+//! take turns is taken in pieces.
 
+use super::Complex;
 use super::detector::remains;
+use super::passage::{PARTS, Passage, simpson};
 use serde::{Deserialize, Serialize};
 
 /// How the gain follows the level.
@@ -45,15 +48,33 @@ impl Default for AgcSettings {
     }
 }
 
+/// Pieces of a step in which attack and decay take turns.
+const PIECES: usize = 8;
+
 /// An AGC at work.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Agc {
     settings: AgcSettings,
-    step_s: f64,
-    attack: f64,
-    decay: f64,
+    whole: Stretch,
+    piece: Stretch,
     level: f64,
     gain: f64,
+}
+
+/// What a stretch of time does.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct Stretch {
+    length_s: f64,
+    /// What remains of a difference after attack, and after decay.
+    attack: f64,
+    decay: f64,
+}
+
+impl Stretch {
+    fn new(settings: AgcSettings, length_s: f64) -> Self {
+        let [attack, decay] = [settings.attack_s, settings.decay_s].map(|time_s| remains(length_s, time_s));
+        Self { length_s, attack, decay }
+    }
 }
 
 impl Agc {
@@ -62,53 +83,91 @@ impl Agc {
     pub fn new(settings: AgcSettings, step_s: f64) -> Self {
         Self {
             settings,
-            step_s,
-            attack: remains(step_s, settings.attack_s),
-            decay: remains(step_s, settings.decay_s),
+            whole: Stretch::new(settings, step_s),
+            piece: Stretch::new(settings, step_s / PIECES as f64),
             level: 0.0,
             gain: settings.greatest_gain.min(1.0),
         }
     }
 
-    /// Gain for the envelope of this step.
+    /// Gain after the steps so far.
     #[inline]
-    pub fn gain(&mut self, envelope: f64) -> f64 {
+    #[must_use]
+    pub fn now(&self) -> f64 {
         match self.settings.law {
-            AgcLaw::Forward => self.forward(envelope),
-            AgcLaw::Feedback => self.feedback(envelope),
-            AgcLaw::LevelDependent => self.level_dependent(envelope),
+            AgcLaw::Forward => self.aim(self.level),
+            AgcLaw::Feedback | AgcLaw::LevelDependent => self.gain,
         }
     }
 
-    fn forward(&mut self, envelope: f64) -> f64 {
-        let memory = if envelope > self.level { self.attack } else { self.decay };
-        self.level = envelope + (self.level - envelope) * memory;
-        (self.settings.threshold / self.level).min(self.settings.greatest_gain)
+    /// Gain at the end of a step of the given mean envelope.
+    #[inline]
+    pub fn gain(&mut self, envelope: f64) -> f64 {
+        self.stretch(self.whole, envelope, self.aim(envelope));
+        self.now()
     }
 
+    /// Gain at the end of a step of the envelope.
+    #[inline]
+    pub(super) fn passage<F: Fn(usize) -> Complex>(&mut self, passage: &Passage<'_, F>) -> f64 {
+        let [from, _, to] = passage.lengths;
+        if self.rises(from) == self.rises(to) {
+            // The aim is bent where the level rises steeply, and what its mean would be off adds up from click to click.
+            let aim = match self.settings.law {
+                AgcLaw::Feedback => simpson(passage.lengths.map(|length| self.aim(length))),
+                AgcLaw::Forward | AgcLaw::LevelDependent => 0.0,
+            };
+            self.stretch(self.whole, passage.mean_length, aim);
+            return self.now();
+        }
+        for piece in 0..PIECES {
+            let middle = (passage.at)((2 * piece + 1) * PARTS / (2 * PIECES));
+            let length = middle.norm_sqr().sqrt();
+            self.stretch(self.piece, length, self.aim(length));
+        }
+        self.now()
+    }
+
+    /// True if such an envelope lets the attack act.
+    #[inline]
+    fn rises(&self, envelope: f64) -> bool {
+        match self.settings.law {
+            AgcLaw::Forward => envelope > self.level,
+            AgcLaw::Feedback | AgcLaw::LevelDependent => self.attacks(envelope),
+        }
+    }
+
+    /// Gain at which the loop would come to rest.
+    #[inline]
+    fn aim(&self, envelope: f64) -> f64 {
+        (self.settings.threshold / envelope).min(self.settings.greatest_gain)
+    }
+
+    #[inline]
+    fn stretch(&mut self, stretch: Stretch, envelope: f64, aim: f64) {
+        let rises = self.rises(envelope);
+        let memory = if rises { stretch.attack } else { stretch.decay };
+        match self.settings.law {
+            AgcLaw::Forward => self.level = envelope + (self.level - envelope) * memory,
+            AgcLaw::Feedback => self.gain = aim + (self.gain - aim) * memory,
+            AgcLaw::LevelDependent => self.level_dependent(stretch.length_s, envelope, rises),
+        }
+    }
+
+    #[inline]
     fn attacks(&self, envelope: f64) -> bool {
         (envelope - self.settings.margin) * self.gain > self.settings.threshold
     }
 
-    fn feedback(&mut self, envelope: f64) -> f64 {
-        let used = self.gain;
-        let memory = if self.attacks(envelope) { self.attack } else { self.decay };
-        let aim = (self.settings.threshold / envelope).min(self.settings.greatest_gain);
-        self.gain = aim + (used - aim) * memory;
-        used
-    }
-
-    fn level_dependent(&mut self, envelope: f64) -> f64 {
-        let used = self.gain;
+    fn level_dependent(&mut self, length_s: f64, envelope: f64, rises: bool) {
         let AgcSettings { threshold, attack_s, decay_s, greatest_gain, .. } = self.settings;
-        let excess = envelope * used - threshold;
-        let time_constant_s = if self.attacks(envelope) { attack_s } else { decay_s };
+        let excess = envelope * self.gain - threshold;
+        let time_constant_s = if rises { attack_s } else { decay_s };
         // dg/dt = (threshold − level·g)/τ: at level 0 a straight line, else exponential with τ/level.
-        let x = envelope * self.step_s / time_constant_s;
+        let x = envelope * length_s / time_constant_s;
         let share = if x > 1e-6 { -(-x).exp_m1() / x } else { 1.0 - 0.5 * x };
         let change =
-            if time_constant_s > 0.0 { excess * share * self.step_s / time_constant_s } else { excess / envelope };
-        self.gain = (used - change).clamp(0.0, greatest_gain);
-        used
+            if time_constant_s > 0.0 { excess * share * length_s / time_constant_s } else { excess / envelope };
+        self.gain = (self.gain - change).clamp(0.0, greatest_gain);
     }
 }

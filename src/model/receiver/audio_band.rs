@@ -1,7 +1,8 @@
 //! The audio band: Butterworth low cut and high cut as digital sections at the internal rate.
 //!
-//! Bilinear transform with the corner pre-warped, so that each filter is exactly 3 dB down at its corner. Section qualities
-//! Q_k = 1/(2·cos θ_k) of an n-pole Butterworth filter (textbook).
+//! Section qualities Q_k = 1/(2·cos θ_k) of an n-pole Butterworth filter (textbook). The poles of a section are those of its
+//! circuit, e^(p·step) (matched z-transform, textbook), so it rings as the circuit does. Its zeros are simple ones, and what is
+//! left is smooth in frequency: [`AudioFilter::bend`] tells it, and the decimator gives it back.
 
 use super::Complex;
 use serde::{Deserialize, Serialize};
@@ -20,9 +21,10 @@ pub struct AudioBand {
     pub high_poles: u8,
 }
 
-/// One second-order section, transposed direct form II.
+/// One section of second order, transposed direct form II, and the circuit that it stands for.
 #[derive(Debug, Clone, PartialEq)]
 struct Section {
+    circuit: Circuit,
     b: [f64; 3],
     a: [f64; 2],
     state: [f64; 2],
@@ -34,24 +36,48 @@ enum Cut {
     High,
 }
 
-impl Section {
-    /// Second order with quality `q`; `k` is tan(π·corner/rate).
-    fn second_order(cut: Cut, k: f64, q: f64) -> Self {
-        let norm = 1.0 / (1.0 + k / q + k * k);
-        let b = match cut {
-            Cut::High => [k * k * norm, 2.0 * k * k * norm, k * k * norm],
-            Cut::Low => [norm, -2.0 * norm, norm],
-        };
-        Self { b, a: [2.0 * (k * k - 1.0) * norm, (1.0 - k / q + k * k) * norm], state: [0.0; 2] }
-    }
+/// A high cut or low cut of first or second order.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct Circuit {
+    cut: Cut,
+    /// Corner in cycles per sample.
+    corner: f64,
+    /// 1/Q; none of first order.
+    damping: Option<f64>,
+}
 
-    fn first_order(cut: Cut, k: f64) -> Self {
-        let norm = 1.0 / (1.0 + k);
-        let b = match cut {
-            Cut::High => [k * norm, k * norm, 0.0],
-            Cut::Low => [norm, -norm, 0.0],
+impl Circuit {
+    /// Gain at a frequency in cycles per sample.
+    fn gain(self, cycles: f64) -> Complex {
+        let s = Complex::new(0.0, cycles / self.corner);
+        let passed = match (self.cut, self.damping) {
+            (Cut::High, _) => Complex::from(1.0),
+            (Cut::Low, None) => s,
+            (Cut::Low, Some(_)) => s * s,
         };
-        Self { b, a: [(k - 1.0) * norm, 0.0], state: [0.0; 2] }
+        passed / (1.0 + s * self.damping.map_or(Complex::from(1.0), |damping| damping + s))
+    }
+}
+
+impl Section {
+    fn new(circuit: Circuit) -> Self {
+        let Circuit { cut, corner, damping } = circuit;
+        let w = TAU * corner;
+        let a = match damping {
+            None => [-(-w).exp(), 0.0],
+            Some(damping) => {
+                let (fall, turn) = (0.5 * damping * w, w * (1.0 - 0.25 * damping * damping).sqrt());
+                [-2.0 * (-fall).exp() * turn.cos(), (-2.0 * fall).exp()]
+            }
+        };
+        // Gain 1 at zero of a high cut, at half the rate of a low cut.
+        let side = if cut == Cut::High { 1.0 } else { -1.0 };
+        let b = match damping {
+            None => [0.5, 0.5 * side, 0.0],
+            Some(_) => [0.25, 0.5 * side, 0.25],
+        };
+        let whole = 1.0 + side * a[0] + a[1];
+        Self { circuit, b: b.map(|b| b * whole), a, state: [0.0; 2] }
     }
 
     #[inline]
@@ -68,20 +94,13 @@ impl Section {
     }
 }
 
-/// Sections of an n-pole Butterworth filter.
-fn butterworth(cut: Cut, poles: u8, corner_hz: f64, rate_hz: f64) -> Vec<Section> {
-    let k = (PI * corner_hz / rate_hz).tan();
+/// Sections of an n-pole Butterworth filter with a corner in cycles per sample.
+fn butterworth(cut: Cut, poles: u8, corner: f64) -> Vec<Section> {
     let n = f64::from(poles);
-    let mut sections: Vec<Section> = (0..poles / 2)
-        .map(|i| {
-            let angle = PI * (2.0 * f64::from(i) + 1.0) / (2.0 * n);
-            Section::second_order(cut, k, 1.0 / (2.0 * angle.sin()))
-        })
-        .collect();
-    if poles % 2 == 1 {
-        sections.push(Section::first_order(cut, k));
-    }
-    sections
+    let damping = |i: u8| 2.0 * (PI * (2.0 * f64::from(i) + 1.0) / (2.0 * n)).sin();
+    let single = (poles % 2 == 1).then_some(None);
+    let dampings = (0..poles / 2).map(|i| Some(damping(i))).chain(single);
+    dampings.map(|damping| Section::new(Circuit { cut, corner, damping })).collect()
 }
 
 /// The audio filters at work.
@@ -96,9 +115,9 @@ impl AudioFilter {
     pub fn new(band: AudioBand, rate_hz: f64) -> Self {
         let mut sections = Vec::new();
         if band.low_hz > 0.0 {
-            sections.extend(butterworth(Cut::Low, band.low_poles, band.low_hz, rate_hz));
+            sections.extend(butterworth(Cut::Low, band.low_poles, band.low_hz / rate_hz));
         }
-        sections.extend(butterworth(Cut::High, band.high_poles, band.high_hz, rate_hz));
+        sections.extend(butterworth(Cut::High, band.high_poles, band.high_hz / rate_hz));
         Self { sections }
     }
 
@@ -106,8 +125,8 @@ impl AudioFilter {
     #[must_use]
     pub fn with_de_emphasis(mut self, time_constant_s: f64, rate_hz: f64) -> Self {
         if time_constant_s > 0.0 {
-            let k = (0.5 / (time_constant_s * rate_hz)).tan();
-            self.sections.push(Section::first_order(Cut::High, k));
+            let corner = 1.0 / (TAU * time_constant_s * rate_hz);
+            self.sections.push(Section::new(Circuit { cut: Cut::High, corner, damping: None }));
         }
         self
     }
@@ -127,10 +146,16 @@ impl AudioFilter {
         }
     }
 
-    /// Complex gain at a frequency, both in Hz.
+    /// Complex gain of the circuits at a frequency, at the internal rate of the filter, both in Hz.
     #[must_use]
     pub fn gain(&self, frequency_hz: f64, rate_hz: f64) -> Complex {
-        let z_inverse = Complex::from_polar(1.0, -TAU * frequency_hz / rate_hz);
-        self.sections.iter().map(|s| s.gain(z_inverse)).product()
+        self.sections.iter().map(|section| section.circuit.gain(frequency_hz / rate_hz)).product()
+    }
+
+    /// Gain of the circuits over that of the sections at a frequency above 0, in cycles per sample.
+    #[must_use]
+    pub fn bend(&self, cycles: f64) -> Complex {
+        let z_inverse = Complex::from_polar(1.0, -TAU * cycles);
+        self.sections.iter().map(|section| section.circuit.gain(cycles) / section.gain(z_inverse)).product()
     }
 }

@@ -4,7 +4,7 @@
 //! behind the filter, in click peaks; frequencies in Hz from the tuned frequency.
 
 use super::turning::Turning;
-use super::{AudioBand, AudioFilter, Complex, Draw};
+use super::{AudioBand, AudioFilter, Complex, Draw, Normals};
 use serde::{Deserialize, Serialize};
 use std::sync::Arc;
 
@@ -116,7 +116,7 @@ fn length(syllables: &mut [Turning; 3]) -> f64 {
 enum Modulation {
     None,
     Tone { depth: f64, tone: Turning },
-    Speech { depth: f64, filter: AudioFilter, scale: f64, swell: Swell, draw: Draw },
+    Speech { depth: f64, filter: AudioFilter, scale: f64, swell: Swell, normals: Normals },
     Sound { scale: f64, sound: Sound, place: f64, pace: f64 },
 }
 
@@ -126,8 +126,6 @@ pub struct CarrierSource {
     /// Strength of the impulse of one step of the unmodulated carrier.
     strength: f64,
     carrier: Turning,
-    /// Unit phasor of this step.
-    phase: Complex,
     modulation: Modulation,
 }
 
@@ -144,25 +142,22 @@ impl CarrierSource {
                 let filter = AudioFilter::new(SPEECH_BAND, 1.0 / step_s);
                 let scale = SPEECH_RMS / noise_gain(filter.clone(), 1.0 / step_s);
                 let swell = Swell::new(step_s, &mut draw);
-                Modulation::Speech { depth: *depth, filter, scale, swell, draw }
+                Modulation::Speech { depth: *depth, filter, scale, swell, normals: draw.normals() }
             }
             Some(Programme::Sound { depth, sound }) => sounding(*depth, sound.as_ref(), step_s),
         };
-        Self { strength: settings.amplitude * step_s / gain, phase: carrier.now(), carrier, modulation }
+        Self { strength: settings.amplitude * step_s / gain, carrier, modulation }
     }
 
     /// Strength of the impulse of this step.
     #[inline]
     pub fn next_impulse(&mut self) -> Complex {
-        self.phase = self.carrier.next();
-        self.phase * (self.strength * (1.0 + self.modulation.next()))
+        self.carrier.next() * (self.strength * (1.0 + self.modulation.next()))
     }
 
-    /// Unit phasor of the carrier in this step, ahead of the channel.
-    #[inline]
-    #[must_use]
-    pub fn phase(&self) -> Complex {
-        self.phase
+    /// The unit phasor of the carrier ahead of the channel, from the coming step on.
+    pub(super) fn phasor(&self) -> Turning {
+        self.carrier.clone()
     }
 }
 
@@ -187,8 +182,8 @@ impl Modulation {
         match self {
             Self::None => 0.0,
             Self::Tone { depth, tone } => *depth * tone.next().im,
-            Self::Speech { depth, filter, scale, swell, draw } => {
-                let voice = filter.step(draw.normal()) * *scale * swell.next();
+            Self::Speech { depth, filter, scale, swell, normals } => {
+                let voice = filter.step(normals.real()) * *scale * swell.next();
                 *depth * voice.clamp(-1.0, 1.0)
             }
             Self::Sound { scale, sound, place, pace } => {

@@ -1,24 +1,32 @@
 //! The whole receiver at its internal rate: clicks in, audio out.
 //!
-//! Internal rate: a whole multiple of the output rate, at least sixteen times the bandwidth of the channel, so that neither the
-//! bends that taking the modulus makes nor the images of noise and carrier (which enter as impulses at this rate) fold back
-//! into the audio, and at least twelve times the high corner of the audio.
+//! Internal rate: a whole multiple of the output rate, at least sixteen times the bandwidth of the channel and twenty-four times
+//! the high corner of the audio. Noise and carrier enter the channel as impulses at this rate. Between its samples the channel
+//! is known exactly, and what goes to the audio stage is the mean over each step, so that neither the bends that taking the
+//! length makes nor the images of these impulses fold back into the audio. What mean and audio filter take from the audio
+//! beyond the circuits that they stand for, [`Chain::to_give_back`] tells the decimator.
 
+use super::passage::{PARTS, Passage};
+use super::turning::Turning;
 use super::{
-    Agc, AudioFilter, CarrierSource, Channel, ChannelState, Complex, Demodulator, Draw, ReceiverSettings, Stream,
+    Agc, AudioFilter, CarrierSource, Channel, ChannelState, Complex, Demodulator, DetectorKind, Draw, Normals,
+    ReceiverSettings, Stream,
 };
+use std::f64::consts::PI;
 
 /// Least internal rate in bandwidths of the channel.
 const RATE_PER_BANDWIDTH: f64 = 16.0;
 /// Least internal rate in high corners of the audio.
-const RATE_PER_HIGH_CORNER: f64 = 12.0;
+const RATE_PER_HIGH_CORNER: f64 = 24.0;
 /// Internal samples between two looks for states so small that arithmetic on them is slow.
 const SETTLE_EVERY: i64 = 1024;
+/// Filters up to this order turn so sharply at a click that the mean over the step must know where it came.
+const SHARP_ORDER: usize = 2;
 
 /// Internal samples for one output sample.
 pub(crate) fn oversampling(settings: &ReceiverSettings, output_rate_hz: f64) -> usize {
     let least = (RATE_PER_BANDWIDTH * settings.bandwidth_hz).max(RATE_PER_HIGH_CORNER * settings.audio_band.high_hz);
-    (least / output_rate_hz).ceil().max(1.0) as usize
+    (least / output_rate_hz).ceil().max(2.0) as usize
 }
 
 /// A receiver at work.
@@ -28,16 +36,58 @@ pub(crate) struct Chain {
     /// Internal sample number from time 0; time is this over the rate, so it never drifts.
     index: i64,
     channel: ChannelState,
+    order: Option<usize>,
     /// Strength of the impulse of a click of peak 1, s.
     impulse: f64,
     phases: Draw,
-    noise: Option<(Draw, f64)>,
-    carrier: Option<CarrierSource>,
+    drive: Option<Drive>,
+    /// Envelope after what came in at the sample before.
+    from: Complex,
+    /// Strength and age in s of the clicks since then.
+    clicks: Vec<(Complex, f64)>,
     agc: Option<Agc>,
     detector: Demodulator,
-    /// Phase that the channel adds to the carrier, for the detector that is locked to it.
-    carrier_turn: Complex,
+    reference: Option<Reference>,
     audio: AudioFilter,
+}
+
+/// What enters the channel at every internal sample.
+#[derive(Debug, Clone)]
+struct Drive {
+    noise: Option<(Normals, f64)>,
+    carrier: Option<CarrierSource>,
+}
+
+impl Drive {
+    #[inline]
+    fn next(&mut self) -> Complex {
+        let noise = self.noise.as_mut().map(|(normals, strength)| normals.complex() * *strength);
+        let carrier = self.carrier.as_mut().map(CarrierSource::next_impulse);
+        noise.unwrap_or_default() + carrier.unwrap_or_default()
+    }
+}
+
+/// The carrier to which a synchronous detector is locked.
+#[derive(Debug, Clone)]
+struct Reference {
+    phasor: Turning,
+    /// Back by half a step and by a step.
+    back: [Complex; 2],
+    /// Phase that the channel adds.
+    channel: Complex,
+}
+
+impl Reference {
+    fn new(carrier: &CarrierSource, channel: Complex, offset_hz: f64, step_s: f64) -> Self {
+        let back = [0.5, 1.0].map(|part| Complex::from_polar(1.0, -2.0 * PI * offset_hz * part * step_s));
+        Self { phasor: carrier.phasor(), back, channel }
+    }
+
+    /// Beginning, middle and end of the step to the coming sample.
+    fn next(&mut self) -> [Complex; 3] {
+        let end = self.phasor.next() * self.channel;
+        [end * self.back[1], end * self.back[0], end]
+    }
 }
 
 impl Chain {
@@ -45,34 +95,51 @@ impl Chain {
     pub(crate) fn new(settings: &ReceiverSettings, rate_hz: f64, first: i64, seed: u64) -> Self {
         let step_s = 1.0 / rate_hz;
         let channel = Channel::new(settings.selectivity, settings.bandwidth_hz);
+        let state = channel.state(step_s);
         let noise = (settings.noise > 0.0).then(|| {
-            let strength = settings.noise / sampled_energy(&channel, step_s).sqrt();
-            (Draw::new(seed, Stream::ChannelNoise), strength)
+            let strength = settings.noise / energy(&channel, step_s).sqrt();
+            (Draw::new(seed, Stream::ChannelNoise).normals(), strength)
         });
-        let mut carrier_turn = Complex::from(1.0);
+        let mut reference = None;
         let carrier = settings.carrier.as_ref().filter(|carrier| carrier.amplitude > 0.0).map(|carrier| {
             let gain = channel.gain(carrier.offset_hz);
-            carrier_turn = gain / gain.norm();
-            CarrierSource::new(carrier, gain.norm(), step_s, Draw::new(seed, Stream::Carrier))
+            let source = CarrierSource::new(carrier, gain.norm(), step_s, Draw::new(seed, Stream::Carrier));
+            if settings.detector.kind == DetectorKind::Synchronous {
+                reference = Some(Reference::new(&source, gain / gain.norm(), carrier.offset_hz, step_s));
+            }
+            source
         });
         Self {
             rate_hz,
             index: first - 1,
-            channel: channel.state(step_s),
+            order: state.order(),
+            channel: state,
             impulse: 1.0 / channel.impulse_peak().1,
             phases: Draw::new(seed, Stream::ClickPhase),
-            noise,
-            carrier,
+            drive: (noise.is_some() || carrier.is_some()).then_some(Drive { noise, carrier }),
+            from: Complex::default(),
+            clicks: Vec::new(),
             agc: settings.agc.map(|agc| Agc::new(agc, step_s)),
             detector: Demodulator::new(settings.detector, settings.bandwidth_hz, step_s),
-            carrier_turn,
+            reference,
             audio: AudioFilter::new(settings.audio_band, rate_hz).with_de_emphasis(settings.de_emphasis_s, rate_hz),
         }
+    }
+
+    /// What the mean over a step and the audio filter take from the audio at a frequency in cycles per internal sample, beyond
+    /// the circuits that they stand for, as the gain that gives it back.
+    pub(crate) fn to_give_back(&self, cycles: f64) -> Complex {
+        let x = PI * cycles;
+        self.audio.bend(cycles) * (x / x.sin())
     }
 
     /// Carries the channel to the next internal sample and returns its time in s.
     #[inline]
     pub(crate) fn advance(&mut self) -> f64 {
+        if let (Some(drive), Some(count)) = (&mut self.drive, self.channel.wants()) {
+            let impulses: Vec<Complex> = (0..count).map(|_| drive.next()).collect();
+            self.channel.drive(&impulses);
+        }
         self.index += 1;
         self.channel.advance();
         self.index as f64 / self.rate_hz
@@ -82,45 +149,70 @@ impl Chain {
     pub(crate) fn click(&mut self, time_s: f64, peak: f64) {
         let strength = self.phases.phase() * (peak * self.impulse);
         if peak != 0.0 {
-            self.channel.add_impulse(strength, self.index as f64 / self.rate_hz - time_s);
+            let age_s = self.index as f64 / self.rate_hz - time_s;
+            self.channel.add_impulse(strength, age_s);
+            self.clicks.push((strength, age_s));
         }
     }
 
-    /// Complex envelope behind the channel filter at the sample last advanced to, noise and carrier added.
-    #[inline]
-    fn envelope(&mut self) -> Complex {
-        if self.noise.is_some() || self.carrier.is_some() {
-            let noise = self.noise.as_mut().map(|(draw, strength)| draw.complex_normal() * *strength);
-            let carrier = self.carrier.as_mut().map(CarrierSource::next_impulse);
-            self.channel.add_impulse_now(noise.unwrap_or_default() + carrier.unwrap_or_default());
-        }
-        self.channel.output()
-    }
-
-    /// Audio at the sample last advanced to; to be asked for once in each step.
+    /// Mean of the audio over the step to the sample last advanced to; to be asked for once in each step.
     #[inline]
     pub(crate) fn audio(&mut self) -> f64 {
-        let mut envelope = self.envelope();
-        let mut level = envelope.norm_sqr().sqrt();
-        if let Some(agc) = &mut self.agc {
-            let gain = agc.gain(level);
-            envelope *= gain;
-            level *= gain;
-        }
-        let reference = self.carrier.as_ref().map_or(Complex::from(1.0), |carrier| carrier.phase() * self.carrier_turn);
-        let detected = self.detector.step_at_level(envelope, level, reference);
+        let now = self.channel.output();
+        let detected = self.detected(now);
+        self.clicks.clear();
+        self.drive(now);
         if self.index % SETTLE_EVERY == 0 {
             self.channel.settle();
             self.audio.settle();
         }
         self.audio.step(detected)
     }
+
+    /// Output of the detector for the step at whose end the envelope is `now`.
+    #[inline]
+    fn detected(&mut self, now: Complex) -> f64 {
+        let (channel, clicks) = (&self.channel, &self.clicks);
+        let at = |part: usize| {
+            let z = channel.output_before(PARTS - part);
+            let premature = |(strength, age_s): &(Complex, f64)| strength * channel.premature(*age_s, PARTS - part);
+            if clicks.is_empty() { z } else { z - clicks.iter().map(premature).sum::<Complex>() }
+        };
+        let mut breaks = Vec::new();
+        if self.order.is_some_and(|order| order <= SHARP_ORDER) {
+            breaks.extend(clicks.iter().map(|(_, age_s)| PARTS as f64 * (1.0 - age_s * self.rate_hz)));
+        }
+        let passage = Passage::new([self.from, at(PARTS / 2), now], &breaks, at);
+        let reference = self.reference.as_mut().map_or([Complex::from(1.0); 3], Reference::next);
+        match &mut self.agc {
+            None => self.detector.passage(&passage, reference),
+            Some(agc) => {
+                let before = agc.now();
+                let after = agc.passage(&passage);
+                self.detector.passage(&passage.amplified(before, after), reference)
+            }
+        }
+    }
+
+    /// Lets in what comes at the sample last advanced to, at which the envelope is `now`.
+    #[inline]
+    fn drive(&mut self, now: Complex) {
+        if let Some(drive) = self.drive.as_mut().filter(|_| self.order.is_some()) {
+            self.channel.add_impulse_now(drive.next());
+        }
+        // A filter of higher order does not jump.
+        self.from = if self.order == Some(1) { self.channel.output() } else { now };
+    }
 }
 
-/// Sum of the squared impulse response at the samples: the mean square behind the filter of white impulses of mean square 1.
-fn sampled_energy(channel: &Channel, step_s: f64) -> f64 {
-    let samples = (channel.memory_s() / step_s).ceil() as i64;
-    (0..samples).map(|k| channel.impulse_response(k as f64 * step_s).norm_sqr()).sum()
+/// Mean square behind the filter of white impulses of mean square 1, one in each step: ∫|h|² dt over the step, by the trapezoidal
+/// rule.
+fn energy(channel: &Channel, step_s: f64) -> f64 {
+    const FINE: i64 = 8;
+    let fine_s = step_s / FINE as f64;
+    let count = (channel.memory_s() / fine_s).ceil() as i64;
+    let square = |k: i64| channel.impulse_response(k as f64 * fine_s).norm_sqr();
+    (0.5 * square(0) + (1..count).map(square).sum::<f64>()) / FINE as f64
 }
 
 #[cfg(test)]
@@ -135,7 +227,8 @@ mod tests {
         let mut all = Vec::new();
         for _ in 0..count {
             chain.advance();
-            all.push(chain.envelope());
+            chain.drive(chain.channel.output());
+            all.push(chain.channel.output());
         }
         // The filter has filled within a few milliseconds.
         all.split_off(1000)
@@ -172,7 +265,7 @@ mod tests {
             if k == 1 {
                 chain.click(0.4 * now_s, 1.0);
             }
-            peak = peak.max(chain.envelope().norm());
+            peak = peak.max(chain.channel.output().norm());
         }
         assert!((peak - 1.0).abs() < 1e-4, "{peak}");
     }

@@ -8,6 +8,7 @@
 //! Times in s, frequencies in Hz from the tuned frequency. Gain 1 at the tuned frequency.
 
 use super::linear_phase::{LinearPhase, LinearState};
+use super::passage::PARTS;
 use super::selectivity::Pole;
 use super::{Complex, Selectivity};
 
@@ -39,6 +40,12 @@ impl Mode {
                 this
             })
             .collect()
+    }
+
+    /// Weights of z₁, z₂, … in the output a time from now (before now, if negative) as long as nothing comes in.
+    fn weights_after(&self, time_s: f64) -> Vec<Complex> {
+        let step = self.step(time_s);
+        (0..step.len()).map(|k| self.weights[k..].iter().zip(&step).map(|(w, term)| w * term).sum()).collect()
     }
 }
 
@@ -150,17 +157,20 @@ impl Channel {
     /// A state at rest that is carried from sample to sample by `step_s`.
     #[must_use]
     pub fn state(&self, step_s: f64) -> ChannelState {
-        let mut state =
-            ChannelState { pairs: Vec::new(), chains: Vec::new(), flat: self.flat.as_ref().map(|f| f.state(step_s)) };
+        let flat = self.flat.as_ref().map(|f| f.state(step_s));
+        let mut state = ChannelState { step_s, pairs: Vec::new(), chains: Vec::new(), flat };
         for mode in &self.modes {
             let step = mode.step(step_s);
+            let before = (0..=PARTS).map(|part| mode.weights_after(-step_s * part as f64 / PARTS as f64));
             let nothing = Complex::default();
             let first_two = |terms: &[Complex]| [terms[0], terms.get(1).copied().unwrap_or(nothing)];
             if step.len() <= 2 {
+                let before = before.map(|weights| first_two(&weights)).collect();
                 let (step, weights) = (first_two(&step), first_two(&mode.weights));
-                state.pairs.push(Pair { mode: mode.clone(), step, weights, states: [nothing; 2] });
+                state.pairs.push(Pair { mode: mode.clone(), step, weights, before, states: [nothing; 2] });
             } else {
-                state.chains.push(Chain { mode: mode.clone(), states: vec![nothing; step.len()], step });
+                let (before, states) = (before.collect(), vec![nothing; step.len()]);
+                state.chains.push(Chain { mode: mode.clone(), states, step, before });
             }
         }
         state
@@ -207,6 +217,8 @@ struct Pair {
     /// What one step does to the states.
     step: [Complex; 2],
     weights: [Complex; 2],
+    /// Weights in the output so many parts of a step ago.
+    before: Vec<[Complex; 2]>,
     states: [Complex; 2],
 }
 
@@ -216,12 +228,15 @@ struct Chain {
     mode: Mode,
     /// Step over one sample.
     step: Vec<Complex>,
+    /// Weights in the output so many parts of a step ago.
+    before: Vec<Vec<Complex>>,
     states: Vec<Complex>,
 }
 
 /// A channel filter at work.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone)]
 pub struct ChannelState {
+    step_s: f64,
     pairs: Vec<Pair>,
     chains: Vec<Chain>,
     flat: Option<LinearState>,
@@ -264,13 +279,27 @@ impl ChannelState {
     #[inline]
     pub fn add_impulse_now(&mut self, strength: Complex) {
         if let Some(flat) = &mut self.flat {
-            flat.add_impulse_now(strength);
+            flat.add_impulse(strength, 0.0);
         }
         for pair in &mut self.pairs {
             pair.states[0] += strength;
         }
         for chain in &mut self.chains {
             chain.states[0] += strength;
+        }
+    }
+
+    /// Number of impulses, one at each of the coming samples, that the filter wants to be given together by
+    /// [`ChannelState::drive`] before the next [`ChannelState::advance`]; none where they may come one by one.
+    #[inline]
+    pub(crate) fn wants(&self) -> Option<usize> {
+        self.flat.as_ref().and_then(LinearState::wants)
+    }
+
+    /// Takes the impulses of the coming samples.
+    pub(crate) fn drive(&mut self, impulses: &[Complex]) {
+        if let Some(flat) = &mut self.flat {
+            flat.drive(impulses);
         }
     }
 
@@ -282,6 +311,42 @@ impl ChannelState {
                 *z = Complex::default();
             }
         }
+    }
+
+    /// Order of the filter; none for one without poles.
+    pub(crate) fn order(&self) -> Option<usize> {
+        let of_chains = self.chains.iter().map(|chain| chain.states.len());
+        let of_pairs = self.pairs.iter().map(|pair| pair.mode.weights.len());
+        self.flat.is_none().then(|| of_chains.chain(of_pairs).sum())
+    }
+
+    /// Complex envelope so many parts of a step ago, as if what has come in since had been there.
+    #[inline]
+    pub(crate) fn output_before(&self, parts: usize) -> Complex {
+        let mut sum = self.flat.as_ref().map_or(Complex::default(), |flat| flat.output_before(parts));
+        for Pair { before, states: [z, chained], .. } in &self.pairs {
+            let [w, chained_w] = before[parts];
+            sum = sum + z * w + chained * chained_w;
+        }
+        for chain in &self.chains {
+            for (z, weight) in chain.states.iter().zip(&chain.before[parts]) {
+                sum += z * weight;
+            }
+        }
+        sum
+    }
+
+    /// What [`ChannelState::output_before`] holds of a click of strength 1 that is `age_s` old although it had not come yet.
+    pub(crate) fn premature(&self, age_s: f64, parts: usize) -> Complex {
+        if let Some(flat) = &self.flat {
+            return Complex::from(flat.premature(age_s, parts));
+        }
+        let since_s = age_s - self.step_s * parts as f64 / PARTS as f64;
+        if since_s >= 0.0 {
+            return Complex::default();
+        }
+        let modes = self.pairs.iter().map(|pair| &pair.mode).chain(self.chains.iter().map(|chain| &chain.mode));
+        modes.map(|mode| mode.weights_after(since_s)[0]).sum()
     }
 
     /// Complex envelope at this instant.

@@ -2,8 +2,12 @@
 //!
 //! Without time constants it follows the envelope. A discharge that is slow against the modulation leaves the envelope on its
 //! way down (diagonal clipping; a tone of depth m and angular frequency ω is followed while RC ≤ √(1 − m²)/(m·ω), common
-//! practice). The envelope is held over one internal step, over which the step of the circuit is exact.
+//! practice). While the diode conducts, dU/dt = (A − U)/τ_charge; while it does not, dU/dt = −U/τ_discharge; where the envelope
+//! A falls more slowly than the discharge, U slides along it. Each is solved exactly for an envelope that is a polynomial
+//! through five values of one internal step; a step in which one gives way to another is taken in pieces.
 
+use super::Complex;
+use super::passage::{PARTS, Passage};
 use super::weighting::Band;
 use serde::{Deserialize, Serialize};
 
@@ -39,14 +43,29 @@ pub struct DetectorSettings {
     pub discharge_s: f64,
 }
 
+/// Pieces of a step in which the diode begins or ceases to conduct.
+const PIECES: usize = 16;
+
+/// Values of the envelope in a step.
+const POINTS: usize = 5;
+/// Coefficients of 1, s, …, s⁴ of the polynomials that are 1 at one of 0, 1/4, 1/2, 3/4, 1 and 0 at the others (Lagrange).
+const POLYNOMIALS: [[f64; POINTS]; POINTS] = [
+    [1.0, -25.0 / 3.0, 70.0 / 3.0, -80.0 / 3.0, 32.0 / 3.0],
+    [0.0, 16.0, -208.0 / 3.0, 96.0, -128.0 / 3.0],
+    [0.0, -12.0, 76.0, -128.0, 64.0],
+    [0.0, 16.0 / 3.0, -112.0 / 3.0, 224.0 / 3.0, -128.0 / 3.0],
+    [0.0, -1.0, 22.0 / 3.0, -16.0, 32.0 / 3.0],
+];
+/// What rounding may put between the envelope and the voltage that slides along it.
+const ROUNDING: f64 = 1e-9;
+
 /// A diode, capacitor and resistor at work.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Detector {
-    /// What remains of the difference after one step of charging.
-    charge: f64,
-    /// What remains of the voltage after one step of discharge.
-    discharge: f64,
+    whole: Stretch,
+    piece: Stretch,
     voltage: f64,
+    before: f64,
 }
 
 impl Detector {
@@ -54,22 +73,167 @@ impl Detector {
     #[must_use]
     pub fn new(settings: DetectorSettings, step_s: f64) -> Self {
         Self {
-            charge: remains(step_s, settings.charge_s),
-            discharge: remains(step_s, settings.discharge_s),
+            whole: Stretch::new(settings, step_s),
+            piece: Stretch::new(settings, step_s / PIECES as f64),
             voltage: 0.0,
+            before: 0.0,
         }
     }
 
-    /// Output for the envelope of this step.
+    /// Output at the end of a step over which the envelope comes to `envelope` along a straight line.
     #[inline]
     pub fn step(&mut self, envelope: f64) -> f64 {
-        self.voltage = if envelope > self.voltage {
-            envelope + (self.voltage - envelope) * self.charge
-        } else {
-            (self.voltage * self.discharge).max(envelope)
-        };
+        self.voltage = self.whole.straight(self.voltage, self.before, envelope);
+        self.before = envelope;
         self.voltage
     }
+
+    /// Mean output over a step of the envelope, of which `measure` is what charges the capacitor (its length or the square).
+    #[inline]
+    pub(super) fn passage<F: Fn(usize) -> Complex>(
+        &mut self,
+        passage: &Passage<'_, F>,
+        measure: impl Fn(f64) -> f64,
+    ) -> f64 {
+        let at = |part: usize| measure((passage.at)(part).norm_sqr().sqrt());
+        let [from, middle, to] = passage.lengths.map(&measure);
+        if passage.smooth {
+            let envelope = [from, at(PARTS / 4), middle, at(PARTS * 3 / 4), to];
+            if let Some((end, mean)) = self.whole.plain(self.voltage, envelope) {
+                self.voltage = end;
+                return mean;
+            }
+        }
+        let (mut sum, mut from) = (0.0, from);
+        for piece in 1..=PIECES {
+            let to = at(piece * PARTS / PIECES);
+            let end = self.piece.straight(self.voltage, from, to);
+            sum += 0.5 * (self.voltage + end);
+            (self.voltage, from) = (end, to);
+        }
+        sum / PIECES as f64
+    }
+}
+
+/// What a stretch of time does to the voltage.
+#[derive(Debug, Clone, PartialEq)]
+struct Stretch {
+    /// Length of the stretch in charge time constants; infinite if the diode has no resistance.
+    charges: f64,
+    /// The same in discharge time constants.
+    discharges: f64,
+    /// What remains of the voltage after discharge over the stretch, and over a quarter of it.
+    remains: [f64; 2],
+    /// What remains of the voltage after charging, and the weights of five equidistant values of the envelope in what comes.
+    charged: (f64, [f64; POINTS]),
+    /// The same for an envelope that goes along a straight line: what remains, and the weights of its beginning and its end.
+    straight: [f64; 3],
+}
+
+impl Stretch {
+    fn new(settings: DetectorSettings, length_s: f64) -> Self {
+        let in_units =
+            |time_constant_s: f64| if time_constant_s > 0.0 { length_s / time_constant_s } else { f64::INFINITY };
+        let (charges, discharges) = (in_units(settings.charge_s), in_units(settings.discharge_s));
+        Self {
+            charges,
+            discharges,
+            remains: [(-discharges).exp(), (-0.25 * discharges).exp()],
+            charged: charging(charges),
+            straight: charged(charges),
+        }
+    }
+
+    /// Voltage at the end and its mean if one and the same thing goes on all the time; the envelope is the polynomial through
+    /// five equidistant values.
+    #[inline]
+    fn plain(&self, voltage: f64, envelope: [f64; POINTS]) -> Option<(f64, f64)> {
+        let [from, .., to] = envelope;
+        let [whole, quarter] = self.remains;
+        if voltage <= from && envelope.is_sorted() {
+            let (own, weights) = &self.charged;
+            let end = own * voltage + envelope.iter().zip(weights).map(|(a, w)| a * w).sum::<f64>();
+            return Some((end, boole(envelope) - (end - voltage) / self.charges));
+        }
+        let mut falling = voltage;
+        let above = |a: &f64| {
+            let is_above = falling >= *a;
+            falling *= quarter;
+            is_above
+        };
+        if whole > 0.0 && envelope.iter().all(above) {
+            return Some((voltage * whole, voltage * (1.0 - whole) / self.discharges));
+        }
+        let slides = |a: &f64, b: &f64| b <= a && *b >= a * quarter;
+        let on_it = (voltage - from).abs() <= ROUNDING * from;
+        (on_it && envelope.is_sorted_by(slides)).then(|| (to, boole(envelope)))
+    }
+
+    /// Voltage at the end of a stretch in which the envelope goes along a straight line.
+    #[inline]
+    fn straight(&self, voltage: f64, from: f64, to: f64) -> f64 {
+        if voltage <= from {
+            let [own, first, last] = self.straight;
+            let charged = own * voltage + first * from + last * to;
+            if to >= from || charged < to {
+                return charged;
+            }
+            // On its way down the envelope comes to the voltage, which slides along it or is left above it.
+            let (below, above) = (from - voltage, charged - to);
+            let met = if below > 0.0 && self.charges.is_finite() { below / (below + above) } else { 0.0 };
+            let remains = if met > 0.0 { self.remains[0].powf(1.0 - met) } else { self.remains[0] };
+            return to.max((from + (to - from) * met) * remains);
+        }
+        let discharged = voltage * self.remains[0];
+        if discharged >= to {
+            return discharged;
+        }
+        if to <= from || self.charges.is_infinite() {
+            return to;
+        }
+        // The envelope comes up to the falling voltage inside the stretch and charges for the rest of it.
+        let met = (voltage - from) / (voltage - from + to - discharged);
+        let at = from + (to - from) * met;
+        let [own, first, last] = charged(self.charges * (1.0 - met));
+        (own + first) * at + last * to
+    }
+}
+
+/// After `x` charge time constants in which the envelope goes along a straight line: what remains of the voltage, and the
+/// weights of beginning and end of the envelope.
+fn charged(x: f64) -> [f64; 3] {
+    // The share of a slope that is lost behind the diode: (1 − e^(−x))/x, by its series where x is small.
+    let lag = if x > 1e-4 { -(-x).exp_m1() / x } else { 1.0 - 0.5 * x };
+    [(-x).exp(), lag - (-x).exp(), 1.0 - lag]
+}
+
+/// Mean of the polynomial through five equidistant values (Boole's rule).
+#[inline]
+fn boole([a, b, c, d, e]: [f64; POINTS]) -> f64 {
+    (7.0 * (a + e) + 32.0 * (b + d) + 12.0 * c) / 90.0
+}
+
+/// What remains of the voltage after `x` charge time constants, and the weights of five equidistant values of the envelope in
+/// what comes: U = U₀·e^(−x) + x·∫e^(−x(1−s))·A(s) ds over 0..1, A the polynomial through the five.
+fn charging(x: f64) -> (f64, [f64; POINTS]) {
+    if x.is_infinite() {
+        return (0.0, [0.0, 0.0, 0.0, 0.0, 1.0]);
+    }
+    // ∫e^(−x(1−s))·s^k ds, by parts or, where that loses digits, by its series Σ (−x)^n·k!/(n + k + 1)!.
+    let mut moments = [0.0; POINTS];
+    for k in 0..POINTS {
+        moments[k] = if x > 4.0 {
+            if k == 0 { -(-x).exp_m1() / x } else { (1.0 - k as f64 * moments[k - 1]) / x }
+        } else {
+            let mut term = 1.0 / (k as f64 + 1.0);
+            (1..40).fold(term, |sum, n| {
+                term *= -x / (n + k + 1) as f64;
+                sum + term
+            })
+        };
+    }
+    let weights = POLYNOMIALS.map(|polynomial| x * polynomial.iter().zip(&moments).map(|(c, m)| c * m).sum::<f64>());
+    ((-x).exp(), weights)
 }
 
 /// e^(−step/τ), and 0 for τ = 0.

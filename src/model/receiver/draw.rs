@@ -23,13 +23,11 @@ pub(crate) enum Stream {
 #[derive(Debug, Clone)]
 pub(crate) struct Draw {
     random: Random,
-    /// The second of the last pair of normal numbers.
-    spare: Option<f64>,
 }
 
 impl Draw {
     pub(crate) fn new(seed: u64, stream: Stream) -> Self {
-        Self { random: Random::seeded(mix(seed ^ mix(stream as u64))), spare: None }
+        Self { random: Random::seeded(mix(seed ^ mix(stream as u64))) }
     }
 
     /// Uniform in (0, 1), neither end reached.
@@ -43,26 +41,60 @@ impl Draw {
         Complex::from_polar(1.0, TAU * self.uniform())
     }
 
-    /// Complex normal number of mean square 1: both parts normal with variance 1/2, by the polar method (Marsaglia and Bray
-    /// 1964). Whether a point is drawn again is decided by sums and products alone, so every machine draws the same points.
+    /// Normal numbers from here on.
+    pub(crate) fn normals(self) -> Normals {
+        Normals { draw: self, block: Vec::new(), spare: None }
+    }
+}
+
+/// Numbers drawn together: one after the other, each would wait for the logarithm of the last.
+const BLOCK: usize = 64;
+
+/// A stream of normal numbers, by the polar method (Marsaglia and Bray 1964). Whether a point is drawn again is decided by sums
+/// and products alone, so every machine draws the same points.
+#[derive(Debug, Clone)]
+pub(crate) struct Normals {
+    draw: Draw,
+    /// Drawn ahead, the next one last.
+    block: Vec<Complex>,
+    /// The second of the last pair of real numbers.
+    spare: Option<f64>,
+}
+
+impl Normals {
+    /// Complex normal number of mean square 1: both parts normal with variance 1/2.
     #[inline]
-    pub(crate) fn complex_normal(&mut self) -> Complex {
-        loop {
-            let point = Complex::new(2.0 * self.uniform() - 1.0, 2.0 * self.uniform() - 1.0);
-            let square = point.norm_sqr();
-            if square < 1.0 && square > 0.0 {
-                return point * (-square.ln() / square).sqrt();
-            }
+    pub(crate) fn complex(&mut self) -> Complex {
+        if self.block.is_empty() {
+            self.draw_block();
         }
+        self.block.pop().unwrap_or_default()
+    }
+
+    fn draw_block(&mut self) {
+        let mut points = [Complex::default(); BLOCK];
+        let mut count = 0;
+        while count < BLOCK {
+            let point = Complex::new(2.0 * self.draw.uniform() - 1.0, 2.0 * self.draw.uniform() - 1.0);
+            points[count] = point;
+            let square = point.norm_sqr();
+            // Without a branch: a point outside the circle is written over.
+            count += usize::from(square < 1.0 && square > 0.0);
+        }
+        let normal = |point: &Complex| {
+            let square = point.norm_sqr();
+            point * (-square.ln() / square).sqrt()
+        };
+        self.block.extend(points.iter().rev().map(normal));
     }
 
     /// Normal number of variance 1.
     #[inline]
-    pub(crate) fn normal(&mut self) -> f64 {
+    pub(crate) fn real(&mut self) -> f64 {
         if let Some(spare) = self.spare.take() {
             return spare;
         }
-        let pair = self.complex_normal() * std::f64::consts::SQRT_2;
+        let pair = self.complex() * std::f64::consts::SQRT_2;
         self.spare = Some(pair.im);
         pair.re
     }
@@ -75,8 +107,8 @@ mod tests {
     #[test]
     fn complex_normal_numbers_have_the_moments_of_a_normal_distribution() {
         const N: usize = 200_000;
-        let mut draw = Draw::new(7, Stream::ChannelNoise);
-        let values: Vec<Complex> = (0..N).map(|_| draw.complex_normal()).collect();
+        let mut normals = Draw::new(7, Stream::ChannelNoise).normals();
+        let values: Vec<Complex> = (0..N).map(|_| normals.complex()).collect();
         let mean = |f: &dyn Fn(&Complex) -> f64| values.iter().map(f).sum::<f64>() / N as f64;
         // Standard errors: 1/√n for the square, √(96/4)/√n for the fourth power of a part, 1/√(2n) for the products.
         let error = 1.0 / (N as f64).sqrt();

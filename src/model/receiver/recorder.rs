@@ -1,6 +1,6 @@
 //! The recorder: level, noise, clipping at full scale, resolution and drop-outs. In units of full scale, times in s.
 
-use super::{Draw, ReceiverError, Stream, within};
+use super::{Draw, Normals, ReceiverError, Stream, within};
 use crate::bench::Bench;
 use serde::{Deserialize, Serialize};
 
@@ -61,7 +61,7 @@ impl RecorderSettings {
 /// A recorder at work.
 #[derive(Debug, Clone)]
 pub(crate) struct Recorder {
-    noise: Option<(Draw, f64)>,
+    noise: Option<(Normals, f64)>,
     /// Steps of the converter from 0 to full scale.
     steps: Option<f64>,
     drop_outs: Option<Interruption>,
@@ -95,7 +95,7 @@ impl Recorder {
             Interruption { draw, mean_wait, length: drop_outs.length_s * sample_rate_hz, from }
         });
         Self {
-            noise: (settings.noise > 0.0).then(|| (Draw::new(seed, Stream::Recorder), settings.noise)),
+            noise: (settings.noise > 0.0).then(|| (Draw::new(seed, Stream::Recorder).normals(), settings.noise)),
             steps: settings.bits.map(|bits| 2f64.powi(i32::from(bits) - 1)),
             drop_outs,
         }
@@ -104,8 +104,8 @@ impl Recorder {
     /// What is written for the audio at a sample counted from the start of the clip.
     #[inline]
     pub(crate) fn write(&mut self, mut audio: f64, sample: u64) -> f64 {
-        if let Some((draw, rms)) = &mut self.noise {
-            audio += draw.normal() * *rms;
+        if let Some((normals, rms)) = &mut self.noise {
+            audio += normals.real() * *rms;
         }
         audio = audio.clamp(-1.0, 1.0);
         if let Some(steps) = self.steps {

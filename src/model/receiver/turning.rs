@@ -16,11 +16,6 @@ impl Turning {
         Self { now: start, turn: Complex::from_polar(1.0, TAU * frequency_hz * step_s) }
     }
 
-    /// The vector of the coming step.
-    pub(super) fn now(&self) -> Complex {
-        self.now
-    }
-
     /// The vector of this step.
     #[inline]
     pub(super) fn next(&mut self) -> Complex {

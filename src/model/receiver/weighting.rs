@@ -10,9 +10,10 @@
 //! The indicating instrument is critically damped: two equal lags. Readings are relative to the steady reading of a sine
 //! whose envelope is 1. Times in s.
 
-use super::Channel;
 use super::detector::remains;
+use super::passage::{PARTS, Passage};
 use super::selectivity::Selectivity;
+use super::{Channel, Complex};
 use serde::{Deserialize, Serialize};
 use std::f64::consts::PI;
 
@@ -97,6 +98,9 @@ fn steady(source_s: f64, discharge_s: f64) -> f64 {
     0.5 * (low + high)
 }
 
+/// Pieces of a step in which the diode conducts.
+const PIECES: usize = 8;
+
 /// The quasi-peak detector at work; its voltage is in units of its steady voltage under an envelope of 1.
 #[derive(Debug, Clone, PartialEq)]
 pub struct QuasiPeak {
@@ -133,18 +137,34 @@ impl QuasiPeak {
 
     /// Voltage at the end of a step at which the envelope has come to `envelope`, along a straight line.
     pub fn step(&mut self, envelope: f64) -> f64 {
-        if envelope.max(self.before) <= self.bleed * self.voltage {
+        let from = std::mem::replace(&mut self.before, envelope);
+        self.stretch(self.step_s, [from, 0.5 * (from + envelope), envelope]);
+        self.voltage * self.scale
+    }
+
+    /// Mean voltage over a step of the envelope.
+    pub(super) fn passage<F: Fn(usize) -> Complex>(&mut self, passage: &Passage<'_, F>) -> f64 {
+        let [from, middle, to] = passage.lengths;
+        let before = self.voltage;
+        if from.max(middle).max(to) <= self.bleed * self.voltage {
             self.voltage *= self.bleed;
         } else {
-            let (h, u, middle) = (self.step_s, self.voltage, 0.5 * (self.before + envelope));
-            // Runge and Kutta's third-order rule.
-            let k1 = self.slope(self.before, u);
-            let k2 = self.slope(middle, u + 0.5 * h * k1);
-            let k3 = self.slope(envelope, u + h * (2.0 * k2 - k1));
-            self.voltage = (u + h * (k1 + 4.0 * k2 + k3) / 6.0).max(0.0);
+            // The diode conducts for a few steps of each click; where it begins and ends the charge is far from a parabola.
+            let at = |half: usize| (passage.at)(half * PARTS / (2 * PIECES)).norm();
+            for piece in 0..PIECES {
+                self.stretch(self.step_s / PIECES as f64, [at(2 * piece), at(2 * piece + 1), at(2 * piece + 2)]);
+            }
         }
-        self.before = envelope;
-        self.voltage * self.scale
+        0.5 * (before + self.voltage) * self.scale
+    }
+
+    /// A stretch over which the envelope goes through three equidistant values, by Runge and Kutta's third-order rule.
+    fn stretch(&mut self, h: f64, [from, middle, to]: [f64; 3]) {
+        let u = self.voltage;
+        let k1 = self.slope(from, u);
+        let k2 = self.slope(middle, u + 0.5 * h * k1);
+        let k3 = self.slope(to, u + h * (2.0 * k2 - k1));
+        self.voltage = (u + h * (k1 + 4.0 * k2 + k3) / 6.0).max(0.0);
     }
 }
 
@@ -162,12 +182,18 @@ impl Instrument {
         Self { remains: remains(step_s, band.instrument_s()), lags: [0.0; 2] }
     }
 
-    /// Reading for an input held over this step.
+    /// Reading at the end of a step over which the input is held.
     #[inline]
     pub fn step(&mut self, input: f64) -> f64 {
         self.lags[0] = input + (self.lags[0] - input) * self.remains;
         self.lags[1] = self.lags[0] + (self.lags[1] - self.lags[0]) * self.remains;
         self.lags[1]
+    }
+
+    /// Mean reading over such a step.
+    pub(super) fn mean(&mut self, input: f64) -> f64 {
+        let before = self.lags[1];
+        0.5 * (before + self.step(input))
     }
 }
 
@@ -194,7 +220,7 @@ pub fn reading(band: Band, weighting: Weighting, rate_hz: Option<f64>) -> f64 {
     let bandwidth_hz = band.bandwidth_hz();
     let step_s = 1.0 / (STEPS * bandwidth_hz);
     let channel = Channel::new(Selectivity::CoupledPairs { pairs: 2 }, bandwidth_hz);
-    let strength = super::Complex::from(1.0 / channel.impulse_peak().1);
+    let strength = Complex::from(1.0 / channel.impulse_peak().1);
     let mut state = channel.state(step_s);
     let mut detector = QuasiPeak::new(band, step_s);
     let mut instrument = Instrument::new(band, step_s);
