@@ -60,5 +60,5 @@ fn length_s(mean: &[(f64, f64)]) -> f64 {
     let peak = mean.iter().fold(0.0f64, |peak, point| peak.max(point.1.abs()));
     let mut beyond = mean.iter().filter(|point| point.1.abs() > GONE * peak).map(|point| point.0);
     let first = beyond.next().unwrap_or(0.0);
-    beyond.last().unwrap_or(first) - first
+    beyond.next_back().unwrap_or(first) - first
 }
