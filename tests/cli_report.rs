@@ -47,8 +47,15 @@ fn number(value: &Value) -> f64 {
     value.as_f64().unwrap_or_else(|| panic!("{value} is no number"))
 }
 
-/// Lines of an events file: time, kind, size, period, voltage.
-fn events(folder: &Folder) -> Vec<(f64, String, f64, Option<f64>, Option<f64>)> {
+/// A line of an events file.
+struct Line {
+    time_s: f64,
+    size: f64,
+    period_s: Option<f64>,
+    voltage_v: Option<f64>,
+}
+
+fn events(folder: &Folder) -> Vec<Line> {
     let lines = text(folder, "events.csv");
     lines
         .lines()
@@ -56,7 +63,8 @@ fn events(folder: &Folder) -> Vec<(f64, String, f64, Option<f64>, Option<f64>)> 
         .map(|line| {
             let fields: Vec<&str> = line.split(',').collect();
             let number = |k: usize| fields[k].parse::<f64>().ok();
-            (number(0).expect("a time"), fields[1].to_owned(), number(2).expect("a size"), number(4), number(5))
+            let (time_s, size) = (number(0).expect("a time"), number(2).expect("a size"));
+            Line { time_s, size, period_s: number(4), voltage_v: number(5) }
         })
         .collect()
 }
@@ -69,15 +77,19 @@ fn marks_of_firings_periods_and_sizes_lie_where_the_events_are() {
     let common = ["measure", "run.wav", "--bench", "bench.toml", "--events", "events.csv"];
     done(&folder, &common.into_iter().chain(options).collect::<Vec<_>>());
     let events = events(&folder);
-    let singles: Vec<_> = events.iter().filter_map(|event| Some((event.0, event.3?, event.2, event.4?))).collect();
+    let singles: Vec<_> =
+        events.iter().filter_map(|event| Some((event.time_s, event.period_s?, event.size, event.voltage_v?))).collect();
     assert!(singles.len() > 280);
     let periods = &drawn(&folder, "periods.svg")[0];
     let wanted: Vec<(f64, f64)> = singles.iter().map(|single| (single.0, single.1)).collect();
     periods.assert_drawn(&periods.marks("periods"), &wanted);
     let excerpt = &drawn(&folder, "excerpts.svg")[0];
     let marks = excerpt.marks("firing");
-    let seen: Vec<f64> =
-        events.iter().map(|event| event.0).filter(|t| *t < excerpt.corners("audio").last().expect("audio").0).collect();
+    let seen: Vec<f64> = events
+        .iter()
+        .map(|event| event.time_s)
+        .filter(|t| *t < excerpt.corners("audio").last().expect("audio").0)
+        .collect();
     assert_eq!(marks.len(), seen.len());
     for (mark, time_s) in marks.iter().zip(&seen) {
         assert!((mark.0 - time_s).abs() <= excerpt.x.grain(*time_s), "{mark:?} {time_s}");
@@ -140,7 +152,7 @@ fn ticks_stand_at_their_values() {
 fn the_growth_follows_the_events() {
     let folder = folder();
     done(&folder, &["measure", "run.wav", "--events", "events.csv", "--plot", "growth=growth.svg"]);
-    let times: Vec<f64> = events(&folder).iter().map(|event| event.0).collect();
+    let times: Vec<f64> = events(&folder).iter().map(|event| event.time_s).collect();
     let panel = &drawn(&folder, "growth.svg")[0];
     for (periods, sd_s) in panel.marks("growth") {
         let m = periods.round() as usize;

@@ -7,8 +7,8 @@ use super::{Course, EVIDENCE_FORMAT, Evidence, FiringPoint, Oddity, Thinned, Tra
 use crate::firing::{Event, EventKind};
 use std::collections::VecDeque;
 
-/// Audio that is held until its events come, s: more than the analyzer's longest window with its margin.
-pub const HOLD_S: f64 = 1.3 * crate::measure::WINDOW_S;
+/// Audio that is held until its events come, s: a piece that begins a while before its event must be there still.
+pub const HOLD_S: f64 = crate::measure::LATEST_S + 5.0;
 /// Firings and oddities that are kept at most.
 const MOST_FIRINGS: usize = 3000;
 const MOST_ODDITIES: usize = 400;

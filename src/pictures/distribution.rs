@@ -2,6 +2,7 @@
 
 use super::{Measured, every, has_rhythm, scatter_as_read_s, seconds};
 use crate::plot::{Axis, Legend, Panel, Picture, Scale, Stroke};
+use crate::rhythm::Reading;
 use statrs::distribution::{Continuous, Normal};
 
 /// Half width of the picture in standard deviations of the law.
@@ -47,16 +48,7 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
     panel.bars("counts", counts.iter().enumerate().map(|(k, count)| (edge(k), edge(k + 1), f64::from(*count))));
     let along = (0..=POINTS).map(|k| low_s + (high_s - low_s) * k as f64 / POINTS as f64);
     panel.line("law", Stroke::Model, along.map(|period_s| (period_s, expected(period_s))));
-    let jitter = reading.period_jitter_s?;
-    let noise = reading
-        .timing_noise_s
-        .map_or_else(String::new, |noise| format!(" and the timing noise of {} of each click", seconds(noise.value)));
-    let title = format!(
-        "Periods as read scatter by {}; the gap's jitter of {}{noise} make {}",
-        seconds(read_sd_s(&straightened)),
-        seconds(jitter.value),
-        seconds(sd_s)
-    );
+    let title = title(reading, read_sd_s(&straightened), sd_s)?;
     let mut text = "Bars: the periods. Dashed: the normal law that has the mean and the scatter of the measurement. Bars that \
                     stand beside the law (two humps, a long tail) say that one number does not describe this gap. Where clicks overlap, \
                     single periods are read too evenly or too unevenly, and the jitter comes from the line at the rate instead."
@@ -82,4 +74,18 @@ fn read_sd_s(periods_s: &[f64]) -> f64 {
     sorted.sort_by(f64::total_cmp);
     let at = |share: f64| sorted[((sorted.len() - 1) as f64 * share).round() as usize];
     (at(0.75) - at(0.25)) / MIDDLE_HALF
+}
+
+/// What the periods scatter by, beside what the figures make.
+fn title(reading: &Reading, read_s: f64, sd_s: f64) -> Option<String> {
+    let jitter = reading.period_jitter_s?;
+    let noise = reading
+        .timing_noise_s
+        .map_or_else(String::new, |noise| format!(" and the timing noise of {} of each click", seconds(noise.value)));
+    Some(format!(
+        "Periods as read scatter by {}; the gap's jitter of {}{noise} make {}",
+        seconds(read_s),
+        seconds(jitter.value),
+        seconds(sd_s)
+    ))
 }
