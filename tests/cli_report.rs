@@ -308,7 +308,7 @@ fn a_recording_without_a_gap_and_one_that_is_not_there_have_their_place() {
     let page = text(&folder, "all.html");
     assert!(
         page.contains("1 of 3 recordings hold a gap")
-            && page.contains("no gap is heard")
+            && page.contains("No gap is heard")
             && page.contains("no such file")
     );
     let back = run(&folder, &["measure", "--from-report", "all.html"]);

@@ -15,7 +15,7 @@ const MOST_ODDITIES: usize = 400;
 /// Runs of periods at most.
 const MOST_RUNS: usize = 500;
 /// Audio shown where nothing was found, s.
-const NOTHING_S: f64 = 0.25;
+const NOTHING_S: f64 = 0.06;
 
 /// Collects evidence: audio first, then the events that it gave.
 pub struct Collector {

@@ -10,6 +10,9 @@ const SCRIPT: &str = include_str!("page.js");
 const POLICY: &str =
     "default-src 'none'; style-src 'unsafe-inline'; script-src 'unsafe-inline'; media-src data: file: 'self'";
 
+/// Characters from which on a value is a sentence, and not set in bold.
+const LONG_VALUE: usize = 36;
+
 /// A page of a title, a body and the text of its JSON.
 pub(super) fn document(title: &str, body: &str, json: &str) -> String {
     let title = escaped(title);
@@ -51,7 +54,8 @@ pub(super) fn figures(rows: &[(String, String, String)]) -> String {
     let mut out = "<dl class=\"figures\">\n".to_owned();
     for (label, value, aside) in rows {
         // Writing to a string cannot fail.
-        let _ = write!(out, "<div><dt>{}</dt><dd>{}</dd>", escaped(label), escaped(value));
+        let class = if value.chars().count() > LONG_VALUE { " class=\"sentence\"" } else { "" };
+        let _ = write!(out, "<div><dt>{}</dt><dd{class}>{}</dd>", escaped(label), escaped(value));
         if !aside.is_empty() {
             let _ = write!(out, "<dd class=\"aside\">{}</dd>", escaped(aside));
         }

@@ -44,9 +44,9 @@ pub fn measurement(report: &MeasurementReport, sounds: &[Option<Sound>]) -> serd
 
 /// The answer in one line.
 fn answer(recording: &KeptRecording) -> String {
-    let Some(measurement) = &recording.measurement else { return "could not be read".to_owned() };
+    let Some(measurement) = &recording.measurement else { return "Could not be read".to_owned() };
     let reading = &measurement.reading;
-    let Some(rate) = reading.firing_rate_hz else { return "no gap is heard".to_owned() };
+    let Some(rate) = reading.firing_rate_hz else { return "No gap is heard".to_owned() };
     let mut line = Figure::plain(rate, "firings a second").value_and_u();
     if reading.verdict == Verdict::Irregular {
         return format!("{line}, without a rhythm");

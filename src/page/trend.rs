@@ -5,7 +5,7 @@ use crate::bench::si;
 use crate::pictures;
 use crate::plot::escaped;
 use crate::report::{HIGH_VOLTAGE_CAUTION, trend_rows};
-use crate::trend::{Charted, Trend, advice};
+use crate::trend::{Charted, Moment, Trend, advice};
 
 /// Entries in the table of the page.
 const SHOWN: usize = 40;
@@ -42,6 +42,12 @@ pub fn trend(log: &str, trend: &Trend) -> serde_json::Result<String> {
     Ok(document(&format!("History of {}", if trend.title.is_empty() { log } else { &trend.title }), &body, &json))
 }
 
+/// `2026-11-30 14:05`
+fn minute(time: Moment) -> String {
+    let text = time.to_string();
+    escaped(&text.get(..16).unwrap_or(&text).replace('T', " "))
+}
+
 fn entries(trend: &Trend) -> String {
     let hidden = trend.points.len().saturating_sub(SHOWN);
     let none = || "–".to_owned();
@@ -49,7 +55,7 @@ fn entries(trend: &Trend) -> String {
         .iter()
         .map(|point| {
             vec![
-                escaped(&point.time.to_string()),
+                format!("<span class=\"nowrap\">{}</span>", minute(point.time)),
                 escaped(&advice::amount(trend.charted, point.value, 5)),
                 point.firing_rate_hz.map_or_else(none, |rate| format!("{rate:.2} /s")),
                 point.gap_voltage_v.map_or_else(none, |v| si(v, "V", 5)),
@@ -60,5 +66,5 @@ fn entries(trend: &Trend) -> String {
         .collect();
     let caption =
         if hidden > 0 { format!("The last {SHOWN} of {} entries", trend.points.len()) } else { "Entries".to_owned() };
-    table(&caption, &["time", trend.charted.words(), "rate", "voltage as measured", "limits", "recording"], &rows)
+    table(&caption, &["time (UTC)", trend.charted.words(), "rate", "voltage as measured", "limits", "recording"], &rows)
 }

@@ -30,7 +30,7 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
     Some(Picture {
         kind: "excerpts",
         title: title(excerpts, measured.measurement),
-        reading: reading(excerpts),
+        reading: reading(excerpts, !measured.measurement.reading.other_trains.is_empty()),
         panels,
         legend,
     })
@@ -64,7 +64,7 @@ fn some(count: u64) -> String {
     }
 }
 
-fn reading(excerpts: &[Excerpt]) -> String {
+fn reading(excerpts: &[Excerpt], has_others: bool) -> String {
     let folded = excerpts.iter().any(|excerpt| !excerpt.audio.high.is_empty());
     let mut text =
         "The audio as it was recorded, the marks of the events above it. Each firing should sit on a click, and each \
@@ -72,6 +72,9 @@ fn reading(excerpts: &[Excerpt]) -> String {
             .to_owned();
     if excerpts.len() > 1 {
         text.push_str(" The further pieces show the first place where a firing is missed, or a click is extra.");
+    }
+    if has_others {
+        text.push_str(" Clicks of other trains have no marks here.");
     }
     if folded {
         text.push_str(" A long piece is drawn from the least to the greatest sample of short stretches.");

@@ -58,6 +58,8 @@ pub fn prediction(sweep: &Sweep, present: Option<&Prediction>) -> Picture {
 
 fn title(sweep: &Sweep, present: Option<&Prediction>, ends: (f64, f64)) -> String {
     let name = sweep.settings.first().and_then(|setting| setting.title.as_deref()).unwrap_or("The bench");
+    // Isolated (U+2068, U+2069), so that a name cannot turn the direction of the sentence.
+    let name = format!("\u{2068}{name}\u{2069}");
     let range = format!("from {} to {}", si(ends.0, "V", 3), si(ends.1, "V", 3));
     match present.and_then(|one| Some((one.supply_v?, one.firing_rate_hz?))) {
         Some((supply_v, rate)) => {

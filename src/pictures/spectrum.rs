@@ -1,6 +1,7 @@
 //! The spectrum with the line at the rate and the band of the receiver.
 
 use super::{Measured, has_rhythm};
+use crate::bench::si;
 use crate::plot::{Axis, Legend, Mark, Panel, Picture, Scale, Stroke};
 
 /// Greatest extent shown, dB.
@@ -42,7 +43,7 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
             legend.push((Legend::Mark(Mark::Ring), "rate and its multiples".to_owned()));
             title(peaks, rate_hz, spectrum.resolution_hz)
         }
-        None => "No firing rate is marked: no rhythm was found in this audio".to_owned(),
+        None => no_rate(peaks),
     };
     let (taken, heard) = spectrum.pieces;
     let part = if taken < heard {
@@ -57,6 +58,12 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
         spectrum.resolution_hz
     );
     Some(Picture { kind: "spectrum", title, reading: text, panels: vec![panel], legend })
+}
+
+fn no_rate(peaks: &[(f64, f64)]) -> String {
+    let highest = peaks.iter().max_by(|a, b| a.1.total_cmp(&b.1));
+    let line = highest.map_or_else(String::new, |line| format!("; its highest line is at {}", si(line.0, "Hz", 3)));
+    format!("No rhythm was found in this audio, so no rate is marked{line}")
 }
 
 /// The highest line about a frequency.
