@@ -40,7 +40,10 @@ fn title(excerpts: &[Excerpt], measurement: &Measurement) -> String {
     let length = |excerpt: &Excerpt| seconds(excerpt.audio.to_s() - excerpt.audio.from_s);
     let counts = measurement.reading.firings;
     match excerpts.first() {
-        Some(first) if first.why == Why::Nothing => format!("In {} from the middle no firing is marked", length(first)),
+        Some(first) if first.why == Why::Nothing && counts.extra > 0 => {
+            format!("{} from the middle; clicks without a rhythm are not marked one by one", length(first))
+        }
+        Some(first) if first.why == Why::Nothing => format!("In {} from the middle no firing is found", length(first)),
         Some(first) => {
             let of = |kind: EventKind| first.events.iter().filter(|event| event.kind == kind).count() as u64;
             format!(
@@ -89,7 +92,7 @@ fn panel(excerpt: &Excerpt, offset: f64) -> Panel {
         Why::Beginning => "the first firings: audio, full scale",
         Why::Missed => "where a firing is missed: audio, full scale",
         Why::Extra => "where a click is extra: audio, full scale",
-        Why::Nothing => "no firing: audio, full scale",
+        Why::Nothing => "from the middle: audio, full scale",
     };
     // Room above the audio for the marks.
     let y = Scale::linear(-1.1 * peak, 1.6 * peak);

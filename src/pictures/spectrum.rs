@@ -33,6 +33,9 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
     let reading = &measured.measurement.reading;
     let rate = reading.firing_rate_hz.filter(|_| has_rhythm(reading)).map(|rate| rate.value);
     let title = match rate {
+        Some(rate_hz) if rate_hz < first.0 => {
+            format!("The rate of {rate_hz:.2} /s lies below this spectrum, which begins at {}", si(first.0, "Hz", 2))
+        }
         Some(rate_hz) => {
             panel.upright("rate", Stroke::Limit, rate_hz);
             panel.words_at(rate_hz, 0, &format!("rate {rate_hz:.1} Hz"));
