@@ -54,6 +54,7 @@ fn a_series_writes_every_clip_with_its_truth_and_an_index() {
     assert_eq!(
         names(&clips),
         [
+            "index.html",
             "index.json",
             "marked.flac",
             "marked.json",
@@ -69,6 +70,11 @@ fn a_series_writes_every_clip_with_its_truth_and_an_index() {
     assert_eq!(index["clips"].as_array().expect("a list").len(), 3);
     assert_eq!(index["clips"][1]["changes"][0][1], "9000 V");
     assert!(index["clips"][0]["realised"]["firing_rate_hz"].as_f64().expect("a rate") > 50.0);
+    let page = fs::read_to_string(clips.join("index.html")).expect("read");
+    assert_eq!(page.matches("<audio controls").count(), 3);
+    for file in ["./marked.flac", "./supply-01.wav", "./supply-02.json"] {
+        assert!(page.contains(&format!("=\"{file}\"")), "{file}");
+    }
     let truth = fs::read_to_string(clips.join("marked.json")).expect("read");
     assert!(truth.contains("gaptone.truth/1") && truth.contains("\"layout\": \"marker\""));
 }

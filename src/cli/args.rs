@@ -1,14 +1,21 @@
 //! The command line, defined once: help, usage errors and shell completions come from here.
 
+mod page;
+mod trend;
+
+pub use page::{EvidenceArguments, PageArguments};
+pub use trend::TrendArguments;
+
 use super::files::SampleFormat;
 use crate::audio::ChannelChoice;
-use crate::trend::{Charted, Moment};
+use crate::trend::Moment;
 use clap::{Args, Parser, Subcommand};
 
 const EXAMPLES: &str = "\
 Examples:
   gaptone measure run.wav                          rate and jitter of a recording
   gaptone measure run.wav --bench bench.toml       and the voltage at which the gap fires
+  gaptone measure run.wav --report run.html        and a page with the evidence
   gaptone predict --bench bench.toml               what a bench will sound like, before power
   gaptone render --bench bench.toml -o clip.wav    a clip with known truth
   gaptone measure run.wav --bench bench.toml --log gap.jsonl; gaptone trend gap.jsonl
@@ -59,7 +66,7 @@ stands in its place with its error.
 WAV, FLAC, Ogg Vorbis, MP3, M4A (AAC, ALAC), AIFF and CAF can be read.")]
 pub struct MeasureArguments {
     /// Recordings to measure; - is a recording on standard input
-    #[arg(required = true, value_name = "RECORDING")]
+    #[arg(required_unless_present = "from_report", value_name = "RECORDING")]
     pub recordings: Vec<String>,
 
     /// Description of the bench (TOML); without it there is no voltage
@@ -107,6 +114,10 @@ pub struct MeasureArguments {
     #[arg(long)]
     pub explain: bool,
 
+    /// Page and pictures
+    #[command(flatten)]
+    pub evidence: EvidenceArguments,
+
     /// Where the measurements are logged
     #[command(flatten)]
     pub log: LogArguments,
@@ -139,69 +150,6 @@ pub struct LogArguments {
     /// Relative humidity instead of the bench's, such as "45 %"
     #[arg(long, value_name = "HUMIDITY", requires = "log")]
     pub humidity: Option<String>,
-}
-
-/// Arguments of `trend`.
-#[derive(Debug, Args)]
-#[command(after_help = "\
-Limits come from the first entries: mean and mean moving range. After a repair begin a new
-stretch with --since. Entries of several benches are told apart by the title of the bench.")]
-pub struct TrendArguments {
-    /// Log written by measure --log; - is standard input
-    #[arg(value_name = "LOG")]
-    pub log: String,
-
-    /// What to chart [default: voltage; without any, rate]
-    #[arg(long, value_name = "FIGURE", value_enum)]
-    pub chart: Option<ChartArgument>,
-
-    /// Chart the bench of this title [default: that of the last entry]
-    #[arg(long, value_name = "TITLE")]
-    pub title: Option<String>,
-
-    /// Leave out what is older, such as 2026-11-30
-    #[arg(long, value_name = "TIME")]
-    pub since: Option<Moment>,
-
-    /// Entries of the first stretch, from which the limits come [default: 20]
-    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(8..))]
-    pub reference: Option<u16>,
-
-    /// Limits instead of those of the first stretch, such as 5.1kV..5.3kV
-    #[arg(long, value_name = "LOW..HIGH")]
-    pub limits: Option<String>,
-
-    /// Write everything as JSON, in SI units
-    #[arg(long, conflicts_with = "csv")]
-    pub json: bool,
-
-    /// Write the entries as CSV, in SI units
-    #[arg(long)]
-    pub csv: bool,
-}
-
-/// What `trend` charts.
-#[derive(Debug, Clone, Copy, clap::ValueEnum)]
-pub enum ChartArgument {
-    /// Gap voltage in standard air
-    Voltage,
-    /// Firing rate
-    Rate,
-    /// Period jitter over the period
-    Jitter,
-    /// Share of missed firings
-    Missed,
-}
-
-impl From<ChartArgument> for Charted {
-    fn from(argument: ChartArgument) -> Self {
-        match argument {
-            ChartArgument::Voltage => Self::GapVoltage,
-            ChartArgument::Rate => Self::FiringRate,
-            ChartArgument::Jitter => Self::Jitter,
-            ChartArgument::Missed => Self::Missed,
-        }
-    }
 }
 
 /// Arguments of `calibrate`.
@@ -239,6 +187,10 @@ pub struct CalibrateArguments {
     /// Write the result as JSON, in SI units
     #[arg(long)]
     pub json: bool,
+
+    /// Page and picture
+    #[command(flatten)]
+    pub page: PageArguments,
 }
 
 /// Arguments of `predict`.
@@ -264,10 +216,6 @@ pub struct PredictArguments {
     #[arg(long)]
     pub json: bool,
 
-    /// Draw rate, pitch and jitter against the supply voltage to an SVG file
-    #[arg(long, value_name = "FILE")]
-    pub plot: Option<String>,
-
     /// Write what it will sound like to a WAV or FLAC file
     #[arg(long, value_name = "FILE")]
     pub clip: Option<String>,
@@ -280,6 +228,10 @@ pub struct PredictArguments {
     /// Length of the clip, in seconds
     #[arg(long, value_name = "SECONDS", default_value = "5", value_parser = duration)]
     pub seconds: f64,
+
+    /// Page and picture
+    #[command(flatten)]
+    pub page: PageArguments,
 }
 
 /// Arguments of `render`.

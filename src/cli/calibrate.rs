@@ -4,12 +4,14 @@ use super::args::CalibrateArguments;
 use super::bench_file;
 use super::exit::{Exit, Failure, say};
 use super::files;
-use super::listen::Listener;
+use super::listen::{Listener, Piece};
+use super::page;
 use super::progress::Progress;
 use crate::bench::{self, Amendment, Bench, Dimension, Quantity, si};
 use crate::calibrate::{Calibration, Known, Options, Setting, SizeMeter, SupplyLog, calibrate, ramp_settings};
 use crate::estimate::Estimate;
 use crate::firing::Event;
+use crate::pictures::{self, CalibrationDrawn};
 use crate::report;
 use std::io::Write;
 use std::sync::Mutex;
@@ -24,7 +26,7 @@ const FEWEST: usize = 3;
 /// Wrong usage, files that cannot be read, settings that determine nothing.
 pub(super) fn run(arguments: &CalibrateArguments) -> Result<Exit, Failure> {
     let bench = arguments.bench.as_deref().map(bench_file::load).transpose()?.unwrap_or_default();
-    if let Some(place) = &arguments.write_bench {
+    for place in arguments.write_bench.as_deref().into_iter().chain(arguments.page.places()) {
         files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
     }
     let listener = Listener { channel: arguments.channel.unwrap_or_default(), ..Listener::default() };
@@ -39,6 +41,14 @@ pub(super) fn run(arguments: &CalibrateArguments) -> Result<Exit, Failure> {
     if let Some(place) = &arguments.write_bench {
         write_bench(place, arguments.bench.as_deref(), &calibration)?;
     }
+    page::put(
+        &arguments.page,
+        || {
+            let kept = arguments.bench.as_deref().map(page::kept_text).transpose()?;
+            page::written(crate::page::calibration(&calibration, &bench, kept.as_ref()))
+        },
+        || pictures::calibration(CalibrationDrawn { calibration: &calibration, bench: &bench }),
+    )?;
     if arguments.json {
         let text = serde_json::to_string_pretty(&calibration)
             .map_err(|error| Failure::Told(Exit::File, format!("the result cannot be written as JSON: {error}")))?;
@@ -117,8 +127,10 @@ fn settings(arguments: &CalibrateArguments, listener: &Listener) -> Result<Vec<S
 
 fn one(name: &str, supply: Quantity, listener: &Listener, progress: &Progress) -> Result<Setting, Failure> {
     let mut sizes = SizeMeter::default();
-    let heard = listener.listen(name, progress, &mut |event| {
-        sizes.push(&event);
+    let heard = listener.listen(name, progress, &mut |piece| {
+        if let Piece::Event(event) = piece {
+            sizes.push(&event);
+        }
         Ok(())
     })?;
     Ok(Setting::of_reading(name, supply, &heard.reading, sizes.trend(&heard.reading)))
@@ -133,8 +145,10 @@ fn ramp(arguments: &CalibrateArguments, log: &str, listener: &Listener) -> Resul
     let log_of_supply = SupplyLog::parse(&text).map_err(|error| Failure::usage(format!("{log}: {error}")))?;
     let progress = Progress::new(1);
     let mut events: Vec<Event> = Vec::new();
-    let heard = listener.listen(name, &progress, &mut |event| {
-        events.push(event);
+    let heard = listener.listen(name, &progress, &mut |piece| {
+        if let Piece::Event(event) = piece {
+            events.push(event);
+        }
         Ok(())
     })?;
     progress.clear();

@@ -17,6 +17,15 @@ pub(super) struct Listener {
     pub explain: bool,
 }
 
+/// What comes out of a recording as it is heard: audio first, the events in it later.
+#[derive(Debug, Clone, Copy)]
+pub(super) enum Piece<'a> {
+    /// Mono samples and their rate, Hz.
+    Audio(&'a [f32], u32),
+    /// An event at its time in the file.
+    Event(Event),
+}
+
 /// What was heard.
 pub(super) struct HeardRecording {
     pub recording: Recording,
@@ -25,7 +34,7 @@ pub(super) struct HeardRecording {
 }
 
 impl Listener {
-    /// Reads a recording to its end; `take` gets every event as it comes, at its time in the file.
+    /// Reads a recording to its end; `take` gets audio and events as they come.
     ///
     /// # Errors
     /// A recording that cannot be read, or what `take` fails with.
@@ -33,7 +42,7 @@ impl Listener {
         &self,
         name: &str,
         progress: &Progress,
-        take: &mut dyn FnMut(Event) -> Result<(), Failure>,
+        take: &mut dyn FnMut(Piece<'_>) -> Result<(), Failure>,
     ) -> Result<HeardRecording, Failure> {
         let source = files::open(name).map_err(|error| Failure::file(name, &error))?;
         let told = |error: AudioError| Failure::file(name, &FileError::Broken(error.to_string()));
@@ -42,18 +51,17 @@ impl Listener {
         let mut measurer = Measurer::new(sample_rate_hz, Options { explain: self.explain });
         // The analyzer counts from the first sample it hears; a person counts from the start of the file.
         let from_s = self.span.from_s;
-        let mut take_all = |events: Vec<Event>| {
-            events.into_iter().try_for_each(|event| take(Event { time_s: event.time_s + from_s, ..event }))
-        };
+        let in_file = |event: Event| Piece::Event(Event { time_s: event.time_s + from_s, ..event });
         let mut mono = Vec::new();
         while intake.next(&mut mono).map_err(told)? {
+            take(Piece::Audio(&mono, sample_rate_hz))?;
             measurer.push(&mono);
-            take_all(measurer.take_events())?;
+            measurer.take_events().into_iter().try_for_each(|event| take(in_file(event)))?;
             progress.heard(mono.len() as f64 / f64::from(sample_rate_hz));
         }
         let heard = intake.finish();
         let Outcome { mut reading, events, explanation } = measurer.finish();
-        take_all(events)?;
+        events.into_iter().try_for_each(|event| take(in_file(event)))?;
         for stretch in &mut reading.stretches {
             (stretch.from_s, stretch.to_s) = (stretch.from_s + from_s, stretch.to_s + from_s);
         }

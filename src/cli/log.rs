@@ -112,7 +112,8 @@ fn weather(arguments: &LogArguments, bench: Option<&Bench>) -> Result<Weather, F
     })
 }
 
-fn now() -> Moment {
+/// The present moment, by the machine's clock.
+pub(super) fn now() -> Moment {
     // A clock before 1970 is a clock that was not set.
     Moment(SystemTime::now().duration_since(UNIX_EPOCH).map_or(0, |since| since.as_secs() as i64))
 }

@@ -5,17 +5,21 @@
 
 use super::args::MeasureArguments;
 use super::bench_file;
+use super::evidence;
 use super::exit::{Exit, Failure, say, tell};
 use super::files::{self, FileError, STANDARD_STREAM};
-use super::listen::{HeardRecording, Listener};
+use super::listen::{HeardRecording, Listener, Piece};
 use super::log::Log;
 use super::progress::Progress;
+use super::terminal::Terminal;
 use crate::audio::Span;
 use crate::bench::{Bench, Quantity};
+use crate::evidence::{Collector, Evidence};
 use crate::firing::Event;
 use crate::model::truth::Truth;
 use crate::report::{self, Differences, Measurement, Report, WithTruth};
 use crate::rhythm::Verdict;
+use crate::uncertainty::Budget;
 use crate::voltage::VoltageMeter;
 use std::collections::BTreeMap;
 use std::io::{self, Write};
@@ -27,10 +31,26 @@ use std::sync::mpsc;
 /// # Errors
 /// Wrong usage, a bench that cannot be used, a place for events that cannot be written.
 pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
+    if let Some(page) = &arguments.evidence.from_report {
+        return evidence::from_page(page, arguments);
+    }
+    let terminal = (!arguments.json).then(Terminal::of_standard_output).flatten();
+    let order = evidence::Order::new(arguments)?;
     let (bench, supply) = bench(arguments)?;
-    let task = Task::new(arguments, bench.as_ref(), supply)?;
     let log = Log::new(&arguments.log, bench.as_ref(), supply)?;
-    let mut results = Results { json: arguments.json, truth: truth(arguments)?, log, ..Results::default() };
+    let task = Task {
+        evidence: order.is_some() || terminal.is_some(),
+        hears: order.is_some(),
+        ..Task::new(arguments, bench.as_ref(), supply)?
+    };
+    let mut results = Results {
+        json: arguments.json,
+        truth: truth(arguments)?,
+        log,
+        terminal,
+        evidence: order,
+        ..Results::default()
+    };
     if arguments.difference {
         if arguments.recordings.len() != 2 {
             return Err(Failure::usage("--difference compares two recordings; name exactly two"));
@@ -70,6 +90,8 @@ pub(super) fn run(arguments: &MeasureArguments) -> Result<Exit, Failure> {
 struct Analysed {
     measurement: Measurement,
     explanation: Vec<String>,
+    /// The evidence, if it is wanted, with the budget of the gap voltage.
+    evidence: Option<(Evidence, Vec<Budget>)>,
 }
 
 /// What is to be done with each recording.
@@ -77,6 +99,9 @@ struct Task<'a> {
     listener: Listener,
     events: Option<&'a str>,
     budget: bool,
+    /// Evidence is collected; it holds audio too.
+    evidence: bool,
+    hears: bool,
     /// A voltmeter that has seen no event yet.
     voltage: Option<VoltageMeter>,
 }
@@ -108,6 +133,8 @@ impl<'a> Task<'a> {
             listener: Listener { channel: arguments.channel.unwrap_or_default(), span, explain: arguments.explain },
             events,
             budget: arguments.budget,
+            evidence: false,
+            hears: false,
             voltage,
         })
     }
@@ -137,7 +164,15 @@ impl<'a> Task<'a> {
 
     fn analyse(&self, name: &str, progress: &Progress, sink: &mut Sink<'_>) -> Result<Analysed, Failure> {
         let mut voltage = self.voltage.clone();
-        let mut take = |event: Event| self.take(&event, voltage.as_mut(), sink);
+        let mut collector = self.evidence.then(|| Collector::new(self.listener.span.from_s));
+        let mut take = |piece: Piece<'_>| match (piece, &mut collector) {
+            (Piece::Event(event), collector) => self.take(&event, voltage.as_mut(), collector.as_mut(), sink),
+            (Piece::Audio(mono, rate_hz), Some(collector)) if self.hears => {
+                collector.hear(mono, rate_hz);
+                Ok(())
+            }
+            (Piece::Audio(..), _) => Ok(()),
+        };
         let HeardRecording { recording, mut reading, mut explanation } =
             self.listener.listen(name, progress, &mut take)?;
         let voltage = voltage.map(|meter| meter.finish(&reading)).unwrap_or_default();
@@ -156,18 +191,28 @@ impl<'a> Task<'a> {
             reading,
             gap_voltage_v: voltage.gap_voltage_v,
             gap_voltage_spread_v: voltage.gap_voltage_spread_v,
-            budget: if self.budget { voltage.budgets } else { Vec::new() },
+            budget: if self.budget { voltage.budgets.clone() } else { Vec::new() },
         };
         let explanation = if self.listener.explain { explanation } else { Vec::new() };
-        Ok(Analysed { measurement: report::finite(measurement), explanation })
+        let evidence = collector.map(|collector| (collector.finish(), voltage.budgets));
+        Ok(Analysed { measurement: report::finite(measurement), explanation, evidence })
     }
 
-    /// Hands an event on to the voltmeter and to its file.
-    fn take(&self, event: &Event, voltage: Option<&mut VoltageMeter>, sink: &mut Sink<'_>) -> Result<(), Failure> {
+    /// Hands an event on to the voltmeter, to the evidence and to its file.
+    fn take(
+        &self,
+        event: &Event,
+        voltage: Option<&mut VoltageMeter>,
+        collector: Option<&mut Collector>,
+        sink: &mut Sink<'_>,
+    ) -> Result<(), Failure> {
         let voltage_v = voltage.and_then(|meter| {
             meter.push(event);
             event.period_s.and_then(|period_s| meter.gap_voltage_of(period_s))
         });
+        if let Some(collector) = collector {
+            collector.event(event, voltage_v);
+        }
         sink(event, voltage_v).map_err(|error| {
             let place = self.events.unwrap_or("standard output");
             Failure::file(place, &FileError::from_io("writing", error))
@@ -207,6 +252,8 @@ struct Results {
     difference: Option<Option<VoltageMeter>>,
     runs: Vec<Measurement>,
     log: Option<Log>,
+    terminal: Option<Terminal>,
+    evidence: Option<evidence::Order>,
     reports: Vec<Report>,
     texts: usize,
     failed: bool,
@@ -236,7 +283,7 @@ impl Results {
 
     fn take(&mut self, name: &str, result: Result<Analysed, Failure>) -> Result<(), Failure> {
         match result {
-            Ok(Analysed { measurement, explanation }) => {
+            Ok(Analysed { measurement, explanation, evidence }) => {
                 explanation.iter().for_each(|line| tell(&format!("{name}: {line}")));
                 self.not_measurable |= measurement.reading.verdict == Verdict::None;
                 if let Some(Err(error)) = self.log.as_ref().map(|log| log.append(&measurement)) {
@@ -248,6 +295,11 @@ impl Results {
                 if self.difference.is_some() {
                     self.runs.push(measurement.clone());
                 }
+                let drawn =
+                    evidence.as_ref().and_then(|(evidence, _)| self.terminal.as_ref()?.picture(&measurement, evidence));
+                if let (Some((evidence, budget)), Some(order)) = (evidence, &mut self.evidence) {
+                    order.add(Measurement { budget, ..measurement.clone() }, evidence);
+                }
                 if self.json {
                     self.reports.push(match comparison {
                         None => Report::Measured(Box::new(measurement)),
@@ -258,13 +310,17 @@ impl Results {
                 let gap = if self.texts > 0 { "\n" } else { "" };
                 self.texts += 1;
                 let compared = comparison.map(|comparison| report::comparison_text(&comparison)).unwrap_or_default();
-                say(&format!("{gap}{}{compared}", report::measurement_text(&measurement)))
+                let drawn = drawn.unwrap_or_default();
+                say(&format!("{gap}{}{drawn}{compared}", report::measurement_text(&measurement)))
             }
             Err(Failure::Told(Exit::File, message)) => {
                 self.failed = true;
                 tell(&message);
+                let error = message.strip_prefix(&format!("{name}: ")).unwrap_or(&message);
+                if let Some(order) = &mut self.evidence {
+                    order.add_failure(name, error);
+                }
                 if self.json {
-                    let error = message.strip_prefix(&format!("{name}: ")).unwrap_or(&message);
                     self.reports.push(Report::Failed(report::Failure::new(name, error)));
                 }
                 Ok(())
@@ -290,6 +346,9 @@ impl Results {
             Some(found) => say(&format!("\n{}", report::differences_text(&found)))?,
             None if self.json => say(&(report::to_json(&self.reports).map_err(not_json)? + "\n"))?,
             None => {}
+        }
+        if let Some(order) = self.evidence {
+            order.finish()?;
         }
         Ok(match (self.failed, self.not_measurable) {
             (true, _) => Exit::File,

@@ -6,17 +6,20 @@ mod args;
 mod bench_file;
 mod calibrate;
 mod clip;
+mod evidence;
 mod exit;
 pub mod files;
 mod listen;
 mod log;
 mod measure;
+mod page;
 #[cfg(feature = "sound-card")]
 mod play;
 mod predict;
 mod progress;
 mod render;
 mod render_series;
+mod terminal;
 mod trend;
 
 use args::{Arguments, Command};

@@ -5,13 +5,14 @@ use super::bench_file;
 use super::clip::{Order, clip};
 use super::exit::{Exit, Failure, say};
 use super::files;
+use super::page;
 use super::render::facts;
 use crate::bench::{self, Bench, Dimension, Quantity};
 use crate::model::finish::{FinishSettings, Finished};
 use crate::model::firings::Start;
-use crate::predict::{self, Target, parse_target, predict, sweep, target};
+use crate::pictures;
+use crate::predict::{self, Prediction, Sweep, Target, parse_target, predict, sweep, target};
 use serde::Serialize;
-use std::io::Write;
 
 /// Sample rate of a clip to listen to, Hz.
 const CLIP_RATE_HZ: u32 = 48_000;
@@ -34,7 +35,7 @@ enum Question {
 /// # Errors
 /// Wrong usage, a bench that cannot be used, a place for clip or drawing that cannot be written.
 pub(super) fn run(arguments: &PredictArguments) -> Result<Exit, Failure> {
-    for place in [&arguments.clip, &arguments.plot].into_iter().flatten() {
+    for place in arguments.clip.as_deref().into_iter().chain(arguments.page.places()) {
         files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
     }
     let mut bench = bench_file::load(&arguments.bench)?;
@@ -43,7 +44,7 @@ pub(super) fn run(arguments: &PredictArguments) -> Result<Exit, Failure> {
             let count = usize::from(arguments.settings);
             let table = sweep(&bench, low_v, high_v, count).map_err(Failure::usage)?;
             put_out(arguments.json, &table, || predict::sweep_text(&table))?;
-            draw(arguments, &bench, low_v, high_v)?;
+            draw(arguments, &bench, (low_v, high_v), None, Some(&table))?;
         }
         Question::Setting(supply_v) => one(arguments, &bench, supply_v, None)?,
         Question::Target(target) => one(arguments, &bench, Some(target.supply_v.value), Some(target))?,
@@ -61,22 +62,37 @@ fn one(
     let mut prediction = predict(bench, supply_v).map_err(Failure::usage)?;
     prediction.target = target;
     put_out(arguments.json, &prediction, || predict::text(&prediction))?;
-    if let Some(centre_v) = prediction.supply_v.filter(|_| arguments.plot.is_some()) {
+    if arguments.page.places().next().is_some() {
+        let Some(centre_v) = prediction.supply_v else {
+            return Err(Failure::usage("--plot and --report need supply.voltage in the bench, or --supply"));
+        };
         let low_v = prediction.least_supply_v.map_or(0.5 * centre_v, |least_v| 0.9 * least_v.min(centre_v));
-        draw(arguments, bench, low_v, 2.0 * centre_v)?;
-    } else if arguments.plot.is_some() {
-        return Err(Failure::usage("--plot needs supply.voltage in the bench, or --supply"));
+        draw(arguments, bench, (low_v, 2.0 * centre_v), Some(&prediction), None)?;
     }
     listen(arguments, bench, supply_v)
 }
 
-/// Draws the range of settings, if asked.
-fn draw(arguments: &PredictArguments, bench: &Bench, low_v: f64, high_v: f64) -> Result<(), Failure> {
-    let Some(place) = &arguments.plot else { return Ok(()) };
-    let fine =
-        sweep(bench, low_v, high_v, PLOT_SETTINGS.max(usize::from(arguments.settings))).map_err(Failure::usage)?;
-    files::write_atomically(place, |file| file.write_all(predict::plot_svg(&fine).as_bytes()))
-        .map_err(|error| Failure::file(place, &error))
+/// Draws a range of settings and writes the page, as asked.
+fn draw(
+    arguments: &PredictArguments,
+    bench: &Bench,
+    (low_v, high_v): (f64, f64),
+    present: Option<&Prediction>,
+    table: Option<&Sweep>,
+) -> Result<(), Failure> {
+    if arguments.page.places().next().is_none() {
+        return Ok(());
+    }
+    let count = PLOT_SETTINGS.max(usize::from(arguments.settings));
+    let fine = sweep(bench, low_v, high_v, count).map_err(Failure::usage)?;
+    page::put(
+        &arguments.page,
+        || {
+            let kept = page::kept_text(&arguments.bench)?;
+            page::written(crate::page::prediction(present, table, Some(&fine), &kept))
+        },
+        || pictures::prediction(&fine, present),
+    )
 }
 
 fn question(arguments: &PredictArguments, bench: &mut Bench) -> Result<Question, Failure> {

@@ -6,6 +6,7 @@
 use super::bench_file;
 use super::exit::{Exit, Failure, say, tell};
 use super::files::{self, ClipFacts, SampleFormat};
+use super::page;
 use super::render::{facts, programme, summary, write_truth};
 use crate::bench::{SeriesEntry, parse_series};
 use crate::model::finish::FinishTruth;
@@ -13,6 +14,7 @@ use crate::model::firings::Realised;
 use crate::model::receiver::Programme;
 use crate::model::series::{self, Ingredients};
 use crate::model::truth::Truth;
+use crate::page::SeriesClip;
 use serde::{Deserialize, Serialize};
 use std::io::Write;
 use std::path::Path;
@@ -21,6 +23,8 @@ use std::path::Path;
 const FORMAT: &str = "gaptone.series/1";
 /// Name of the index in the folder of the clips.
 const INDEX: &str = "index.json";
+/// The same for people.
+const INDEX_PAGE: &str = "index.html";
 
 /// The index of a series.
 #[derive(Debug, Default, Serialize, Deserialize)]
@@ -94,7 +98,29 @@ pub(super) fn run(series_name: &str, folder: &str, seed: Option<u64>) -> Result<
         };
         write_index(&index_place, &all)?;
     }
+    page::write(&in_folder(folder, INDEX_PAGE), &index_page(&index)?)?;
     Ok(Exit::Done)
+}
+
+/// The index as a page with a player for each clip.
+fn index_page(index: &Index) -> Result<String, Failure> {
+    let json = serde_json::to_string(index)
+        .map_err(|error| Failure::Told(Exit::File, format!("the index cannot be written as JSON: {error}")))?;
+    let clips: Vec<SeriesClip> = index
+        .clips
+        .iter()
+        .map(|listed| SeriesClip {
+            title: listed.title.clone().unwrap_or_else(|| listed.name.clone()),
+            file: listed.file.clone(),
+            truth: listed.truth.clone(),
+            duration_s: listed.duration_s,
+            firing_rate_hz: listed.realised.and_then(|realised| realised.firing_rate_hz),
+            relative_jitter: listed.realised.and_then(|realised| Some(realised.period_jitter_s? / realised.period_s?)),
+            changes: listed.changes.clone(),
+            seed: listed.seed,
+        })
+        .collect();
+    Ok(crate::page::series(index.title.as_deref(), &clips, &json))
 }
 
 /// Checks every entry and reads what it needs; tells all that is wrong, each with its line.

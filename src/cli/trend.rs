@@ -2,16 +2,19 @@
 
 use super::args::TrendArguments;
 use super::exit::{Exit, Failure, say};
-use super::log;
+use super::{files, log, page};
 use crate::bench::{self, Dimension};
-use crate::report;
 use crate::trend::{Charted, Options, Trend, analyse};
+use crate::{pictures, report};
 
 /// Runs the command.
 ///
 /// # Errors
 /// A log that cannot be read or holds no entry; limits that are none.
 pub(super) fn run(arguments: &TrendArguments) -> Result<Exit, Failure> {
+    for place in arguments.page.places() {
+        files::check_writable(place).map_err(|error| Failure::file(place, &error))?;
+    }
     let charted = arguments.chart.map(Charted::from);
     let limits =
         arguments.limits.as_deref().map(|text| limits(text, charted.unwrap_or(Charted::GapVoltage))).transpose()?;
@@ -30,6 +33,11 @@ pub(super) fn run(arguments: &TrendArguments) -> Result<Exit, Failure> {
     }
     contents.notes.append(&mut trend.notes);
     trend.notes = contents.notes;
+    page::put(
+        &arguments.page,
+        || page::written(crate::page::trend(&arguments.log, &trend)),
+        || pictures::trend(&trend),
+    )?;
     say(&put(arguments, &trend)?)?;
     Ok(Exit::Done)
 }

@@ -41,6 +41,8 @@ const MORE: f64 = 1.25;
 /// Audio on both sides of a followed window that is analysed with it: s at least, periods, s at most. Filters and rhythm need it; the
 /// clicks in it belong to the neighbours.
 const MARGIN_S: (f64, f64, f64) = (0.1, 4.0, 2.0);
+/// Events come at most this much later than their audio is pushed, blocks of a second or less taken, s.
+pub const LATEST_S: f64 = MORE * WHOLE_S + 2.0 * MARGIN_S.2 + 1.0;
 
 /// How to measure.
 #[derive(Debug, Clone, Default)]

@@ -23,15 +23,7 @@ pub fn text(prediction: &Prediction) -> String {
             let _ = writeln!(out, "  {name:<16}{figure}");
         }
     }
-    let ripple = prediction.ripple.as_ref().map_or_else(Vec::new, super::RippleForecast::words);
-    let ring = prediction.burst.as_ref().map_or_else(Vec::new, super::BurstForecast::words);
-    for (heading, lines) in [
-        ("Ripple", &ripple),
-        ("Ring", &ring),
-        ("Stored energy", &prediction.hazards),
-        ("Cautions", &prediction.cautions),
-        ("Notes", &prediction.notes),
-    ] {
+    for (heading, lines) in lists(prediction) {
         if !lines.is_empty() {
             let _ = writeln!(out, "\n{heading}");
         }
@@ -40,6 +32,28 @@ pub fn text(prediction: &Prediction) -> String {
         }
     }
     out
+}
+
+/// What there is to say in sentences, under headings; a list may be empty.
+#[must_use]
+pub fn lists(prediction: &Prediction) -> [(&'static str, Vec<String>); 5] {
+    let ripple = prediction.ripple.as_ref().map_or_else(Vec::new, super::RippleForecast::words);
+    let ring = prediction.burst.as_ref().map_or_else(Vec::new, super::BurstForecast::words);
+    [
+        ("Ripple", ripple),
+        ("Ring", ring),
+        ("Stored energy", prediction.hazards.clone()),
+        ("Cautions", prediction.cautions.clone()),
+        ("Notes", prediction.notes.clone()),
+    ]
+}
+
+/// The figures that there are, each with its name and what is said beside it.
+#[must_use]
+pub fn figure_rows(prediction: &Prediction) -> Vec<(String, String, String)> {
+    let known =
+        figures(prediction).into_iter().filter_map(|(name, figure)| Some((name.to_owned(), figure?, String::new())));
+    known.collect()
 }
 
 fn figures(prediction: &Prediction) -> [(&'static str, Option<String>); 16] {

@@ -4,6 +4,7 @@ use super::comparison::Comparison;
 use super::measurement::{FORMAT, Measurement};
 use crate::estimate::Estimate;
 use serde::Serialize;
+use std::fmt;
 
 /// A recording that could not be read, in its place among those that could.
 #[derive(Debug, Clone, PartialEq, Serialize)]
@@ -23,6 +24,12 @@ impl Failure {
     #[must_use]
     pub fn new(file: &str, error: &str) -> Self {
         Self { format: FORMAT, recording: FailedRecording { file: file.to_owned() }, error: error.to_owned() }
+    }
+}
+
+impl fmt::Display for Failure {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        write!(f, "{}: {}", self.recording.file, self.error)
     }
 }
 

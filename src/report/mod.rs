@@ -8,6 +8,7 @@ mod events;
 mod figure;
 mod json;
 mod measurement;
+mod sketch;
 mod text;
 mod trend;
 
@@ -18,5 +19,6 @@ pub use events::{EVENTS_HEADER, write_event};
 pub use figure::Figure;
 pub use json::{Failure, Report, WithTruth, finite, to_json};
 pub use measurement::{FORMAT, Measurement, Recording};
-pub use text::{HIGH_VOLTAGE_CAUTION, measurement_text, wrapped};
-pub use trend::{TREND_HEADER, trend_text, write_trend_csv};
+pub use sketch::sketch;
+pub use text::{HIGH_VOLTAGE_CAUTION, figure_rows, measurement_text, recording_line, wrapped};
+pub use trend::{TREND_HEADER, trend_rows, trend_text, write_trend_csv};

@@ -29,9 +29,7 @@ pub fn measurement_text(measurement: &Measurement) -> String {
     let reading = &measurement.reading;
     let mut text = format!("{}\n", recording_line(&measurement.recording));
     text.push_str(&wrapped(&verdict_line(reading), "  ", "  "));
-    let mut rows = reading_rows(reading);
-    rows.extend(voltage_rows(measurement));
-    rows.extend(count_rows(reading));
+    let rows = figure_rows(measurement);
     if !rows.is_empty() {
         text.push('\n');
     }
@@ -62,6 +60,15 @@ pub fn measurement_text(measurement: &Measurement) -> String {
 
 type Row = (String, String, String);
 
+/// The figures as rows: name, value with its unit, and what stands beside it.
+#[must_use]
+pub fn figure_rows(measurement: &Measurement) -> Vec<(String, String, String)> {
+    let mut rows = reading_rows(&measurement.reading);
+    rows.extend(voltage_rows(measurement));
+    rows.extend(count_rows(&measurement.reading));
+    rows
+}
+
 fn row(label: &str, figure: &Figure, aside: String) -> Row {
     (label.to_owned(), figure.value_and_u(), aside)
 }
@@ -77,7 +84,9 @@ fn verdict_line(reading: &Reading) -> String {
     }
 }
 
-fn recording_line(recording: &Recording) -> String {
+/// What was read, in one line: file, length, sample rate, channel.
+#[must_use]
+pub fn recording_line(recording: &Recording) -> String {
     let Recording { file, duration_s, sample_rate_hz, channels, channel, from_s } = recording;
     let mut line = format!("{file}: {duration_s:.2} s at {} kHz", f64::from(*sample_rate_hz) / 1000.0);
     if *from_s > 0.0 {

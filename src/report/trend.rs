@@ -28,7 +28,7 @@ pub const TREND_HEADER: &str = "time,file,firing_h,supply_v,gap_voltage_v,standa
 #[must_use]
 pub fn trend_text(log: &str, trend: &Trend) -> String {
     let mut text = heading(log, trend);
-    for (label, value) in rows(trend) {
+    for (label, value) in trend_rows(trend) {
         text.push_str(&wrapped(&value, &format!("  {label:LABEL$}"), &" ".repeat(LABEL + 2)));
     }
     if !trend.points.is_empty() {
@@ -64,7 +64,9 @@ fn heading(log: &str, trend: &Trend) -> String {
 
 type Row = (&'static str, String);
 
-fn rows(trend: &Trend) -> Vec<Row> {
+/// The findings as rows: name and value; the name is empty where a row goes on with the one before.
+#[must_use]
+pub fn trend_rows(trend: &Trend) -> Vec<(&'static str, String)> {
     let mut rows: Vec<Row> = Vec::new();
     let of = |value: f64| advice::amount(trend.charted, value, 5);
     if let Some(limits) = &trend.limits {
