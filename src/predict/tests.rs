@@ -335,7 +335,7 @@ fn a_rate_that_no_setting_gives_is_refused_with_what_can_be_had() {
     ramp.charging.current = Some(Quantity::exact(1e-3));
     // 1 mA into 1 nF over 5 kV: 200 /s at every setting.
     let refused = supply_for_rate(&ramp, 440.0).expect_err("out of reach").to_string();
-    assert!(refused.contains("200.0000 to 200.0000"), "{refused}");
+    assert!(refused.contains("200.0 to 200.0"), "{refused}");
     assert!(matches!(supply_for_rate(&Bench::default(), 440.0), Err(PredictError::Missing(_))));
 }
 
