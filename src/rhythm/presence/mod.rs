@@ -41,6 +41,9 @@ const COHERENT: (f64, f64, f64) = (0.9, 0.8, 0.5);
 const WIDER: (f64, f64, f64, f64) = (0.9, 2.5, 0.78, 0.8e-3);
 /// Clicks in noise: alike from here on if they are this narrow (s), this much in the core and this clear.
 const NOISY: (f64, f64, f64, f64) = (0.55, 0.45e-3, 0.85, 3.0);
+/// Very short clicks in wide noise are a small part of what is looked at about them. They count as alike from here on if they are this
+/// narrow (s), this much in the core and this clear, and if each firing of a tight rhythm brings this evidence, which noise does not.
+const NARROW: (f64, f64, f64, f64, f64) = (0.4, 0.12e-3, 0.95, 3.3, 1.0);
 /// Rate from which the line alone decides, Hz.
 const OVERLAP_HZ: f64 = 1_200.0;
 /// The line is the train's: share of time on it, coherence of its surroundings with it, growth of its phase variance.
@@ -69,9 +72,9 @@ const UNSURE: (f64, f64) = (1.8, 0.85);
 const WANDERING: (f64, f64) = (0.12, 0.7);
 /// A rate on a mains multiple, within this, with this share of the energy in mains lines is buzz unless clicks stand out by
 /// this factor …
-const ON_MAINS: f64 = 5e-4;
+const ON_MAINS: f64 = 7e-4;
 const MAINS_ENERGY: f64 = 0.6;
-const CLEAR_OF_MAINS: f64 = 2.5;
+const CLEAR_OF_MAINS: f64 = 3.0;
 /// … and one without scatter needs more.
 const BUZZ_SCATTER: f64 = 1e-2;
 const CLEAR_OF_BUZZ: f64 = 8.0;
@@ -226,8 +229,15 @@ impl Heard {
         let Some(c) = &self.character else { return Some("too few clicks to tell what they look like") };
         let each = self.evidence / self.firings.max(1) as f64;
         let noisy = c.alike >= NOISY.0 && c.width_s <= NOISY.1 && c.core >= NOISY.2 && c.clear >= NOISY.3;
+        let narrow = c.alike >= NARROW.0
+            && c.width_s <= NARROW.1
+            && c.core >= NARROW.2
+            && c.clear >= NARROW.3
+            && each >= NARROW.4
+            && self.scatter < WANDERING.0;
         let alike = c.alike >= ALIKE
             || noisy
+            || narrow
             || (c.alike >= BARELY_ALIKE.0 && each >= BARELY_ALIKE.1 && c.core >= BARELY_ALIKE.2);
         let wider = c.alike >= WIDER.0 && c.clear >= WIDER.1 && c.core >= WIDER.2 && c.width_s <= WIDER.3;
         let short = (c.width_s <= WIDTH_S && c.core >= CORE) || wider;
