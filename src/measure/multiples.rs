@@ -96,8 +96,7 @@ pub fn join(h: &mut Hypothesis, others: &[Fit], duration_s: f64, explanation: &m
             })
             .max_by(|a, b| a.evidence.total_cmp(&b.evidence));
         if let Some(fit) = best
-            && fit.is_proven()
-            && fit.evidence > JOINED * h.fit.evidence.max(other.evidence)
+            && (explains_more(&fit, &h.fit, other) || holds_both(&fit, h, own))
         {
             explanation.push(format!(
                 "trains of {:.4} and {:.4} ms are one of {:.4} ms",
@@ -110,6 +109,21 @@ pub fn join(h: &mut Hypothesis, others: &[Fit], duration_s: f64, explanation: &m
         }
     }
     false
+}
+
+fn explains_more(fit: &Fit, one: &Fit, other: &Fit) -> bool {
+    fit.is_proven() && fit.evidence > JOINED * one.evidence.max(other.evidence)
+}
+
+/// Clicks of a joined rhythm per click of the first, its scatter and its missed share at most.
+const BOTH: (f64, f64, f64) = (1.7, 0.12, 0.25);
+
+/// True if a tight rhythm holds the clicks of both: below 2 ms its evidence is small, because noise keeps a distance too.
+fn holds_both(fit: &Fit, h: &Hypothesis, own: f64) -> bool {
+    fit.chain.index.len() as f64 > BOTH.0 * h.fit.chain.index.len() as f64
+        && fit.jitter < BOTH.1
+        && fit.missed < BOTH.2
+        && (median(&fit.marks_on(&h.candidates)) - own).abs() < SAME_SIZE
 }
 
 /// Where a fit of half the period starts, if one click as large as the train's lies between most of its clicks.
