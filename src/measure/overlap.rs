@@ -64,10 +64,19 @@ pub fn line_wins(line: &LineTrain, clicks: Option<&Hypothesis>) -> bool {
     let overlaps = line.fit.period_s < PHASE_BELOW_S;
     line.fit.cover > 0.6
         && line.fit.jitter < 0.15
-        && (overlaps || clicks.is_none_or(|h| h.fit.evidence < LINE_ONLY_EVIDENCE))
+        && (overlaps
+            || clicks.is_none_or(|h| is_within_clicks(line, h))
+            || clicks.is_none_or(|h| h.fit.evidence < LINE_ONLY_EVIDENCE))
         && clicks.is_none_or(|h| {
-            LINE_EVIDENCE * h.fit.evidence < line.fit.evidence || h.fit.period_s > LINE_PERIOD * line.fit.period_s
+            is_within_clicks(line, h)
+                || LINE_EVIDENCE * h.fit.evidence < line.fit.evidence
+                || h.fit.period_s > LINE_PERIOD * line.fit.period_s
         })
+}
+
+/// True if close maxima were counted several times a cycle of a line that explains more: the swings of overlapping clicks.
+fn is_within_clicks(line: &LineTrain, h: &Hypothesis) -> bool {
+    h.fast && line.fit.period_s > LINE_PERIOD * h.fit.period_s && line.fit.evidence > h.fit.evidence
 }
 
 /// A line with far more evidence at a multiple of the rate of the clicks: half of the clicks may be lost in noise.

@@ -54,6 +54,8 @@ const GROWTH: (f64, f64) = (0.4, 2.0);
 /// amplitude: share of time, growth, amplitude, and either the coherence that noise beside a tone does not reach (tones and
 /// whistles of the proving ground, seeds 5000..5008: 0.01 where the line is stable) or this many harmonics nearly alike.
 const WALKS: (f64, (f64, f64), f64, f64, usize) = (0.97, (0.7, 1.4), 0.1, 0.03, 3);
+/// The line's frequency is the rate of separate clicks within this.
+const SAME_RATE: f64 = 0.02;
 /// A crowded train whose line is off for most of the time that it sounds is none (random phases are off for a third).
 const CROWDED_OFF: f64 = 0.45;
 /// Six lines with this share of the energy are tones unless clicks stand out by this factor.
@@ -293,6 +295,10 @@ impl Heard {
 
     fn line_holds(&self) -> bool {
         self.line.is_some_and(|l| {
+            // A line nearby, as a harmonic of a slower train, is not the rate's.
+            if (l.frequency_hz / self.rate_hz - 1.0).abs() > SAME_RATE && self.character.is_some() {
+                return false;
+            }
             let coherent = l.stable >= STABLE && l.coherence >= COHERENCE && (GROWTH.0..GROWTH.1).contains(&l.growth);
             let walks = l.stable >= WALKS.0
                 && (WALKS.1.0..WALKS.1.1).contains(&l.growth)
