@@ -31,8 +31,10 @@ mod sounds;
 #[path = "../examples/proving/volts.rs"]
 mod volts;
 
+mod common;
+
 use case::Case;
-use gaptone::measure::{Measurer, Options};
+use common::{measure, transform};
 use std::hint::black_box;
 use std::time::Instant;
 
@@ -41,25 +43,6 @@ const SEEDS: std::ops::Range<u64> = 500..503;
 const GOES: usize = 3;
 /// Length of a recording, s: shorter ones are repeated up to it, longer ones cut.
 const CLIP_S: f64 = 10.0;
-const BLOCK: usize = 4096;
-
-fn measure(samples: &[f32], sample_rate_hz: u32) -> usize {
-    let mut measurer = Measurer::new(sample_rate_hz, Options::default());
-    samples.chunks(BLOCK).for_each(|block| measurer.push(block));
-    measurer.finish().events.len()
-}
-
-fn transform(samples: &[f32]) -> f32 {
-    let plan = realfft::RealFftPlanner::<f32>::new().plan_fft_forward(BLOCK);
-    let (mut input, mut output) = (plan.make_input_vec(), plan.make_output_vec());
-    let mut sum = 0.0;
-    for block in samples.chunks_exact(BLOCK) {
-        input.copy_from_slice(block);
-        plan.process(&mut input, &mut output).expect("lengths fit");
-        sum += output[1].re;
-    }
-    sum
-}
 
 fn least_s(mut work: impl FnMut()) -> f64 {
     let time = |work: &mut dyn FnMut()| {

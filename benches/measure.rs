@@ -1,8 +1,10 @@
 //! How long the work takes: measuring ten seconds, rendering a minute, reading a bench. See `benches/README.md`.
 
+mod common;
+
+use common::{BLOCK, measure, transform};
 use divan::Bencher;
 use gaptone::bench::{self, Bench};
-use gaptone::measure::{Measurer, Options};
 use gaptone::model::charging::Circuit;
 use gaptone::model::clip::Clip;
 use gaptone::model::firings::{Faults, GapLaw, Plan, Rhythm, Start, simulate};
@@ -17,8 +19,6 @@ const NORTH_BENCH: &str = include_str!("../examples/benches/north-bench.toml");
 
 const SAMPLE_RATE_HZ: u32 = 48_000;
 const CLIP_S: f64 = 10.0;
-/// Samples of a block of the plain transform that measuring is compared with.
-const BLOCK: usize = 4096;
 
 fn described(kind: &str) -> Bench {
     let text = match kind {
@@ -52,29 +52,10 @@ fn samples(kind: &str) -> Vec<f32> {
     if kind == "no-gap" { nothing() } else { clip(kind, CLIP_S).renderer.collect() }
 }
 
-fn measure(samples: &[f32]) -> usize {
-    let mut measurer = Measurer::new(SAMPLE_RATE_HZ, Options::default());
-    samples.chunks(BLOCK).for_each(|block| measurer.push(block));
-    measurer.finish().events.len()
-}
-
-/// One pass of plain real transforms over the samples, block by block.
-fn transform(samples: &[f32]) -> f32 {
-    let plan = realfft::RealFftPlanner::<f32>::new().plan_fft_forward(BLOCK);
-    let (mut input, mut output) = (plan.make_input_vec(), plan.make_output_vec());
-    let mut sum = 0.0;
-    for block in samples.chunks_exact(BLOCK) {
-        input.copy_from_slice(block);
-        plan.process(&mut input, &mut output).expect("lengths fit");
-        sum += output[1].re;
-    }
-    sum
-}
-
 #[divan::bench(args = ["steady", "noisy", "carrier", "fast-overlapping", "no-gap"], sample_count = 10)]
 fn measure_ten_seconds(bencher: Bencher, kind: &str) {
     let samples = samples(kind);
-    bencher.bench(|| measure(&samples));
+    bencher.bench(|| measure(&samples, SAMPLE_RATE_HZ));
 }
 
 #[divan::bench(sample_count = 20)]
@@ -114,7 +95,7 @@ fn print_ratios() {
             divan::black_box(transform(&samples));
         });
         let full = least(|| {
-            divan::black_box(measure(&samples));
+            divan::black_box(measure(&samples, SAMPLE_RATE_HZ));
         });
         let ratio = full.as_secs_f64() / plain.as_secs_f64();
         println!(

@@ -5,7 +5,8 @@
 //! a period: they are firings too.
 
 use super::hypothesis::{DENSITY, Hypothesis};
-use crate::rhythm::fit::{FirstGains, Fit, MarkLaw, Start};
+use crate::rhythm::fit::{FirstGains, Fit, Start};
+use crate::rhythm::marks::MarkLaw;
 use crate::rhythm::order::median;
 use crate::rhythm::search;
 

@@ -6,7 +6,7 @@
 //! no rhythm: both sides are then given the regularity of a gamma law.
 
 use super::local::local_period;
-use super::marks::{Binned, Density};
+use super::marks::{Binned, Density, MarkLaw};
 use super::order::median;
 use super::path::{Chain, Law, MOST_PERIODS, best_chain};
 use crate::clicks::Candidates;
@@ -83,40 +83,6 @@ impl Fit {
         let n = self.chain.index.len() as f64;
         let stretches = self.chain.steps.iter().filter(|k| **k == 0).count().max(1) as f64;
         self.cover >= COVER || (n / stretches >= SOLID.0 && self.each >= SOLID.1 && self.cover >= SOLID.2)
-    }
-}
-
-/// Mean and standard deviation of the marks on and off a rhythm.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct MarkLaw {
-    /// On the rhythm.
-    pub on: (f64, f64),
-    /// Off it.
-    pub off: (f64, f64),
-}
-
-/// Least standard deviation of marks, so that a narrow class does not shut out what comes with another whitening.
-const LEAST_MARK_SD: f64 = 0.15;
-
-impl MarkLaw {
-    fn of(marks: &[f64], on: &[bool]) -> Self {
-        let class = |wanted: bool| {
-            let (mut n, mut sum, mut square) = (0.0, 0.0, 0.0);
-            for (m, _) in marks.iter().zip(on).filter(|(_, o)| **o == wanted) {
-                n += 1.0;
-                sum += m;
-                square += m * m;
-            }
-            let n = f64::max(n, 1.0);
-            (sum / n, (square / n - (sum / n).powi(2)).max(0.0).sqrt().max(LEAST_MARK_SD))
-        };
-        Self { on: class(true), off: class(false) }
-    }
-
-    /// Log ratio of the two normal densities; beyond the means the nearer class stays as likely as at its mean.
-    fn gain(&self, mark: f64) -> f64 {
-        let ln = |(mean, sd): (f64, f64), m: f64| -0.5 * ((m - mean) / sd).powi(2) - sd.ln();
-        (ln(self.on, mark.min(self.on.0)) - ln(self.off, mark.max(self.off.0))).clamp(-8.0, 12.0)
     }
 }
 

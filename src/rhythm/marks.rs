@@ -82,6 +82,43 @@ fn smooth(count: &Density, total: f64) -> Density {
     out
 }
 
+/// Mean and standard deviation of the marks on and off a rhythm.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct MarkLaw {
+    /// On the rhythm.
+    pub on: (f64, f64),
+    /// Off it.
+    pub off: (f64, f64),
+}
+
+/// Least standard deviation of marks, so that a narrow class does not shut out what comes with another whitening.
+const LEAST_MARK_SD: f64 = 0.15;
+
+impl MarkLaw {
+    /// Of marks, given which are on the rhythm.
+    #[must_use]
+    pub fn of(marks: &[f64], on: &[bool]) -> Self {
+        let class = |wanted: bool| {
+            let (mut n, mut sum, mut square) = (0.0, 0.0, 0.0);
+            for (m, _) in marks.iter().zip(on).filter(|(_, o)| **o == wanted) {
+                n += 1.0;
+                sum += m;
+                square += m * m;
+            }
+            let n = f64::max(n, 1.0);
+            (sum / n, (square / n - (sum / n).powi(2)).max(0.0).sqrt().max(LEAST_MARK_SD))
+        };
+        Self { on: class(true), off: class(false) }
+    }
+
+    /// Log ratio of the two normal densities; beyond the means the nearer class stays as likely as at its mean.
+    #[must_use]
+    pub fn gain(&self, mark: f64) -> f64 {
+        let ln = |(mean, sd): (f64, f64), m: f64| -0.5 * ((m - mean) / sd).powi(2) - sd.ln();
+        (ln(self.on, mark.min(self.on.0)) - ln(self.off, mark.max(self.off.0))).clamp(-8.0, 12.0)
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
