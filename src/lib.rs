@@ -11,7 +11,7 @@
 //! The rooms, in the order the data takes: [`mod@bench`] reads the description of a bench; [`model`] holds the
 //! laws (charging, breakdown, receiver) and goes forward; [`audio`] carries samples; [`clicks`] finds clicks;
 //! [`rhythm`] finds the trains among them and their statistics; [`voltage`] inverts the charging law;
-//! [`report`] says it to people and machines. [`evidence`] is what a measurement can be checked by, [`plot`] and [`pictures`] draw
+//! [`watch`] does all that with a gap as it runs; [`report`] says it to people and machines. [`evidence`] is what a measurement can be checked by, [`plot`] and [`pictures`] draw
 //! it, [`page`] makes pages of it. [`cli`] is the only room that knows files, terminals and devices.
 //!
 //! Everything inside is in SI units; a name carries its unit (`period_s`, `gap_voltage_v`).
@@ -35,3 +35,4 @@ pub mod rhythm;
 pub mod trend;
 pub mod uncertainty;
 pub mod voltage;
+pub mod watch;

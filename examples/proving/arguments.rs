@@ -22,6 +22,12 @@ pub struct Arguments {
     /// With the line of a case, how the analyzer came to its answer.
     #[arg(long, requires = "verbose")]
     pub explain: bool,
+    /// Read with the watch instead: its lines, second by second.
+    #[arg(long, conflicts_with = "write")]
+    pub watch: bool,
+    /// How soon the watch notices changes of many sorts; `--kinds` names them instead.
+    #[arg(long, conflicts_with_all = ["write", "watch"])]
+    pub changes: bool,
     /// Write recordings and truth here instead of reading them.
     #[arg(long, value_name = "DIR")]
     pub write: Option<PathBuf>,

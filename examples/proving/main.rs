@@ -26,6 +26,7 @@ mod score;
 mod sounds;
 mod table;
 mod volts;
+mod watching;
 mod write;
 
 use arguments::Arguments;
@@ -48,10 +49,19 @@ fn main() -> ExitCode {
 }
 
 fn run(arguments: &Arguments) -> Result<(), String> {
+    if arguments.changes {
+        watching::reactions(&arguments.kinds, arguments.seeds.0..arguments.seeds.1, arguments.verbose);
+        return Ok(());
+    }
     let kinds = kinds::select(&arguments.kinds)?;
     if let Some(directory) = &arguments.write {
         let write = |case: &Case| write::write(case, directory).map_err(|e| format!("{}: {e}", directory.display()));
         return kinds.iter().flat_map(|kind| on_threads(kind, arguments, write)).collect();
+    }
+    if arguments.watch {
+        let watched = |kind: &Kind| on_threads(kind, arguments, |case| watching::score(case, arguments.verbose));
+        watching::print(&kinds.iter().flat_map(|kind| watched(kind)).collect::<Vec<_>>());
+        return Ok(());
     }
     let mut table = Table::new(!arguments.verbose);
     for kind in kinds {

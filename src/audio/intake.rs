@@ -2,13 +2,13 @@
 //!
 //! Lost frames become zeros in their right place, so that every later click keeps its time. A sample that is not a
 //! number, or far beyond what any format holds, becomes zero. Both are counted and said in a note. Memory stays
-//! bounded: one block, and while the clearest channel is being found the first [`LISTEN_S`] seconds.
+//! bounded: one block, and while the clearest channel is being found the first seconds ([`LISTEN_S`] unless told otherwise).
 
 use super::channel::Pick;
 use super::{AudioError, ChannelChoice, Clearness, ClipCounter, Source, clearest};
 
 /// How long to listen before the clearest channel is chosen, s.
-const LISTEN_S: f64 = 10.0;
+pub const LISTEN_S: f64 = 10.0;
 
 /// Most samples held while listening (64 MiB of them): bounds memory for many channels or a high sample rate.
 const LISTEN_SAMPLES: usize = 1 << 24;
@@ -56,6 +56,7 @@ pub struct Intake<S> {
     sample_rate_hz: u32,
     pick: Option<Pick>,
     chosen_by_ear: bool,
+    listen_s: f64,
     clips: ClipCounter,
     /// Frames to mix down next.
     block: Vec<f32>,
@@ -93,6 +94,7 @@ impl<S: Source> Intake<S> {
             sample_rate_hz,
             pick,
             chosen_by_ear: pick.is_none(),
+            listen_s: LISTEN_S,
             clips,
             block: Vec::new(),
             waiting: Vec::new(),
@@ -106,6 +108,22 @@ impl<S: Source> Intake<S> {
             gap_frames: 0,
             named_gaps: Vec::new(),
         })
+    }
+
+    /// The same, but for so many seconds only is anything held back while the clearest channel is being found.
+    #[must_use]
+    pub fn listening_for(self, listen_s: f64) -> Self {
+        Self { listen_s, ..self }
+    }
+
+    /// Losses of unknown length so far ([`Source::breaks`]).
+    pub fn breaks(&self) -> u64 {
+        self.source.breaks()
+    }
+
+    /// Frames clipped so far.
+    pub fn clipped_frames(&self) -> u64 {
+        self.clips.clipped()
     }
 
     /// Sample rate, Hz.
@@ -137,7 +155,8 @@ impl<S: Source> Intake<S> {
     /// Holds the first seconds, chooses the channel and hands out what was held.
     fn listen(&mut self, mono: &mut Vec<f32>) -> Result<bool, AudioError> {
         let width = usize::from(self.channels);
-        let wanted = ((LISTEN_S * f64::from(self.sample_rate_hz)) as usize).saturating_mul(width).min(LISTEN_SAMPLES);
+        let wanted =
+            ((self.listen_s * f64::from(self.sample_rate_hz)) as usize).saturating_mul(width).min(LISTEN_SAMPLES);
         let mut ears = vec![Clearness::new(self.sample_rate_hz); width];
         let mut held = Vec::new();
         while held.len() < wanted && self.pull()? {

@@ -14,5 +14,5 @@ mod source;
 pub use channel::{ChannelChoice, ChannelError};
 pub use clearness::{Clearness, clearest};
 pub use clipping::ClipCounter;
-pub use intake::{Heard, Intake, Span};
+pub use intake::{Heard, Intake, LISTEN_S, Span};
 pub use source::{AudioError, Block, Memory, Source};

@@ -57,6 +57,11 @@ pub trait Source {
     fn notes(&self) -> Vec<String> {
         Vec::new()
     }
+
+    /// Losses of unknown length so far; each lies before the block that was handed out last.
+    fn breaks(&self) -> u64 {
+        0
+    }
 }
 
 impl<S: Source + ?Sized> Source for Box<S> {
@@ -78,6 +83,10 @@ impl<S: Source + ?Sized> Source for Box<S> {
 
     fn notes(&self) -> Vec<String> {
         (**self).notes()
+    }
+
+    fn breaks(&self) -> u64 {
+        (**self).breaks()
     }
 }
 

@@ -2,9 +2,11 @@
 
 mod page;
 mod trend;
+mod watch;
 
 pub use page::{EvidenceArguments, PageArguments};
 pub use trend::TrendArguments;
+pub use watch::WatchArguments;
 
 use super::files::SampleFormat;
 use crate::audio::ChannelChoice;
@@ -19,13 +21,15 @@ Examples:
   gaptone predict --bench bench.toml               what a bench will sound like, before power
   gaptone render --bench bench.toml -o clip.wav    a clip with known truth
   gaptone measure run.wav --bench bench.toml --log gap.jsonl; gaptone trend gap.jsonl
+  arecord -q -f S16_LE -r 48000 | gaptone watch -   the gap while it runs
   arecord -f S16_LE -r 48000 -d 10 | gaptone measure -
 
 Exit status:
   0  done
   1  a file could not be read or written
   2  wrong usage or a wrong bench file
-  3  a recording holds no firing that can be measured";
+  3  a recording holds no firing that can be measured
+  4  a watch was ended by a limit";
 
 /// Longest clip, s.
 const LONGEST_CLIP_S: f64 = 86_400.0;
@@ -55,6 +59,8 @@ pub enum Command {
     Render(RenderArguments),
     /// Whether a gap has changed, by the log of its measurements
     Trend(TrendArguments),
+    /// The gap while it runs: what it is doing now, and what has changed
+    Watch(WatchArguments),
 }
 
 /// Arguments of `measure`.

@@ -15,6 +15,8 @@ pub enum Exit {
     Usage = 2,
     /// The recording holds no firing that can be measured.
     NotMeasurable = 3,
+    /// A watch was ended by a limit.
+    Limit = 4,
 }
 
 impl From<Exit> for ExitCode {

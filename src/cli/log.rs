@@ -8,9 +8,22 @@ use crate::bench::{Bench, Dimension, Quantity};
 use crate::report::Measurement;
 use crate::trend::entry::Known;
 use crate::trend::{Entry, LOG_FAMILY, LOG_FORMAT, LoggedBench, Moment, Weather};
-use serde::Deserialize;
+use serde::{Deserialize, Serialize};
 use std::io::Read;
 use std::time::{SystemTime, UNIX_EPOCH};
+
+/// Name of the format of a mark.
+const MARK_FORMAT: &str = "gaptone.mark/1";
+
+/// A mark between the entries of a log.
+#[derive(Serialize)]
+struct Mark<'a> {
+    format: &'static str,
+    time: Moment,
+    note: &'a str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    supply_v: Option<f64>,
+}
 
 /// Where measurements are logged, and what goes with them.
 pub(super) struct Log {
@@ -71,7 +84,23 @@ impl Log {
             bench: self.bench.clone(),
             air: self.air,
         };
-        let line = serde_json::to_string(&entry)
+        self.append_entry(&entry)
+    }
+
+    /// Appends a mark: something that a person did at the bench, with the supply that is set from now on.
+    ///
+    /// # Errors
+    /// Exit status 1 if it cannot be written.
+    pub fn mark(&mut self, note: &str, supply_v: Option<f64>) -> Result<(), Failure> {
+        if let (Some(bench), Some(_)) = (&mut self.bench, supply_v) {
+            bench.supply_v = supply_v;
+        }
+        let time = self.time.unwrap_or_else(now);
+        self.append_entry(&Mark { format: MARK_FORMAT, time, note, supply_v })
+    }
+
+    fn append_entry(&self, entry: &impl Serialize) -> Result<(), Failure> {
+        let line = serde_json::to_string(entry)
             .map_err(|error| Failure::Told(Exit::File, format!("the log entry cannot be written as JSON: {error}")))?;
         if files::append_line(&self.place, &line).map_err(|error| Failure::file(&self.place, &error))? {
             let place = &self.place;
@@ -217,20 +246,22 @@ fn parse_piece(bytes: &[u8]) -> Piece {
         }
         match serde_json::from_slice::<Entry>(line) {
             Ok(entry) if entry.format == LOG_FORMAT => piece.entries.push(entry),
-            _ => piece.faults.push((piece.lines, fault(line))),
+            _ => piece.faults.extend(fault(line).map(|fault| (piece.lines, fault))),
         }
     }
     piece
 }
 
-fn fault(line: &[u8]) -> Fault {
-    match serde_json::from_slice::<Kind>(line) {
+/// Why a line is no entry; a mark is none, and right where it is.
+fn fault(line: &[u8]) -> Option<Fault> {
+    Some(match serde_json::from_slice::<Kind>(line) {
+        Ok(kind) if kind.format == MARK_FORMAT => return None,
         Ok(kind) if kind.format.starts_with(LOG_FAMILY) && kind.format != LOG_FORMAT => Fault::Newer(kind.format),
         Ok(_) => Fault::Foreign,
         // A cut in the middle of a number is no end of the text to the parser.
         Err(error) if error.is_eof() || line.starts_with(BEGINNING.as_bytes()) => Fault::Cut,
         Err(_) => Fault::Foreign,
-    }
+    })
 }
 
 /// One note for each kind of line that was left out.

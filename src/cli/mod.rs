@@ -21,6 +21,7 @@ mod render;
 mod render_series;
 mod terminal;
 mod trend;
+mod watch;
 
 use args::{Arguments, Command};
 use clap::Parser;
@@ -44,6 +45,7 @@ pub fn main() -> ExitCode {
         Command::Predict(arguments) => predict::run(arguments),
         Command::Render(arguments) => render::run(arguments),
         Command::Trend(arguments) => trend::run(arguments),
+        Command::Watch(arguments) => watch::run(arguments),
     };
     ended.unwrap_or_else(exit::Failure::end).into()
 }

@@ -154,6 +154,11 @@ impl Accumulator {
         self.pieces.push(piece(&times, &numbers, self.steps));
     }
 
+    /// Says that firings between the last train and the next may be unknown: nothing is counted across.
+    pub fn interrupt(&mut self) {
+        self.settle();
+    }
+
     /// The figures of everything added.
     #[must_use]
     pub fn reading(&self) -> Option<Reading> {
@@ -306,7 +311,7 @@ impl Accumulator {
                 list.join(", ")
             ));
         }
-        if let Some(line_hz) = locked_to(1.0 / period_s, posterior.jitter_s.value / period_s) {
+        if let Some(line_hz) = crate::rhythm::locked_to(1.0 / period_s, posterior.jitter_s.value / period_s) {
             notes.push(format!(
                 "the rate sits on the mains ({line_hz:.0} Hz) with almost no scatter: the gap is locked to the supply's ripple, or it is no gap; a voltage read from it may be off by 1 %"
             ));
@@ -332,14 +337,6 @@ fn overlapping(e: Estimate) -> Estimate {
 struct Line {
     drift_per_s: Option<Estimate>,
     curved_variance: f64,
-}
-
-/// Relative distance from a mains multiple or fraction, and relative jitter, of a locked gap.
-const LOCK_WITHIN: f64 = 5e-4;
-const LOCK_JITTER: f64 = 3e-3;
-
-fn locked_to(rate_hz: f64, jitter: f64) -> Option<f64> {
-    if jitter > LOCK_JITTER { None } else { crate::rhythm::mains_multiple(rate_hz, LOCK_WITHIN) }
 }
 
 /// Click times with the structure taken out.

@@ -4,12 +4,12 @@
 //! forgotten; only sums are kept. A recording shorter than the first window is analysed as one piece, and so is each minute in which
 //! nothing was learnt.
 
-mod accumulate;
-mod acquire;
+pub(crate) mod accumulate;
+pub(crate) mod acquire;
 #[cfg(test)]
 mod bound_tests;
 mod hypothesis;
-mod irregular;
+pub(crate) mod irregular;
 mod learn;
 mod model;
 mod multiples;
@@ -17,9 +17,9 @@ mod overlap;
 mod refine;
 mod slips;
 mod times;
-mod train;
+pub(crate) mod train;
 mod trains;
-mod window;
+pub(crate) mod window;
 
 use crate::clicks::filter::FilterBank;
 use crate::estimate::Estimate;
@@ -156,6 +156,18 @@ impl Measurer {
         std::mem::take(&mut self.events)
     }
 
+    /// Says that audio was lost here, nobody knows how much: what was heard so far is analysed, and nothing is counted across.
+    pub fn interrupt(&mut self) {
+        if matches!(self.stage, Stage::New) {
+            self.stage = Stage::Searching(Hint::default());
+        }
+        self.analyse(self.held.len() - self.done);
+        self.held_from += self.held.len() as u64;
+        self.held.clear();
+        self.done = 0;
+        self.sums.interrupt();
+    }
+
     /// Analyses what is held and gives the result.
     #[must_use]
     pub fn finish(mut self) -> Outcome {
@@ -256,7 +268,8 @@ impl Measurer {
     }
 }
 
-fn reason(reading: &Reading) -> String {
+/// The verdict in a sentence.
+pub(crate) fn reason(reading: &Reading) -> String {
     let jitter = reading.period_jitter_s.map_or(0.0, |j| j.value) / reading.period_s.map_or(1.0, |p| p.value);
     match reading.verdict {
         Verdict::Steady => {
@@ -267,31 +280,17 @@ fn reason(reading: &Reading) -> String {
 }
 
 /// Clicks without a rhythm: the mean count rate, with the statistics of independent arrivals.
-fn clicks_alone(count: u64, duration_s: f64) -> Reading {
+pub(crate) fn clicks_alone(count: u64, duration_s: f64) -> Reading {
     let n = count as f64;
     Reading {
         verdict: Verdict::Irregular,
         reason: "clicks are heard, but they keep no rhythm: static, or a gap that fires by chance".into(),
         firings: FiringCounts { on_rhythm: 0, missed: 0, extra: count },
         firing_rate_hz: Some(Estimate::normal(n / duration_s, n.sqrt() / duration_s)),
-        ..nothing("")
+        ..Reading::none(String::new())
     }
 }
 
 fn nothing(why: &str) -> Reading {
-    Reading {
-        verdict: Verdict::None,
-        reason: format!("no gap is heard: {why}"),
-        firings: FiringCounts::default(),
-        firing_rate_hz: None,
-        period_s: None,
-        period_jitter_s: None,
-        cycle_jitter_s: None,
-        mains_locked_jitter_s: None,
-        drift_per_s: None,
-        timing_noise_s: None,
-        other_trains: Vec::new(),
-        stretches: Vec::new(),
-        notes: Vec::new(),
-    }
+    Reading::none(format!("no gap is heard: {why}"))
 }

@@ -122,5 +122,6 @@ pub fn by_line(window: &Window, line_hz: f64, explanation: &mut Vec<String>) -> 
         phase_jitter_s: Some(read.jitter_s),
         period_s: line.fit.period_s,
         others: Vec::new(),
+        unexplained: 0,
     })
 }

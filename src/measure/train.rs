@@ -34,6 +34,8 @@ pub struct Train {
     pub period_s: f64,
     /// Weaker trains beside it.
     pub others: Vec<OtherTrain>,
+    /// Clear clicks in the window that belong to none of them.
+    pub unexplained: usize,
 }
 
 /// Firing numbers of a chain, and its stretches.
@@ -85,6 +87,7 @@ impl Train {
             phase_jitter_s: None,
             period_s: h.fit.period_s,
             others: trains::figures_of(h, others),
+            unexplained: trains::unexplained(h, others),
         }
     }
 

@@ -67,6 +67,17 @@ fn best_of(c: &Candidates, rest: &[usize], duration_s: f64, typical: f64) -> Opt
     (sound && median_mark(c, &fit) > threshold).then_some(fit)
 }
 
+/// How many candidates stand clear of the noise and belong to neither the hypothesis nor the trains beside it.
+#[must_use]
+pub fn unexplained(h: &Hypothesis, others: &[Fit]) -> usize {
+    let c = &h.candidates;
+    let mut taken = vec![false; c.len()];
+    claim(&mut taken, c, &h.fit);
+    others.iter().for_each(|other| claim(&mut taken, c, other));
+    let threshold = STANDS_OUT.max(median_mark(c, &h.fit) - FAR_BELOW);
+    left_over(&taken).into_iter().filter(|&i| c.mark[i] > threshold).count()
+}
+
 fn left_over(taken: &[bool]) -> Vec<usize> {
     (0..taken.len()).filter(|&i| !taken[i]).collect()
 }

@@ -27,3 +27,13 @@ pub fn mains_multiple(rate_hz: f64, within: f64) -> Option<f64> {
             .any(|q| (rate_hz / (line_hz * q) - 1.0).abs() < within)
     })
 }
+
+/// Relative distance from a mains multiple or fraction, and relative jitter, of a locked gap.
+const LOCK_WITHIN: f64 = 5e-4;
+const LOCK_JITTER: f64 = 3e-3;
+
+/// The mains line (Hz) to which a gap of this rate and relative period jitter seems to be locked, if to any.
+#[must_use]
+pub fn locked_to(rate_hz: f64, jitter: f64) -> Option<f64> {
+    if jitter > LOCK_JITTER { None } else { mains_multiple(rate_hz, LOCK_WITHIN) }
+}

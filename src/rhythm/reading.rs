@@ -88,3 +88,25 @@ pub struct Reading {
     /// What else the person should know.
     pub notes: Vec<String>,
 }
+
+impl Reading {
+    /// No gap heard, for a reason in words.
+    #[must_use]
+    pub fn none(reason: String) -> Self {
+        Self {
+            verdict: Verdict::None,
+            reason,
+            firings: FiringCounts::default(),
+            firing_rate_hz: None,
+            period_s: None,
+            period_jitter_s: None,
+            cycle_jitter_s: None,
+            mains_locked_jitter_s: None,
+            drift_per_s: None,
+            timing_noise_s: None,
+            other_trains: Vec::new(),
+            stretches: Vec::new(),
+            notes: Vec::new(),
+        }
+    }
+}

@@ -7,6 +7,7 @@ mod error;
 mod flac;
 mod kind;
 mod place;
+mod raw;
 mod stream;
 mod wav_head;
 mod write;
@@ -15,6 +16,7 @@ pub use append::{append_line, check_appendable};
 pub use decode::open;
 pub use encode::{ClipFacts, SampleFormat, write_frames};
 pub use error::FileError;
+pub use raw::{RawFormat, open_raw};
 pub use stream::Recording;
 pub use write::{check_writable, read_text, write_atomically};
 

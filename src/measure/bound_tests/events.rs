@@ -55,6 +55,7 @@ impl Kind {
             phase_jitter_s: None,
             period_s,
             others: Vec::new(),
+            unexplained: 0,
             time_s,
         };
         let mut sums = Accumulator::default();
