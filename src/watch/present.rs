@@ -72,29 +72,34 @@ impl Present {
         self.trains.front().map(|train| train.time_s[0])
     }
 
-    /// Times (s) and firing numbers of the last stretch without a drop-out.
+    /// Times (s) and firing numbers of the stretches without a drop-out, the last one last.
     #[must_use]
-    pub fn series(&self) -> (Vec<f64>, Vec<i64>) {
-        let (mut times, mut numbers): (Vec<f64>, Vec<i64>) = (Vec::new(), Vec::new());
+    pub fn stretches(&self) -> Vec<(Vec<f64>, Vec<i64>)> {
+        let mut all: Vec<(Vec<f64>, Vec<i64>)> = Vec::new();
         for train in &self.trains {
             for stretch in &train.stretches {
                 let (time_s, number) = (&train.time_s[stretch.clone()], &train.number[stretch.clone()]);
-                let (mut skip, mut first) = (0, 0);
-                if let (Some(&last_s), Some(&last)) = (times.last(), numbers.last()) {
-                    let steps = (time_s[0] - last_s) / train.period_s;
-                    if steps > LONGEST_MISS {
-                        times.clear();
-                        numbers.clear();
-                    } else {
-                        skip = usize::from(steps < 0.5);
-                        first = last + steps.round() as i64;
+                let last = all.last().map(|(times, numbers)| (times[times.len() - 1], numbers[numbers.len() - 1]));
+                let steps = last.map(|(last_s, _)| (time_s[0] - last_s) / train.period_s);
+                match (last, steps, all.last_mut()) {
+                    (Some((_, last)), Some(steps), Some((times, numbers))) if steps <= LONGEST_MISS => {
+                        // The click on the border of two steps may be in both.
+                        let skip = usize::from(steps < 0.5);
+                        let first = last + steps.round() as i64;
+                        times.extend_from_slice(&time_s[skip..]);
+                        numbers.extend(number[skip..].iter().map(|n| n - number[0] + first));
                     }
+                    _ => all.push((time_s.to_vec(), number.to_vec())),
                 }
-                times.extend_from_slice(&time_s[skip..]);
-                numbers.extend(number[skip..].iter().map(|n| n - number[0] + first));
             }
         }
-        (times, numbers)
+        all
+    }
+
+    /// The last stretch without a drop-out; empty if there is none.
+    #[must_use]
+    pub fn series(&self) -> (Vec<f64>, Vec<i64>) {
+        self.stretches().pop().unwrap_or_default()
     }
 
     /// The firings as events in the order of time.
