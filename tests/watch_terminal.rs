@@ -93,6 +93,8 @@ fn a_terminal_shows_the_rate_takes_keys_and_sizes_and_is_given_back() {
     terminal.wait("the supply", |screen| screen.contains("supply 9.2 kV"));
     let marks = std::fs::read_to_string(&log).expect("a log");
     assert!(marks.contains("\"note\":\"gap opened\"") && marks.contains("\"supply_v\":9200.0"), "{marks}");
+    // Figures begin anew with it; the summary needs some seconds.
+    terminal.wait("a longer clock", |screen| screen.contains("firing, holding") && screen.contains("0:07"));
     terminal.keys(&["q"]);
     // The screen before it is back, with the summary below the command.
     terminal.wait("the summary", |screen| screen.contains("one standard uncertainty") && screen.contains("ready>"));

@@ -49,6 +49,8 @@ pub struct Options {
 /// What a watch ends with.
 #[derive(Debug, Clone)]
 pub struct Summary {
+    /// Where it begins, s.
+    pub from_s: f64,
     /// Everything since the start or the last reset, as [`crate::measure`] reads it.
     pub reading: Reading,
     /// Gap voltage and its spread, V.
@@ -80,6 +82,8 @@ pub struct Watch {
     scatter: Option<Scatter>,
     whole: Measurer,
     whole_meter: Option<VoltageMeter>,
+    /// Where the whole begins, s.
+    began_s: f64,
     state: State,
     loose: (u64, f64),
     reason: &'static str,
@@ -111,6 +115,7 @@ impl Watch {
             scatter: None,
             whole: Measurer::new(sample_rate_hz, measure::Options::default()),
             whole_meter: options.meter.clone(),
+            began_s: 0.0,
             options,
             state: State::Listening,
             loose: (0, 0.0),
@@ -167,6 +172,7 @@ impl Watch {
         self.forget();
         self.whole = Measurer::new(self.sample_rate_hz, measure::Options::default());
         self.whole_meter = self.options.meter.clone();
+        self.began_s = self.time_s();
     }
 
     /// Another setting of the supply: another voltmeter, and the past is forgotten.
@@ -393,6 +399,7 @@ impl Watch {
     /// Ends the watch with the figures of the whole.
     #[must_use]
     pub fn finish(mut self) -> Summary {
+        let from_s = self.began_s;
         let outcome = self.whole.finish();
         let mut reading = outcome.reading;
         let clock = self.options.clock / 3f64.sqrt();
@@ -404,7 +411,7 @@ impl Watch {
         });
         let voltage = voltage.unwrap_or_default();
         reading.notes.extend(voltage.notes);
-        Summary { reading, gap_voltage_v: (voltage.gap_voltage_v, voltage.gap_voltage_spread_v) }
+        Summary { from_s, reading, gap_voltage_v: (voltage.gap_voltage_v, voltage.gap_voltage_spread_v) }
     }
 }
 

@@ -53,10 +53,14 @@ struct Filled<Samples, Breaks> {
     frames: u64,
 }
 
+/// The end of the queue that is read, and the one that the callback writes.
+type Outlet = Filled<Consumer<f32>, Consumer<u64>>;
+type Inlet = Filled<Producer<f32>, Producer<u64>>;
+
 /// A stream from a device with the ends of its queues.
 struct Open {
     _stream: Stream,
-    queue: Filled<Consumer<f32>, Consumer<u64>>,
+    queue: Outlet,
     /// Frame before which audio is missing, not yet reached.
     next_break: Option<u64>,
     config: StreamConfig,
@@ -198,7 +202,7 @@ fn build(
     config: StreamConfig,
     format: SampleFormat,
     told: &Arc<Told>,
-) -> Result<(Stream, Filled<Consumer<f32>, Consumer<u64>>), String> {
+) -> Result<(Stream, Outlet), String> {
     let samples = QUEUE_S * f64::from(config.sample_rate) * f64::from(config.channels);
     let (samples_in, samples) = RingBuffer::new(samples as usize);
     let (breaks_in, breaks) = RingBuffer::new(BREAKS);
@@ -215,7 +219,7 @@ fn build(
 fn build_as<T: SizedSample>(
     device: &Device,
     config: StreamConfig,
-    mut queue: Filled<Producer<f32>, Producer<u64>>,
+    mut queue: Inlet,
     told: &Arc<Told>,
 ) -> Result<Stream, cpal::Error>
 where
@@ -238,7 +242,7 @@ where
     device.build_input_stream(config, take, fail, None)
 }
 
-impl Filled<Producer<f32>, Producer<u64>> {
+impl Inlet {
     /// Audio is missing before the next frame.
     fn interrupt(&mut self) {
         // Without room for it another break lies close by.

@@ -60,7 +60,7 @@ pub(super) fn run(arguments: &WatchArguments) -> Result<Exit, Failure> {
         file: name,
         sample_rate_hz: feed.sample_rate_hz,
         channels: feed.channels,
-        channel: arguments.channel.map(|channel| channel.to_string()).unwrap_or_default(),
+        channel: arguments.channel.map_or("1".to_owned(), |channel| channel.to_string()),
         ..Recording::default()
     };
     let journal = Journal::new(arguments, log, recording.clone())?;

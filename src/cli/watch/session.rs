@@ -157,8 +157,8 @@ impl Session {
     /// # Errors
     /// Something that was to be written down could not be.
     pub fn finish(self) -> Result<(Measurement, Exit), Failure> {
-        let duration_s = self.watch.time_s();
-        let Summary { mut reading, gap_voltage_v: (gap_voltage_v, gap_voltage_spread_v) } = self.watch.finish();
+        let end_s = self.watch.time_s();
+        let Summary { from_s, mut reading, gap_voltage_v: (gap_voltage_v, gap_voltage_spread_v) } = self.watch.finish();
         reading.notes.splice(0..0, self.notes);
         let exit = match (self.limited, reading.verdict) {
             (true, _) => Exit::Limit,
@@ -167,7 +167,7 @@ impl Session {
         };
         let whole = report::finite(Measurement {
             format: report::FORMAT.to_owned(),
-            recording: Recording { duration_s, ..self.recording },
+            recording: Recording { duration_s: end_s - from_s, from_s, ..self.recording },
             reading,
             gap_voltage_v,
             gap_voltage_spread_v,
