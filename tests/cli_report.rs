@@ -44,6 +44,7 @@ fn a_page_needs_nothing_from_outside_and_stays_small() {
     done(&folder, &["measure", "long.wav", "--bench", "bench.toml", "--report", "long.html"]);
     let page = text(&folder, "long.html");
     assert!(page.len() < 1_000_000, "{} bytes", page.len());
+    assert!(include_str!("../src/page/page.js").len() < 15_000, "written by hand, so kept small");
     // The name of the language of the drawings is the only address.
     let bare = page.replace("http://www.w3.org/2000/svg", "");
     assert!(
