@@ -184,8 +184,8 @@ mod tests {
         for n in 0..300 {
             let position = 1000.0 + f64::from(n) * 0.618_034 % 1.0;
             let (first, count) = meter.range(position);
-            // Hum of three times the click, at another phase each time.
-            let phase = f64::from(n) * 2.399_963;
+            // Hum of three times the click, at another phase each time that has nothing to do with the place between samples.
+            let phase = f64::from(n) * 1.7;
             let samples: Vec<f32> = (0..count)
                 .map(|j| (first + j as f64 - position) / rate_hz)
                 .map(|t| (click(t) + 0.6 * (std::f64::consts::TAU * 50.0 * t + phase).cos()) as f32)
