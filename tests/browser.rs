@@ -39,10 +39,10 @@ fn pages(folder: &Folder) -> Vec<PathBuf> {
     for clip in ["steady", "noisy", "carrier", "missing", "two-trains", "fast-overlapping", "hum", "no-gap"] {
         let (recording, bench, page) =
             (sound(&format!("{clip}.wav")), sound(&format!("{clip}.toml")), format!("{clip}.html"));
-        if clip == "no-gap" {
-            run(folder, &["measure", &recording, "--report", &page, "--with-audio"]);
-        } else {
-            run(folder, &["measure", &recording, "--bench", &bench, "--report", &page]);
+        match clip {
+            "no-gap" => run(folder, &["measure", &recording, "--report", &page, "--with-audio"]),
+            "missing" => run(folder, &["measure", &recording, "--bench", &bench, "--report", &page, "--with-audio"]),
+            _ => run(folder, &["measure", &recording, "--bench", &bench, "--report", &page]),
         }
         names.push(page);
     }

@@ -119,11 +119,16 @@ fn a_further_setting_at_the_place_advised_makes_it_better() {
 fn settings_that_cannot_give_a_calibration_are_refused_with_the_reason() {
     let at = |v: f64| exact(v, 8e-3, 7e3, 0.0);
     let run = |settings: &[Setting]| calibrate(settings, &Known::default(), Options::default());
-    assert_eq!(run(&[at(8e3)]).unwrap_err(), NoCalibration::TooFew { usable: 1 });
+    assert_eq!(run(&[at(8e3)]).unwrap_err(), NoCalibration::TooFew { usable: 1, needed: 2 });
     assert!(matches!(run(&[at(8e3), at(8.01e3), at(8e3)]), Err(NoCalibration::EqualSupplies { .. })));
     let refused = Setting::refused("x.wav", Quantity::exact(9e3), "no such file");
     let found = run(&[at(8e3), at(9e3), at(11e3), refused]).unwrap();
     assert_eq!(found.settings[3].left_out.as_deref(), Some("no such file"));
+    let asked = calibrate(&[at(8e3), at(9e3)], &Known::default(), Options { residual: true });
+    assert_eq!(asked.unwrap_err(), NoCalibration::TooFew { usable: 2, needed: 3 });
+    // One of three with a label far off: whatever is fitted is no time constant.
+    let far_off = Setting { supply: Quantity::exact(4e3), ..at(8e3) };
+    assert_eq!(run(&[far_off, at(9e3), at(11e3)]).unwrap_err(), NoCalibration::Undetermined);
     // A constant current: the period is the same at every supply.
     let constant: Vec<Setting> = [8e3, 10e3, 12e3].map(|v| Setting { supply: Quantity::exact(v), ..at(9e3) }).to_vec();
     assert!(run(&constant).is_err());

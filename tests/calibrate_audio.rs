@@ -113,8 +113,8 @@ fn six_sweeps_through_audio_come_back() {
 #[test]
 #[ignore = "measures the figures of DEVELOPERS.md"]
 fn sweeps_through_audio() {
-    println!("None: {}", tally(100..160, Fault::None).summary());
+    println!("None: {}", tally(100..300, Fault::None).summary());
     for fault in [Fault::Locked, Fault::CurrentLimit, Fault::Mislabelled] {
-        println!("{fault:?}: {}", tally(200..220, fault).summary());
+        println!("{fault:?}: {}", tally(300..340, fault).summary());
     }
 }

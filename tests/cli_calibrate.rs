@@ -75,6 +75,25 @@ fn recordings_at_five_supplies_give_time_constant_and_gap_voltage_and_a_bench() 
 }
 
 #[test]
+fn two_settings_give_a_result_that_nothing_checks_and_the_text_says_so() {
+    let (folder, recordings) = recorded();
+    let two = [recordings[0].clone(), recordings[4].clone()];
+    let output = run(&folder, &with(&["calibrate", "--bench", "bench.toml"], &two));
+    assert!(output.status.success(), "{}", stderr(&output));
+    let text = String::from_utf8(output.stdout).expect("UTF-8");
+    let flat = text.split_whitespace().collect::<Vec<_>>().join(" ");
+    assert!(flat.contains("note: no degrees of freedom are left") && flat.contains("one more setting would"), "{text}");
+    let found = json(&run(&folder, &with(&["calibrate", "--bench", "bench.toml", "--json"], &two)));
+    assert_eq!(found["degrees_of_freedom"], 0);
+    assert!(found["chi_square_probability"].is_null(), "{found}");
+    // 0.3 % a reading, as stated, and exact here.
+    assert!((found["time_constant_s"]["value"].as_f64().expect("a figure") / 2.88e-3 - 1.0).abs() < 0.02, "{found}");
+    let refused = run(&folder, &with(&["calibrate", "--residual"], &two));
+    assert_eq!(refused.status.code(), Some(3));
+    assert!(stderr(&refused).contains("at 3 supply settings at least"), "{}", stderr(&refused));
+}
+
+#[test]
 fn the_text_names_a_wrong_label_and_leaves_a_recording_without_a_gap_out() {
     let (folder, mut recordings) = recorded();
     std::fs::copy(Path::new(env!("CARGO_MANIFEST_DIR")).join("sounds/no-gap.wav"), folder.path("no-gap.wav"))

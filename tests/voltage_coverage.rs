@@ -85,12 +85,6 @@ fn coverage_over_five_hundred_benches() {
         ),
         ("limits: supply exact, R and C 10 %; fill 0.9..0.98", (0.9, 0.98), Tolerance::Exact, Tolerance::Limit(0.10)),
         ("normal: supply exact, R and C 5 %; fill 0.9..0.98", (0.9, 0.98), Tolerance::Exact, Tolerance::Standard(0.05)),
-        (
-            "normal: supply exact, R and C 10 %; fill 0.95..0.98",
-            (0.95, 0.98),
-            Tolerance::Exact,
-            Tolerance::Standard(0.10),
-        ),
     ];
     for (name, fill, supply, parts) in cases {
         let found = coverage(500, 2, fill, supply, parts);
@@ -103,4 +97,62 @@ fn coverage_over_five_hundred_benches() {
             found.draws
         );
     }
+}
+
+/// Draws of a cell of the table below, and the seed: one that nothing was tuned on.
+const NEAR_DRAWS: usize = 600;
+const NEAR_SEED: u64 = 31;
+
+/// Near the supply the voltage hardly depends on the period any more, and the interval of the law of propagation, symmetric about
+/// the estimate, reaches beyond what the supply gives while it misses truths far below. Monte Carlo follows the bend.
+///
+/// `cargo test --release --test voltage_coverage near_the_supply -- --ignored --nocapture`
+#[test]
+#[ignore = "measures the figures of DEVELOPERS.md: 5400 draws with a Monte Carlo each"]
+fn near_the_supply_monte_carlo_covers_where_propagation_does_not() {
+    let fills = [(0.95, 0.96), (0.96, 0.97), (0.97, 0.98)];
+    let cells: Vec<(f64, (f64, f64))> =
+        [0.05, 0.075, 0.10].into_iter().flat_map(|u| fills.map(|fill| (u, fill))).collect();
+    let found: Vec<Coverage> = std::thread::scope(|scope| {
+        let of = |&(u, fill): &(f64, (f64, f64))| {
+            scope.spawn(move || coverage(NEAR_DRAWS, NEAR_SEED, fill, Tolerance::Exact, Tolerance::Standard(u)))
+        };
+        let running: Vec<_> = cells.iter().map(of).collect();
+        running.into_iter().map(|thread| thread.join().expect("no thread panics")).collect()
+    });
+    println!("u of R and of C | V_b/V_inf | Monte Carlo covers | propagation covers | its upper end above the supply");
+    for ((u, fill), cell) in cells.iter().zip(&found) {
+        println!(
+            "{:.1} % | {:.2}..{:.2} | {:.1} % | {:.1} % | {:.1} %",
+            100.0 * u,
+            fill.0,
+            fill.1,
+            percent(cell.monte_carlo, cell),
+            percent(cell.propagation, cell),
+            percent(cell.impossible, cell)
+        );
+    }
+    for cell in &found {
+        // 93..97 %, and three standard deviations of a share of 600: 2.7 %.
+        assert!((90.3..=99.7).contains(&percent(cell.monte_carlo, cell)), "{cell:?}");
+    }
+    let sum = |of: fn(&Coverage) -> usize, part: &[Coverage]| part.iter().map(of).sum::<usize>();
+    let share =
+        |of: fn(&Coverage) -> usize, part: &[Coverage]| 100.0 * sum(of, part) as f64 / sum(|c| c.draws, part) as f64;
+    // The cells share the draws of their parts, so all of them together scatter nearly as 600 do, by 0.9 %: a right program would
+    // leave 93..97 % with one seed in forty.
+    assert!((93.0..=97.0).contains(&share(|c| c.monte_carlo, &found)), "{found:?}");
+    // With the least certain parts propagation falls short, and its interval reaches beyond the supply.
+    let widest = &found[6..];
+    assert!((93.0..=97.0).contains(&share(|c| c.monte_carlo, widest)), "{widest:?}");
+    assert!(share(|c| c.propagation, widest) < 93.0 && share(|c| c.impossible, widest) > 20.0, "{widest:?}");
+}
+
+#[test]
+fn near_the_supply_monte_carlo_is_what_is_reported() {
+    let found = coverage(30, NEAR_SEED + 1, (0.95, 0.98), Tolerance::Exact, Tolerance::Standard(0.10));
+    // 95 % of 30 are 28.5; fewer than 25 have a probability of 0.3 %.
+    assert!(found.draws == 30 && found.reported == found.monte_carlo && found.reported >= 25, "{found:?}");
+    // Ends that no supply gives: some 40 % of the draws; none of 30 has a probability below one in a million.
+    assert!(found.impossible > 0, "{found:?}");
 }

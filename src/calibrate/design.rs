@@ -12,9 +12,6 @@ const CANDIDATES: usize = 80;
 /// supply's reading, and its ripple, decide whether it fires at all.
 const RANGE: (f64, f64) = (1.05, 1.25);
 
-/// Step of the logarithm of the time constant for its derivative.
-const STEP: f64 = 1e-4;
-
 /// How far time constant and gap voltage move when a setting is left out, relative; none if too few would remain.
 pub(super) fn influence(found: &Fit, points: &[Point], kept: &[usize], place: usize) -> Option<Influence> {
     if !kept.contains(&place) {
@@ -71,9 +68,7 @@ pub(super) fn next_setting(
 
 /// Covariance with one more point.
 fn with(found: &Fit, information: &[Vec<f64>], point: &Point) -> Option<Vec<Vec<f64>>> {
-    let law = |shift: f64| found.form.supply_v(point, found.time_constant_s * shift.exp(), &found.linear);
-    let mut row = vec![(law(STEP) - law(-STEP)) / (2.0 * STEP)];
-    row.extend(found.form.row(point, found.time_constant_s).0);
+    let row = found.gradient(point);
     let u = found.form.u_v(point, found.time_constant_s, &found.linear);
     let n = row.len();
     let more: Vec<Vec<f64>> =

@@ -170,6 +170,14 @@ impl Fit {
         self.covariance[1][1].sqrt()
     }
 
+    /// Derivatives of the supply voltage that a point stands for: by ln τ, then by `linear`.
+    pub fn gradient(&self, point: &Point) -> Vec<f64> {
+        let law = |shift: f64| self.form.supply_v(point, self.time_constant_s * shift.exp(), &self.linear);
+        let mut gradient = vec![(law(STEP) - law(-STEP)) / (2.0 * STEP)];
+        gradient.extend(self.form.row(point, self.time_constant_s).0);
+        gradient
+    }
+
     /// Voltage spread that a point's scatter stands for, as a fraction of the gap voltage.
     pub fn spread(&self, point: &Point) -> f64 {
         point.scatter_s * (point.supply_v - self.gap_v()).max(0.0) / (self.time_constant_s * self.gap_v())

@@ -10,6 +10,7 @@
 //! Units: V, s.
 
 mod checks;
+mod curve;
 mod design;
 mod fit;
 mod law;
@@ -21,7 +22,8 @@ mod sizes;
 
 pub use ramp::{SupplyLog, SupplyLogError, ramp_settings};
 pub use result::{
-    CALIBRATION_FORMAT, Calibration, ClickSizes, Influence, NextSetting, NoCalibration, Recovery, SettingResult,
+    CALIBRATION_FORMAT, Calibration, ClickSizes, Influence, LawPoint, NextSetting, NoCalibration, Recovery,
+    SettingResult,
 };
 pub use setting::{ASSUMED_READING_U, Known, Setting};
 pub use sizes::{SizeMeter, SizeTrend};
@@ -32,6 +34,9 @@ use law::{Form, Point, Residual};
 
 /// Relative spread of the supply readings below which they count as equal.
 const LEAST_SPREAD: f64 = 0.01;
+
+/// Relative standard uncertainty of the time constant from which on nothing was found: two of them reach to zero.
+const LARGEST_U: f64 = 0.5;
 
 /// What to fit besides time constant and gap voltage.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
@@ -49,8 +54,9 @@ pub fn calibrate(settings: &[Setting], known: &Known, options: Options) -> Resul
     let usable: Vec<usize> = (0..settings.len()).filter(|&i| settings[i].left_out.is_none()).collect();
     let supplies = || usable.iter().map(|&i| settings[i].supply.value);
     let (lowest, highest) = (supplies().fold(f64::INFINITY, f64::min), supplies().fold(0.0, f64::max));
-    if usable.len() < 2 {
-        return Err(NoCalibration::TooFew { usable: usable.len() });
+    let form = Form { residual: known.residual(options.residual), recovery_s: None };
+    if usable.len() < form.demanded() {
+        return Err(NoCalibration::TooFew { usable: usable.len(), needed: form.demanded() });
     }
     if highest < (1.0 + LEAST_SPREAD) * lowest {
         return Err(NoCalibration::EqualSupplies { lowest_v: lowest, highest_v: highest });
@@ -59,10 +65,10 @@ pub fn calibrate(settings: &[Setting], known: &Known, options: Options) -> Resul
     if let Some(at) = points.iter().position(|point| point.charging_s <= 0.0) {
         return Err(NoCalibration::WithinConduction { name: settings[usable[at]].name.clone() });
     }
-    let form = Form { residual: known.residual(options.residual), recovery_s: None };
     let names: Vec<&str> = usable.iter().map(|&i| settings[i].name.as_str()).collect();
     let checked = checks::checked(&form, known, &points, &names)?;
-    if checked.fit.at_bound || !checked.fit.is_sound() {
+    let known_well = checked.widened * checked.fit.time_constant_relative_u() < LARGEST_U;
+    if checked.fit.at_bound || !checked.fit.is_sound() || !known_well {
         return Err(NoCalibration::Undetermined);
     }
     Ok(Assembly { settings, usable: &usable, points: &points, known, checked: &checked }.calibration())
@@ -112,6 +118,7 @@ impl Assembly<'_> {
         });
         let correlation = found.covariance[0][1] / (found.covariance[0][0] * found.covariance[1][1]).sqrt();
         let settings = self.results();
+        let rates_hz: Vec<f64> = settings.iter().filter_map(|setting| Some(setting.firing_rate_hz?.value)).collect();
         Calibration {
             format: CALIBRATION_FORMAT.to_owned(),
             time_constant_s: Estimate::normal(
@@ -122,6 +129,7 @@ impl Assembly<'_> {
             residual_voltage_v: residual,
             recovery,
             correlation,
+            law: curve::curve(found, &self.kept(), self.known, widened, &rates_hz),
             chi_square: found.chi_square,
             degrees_of_freedom: found.freedom,
             chi_square_probability: checks::probability(found),

@@ -13,12 +13,14 @@ pub const CALIBRATION_FORMAT: &str = "gaptone.calibration/1";
 pub enum NoCalibration {
     /// Not enough settings.
     #[error(
-        "{usable} of the settings can be used; a calibration needs recordings with a rhythm at two supply settings, better \
-         three or more"
+        "{usable} of the settings can be used; a calibration needs recordings with a rhythm at {needed} supply settings at \
+         least (as many as it has to find parameters), better at one more"
     )]
     TooFew {
         /// How many can be used.
         usable: usize,
+        /// How many there have to be.
+        needed: usize,
     },
     /// All supplies are the same.
     #[error(
@@ -84,6 +86,17 @@ pub struct NextSetting {
     pub gap_voltage_u_v: f64,
 }
 
+/// A point of the fitted law.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct LawPoint {
+    /// Firings per second.
+    pub firing_rate_hz: f64,
+    /// Supply voltage that the law demands for them, V.
+    pub supply_v: f64,
+    /// Standard uncertainty of that by the fit, without the meter's scale, V.
+    pub u_v: f64,
+}
+
 /// One setting in the result.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct SettingResult {
@@ -141,6 +154,8 @@ pub struct Calibration {
     pub correlation: f64,
     /// The settings in the order given.
     pub settings: Vec<SettingResult>,
+    /// The fitted law over the rates of the settings, from low to high rates.
+    pub law: Vec<LawPoint>,
     /// Weighted sum of squares.
     pub chi_square: f64,
     /// Settings used less parameters fitted.

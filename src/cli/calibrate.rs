@@ -11,7 +11,7 @@ use crate::bench::{self, Amendment, Bench, Dimension, Quantity, si};
 use crate::calibrate::{Calibration, Known, Options, Setting, SizeMeter, SupplyLog, calibrate, ramp_settings};
 use crate::estimate::Estimate;
 use crate::firing::Event;
-use crate::pictures::{self, CalibrationDrawn};
+use crate::pictures;
 use crate::report;
 use std::io::Write;
 use std::sync::Mutex;
@@ -45,9 +45,9 @@ pub(super) fn run(arguments: &CalibrateArguments) -> Result<Exit, Failure> {
         &arguments.page,
         || {
             let kept = arguments.bench.as_deref().map(page::kept_text).transpose()?;
-            page::written(crate::page::calibration(&calibration, &bench, kept.as_ref()))
+            page::written(crate::page::calibration(&calibration, kept.as_ref()))
         },
-        || pictures::calibration(CalibrationDrawn { calibration: &calibration, bench: &bench }),
+        || pictures::calibration(&calibration),
     )?;
     if arguments.json {
         let text = serde_json::to_string_pretty(&calibration)

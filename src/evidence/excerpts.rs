@@ -14,7 +14,9 @@ pub enum Why {
     Missed,
     /// A click is off the rhythm.
     Extra,
-    /// There is audio, but no firing.
+    /// Clicks that keep no rhythm.
+    Irregular,
+    /// There is audio, but no click.
     Nothing,
 }
 
@@ -33,6 +35,9 @@ pub struct Excerpt {
 const PERIODS: f64 = 14.0;
 const SHORTEST_S: f64 = 0.012;
 const LONGEST_S: f64 = 4.0;
+/// Clicks in a piece without a rhythm, and the room on both sides of them, share of its length.
+const LOOSE: usize = 12;
+const MARGIN: f64 = 0.06;
 /// Stretches of a piece.
 pub(super) const STRETCHES: usize = 900;
 /// Events that are looked back on.
@@ -54,7 +59,7 @@ impl Picker {
         if self.recent.len() > 2 * RECENT {
             self.recent.drain(..RECENT);
         }
-        let Some(period_s) = period_s else { return };
+        let Some(period_s) = period_s else { return self.loose() };
         let length_s = (PERIODS * period_s).clamp(SHORTEST_S, LONGEST_S);
         let why = match event.kind {
             EventKind::Firing => Why::Beginning,
@@ -62,7 +67,8 @@ impl Picker {
             EventKind::Extra => Why::Extra,
         };
         if !self.taken.iter().any(|taken| taken.0 == why) {
-            let first_s = self.recent.first().map_or(event.time_s, |first| first.time_s);
+            let first = self.recent.iter().find(|event| event.kind == EventKind::Firing);
+            let first_s = first.map_or(event.time_s, |first| first.time_s);
             let from_s = match why {
                 Why::Beginning => first_s - 0.7 * period_s,
                 _ => event.time_s - 0.4 * length_s,
@@ -83,6 +89,19 @@ impl Picker {
     /// The pieces that are complete, to be filled with audio.
     pub fn take(&mut self) -> Vec<(f64, f64, Why, Vec<Oddity>)> {
         std::mem::take(&mut self.found)
+    }
+
+    /// Shows the first clicks that keep no rhythm, once there are so many.
+    fn loose(&mut self) {
+        let loose = || self.recent.iter().filter(|event| event.kind == EventKind::Extra);
+        let (Some(first), Some(last)) = (loose().next(), loose().nth(LOOSE - 1)) else { return };
+        if self.taken.iter().any(|taken| taken.0 == Why::Irregular) {
+            return;
+        }
+        let length_s = (last.time_s - first.time_s).clamp(SHORTEST_S, LONGEST_S);
+        let from_s = (first.time_s - MARGIN * length_s).max(0.0);
+        self.taken.push((Why::Irregular, from_s));
+        self.close((from_s, (1.0 + 2.0 * MARGIN) * length_s, Why::Irregular));
     }
 
     pub fn finish(&mut self) {

@@ -1,6 +1,7 @@
 //! Clicks without a rhythm: static, a worn gap that fires by chance.
 
 use super::window::Window;
+use crate::firing::{Event, EventKind};
 use crate::rhythm::order::median;
 use crate::rhythm::presence::character;
 use rustfft::num_complex::Complex32;
@@ -21,9 +22,9 @@ const CORE: f64 = 0.66;
 const WIDTH_S: f64 = 0.6e-3;
 const CLEAR: f64 = 4.0;
 
-/// Times (s) of clicks in a window in which no rhythm was found; none if what stands out does not look like clicks.
+/// The clicks in a window in which no rhythm was found, as extra ones; none if what stands out does not look like clicks.
 #[must_use]
-pub fn clicks(window: &Window) -> Option<Vec<f64>> {
+pub fn clicks(window: &Window) -> Option<Vec<Event>> {
     let kernel = window.kernel(|f| ((f - 200.0) / 100.0).clamp(0.0, 1.0));
     let high = window.through(&kernel);
     let mut analytic: Vec<Complex32> = Vec::new();
@@ -32,12 +33,22 @@ pub fn clicks(window: &Window) -> Option<Vec<f64>> {
     let block = (BLOCK_S * window.rate_hz) as usize;
     let peaks: Vec<f64> = envelope.chunks(block).map(|c| f64::from(c.iter().copied().fold(0.0f32, f32::max))).collect();
     let threshold = HEIGHT * median(&peaks) as f32;
-    let times = above(&envelope, threshold, (APART_S * window.rate_hz) as usize, window.rate_hz);
+    let found = above(&envelope, threshold, (APART_S * window.rate_hz) as usize);
+    let times: Vec<f64> = found.iter().map(|(at, _)| *at as f64 / window.rate_hz).collect();
     if times.len() < FEWEST || threshold <= 0.0 || !(VARIATION.0..VARIATION.1).contains(&local_variation(&times)) {
         return None;
     }
     let c = character::of_clicks(&high, window.rate_hz, &times)?;
-    (c.alike >= ALIKE && c.core >= CORE && c.width_s <= WIDTH_S && c.clear >= CLEAR).then_some(times)
+    let clicks = c.alike >= ALIKE && c.core >= CORE && c.width_s <= WIDTH_S && c.clear >= CLEAR;
+    // The top of an envelope may be anywhere in the width of the click.
+    let event = |((_, size), time_s): (&(usize, f32), f64)| Event {
+        time_s,
+        kind: EventKind::Extra,
+        size: f64::from(*size),
+        timing_u_s: c.width_s / 12f64.sqrt(),
+        period_s: None,
+    };
+    clicks.then(|| found.iter().zip(times).map(event).collect())
 }
 
 fn local_variation(times: &[f64]) -> f64 {
@@ -45,9 +56,9 @@ fn local_variation(times: &[f64]) -> f64 {
     d.windows(2).map(|w| 2.0 * (w[1] - w[0]).abs() / (w[1] + w[0])).sum::<f64>() / (d.len() - 1).max(1) as f64
 }
 
-/// Largest values of each run above a threshold; runs nearer than `apart` samples are one.
-fn above(x: &[f32], threshold: f32, apart: usize, rate_hz: f64) -> Vec<f64> {
-    let mut times = Vec::new();
+/// Place and size of the largest value of each run above a threshold; runs nearer than `apart` samples are one.
+fn above(x: &[f32], threshold: f32, apart: usize) -> Vec<(usize, f32)> {
+    let mut found = Vec::new();
     let mut current: Option<(usize, f32, usize)> = None;
     for (i, &v) in x.iter().enumerate() {
         if v > threshold {
@@ -55,13 +66,13 @@ fn above(x: &[f32], threshold: f32, apart: usize, rate_hz: f64) -> Vec<f64> {
                 Some((at, top, _)) => Some(if v > top { (i, v, i) } else { (at, top, i) }),
                 None => Some((i, v, i)),
             };
-        } else if let Some((at, _, last)) = current
+        } else if let Some((at, top, last)) = current
             && i - last > apart
         {
-            times.push(at as f64 / rate_hz);
+            found.push((at, top));
             current = None;
         }
     }
-    times.extend(current.map(|(at, _, _)| at as f64 / rate_hz));
-    times
+    found.extend(current.map(|(at, top, _)| (at, top)));
+    found
 }

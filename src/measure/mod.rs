@@ -178,6 +178,7 @@ impl Measurer {
         let reading = match self.sums.reading() {
             Some(mut reading) if self.trains > 0 => {
                 reading.reason = reason(&reading);
+                reading.firings.extra += self.loose_clicks;
                 reading
             }
             _ if self.loose_clicks > 0 => clicks_alone(self.loose_clicks, self.loose_time_s),
@@ -228,10 +229,13 @@ impl Measurer {
             }
             Err(why) => {
                 self.refused = Some(why);
-                if let Some(times) = irregular::clicks(&window) {
-                    self.loose_clicks += times.len() as u64;
+                if let Some(clicks) = irregular::clicks(&window) {
+                    self.loose_clicks += clicks.len() as u64;
                     self.loose_time_s += window.duration_s();
-                    explanation.push(format!("{} clicks without a rhythm", times.len()));
+                    explanation.push(format!("{} clicks without a rhythm", clicks.len()));
+                    let from_s = (self.held_from + self.done as u64) as f64 / self.rate_hz;
+                    self.events
+                        .extend(clicks.into_iter().map(|click| Event { time_s: from_s + click.time_s, ..click }));
                 }
             }
         }

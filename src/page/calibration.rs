@@ -2,10 +2,10 @@
 
 use super::KeptText;
 use super::document::{caution, document, figure, figures, folded, list, name, table, verbatim};
-use crate::bench::{Bench, si};
+use crate::bench::si;
 use crate::calibrate::Calibration;
 use crate::estimate::Estimate;
-use crate::pictures::{self, CalibrationDrawn};
+use crate::pictures;
 use crate::plot::escaped;
 use crate::report::{Figure, HIGH_VOLTAGE_CAUTION};
 
@@ -13,7 +13,7 @@ use crate::report::{Figure, HIGH_VOLTAGE_CAUTION};
 ///
 /// # Errors
 /// A calibration that cannot be written as JSON.
-pub fn calibration(calibration: &Calibration, bench: &Bench, text: Option<&KeptText>) -> serde_json::Result<String> {
+pub fn calibration(calibration: &Calibration, text: Option<&KeptText>) -> serde_json::Result<String> {
     let (tau, gap) = (calibration.time_constant_s, calibration.gap_voltage_v);
     let shown = |estimate: Estimate, unit| Figure::prefixed(estimate, unit);
     let answer =
@@ -42,7 +42,7 @@ pub fn calibration(calibration: &Calibration, bench: &Bench, text: Option<&KeptT
     }
     body.push_str(&figures(&rows));
     body.push_str("<p class=\"key\">± is one standard uncertainty, .. the 95 % interval.</p>\n");
-    body.push_str(&figure(&pictures::calibration(CalibrationDrawn { calibration, bench }), 2, "calibration"));
+    body.push_str(&figure(&pictures::calibration(calibration), 2, "calibration"));
     body.push_str(&settings(calibration));
     if let Some(next) = calibration.next_setting {
         body.push_str(&format!(

@@ -1,5 +1,6 @@
 //! The frame of every page, and the pieces that all share.
 
+use crate::pictures::capital;
 use crate::plot::{Medium, Picture, STYLE, escaped};
 use std::fmt::Write;
 
@@ -95,9 +96,7 @@ pub(super) fn table(caption: &str, heads: &[&str], rows: &[Vec<String>]) -> Stri
 /// The caution that stands beside every voltage.
 pub(super) fn caution(text: &str) -> String {
     let text = text.strip_prefix("caution: ").unwrap_or(text);
-    let mut letters = text.chars();
-    let first: String = letters.next().into_iter().flat_map(char::to_uppercase).collect();
-    format!("<p class=\"caution\"><strong>Caution.</strong> {}{}</p>\n", first, escaped(letters.as_str()))
+    format!("<p class=\"caution\"><strong>Caution.</strong> {}</p>\n", escaped(&capital(text)))
 }
 
 /// A text that is shown as it is, such as a bench.

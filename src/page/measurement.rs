@@ -47,10 +47,10 @@ fn answer(recording: &KeptRecording) -> String {
     let Some(measurement) = &recording.measurement else { return "Could not be read".to_owned() };
     let reading = &measurement.reading;
     let Some(rate) = reading.firing_rate_hz else { return "No gap is heard".to_owned() };
-    let mut line = Figure::plain(rate, "firings a second").value_and_u();
     if reading.verdict == Verdict::Irregular {
-        return format!("{line}, without a rhythm");
+        return format!("{}, without a rhythm", Figure::plain(rate, "clicks a second").value_and_u());
     }
+    let mut line = Figure::plain(rate, "firings a second").value_and_u();
     if let (Some(jitter), Some(period)) = (reading.period_jitter_s, reading.period_s) {
         line.push_str(&format!(", jitter {:.2} %", 100.0 * jitter.value / period.value));
     }
@@ -160,6 +160,7 @@ fn player(sound: &Sound, evidence: &Evidence, from_s: f64) -> String {
         Why::Beginning => Some("the first firings"),
         Why::Missed => Some("the missed firing"),
         Why::Extra => Some("the extra click"),
+        Why::Irregular => Some("the first clicks"),
         Why::Nothing => None,
     };
     let places: Vec<serde_json::Value> = evidence

@@ -2,7 +2,7 @@
 
 use super::document::{caution, document, figure, figures, folded, list, name, table, verbatim};
 use crate::bench::si;
-use crate::pictures;
+use crate::pictures::{self, capital};
 use crate::plot::escaped;
 use crate::report::{HIGH_VOLTAGE_CAUTION, trend_rows};
 use crate::trend::{Charted, Moment, Trend, advice};
@@ -15,16 +15,19 @@ const SHOWN: usize = 40;
 /// # Errors
 /// A trend that cannot be written as JSON.
 pub fn trend(log: &str, trend: &Trend) -> serde_json::Result<String> {
-    let mut heading = trend.advice.clone();
-    if let Some(first) = heading.get(..1).map(str::to_uppercase) {
-        heading.replace_range(..1, &first);
-    }
+    // What is so stands in the heading, what to do about it below.
+    let (heading, action) = trend.advice.split_once("; ").unwrap_or((trend.advice.as_str(), ""));
+    let action = if action.is_empty() {
+        String::new()
+    } else {
+        format!("<p class=\"verdict\">{}.</p>\n", escaped(&capital(action)))
+    };
     let of = if trend.title.is_empty() { String::new() } else { format!(" of {}", name(&trend.title)) };
     let mut body = format!(
-        "<header>\n<p class=\"what\">History{of}: {} entries of {}</p>\n<h1 class=\"long\">{}</h1>\n</header>\n",
+        "<header>\n<p class=\"what\">History{of}: {} entries of {}</p>\n<h1 class=\"long\">{}</h1>\n{action}</header>\n",
         trend.entries,
         name(log),
-        escaped(&heading)
+        escaped(&capital(heading))
     );
     if trend.charted == Charted::GapVoltage {
         body.push_str(&caution(HIGH_VOLTAGE_CAUTION));

@@ -1,6 +1,6 @@
 //! What the uncertainty of the gap voltage consists of.
 
-use super::Measured;
+use super::{Measured, capital};
 use crate::bench::si;
 use crate::plot::{Area, Axis, Panel, Picture, Scale};
 use crate::report::Figure;
@@ -63,9 +63,4 @@ fn rows(budget: &Budget) -> Vec<Row> {
         });
     }
     rows
-}
-
-fn capital(text: &str) -> String {
-    let mut characters = text.chars();
-    characters.next().map_or_else(String::new, |first| first.to_uppercase().chain(characters).collect())
 }

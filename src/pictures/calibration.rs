@@ -1,62 +1,36 @@
 //! A calibration: the charging law through the settings, with its band, and what each setting is off.
 
-use crate::bench::Bench;
-use crate::calibrate::{Calibration, SettingResult};
+use crate::calibrate::{Calibration, LawPoint, SettingResult};
 use crate::estimate::COVERAGE_95;
 use crate::plot::{Axis, Legend, Mark, Panel, Picture, Scale, Stroke};
 use crate::report::Figure;
 
-/// A calibration with the bench that it was made with.
-#[derive(Debug, Clone, Copy)]
-pub struct CalibrationDrawn<'a> {
-    /// The result.
-    pub calibration: &'a Calibration,
-    /// The bench; the default one if there was none.
-    pub bench: &'a Bench,
-}
-
-/// Points of the curve.
-const POINTS: usize = 100;
 /// Residuals beyond this many standard uncertainties are rare.
 const RARE: f64 = 2.0;
 
 /// The picture of a calibration.
 #[must_use]
-pub fn calibration(drawn: CalibrationDrawn<'_>) -> Picture {
-    let settings = &drawn.calibration.settings;
+pub fn calibration(calibration: &Calibration) -> Picture {
+    let Calibration { settings, law, .. } = calibration;
     let heard: Vec<(&SettingResult, f64)> =
         settings.iter().filter_map(|setting| Some((setting, setting.firing_rate_hz?.value))).collect();
     let used = || heard.iter().filter(|(setting, _)| setting.used);
-    let rates = Scale::over(heard.iter().map(|(_, rate_hz)| *rate_hz), 0.08);
-    let x = Scale::linear(rates.low.max(0.2 * rates.high.min(1e12) * f64::EPSILON).max(0.0), rates.high);
-    let curve: Vec<(f64, f64, f64)> =
-        (0..=POINTS).filter_map(|k| law(drawn, x.low + (x.high - x.low) * k as f64 / POINTS as f64)).collect();
-    let edges = curve.iter().flat_map(|(_, v, u)| [v - COVERAGE_95 * u, v + COVERAGE_95 * u]);
+    let rates = heard.iter().map(|(_, rate_hz)| *rate_hz).chain(law.iter().map(|point| point.firing_rate_hz));
+    let x = Scale::over(rates, 0.0);
+    let band: Vec<_> = law.iter().map(band).collect();
+    let edges = band.iter().flat_map(|(_, low_v, high_v)| [*low_v, *high_v]);
     let y = Scale::over(edges.chain(heard.iter().map(|(setting, _)| setting.supply_v)), 0.06);
     let mut panel = Panel::new(
         Picture::area(230.0),
         Axis::new(x, "firing rate, /s", "", 6),
         Axis::new(y, "supply voltage", "V", 5),
     );
-    let band: Vec<_> =
-        curve.iter().map(|(rate_hz, v, u)| (*rate_hz, v - COVERAGE_95 * u, v + COVERAGE_95 * u)).collect();
     panel.band("law band", &band);
-    panel.line("law", Stroke::Model, curve.iter().map(|(rate_hz, v, _)| (*rate_hz, *v)));
+    panel.line("law", Stroke::Model, law.iter().map(|point| (point.firing_rate_hz, point.supply_v)));
     panel.marks("used", Mark::Dot, used().map(|(setting, rate_hz)| (*rate_hz, setting.supply_v)));
     let out = heard.iter().filter(|(setting, _)| !setting.used);
     panel.marks("left out", Mark::Cross, out.clone().map(|(setting, rate_hz)| (*rate_hz, setting.supply_v)));
-    let residuals: Vec<(f64, f64)> =
-        used().filter_map(|(setting, rate_hz)| Some((*rate_hz, setting.residual?))).collect();
-    let reach = residuals.iter().fold(1.2 * RARE, |reach, point| reach.max(1.15 * point.1.abs()));
-    let mut below = Panel::new(
-        Picture::area_below(306.0, 110.0),
-        Axis::new(x, "firing rate, /s", "", 6),
-        Axis::new(Scale::linear(-reach, reach), "reading less law, in standard uncertainties", "", 4),
-    );
-    below.level("zero", Stroke::Model, 0.0);
-    below.level("rare low", Stroke::Limit, -RARE);
-    below.level("rare high", Stroke::Limit, RARE);
-    below.marks("residuals", Mark::Dot, residuals);
+    let used: Vec<(&SettingResult, f64)> = used().copied().collect();
     let mut legend = vec![
         (Legend::Mark(Mark::Dot), "setting".to_owned()),
         (Legend::Line(Stroke::Model), "fitted law".to_owned()),
@@ -68,14 +42,53 @@ pub fn calibration(drawn: CalibrationDrawn<'_>) -> Picture {
     }
     Picture {
         kind: "calibration",
-        title: title(drawn.calibration),
-        reading: "Above: the supply voltage that the charging law demands for each rate, and the settings. Below: how far each \
-                  reading is from the law. One in twenty settings may lie beyond two standard uncertainties; a bow from end to end \
-                  is a wrong law (residual voltage, current limit), a single one off is a wrong label or a locked gap."
+        title: title(calibration),
+        reading: "Above: the supply voltage that the charging law demands for each rate, and the settings. Middle: the same less the \
+                  law, so that its band can be seen. Below: how far each reading is from the law. One in twenty settings may lie \
+                  beyond two standard uncertainties; a bow from end to end is a wrong law (residual voltage, current limit), a \
+                  single one off is a wrong label or a locked gap."
             .to_owned(),
-        panels: vec![panel, below],
+        panels: vec![panel, departures(calibration, &used, x), residuals(&used, x)],
         legend,
     }
+}
+
+/// What the readings are off the law, as shares of it, in the band of the law.
+fn departures(calibration: &Calibration, used: &[(&SettingResult, f64)], x: Scale) -> Panel {
+    let reach = |point: &LawPoint| COVERAGE_95 * point.u_v / point.supply_v;
+    let band: Vec<_> =
+        calibration.law.iter().map(|point| (point.firing_rate_hz, -reach(point), reach(point))).collect();
+    let off: Vec<(f64, f64)> = used
+        .iter()
+        .filter_map(|(setting, rate_hz)| Some((*rate_hz, setting.supply_v / setting.implied_supply_v? - 1.0)))
+        .collect();
+    let y = Scale::over(band.iter().flat_map(|edge| [edge.1, edge.2]).chain(off.iter().map(|point| point.1)), 0.1);
+    let mut panel = Panel::new(
+        Picture::area_below(304.0, 120.0),
+        Axis::new(x, "firing rate, /s", "", 6),
+        Axis::percent(y, "reading less law", 4),
+    );
+    panel.band("law band alone", &band);
+    panel.level("law alone", Stroke::Model, 0.0);
+    panel.marks("departures", Mark::Dot, off);
+    panel
+}
+
+/// What the readings are off the law, in standard uncertainties.
+fn residuals(used: &[(&SettingResult, f64)], x: Scale) -> Panel {
+    let residuals: Vec<(f64, f64)> =
+        used.iter().filter_map(|(setting, rate_hz)| Some((*rate_hz, setting.residual?))).collect();
+    let reach = residuals.iter().fold(1.2 * RARE, |reach, point| reach.max(1.15 * point.1.abs()));
+    let mut panel = Panel::new(
+        Picture::area_below(500.0, 110.0),
+        Axis::new(x, "firing rate, /s", "", 6),
+        Axis::new(Scale::linear(-reach, reach), "reading less law, in standard uncertainties", "", 4),
+    );
+    panel.level("zero", Stroke::Model, 0.0);
+    panel.level("rare low", Stroke::Limit, -RARE);
+    panel.level("rare high", Stroke::Limit, RARE);
+    panel.marks("residuals", Mark::Dot, residuals);
+    panel
 }
 
 fn title(calibration: &Calibration) -> String {
@@ -92,29 +105,8 @@ fn title(calibration: &Calibration) -> String {
     )
 }
 
-/// Rate, supply voltage by the law and its standard uncertainty; none where the law has no answer or is not this simple.
-fn law(drawn: CalibrationDrawn<'_>, rate_hz: f64) -> Option<(f64, f64, f64)> {
-    let CalibrationDrawn { calibration, bench } = drawn;
-    if calibration.recovery.is_some() || bench.charging.leakage.is_some() {
-        return None;
-    }
-    let conduction_s = bench.gap.conduction_time.map_or(0.0, |quantity| quantity.value);
-    let stated_v = bench.gap.residual_voltage.map_or(0.0, |quantity| quantity.value);
-    let residual_v = calibration.residual_voltage_v.map_or(stated_v, |residual| residual.value);
-    let charging_s = 1.0 / rate_hz - conduction_s;
-    if !(charging_s > 0.0 && charging_s.is_finite()) {
-        return None;
-    }
-    let (tau, gap) = (calibration.time_constant_s, calibration.gap_voltage_v);
-    let supply_v = |tau_s: f64, gap_v: f64| {
-        let left = (-charging_s / tau_s).exp();
-        (gap_v - residual_v * left) / (1.0 - left)
-    };
-    let value_v = supply_v(tau.value, gap.value);
-    let by_tau = supply_v(tau.value + tau.u, gap.value) - value_v;
-    // The scale of the meter moves readings and law together.
-    let gap_u = (gap.u.powi(2) - (calibration.supply_scale_u * gap.value).powi(2)).max(0.0).sqrt();
-    let by_gap = supply_v(tau.value, gap.value + gap_u) - value_v;
-    let variance = by_tau.powi(2) + by_gap.powi(2) + 2.0 * calibration.correlation * by_tau * by_gap;
-    value_v.is_finite().then(|| (rate_hz, value_v, variance.max(0.0).sqrt()))
+/// Rate, and the ends of the 95 % band of the supply voltage.
+fn band(point: &LawPoint) -> (f64, f64, f64) {
+    let reach_v = COVERAGE_95 * point.u_v;
+    (point.firing_rate_hz, point.supply_v - reach_v, point.supply_v + reach_v)
 }

@@ -5,6 +5,7 @@ use crate::evidence::{Excerpt, Why};
 use crate::firing::EventKind;
 use crate::plot::{Axis, Legend, Mark, Panel, Picture, Scale, Stroke};
 use crate::report::Measurement;
+use crate::rhythm::{Reading, Verdict};
 
 /// Height of a panel, and of a panel with its titles.
 const HEIGHT: f64 = 130.0;
@@ -17,10 +18,11 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
     }
     let panels = excerpts.iter().enumerate().map(|(k, excerpt)| panel(excerpt, PITCH * k as f64)).collect();
     let events = || excerpts.iter().flat_map(|excerpt| &excerpt.events);
+    let irregular = measured.measurement.reading.verdict == Verdict::Irregular;
     let marks = [
         (EventKind::Firing, Mark::Tick, "firing"),
         (EventKind::Missed, Mark::Ring, "missed: the rhythm demands it here"),
-        (EventKind::Extra, Mark::Cross, "extra: off the rhythm"),
+        (EventKind::Extra, Mark::Cross, if irregular { "click" } else { "extra: off the rhythm" }),
     ];
     let legend = marks
         .into_iter()
@@ -30,7 +32,7 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
     Some(Picture {
         kind: "excerpts",
         title: title(excerpts, measured.measurement),
-        reading: reading(excerpts, !measured.measurement.reading.other_trains.is_empty()),
+        reading: reading(excerpts, &measured.measurement.reading),
         panels,
         legend,
     })
@@ -39,10 +41,14 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
 fn title(excerpts: &[Excerpt], measurement: &Measurement) -> String {
     let length = |excerpt: &Excerpt| seconds(excerpt.audio.to_s() - excerpt.audio.from_s);
     let counts = measurement.reading.firings;
-    match excerpts.first() {
-        Some(first) if first.why == Why::Nothing && counts.extra > 0 => {
-            format!("{} from the middle; clicks without a rhythm are not marked one by one", length(first))
-        }
+    let begins = excerpts.iter().find(|excerpt| excerpt.why == Why::Beginning);
+    match begins.or(excerpts.first()) {
+        Some(first) if first.why == Why::Irregular && measurement.reading.verdict == Verdict::Irregular => format!(
+            "{} hold {} without a rhythm, of {} in the whole recording",
+            length(first),
+            counted(first.events.len() as u64, "click", "clicks"),
+            counts.extra
+        ),
         Some(first) if first.why == Why::Nothing => format!("In {} from the middle no firing is found", length(first)),
         Some(first) => {
             let of = |kind: EventKind| first.events.iter().filter(|event| event.kind == kind).count() as u64;
@@ -67,16 +73,24 @@ fn some(count: u64) -> String {
     }
 }
 
-fn reading(excerpts: &[Excerpt], has_others: bool) -> String {
+fn reading(excerpts: &[Excerpt], reading: &Reading) -> String {
     let folded = excerpts.iter().any(|excerpt| !excerpt.audio.high.is_empty());
-    let mut text =
-        "The audio as it was recorded, the marks of the events above it. Each firing should sit on a click, and each \
-                    click should have its firing."
-            .to_owned();
+    let irregular = reading.verdict == Verdict::Irregular;
+    let nothing = excerpts.iter().all(|excerpt| excerpt.why == Why::Nothing);
+    let mut text = if nothing {
+        "The audio as it was recorded. The clicks of a gap would stand out of it, short and all alike."
+    } else if irregular {
+        "The audio as it was recorded, with a mark above each click. Each mark should sit on a click, and each click should have \
+         its mark; that they follow each other unevenly is why there is no rhythm."
+    } else {
+        "The audio as it was recorded, the marks of the events above it. Each firing should sit on a click, and each click should \
+         have its mark."
+    }
+    .to_owned();
     if excerpts.len() > 1 {
         text.push_str(" The further pieces show the first place where a firing is missed, or a click is extra.");
     }
-    if has_others {
+    if !reading.other_trains.is_empty() {
         text.push_str(" Clicks of other trains have no marks here.");
     }
     if folded {
@@ -92,6 +106,7 @@ fn panel(excerpt: &Excerpt, offset: f64) -> Panel {
         Why::Beginning => "the first firings: audio, full scale",
         Why::Missed => "where a firing is missed: audio, full scale",
         Why::Extra => "where a click is extra: audio, full scale",
+        Why::Irregular => "clicks without a rhythm: audio, full scale",
         Why::Nothing => "from the middle: audio, full scale",
     };
     // Room above the audio for the marks.

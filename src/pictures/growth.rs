@@ -1,6 +1,6 @@
 //! How far firings wander from an even beat, against what independent periods and a clock would do.
 
-use super::{Measured, has_rhythm, seconds};
+use super::{Measured, has_rhythm, mains, seconds};
 use crate::evidence::Growth;
 use crate::plot::{Axis, Legend, Mark, Panel, Picture, Scale, Stroke};
 
@@ -45,11 +45,13 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
         panel.level("clock", Stroke::Other, clock_s);
         legend.push((Legend::Line(Stroke::Other), "a clock, read with this noise".to_owned()));
     }
-    if let Some(mains) = reading.mains_locked_jitter_s {
-        let cycle = 1.0 / (mains.frequency_hz * period_s);
-        if cycle > 1.0 && cycle < end {
-            panel.upright("mains", Stroke::Limit, cycle);
-            panel.words_at(cycle, 0, &format!("one cycle of {:.0} Hz", mains.frequency_hz));
+    if let Some(line_hz) = mains::in_the_firing(reading) {
+        // Seen once a period, a ripple faster than half the rate shows as its beat with the rate.
+        let cycles = line_hz * period_s;
+        let (wave, words) = if cycles < 0.5 { (1.0 / cycles, "one cycle of") } else { (beat(cycles), "beat with") };
+        if wave < end {
+            panel.upright("mains", Stroke::Limit, wave);
+            panel.words_at(wave, 0, &format!("{words} {line_hz:.0} Hz"));
         }
     }
     panel.spans(
@@ -67,6 +69,11 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
                 or a wave; points below it a gap that catches up. Both scales are logarithmic."
         .to_owned();
     Some(Picture { kind: "growth", title, reading: text, panels: vec![panel], legend })
+}
+
+/// Periods of the beat of a ripple that makes so many cycles in a period; endless where it is locked.
+fn beat(cycles: f64) -> f64 {
+    1.0 / (cycles - cycles.round()).abs()
 }
 
 /// Relative standard uncertainty of a scatter from so many pieces.

@@ -9,6 +9,7 @@ mod click;
 mod distribution;
 mod excerpts;
 mod growth;
+mod mains;
 mod periods;
 mod prediction;
 mod recording;
@@ -16,7 +17,7 @@ mod sizes;
 mod spectrum;
 mod trend;
 
-pub use calibration::{CalibrationDrawn, calibration};
+pub use calibration::calibration;
 pub use prediction::prediction;
 pub use trend::trend;
 
@@ -74,6 +75,12 @@ fn scatter_as_read_s(reading: &Reading) -> Option<f64> {
     let jitter_s = reading.period_jitter_s?.value;
     let noise_s = reading.timing_noise_s.map_or(0.0, |noise| noise.value);
     Some((jitter_s * jitter_s + 2.0 * noise_s * noise_s).sqrt())
+}
+
+/// A text that begins with a capital letter.
+pub(crate) fn capital(text: &str) -> String {
+    let mut letters = text.chars();
+    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
 }
 
 fn seconds(value: f64) -> String {

@@ -31,9 +31,10 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
         let count = stretches.len();
         format!("The gap fires in {count} stretches, {share:.0} % of the time; the peak is {peak:.2} of full scale")
     };
+    let held = if stretches.is_empty() { "" } else { " The figures hold for the shaded time." };
     let reading = format!(
-        "Each stroke goes from the least to the greatest sample of {}, so that no peak is lost. The figures hold for the \
-         shaded time. A flat top at full scale is a recording that clips.",
+        "Each stroke goes from the least to the greatest sample of {}, so that no peak is lost.{held} A flat top at full scale is \
+         a recording that clips.",
         seconds(trace.step_s)
     );
     let mut legend = vec![(Legend::Line(Stroke::Main), "audio".to_owned())];

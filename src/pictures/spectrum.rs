@@ -1,6 +1,6 @@
 //! The spectrum with the line at the rate and the band of the receiver.
 
-use super::{Measured, has_rhythm};
+use super::{Measured, has_rhythm, mains};
 use crate::bench::si;
 use crate::plot::{Axis, Legend, Mark, Panel, Picture, Scale, Stroke};
 
@@ -38,7 +38,7 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
         }
         Some(rate_hz) => {
             panel.upright("rate", Stroke::Limit, rate_hz);
-            panel.words_at(rate_hz, 0, &format!("rate {rate_hz:.1} Hz"));
+            panel.words_at(rate_hz, 0, &format!("rate {rate_hz:.1} /s"));
             let multiples =
                 (1..=MULTIPLES).filter_map(|k| level_at(peaks, f64::from(k) * rate_hz, spectrum.resolution_hz));
             panel.marks("multiples", Mark::Ring, multiples);
@@ -48,6 +48,7 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
         }
         None => no_rate(peaks),
     };
+    let of_mains = mark_mains(&mut panel, &mut legend, measured, rate);
     let (taken, heard) = spectrum.pieces;
     let part = if taken < heard {
         format!(" Of {heard} pieces {taken} are averaged, spread over the recording.")
@@ -57,15 +58,42 @@ pub(super) fn picture(measured: Measured<'_>) -> Option<Picture> {
     let text = format!(
         "Lines {:.2} Hz apart are told from each other; of the lines that share a column the highest is drawn. A gap gives lines \
          at the rate and its multiples, which grow wider and sink upwards the more the periods scatter. The receiver may \
-         suppress the first of them; a tone that is no gap has few or none.{part}",
+         suppress the first of them; a tone that is no gap has few or none.{of_mains}{part}",
         spectrum.resolution_hz
     );
     Some(Picture { kind: "spectrum", title, reading: text, panels: vec![panel], legend })
 }
 
+/// Marks mains lines in the audio, and the ripple that shows in the firing; gives a sentence on them.
+fn mark_mains(
+    panel: &mut Panel,
+    legend: &mut Vec<(Legend, String)>,
+    measured: Measured<'_>,
+    rate_hz: Option<f64>,
+) -> String {
+    let mut text = String::new();
+    let Some(spectrum) = measured.evidence.spectrum.as_ref() else { return text };
+    let peaks = &spectrum.peaks;
+    if let Some(line_hz) = mains::in_the_firing(&measured.measurement.reading) {
+        panel.upright("ripple", Stroke::Other, line_hz);
+        panel.words_at(line_hz, 1, &format!("ripple {line_hz:.0} Hz"));
+        legend.push((Legend::Line(Stroke::Other), "ripple of the supply, told from the firing".to_owned()));
+        text.push_str(&format!(
+            " The ripple of {line_hz:.0} Hz shows in the firing: it puts lines {line_hz:.0} Hz beside those of the rate."
+        ));
+    }
+    let stands_out = |line: (f64, f64)| above_beside(peaks, line).is_some_and(|db| db > STANDS_OUT_DB);
+    if let Some((mains_hz, lines)) = mains::in_the_audio(spectrum, rate_hz, stands_out) {
+        panel.marks("mains", Mark::Square, lines);
+        legend.push((Legend::Mark(Mark::Square), format!("mains of {mains_hz:.0} Hz and its multiples")));
+        text.push_str(" Mains in the audio is hum; by itself it says nothing of the firing.");
+    }
+    text
+}
+
 fn no_rate(peaks: &[(f64, f64)]) -> String {
     let highest = peaks.iter().max_by(|a, b| a.1.total_cmp(&b.1));
-    let line = highest.map_or_else(String::new, |line| format!("; its highest line is at {}", si(line.0, "Hz", 3)));
+    let line = highest.map_or_else(String::new, |line| format!("; its highest level is at {}", si(line.0, "Hz", 3)));
     format!("No rhythm was found in this audio, so no rate is marked{line}")
 }
 
@@ -94,8 +122,12 @@ fn title(peaks: &[(f64, f64)], rate_hz: f64, resolution_hz: f64) -> String {
 
 /// How far the highest line about a frequency rises above the middle of its surroundings, dB.
 fn above_its_surroundings(peaks: &[(f64, f64)], frequency_hz: f64, resolution_hz: f64) -> Option<f64> {
-    let line = level_at(peaks, frequency_hz, resolution_hz)?;
-    let apart = |f: f64| (f / frequency_hz).max(frequency_hz / f);
+    above_beside(peaks, level_at(peaks, frequency_hz, resolution_hz)?)
+}
+
+/// How far a line rises above the middle of its surroundings, dB.
+fn above_beside(peaks: &[(f64, f64)], line: (f64, f64)) -> Option<f64> {
+    let apart = |f: f64| (f / line.0).max(line.0 / f);
     let mut around: Vec<f64> =
         peaks.iter().filter(|peak| (AROUND.0..AROUND.1).contains(&apart(peak.0))).map(|peak| peak.1).collect();
     around.sort_by(f64::total_cmp);

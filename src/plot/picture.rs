@@ -108,9 +108,11 @@ fn put_panel(out: &mut String, panel: &Panel) {
     };
     let _ = writeln!(
         out,
-        "<g data-x=\"{}\" data-y=\"{}\">",
+        "<g data-x=\"{}\" data-y=\"{}\" data-xu=\"{}\" data-yu=\"{}\">",
         ends(panel.x.scale, left, right),
-        ends(panel.y.scale, bottom, top)
+        ends(panel.y.scale, bottom, top),
+        panel.x.unit,
+        panel.y.unit
     );
     out.push_str(&panel.under);
     let at_x = |value: f64| number(left + panel.x.scale.share(value) * (right - left));
@@ -140,7 +142,11 @@ fn put_panel(out: &mut String, panel: &Panel) {
         // The outermost ones stay within the drawing.
         let centre = number(at.clamp(half, (WIDTH - half).max(half)));
         let y = number(bottom + 17.0);
-        let _ = writeln!(out, "<text x=\"{centre}\" y=\"{y}\" text-anchor=\"middle\">{}</text>", escaped(label));
+        let _ = writeln!(
+            out,
+            "<text class=\"at-x\" x=\"{centre}\" y=\"{y}\" text-anchor=\"middle\">{}</text>",
+            escaped(label)
+        );
     }
     for (tick, label) in &panel.y.ticks {
         let y = number(bottom + panel.y.scale.share(*tick) * (top - bottom) + 4.0);

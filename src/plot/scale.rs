@@ -98,6 +98,8 @@ pub struct Axis {
     pub ticks: Vec<(f64, String)>,
     /// What the axis shows, with its unit.
     pub title: String,
+    /// SI unit of its values, `%` for shares; empty where they have none.
+    pub unit: String,
 }
 
 /// Prefixes that one axis takes for all its labels.
@@ -110,7 +112,7 @@ impl Axis {
     pub fn new(scale: Scale, words: &str, unit: &str, about: usize) -> Self {
         if scale.logarithmic {
             let ticks = scale.ticks(about).into_iter().map(|tick| (tick, short(tick, unit))).collect();
-            return Self { scale, ticks, title: words.to_owned() };
+            return Self { scale, ticks, title: words.to_owned(), unit: unit.to_owned() };
         }
         let takes_prefix = matches!(unit, "s" | "V" | "Hz");
         let size = scale.low.abs().max(scale.high.abs());
@@ -121,7 +123,7 @@ impl Axis {
         let label = |tick: f64| crate::bench::signed(tick / factor, decimals).trim_start_matches('+').to_owned();
         let ticks = scale.ticks(about).into_iter().map(|tick| (tick, label(tick))).collect();
         let title = if unit.is_empty() { words.to_owned() } else { format!("{words}, {prefix}{unit}") };
-        Self { scale, ticks, title }
+        Self { scale, ticks, title, unit: unit.to_owned() }
     }
 
     /// An axis of shares, labelled in percent.
@@ -135,7 +137,7 @@ impl Axis {
     /// An axis whose ticks are stated: names instead of numbers.
     #[must_use]
     pub fn named(scale: Scale, title: &str, ticks: Vec<(f64, String)>) -> Self {
-        Self { scale, ticks, title: title.to_owned() }
+        Self { scale, ticks, title: title.to_owned(), unit: String::new() }
     }
 }
 

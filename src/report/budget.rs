@@ -9,6 +9,9 @@ use std::fmt::Write;
 /// Width of the first column.
 const NAME: usize = 34;
 
+/// Degrees of freedom from which their number tells nothing: the coverage factor is that of the normal law to four digits.
+const MANY: f64 = 1e5;
+
 /// The budget as lines, ending with a line break.
 pub(super) fn budget_text(budget: &Budget) -> String {
     let shown = |estimate: Estimate| Figure::prefixed(estimate, &budget.unit);
@@ -20,6 +23,7 @@ pub(super) fn budget_text(budget: &Budget) -> String {
     }
     let freedom = budget
         .effective_degrees_of_freedom
+        .filter(|freedom| *freedom < MANY)
         .map_or("no limit to the degrees of freedom".to_owned(), |freedom| format!("{freedom:.0} degrees of freedom"));
     let factor = budget.coverage_factor;
     text.push_str(&wrapped(

@@ -81,7 +81,7 @@ fn unstated(facts: &Facts) -> Option<String> {
     let circuit = facts.circuit;
     let remains = circuit.slope_v_per_s(facts.voltage.value) / circuit.slope_v_per_s(circuit.residual_v());
     consider(gap.residual_voltage.is_some(), "residual voltage", "100 V left on the capacitor", 100.0 * remains);
-    consider(gap.conduction_time.is_some(), "conduction time", "10 us", -10e-6 * facts.slope);
+    consider(gap.conduction_time.is_some(), "conduction time", "10 µs", -10e-6 * facts.slope);
     let verb = if missing.len() > 1 { "are" } else { "is" };
     (!missing.is_empty())
         .then(|| format!("{} {verb} not stated and taken as 0; {}", missing.join(" and "), effects.join(", ")))

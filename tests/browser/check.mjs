@@ -5,6 +5,7 @@ import { createRequire } from "node:module";
 import { readFileSync, mkdirSync } from "node:fs";
 import { basename, resolve } from "node:path";
 import { pathToFileURL } from "node:url";
+import { touch } from "./touch.mjs";
 
 const [browserPath, modules, ...pages] = process.argv.slice(2);
 const require = createRequire(resolve(modules) + "/");
@@ -14,6 +15,7 @@ const shots = process.env.SHOTS;
 if (shots) mkdirSync(shots, { recursive: true });
 
 const faults = [];
+const tried = { firings: 0, marks: 0, enlarged: 0, heard: 0 };
 const browser = await chromium.launch({ executablePath: browserPath, args: ["--no-sandbox"] });
 for (const file of pages) {
   const address = pathToFileURL(resolve(file)).href;
@@ -61,6 +63,12 @@ for (const file of pages) {
       words.forEach((what) => fault(`at ${width} px ${what}`));
       if (shots) await page.screenshot({ path: `${shots}/${basename(file, ".html")}-${width}-${colorScheme}.png`, fullPage: true });
     }
+    if (colorScheme === "light") {
+      await page.setViewportSize({ width: 1000, height: 900 });
+      await page.goto(address);
+      const here = await touch(page, fault);
+      for (const what of Object.keys(tried)) tried[what] += here[what];
+    }
     await page.evaluate(axe);
     const result = await page.evaluate(() => axe.run(document, { resultTypes: ["violations"] }));
     for (const violation of result.violations.filter((v) => ["serious", "critical"].includes(v.impact))) {
@@ -69,18 +77,22 @@ for (const file of pages) {
     if (colorScheme === "light") {
       const pdf = await page.pdf({ format: "A4", path: shots && `${shots}/${basename(file, ".html")}.pdf` });
       if (pdf.length < 5000) fault("the printed page is empty");
-      // Without scripts nothing of the content may be missing.
-      const plain = await browser.newContext({ javaScriptEnabled: false });
+      // Without scripts nothing of the content may be missing: only buttons and readouts are made by them.
+      await page.goto(address);
+      await page.evaluate(() => document.querySelectorAll("button, .tools, .readout").forEach((one) => one.remove()));
+      const plain = await browser.newContext({ javaScriptEnabled: false, viewport: page.viewportSize() });
       const still = await plain.newPage();
       await still.goto(address);
-      const text = (await still.locator("main").innerText()).length;
-      if (text < 200) fault(`without scripts only ${text} characters are shown`);
+      const words = async (of) => (await of.locator("main").innerText()).replace(/\s+/g, " ").trim();
+      const [without, having] = [await words(still), await words(page)];
+      if (without.length < 200 || without !== having) fault(`without scripts ${without.length} characters are shown, with them ${having.length}`);
       await plain.close();
     }
     await context.close();
   }
 }
 await browser.close();
+for (const [what, count] of Object.entries(tried)) if (!count) faults.push(`on no page anything was tried of: ${what}`);
 faults.forEach((line) => console.log(line));
-console.log(`${pages.length} pages looked at, ${faults.length} faults`);
+console.log(`${pages.length} pages looked at, ${JSON.stringify(tried)} tried, ${faults.length} faults`);
 process.exit(faults.length ? 1 : 0);
