@@ -5,9 +5,7 @@ mod described;
 mod effects;
 
 use gaptone::firing::{EventKind, Firing};
-use gaptone::model::receiver::{
-    AgcLaw, AgcSettings, AudioBand, Carrier, DetectorSettings, Hum, Programme, ReceiverSettings,
-};
+use gaptone::model::receiver::{AgcLaw, AgcSettings, Carrier, DetectorSettings, Hum, Programme, ReceiverSettings};
 use gaptone::model::render::{Level, RenderSettings, Renderer};
 
 fn firing(time_s: f64, voltage_v: f64) -> Firing {
@@ -91,6 +89,7 @@ fn the_same_seed_gives_the_same_clip_and_another_seed_another() {
     assert_ne!(render(&settings(3), &firings), render(&settings(4), &firings));
 }
 
+#[test]
 fn another_internal_rate_gives_the_same_audio() {
     // Twice 48 kHz against twice 192 kHz inside: each with its own sections, its own means and its own decimator.
     let firings = train(2600.0, 0.5);

@@ -190,6 +190,7 @@ fn every_detector_behind_random_channels_and_before_random_audio_bands_is_that_o
 #[ignore = "takes minutes"]
 fn many_benches_beside_brute_force() {
     let all = DETECTORS.iter();
-    let beyond: Vec<_> = all.flat_map(|&(kind, timed)| beyond(WORST_DB[usize::from(timed)], kind, timed, 100..140)).collect();
+    let beyond: Vec<_> =
+        all.flat_map(|&(kind, timed)| beyond(WORST_DB[usize::from(timed)], kind, timed, 100..140)).collect();
     assert!(beyond.is_empty(), "{beyond:#?}");
 }
