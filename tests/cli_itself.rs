@@ -4,8 +4,8 @@ mod cli_common;
 
 use cli_common::{Folder, gaptone, json};
 
-const COMMANDS: [&str; 8] =
-    ["measure", "calibrate", "predict", "render", "trend", "abilities", "completions", "manual"];
+const COMMANDS: [&str; 9] =
+    ["measure", "calibrate", "predict", "render", "trend", "watch", "abilities", "completions", "manual"];
 
 fn stdout(arguments: &[&str]) -> String {
     let output = gaptone().args(arguments).output().expect("the program runs");

@@ -8,10 +8,11 @@ Exit status:
   0  done
   1  a file could not be read or written
   2  wrong usage or a wrong bench file
-  3  a recording holds no firing that can be measured";
+  3  a recording holds no firing that can be measured
+  4  a watch was ended by a limit";
 
 /// Examples of each command.
-const EXAMPLES: [(&str, &str); 8] = [
+const EXAMPLES: [(&str, &str); 9] = [
     (
         "measure",
         "\
@@ -41,6 +42,7 @@ const EXAMPLES: [(&str, &str); 8] = [
   gaptone trend gap.jsonl --report gap.html
   gaptone trend gap.jsonl --since 2026-11-30 --csv",
     ),
+    ("watch", "  arecord -q -f S16_LE -r 48000 | gaptone watch - --bench bench.toml --log gap.jsonl"),
     ("abilities", "  gaptone abilities --json"),
     ("completions", "  gaptone completions bash > ~/.local/share/bash-completion/completions/gaptone"),
     ("manual", "  gaptone manual ~/.local/share/man/man1; man gaptone-measure"),
