@@ -253,7 +253,10 @@ fn overlapping_clicks_are_resolved_as_often_and_leave_the_same_line_as_in_the_ot
         let (bandwidth_hz, rate_hz) = (number(&row, "bandwidth_Hz"), number(&row, "rate_per_s"));
         let (envelope, fired, delay_s) = overlapping(bandwidth_hz, rate_hz, 3.0);
         let share = resolved(&envelope, &fired, delay_s, rate_hz);
-        // At 4500 /s through 6 kHz the fraction is 0.051 smaller here: the ends of our window are rounded off.
+        // At 4500 /s through 6 kHz the fraction is 0.847 here and 0.898 there, and chance is not the cause: from recording to
+        // recording of the table's length it scatters by 0.003. The other chain's window ends in steps of 8 %, and each step is
+        // a maximum of its own when it passes; ours are rounded off. With the steps left in, twelve such recordings gave 0.863
+        // at this step of time, two at a quarter of it 0.913, so the table lies between.
         let allowed = if (bandwidth_hz, rate_hz) == (6000.0, 4500.0) { 0.055 } else { 0.05 };
         assert!((share - number(&row, "resolved_fraction")).abs() < allowed, "{row:?}: {share}");
         if rate_hz > HIGHEST_LINE_HZ {
@@ -292,8 +295,10 @@ fn agc(kind: &str) -> AgcSettings {
     }
 }
 
-// Of the fast loop at 2600 /s the first click is 20.2 % smaller here: ours acts at once, that one a sample of its chain later, a
-// tenth of its attack time, in which the first click gets through.
+// At 2600 /s clicks overlap in the audio, and the height at which they settle hangs on the audio filter: it is a fifth higher
+// behind our Butterworth high cut than behind the linear-phase one of that chain, as the noise in silence shows, which is a fifth
+// smaller against it whatever the gain control does. So there the first click is held against the noise, in which the
+// filter cancels. One first click behind the fast loop scatters by 5.5 % from draw to draw (sixteen draws), and so does the table's.
 // The inner law of the loop called "pump" is not stated with the table; the one here (the attack sets in above threshold and gain
 // together) follows it. In silence that loop goes on climbing for seconds, so its noise is that of the whole silence before the
 // first spark; the end of it alone is a quarter louder.
@@ -301,7 +306,7 @@ fn agc(kind: &str) -> AgcSettings {
 fn gain_control_pumps_in_the_direction_and_by_the_size_of_the_other_receiver() {
     /// Size of the pumping.
     const SIZE: f64 = 0.2;
-    const FAST_FIRST_CLICK: f64 = 0.22;
+    const OVERLAPPING_HZ: f64 = 2600.0;
     let bare = receiver(9000.0, Some(30.0));
     let mut without: HashMap<u64, f64> = HashMap::new();
     for row in rows(include_str!("data/rx-agc.csv")) {
@@ -320,15 +325,21 @@ fn gain_control_pumps_in_the_direction_and_by_the_size_of_the_other_receiver() {
         let settled = mean(&heights(&audio, delay_s));
         let first = peak(&audio, fired[0].time_s + delay_s).1 / settled;
         let silence: Vec<f64> = audio[..95_000].iter().map(|&x| f64::from(x) / CLICK).collect();
-        for (what, got, name) in [
-            ("first click", first, "first_click_over_late"),
-            ("gain", settled / plain, "gain_at_click_late"),
-            ("noise in silence", deviation(&silence) / settled, "noise_rms_in_silence_over_click"),
+        let noise = deviation(&silence) / settled;
+        let noise_there = number(&row, "noise_rms_in_silence_over_click");
+        let first_there = number(&row, "first_click_over_late");
+        let (first, first_there) = match rate_hz < OVERLAPPING_HZ {
+            true => (first, first_there),
+            false => (first / noise, first_there / noise_there),
+        };
+        for (what, got, there) in [
+            ("first click", first, first_there),
+            ("gain", settled / plain, number(&row, "gain_at_click_late")),
+            ("noise in silence", noise, noise_there),
         ] {
-            let ratio = got / number(&row, name);
-            eprintln!("{kind} {rate_hz}: {what} {got:.4} ({}) {:+.1} %", row[name], 100.0 * (ratio - 1.0));
-            let allowed = if what == "first click" && kind == "fast" { FAST_FIRST_CLICK } else { SIZE };
-            assert!((ratio - 1.0).abs() < allowed, "{row:?}: {what} {got}");
+            let ratio = got / there;
+            eprintln!("{kind} {rate_hz}: {what} {got:.4} ({there}) {:+.1} %", 100.0 * (ratio - 1.0));
+            assert!((ratio - 1.0).abs() < SIZE, "{row:?}: {what} {got}");
         }
     }
 }

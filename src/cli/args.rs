@@ -1,9 +1,13 @@
 //! The command line, defined once: help, usage errors and shell completions come from here.
 
+mod help;
+mod itself;
 mod page;
 mod trend;
 mod watch;
 
+pub use help::definition;
+pub use itself::{AbilitiesArguments, CompletionsArguments, ManualArguments};
 pub use page::{EvidenceArguments, PageArguments};
 pub use trend::TrendArguments;
 pub use watch::WatchArguments;
@@ -22,14 +26,7 @@ Examples:
   gaptone render --bench bench.toml -o clip.wav    a clip with known truth
   gaptone measure run.wav --bench bench.toml --log gap.jsonl; gaptone trend gap.jsonl
   arecord -q -f S16_LE -r 48000 | gaptone watch -   the gap while it runs
-  arecord -f S16_LE -r 48000 -d 10 | gaptone measure -
-
-Exit status:
-  0  done
-  1  a file could not be read or written
-  2  wrong usage or a wrong bench file
-  3  a recording holds no firing that can be measured
-  4  a watch was ended by a limit";
+  arecord -f S16_LE -r 48000 -d 10 | gaptone measure -";
 
 /// Longest clip, s.
 const LONGEST_CLIP_S: f64 = 86_400.0;
@@ -61,6 +58,12 @@ pub enum Command {
     Trend(TrendArguments),
     /// The gap while it runs: what it is doing now, and what has changed
     Watch(WatchArguments),
+    /// What this build can read, write and play, and which devices it sees
+    Abilities(AbilitiesArguments),
+    /// Completions of commands and options for a shell, on standard output
+    Completions(CompletionsArguments),
+    /// Manual pages, one for the program and one for each command
+    Manual(ManualArguments),
 }
 
 /// Arguments of `measure`.

@@ -2,6 +2,7 @@
 //!
 //! Results go to standard output, everything else to standard error.
 
+mod abilities;
 mod args;
 mod bench_file;
 mod calibrate;
@@ -9,6 +10,7 @@ mod clip;
 mod evidence;
 mod exit;
 pub mod files;
+mod itself;
 mod listen;
 mod log;
 mod measure;
@@ -24,14 +26,15 @@ mod trend;
 mod watch;
 
 use args::{Arguments, Command};
-use clap::Parser;
+use clap::FromArgMatches;
 use exit::Exit;
 use std::process::ExitCode;
 
 /// Runs the program with the arguments of the process.
 #[must_use]
 pub fn main() -> ExitCode {
-    let arguments = match Arguments::try_parse() {
+    let parsed = args::definition().try_get_matches().and_then(|matches| Arguments::from_arg_matches(&matches));
+    let arguments = match parsed {
         Ok(arguments) => arguments,
         Err(message) => {
             // Help asked for is printed to standard output and is no failure. A closed pipe is none either.
@@ -46,6 +49,9 @@ pub fn main() -> ExitCode {
         Command::Render(arguments) => render::run(arguments),
         Command::Trend(arguments) => trend::run(arguments),
         Command::Watch(arguments) => watch::run(arguments),
+        Command::Abilities(arguments) => abilities::run(arguments),
+        Command::Completions(arguments) => itself::completions(arguments),
+        Command::Manual(arguments) => itself::manual(arguments),
     };
     ended.unwrap_or_else(exit::Failure::end).into()
 }

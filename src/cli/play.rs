@@ -38,6 +38,14 @@ pub(super) enum PlayError {
     Failed(String),
 }
 
+/// Names of the sound outputs of this machine.
+pub(super) fn outputs() -> Vec<String> {
+    #[cfg(target_os = "linux")]
+    let _kept_quiet = alsa::Output::local_error_handler();
+    let Ok(devices) = cpal::default_host().output_devices() else { return Vec::new() };
+    devices.map(|device| device.to_string()).collect()
+}
+
 /// Plays the clip to its end.
 pub(super) fn play(samples: Vec<f32>, sample_rate_hz: u32) -> Result<(), PlayError> {
     // The sound library tells a dozen lines of its own about a missing device; ours says it in one.

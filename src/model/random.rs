@@ -39,7 +39,8 @@ impl Random {
     /// Uniform between 0 and 1, both excluded; 53 bits.
     #[inline]
     pub fn uniform(&mut self) -> f64 {
-        ((self.generator.next_u64() >> 11) as f64 + 0.5) * 2f64.powi(-53)
+        // The signed conversion is one instruction where the unsigned one is several; 53 bits are never negative.
+        ((self.generator.next_u64() >> 11) as i64 as f64 + 0.5) * 2f64.powi(-53)
     }
 
     /// Normal with mean 0 and standard deviation 1.

@@ -225,7 +225,9 @@ impl<I: Iterator<Item = Firing>> Renderer<I> {
     #[inline]
     fn step(&mut self) {
         let now_s = self.chain.advance();
-        while let Some(firing) = self.firings.next_if(|firing| firing.time_s <= now_s) {
+        // Not `next_if`, which takes the firing out and puts it back at every step.
+        while self.firings.peek().is_some_and(|firing| firing.time_s <= now_s) {
+            let Some(firing) = self.firings.next() else { break };
             let heard = if firing.kind == EventKind::Missed { 0.0 } else { firing.voltage_v };
             self.chain.click(firing.time_s, heard / self.reference_voltage_v);
         }

@@ -17,7 +17,7 @@ pub use decode::open;
 pub use encode::{ClipFacts, SampleFormat, write_frames};
 pub use error::FileError;
 pub use raw::{RawFormat, open_raw};
-pub use stream::Recording;
+pub use stream::{Recording, can_decode};
 pub use write::{check_writable, read_text, write_atomically};
 
 /// Name that stands for standard input or output.

@@ -7,13 +7,16 @@ use crate::audio::{AudioError, Block, Source};
 use std::io::ErrorKind;
 use symphonia::core::codecs::CodecParameters;
 use symphonia::core::codecs::audio::well_known::CODEC_ID_OPUS;
-use symphonia::core::codecs::audio::{AudioCodecParameters, AudioDecoder, AudioDecoderOptions};
+use symphonia::core::codecs::audio::{AudioCodecId, AudioCodecParameters, AudioDecoder, AudioDecoderOptions};
 use symphonia::core::errors::Error;
 use symphonia::core::formats::{FormatReader, TrackType};
 use symphonia::core::packet::Packet;
 
 /// Sample rates that can be analysed, Hz: below, no click fits between two samples; above, the head is wrong.
 const SAMPLE_RATES_HZ: std::ops::RangeInclusive<u32> = 1000..=4_000_000;
+
+/// Most frames of one packet: no coding packs more than 65 536, and memory is taken for what the head states.
+const MOST_PACKET_FRAMES: u64 = 1 << 20;
 
 /// Frames by which a lossy coding may miss the stated length without anything being cut: encoders pad.
 const LOSSY_PADDING: u64 = 4608;
@@ -170,9 +173,21 @@ impl Recording {
     }
 }
 
+/// True if audio of this coding can be decoded.
+#[must_use]
+pub fn can_decode(coding: AudioCodecId) -> bool {
+    coding != CODEC_ID_OPUS && symphonia::default::get_codecs().get_audio_decoder(coding).is_some()
+}
+
 fn decoder_for(parameters: &AudioCodecParameters) -> Result<Box<dyn AudioDecoder>, FileError> {
     if parameters.codec == CODEC_ID_OPUS {
         return Err(FileError::Coding("Opus audio".to_owned()));
+    }
+    let frames = parameters.max_frames_per_packet.max(parameters.frames_per_block).unwrap_or_default();
+    if frames > MOST_PACKET_FRAMES {
+        return Err(FileError::Broken(format!(
+            "states packets of {frames} frames; at most {MOST_PACKET_FRAMES} can be decoded"
+        )));
     }
     symphonia::default::get_codecs()
         .make_audio_decoder(parameters, &AudioDecoderOptions::default())

@@ -6,7 +6,7 @@
 
 use super::Complex;
 use super::detector::remains;
-use super::passage::{PARTS, Passage, simpson};
+use super::passage::{PARTS, Passage, halves, simpson};
 use serde::{Deserialize, Serialize};
 
 /// How the gain follows the level.
@@ -110,18 +110,18 @@ impl Agc {
     /// Gain at the end of a step of the envelope.
     #[inline]
     pub(super) fn passage<F: Fn(usize) -> Complex>(&mut self, passage: &Passage<'_, F>) -> f64 {
-        let [from, _, to] = passage.lengths;
+        let [from, .., to] = passage.lengths;
         if self.rises(from) == self.rises(to) {
             // The aim is bent where the level rises steeply, and what its mean would be off adds up from click to click.
             let aim = match self.settings.law {
-                AgcLaw::Feedback => simpson(passage.lengths.map(|length| self.aim(length))),
+                AgcLaw::Feedback => simpson(halves(&passage.lengths).map(|length| self.aim(length))),
                 AgcLaw::Forward | AgcLaw::LevelDependent => 0.0,
             };
             self.stretch(self.whole, passage.mean_length, aim);
             return self.now();
         }
         for piece in 0..PIECES {
-            let middle = (passage.at)((2 * piece + 1) * PARTS / (2 * PIECES));
+            let middle = passage.at((2 * piece + 1) * PARTS / (2 * PIECES));
             let length = middle.norm_sqr().sqrt();
             self.stretch(self.piece, length, self.aim(length));
         }
@@ -140,7 +140,8 @@ impl Agc {
     /// Gain at which the loop would come to rest.
     #[inline]
     fn aim(&self, envelope: f64) -> f64 {
-        (self.settings.threshold / envelope).min(self.settings.greatest_gain)
+        let aim = self.settings.threshold / envelope;
+        if aim < self.settings.greatest_gain { aim } else { self.settings.greatest_gain }
     }
 
     #[inline]

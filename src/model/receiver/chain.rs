@@ -45,6 +45,8 @@ pub(crate) struct Chain {
     from: Complex,
     /// Strength and age in s of the clicks since then.
     clicks: Vec<(Complex, f64)>,
+    /// Where in the step they came, in parts of it, if the detector must know.
+    breaks: Vec<f64>,
     agc: Option<Agc>,
     detector: Demodulator,
     reference: Option<Reference>,
@@ -119,6 +121,7 @@ impl Chain {
             drive: (noise.is_some() || carrier.is_some()).then_some(Drive { noise, carrier }),
             from: Complex::default(),
             clicks: Vec::new(),
+            breaks: Vec::new(),
             agc: settings.agc.map(|agc| Agc::new(agc, step_s)),
             detector: Demodulator::new(settings.detector, settings.bandwidth_hz, step_s),
             reference,
@@ -158,8 +161,9 @@ impl Chain {
     /// Mean of the audio over the step to the sample last advanced to; to be asked for once in each step.
     #[inline]
     pub(crate) fn audio(&mut self) -> f64 {
-        let now = self.channel.output();
-        let detected = self.detected(now);
+        let quarters = self.channel.quarters();
+        let now = quarters[3];
+        let detected = self.detected(quarters);
         self.clicks.clear();
         self.drive(now);
         if self.index % SETTLE_EVERY == 0 {
@@ -169,29 +173,34 @@ impl Chain {
         self.audio.step(detected)
     }
 
-    /// Output of the detector for the step at whose end the envelope is `now`.
+    /// Output of the detector for the step whose quarters end at these values of the envelope.
     #[inline]
-    fn detected(&mut self, now: Complex) -> f64 {
+    fn detected(&mut self, quarters: [Complex; 4]) -> f64 {
         let (channel, clicks) = (&self.channel, &self.clicks);
         let at = |part: usize| {
             let z = channel.output_before(PARTS - part);
             let premature = |(strength, age_s): &(Complex, f64)| strength * channel.premature(*age_s, PARTS - part);
             if clicks.is_empty() { z } else { z - clicks.iter().map(premature).sum::<Complex>() }
         };
-        let mut breaks = Vec::new();
-        if self.order.is_some_and(|order| order <= SHARP_ORDER) {
-            breaks.extend(clicks.iter().map(|(_, age_s)| PARTS as f64 * (1.0 - age_s * self.rate_hz)));
+        self.breaks.clear();
+        if !clicks.is_empty() && self.order.is_some_and(|order| order <= SHARP_ORDER) {
+            self.breaks.extend(clicks.iter().map(|(_, age_s)| PARTS as f64 * (1.0 - age_s * self.rate_hz)));
         }
-        let passage = Passage::new([self.from, at(PARTS / 2), now], &breaks, at);
+        let [quarter, middle, three_quarters, now] = quarters;
+        let within = if clicks.is_empty() {
+            [quarter, middle, three_quarters]
+        } else {
+            [1, 2, 3].map(|quarters| at(quarters * PARTS / 4))
+        };
+        let [quarter, middle, three_quarters] = within;
+        let mut passage = Passage::new([self.from, quarter, middle, three_quarters, now], &self.breaks, at);
         let reference = self.reference.as_mut().map_or([Complex::from(1.0); 3], Reference::next);
-        match &mut self.agc {
-            None => self.detector.passage(&passage, reference),
-            Some(agc) => {
-                let before = agc.now();
-                let after = agc.passage(&passage);
-                self.detector.passage(&passage.amplified(before, after), reference)
-            }
+        if let Some(agc) = &mut self.agc {
+            let before = agc.now();
+            let after = agc.passage(&passage);
+            passage.amplify(before, after);
         }
+        self.detector.passage(&passage, reference)
     }
 
     /// Lets in what comes at the sample last advanced to, at which the envelope is `now`.

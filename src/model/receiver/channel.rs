@@ -159,6 +159,7 @@ impl Channel {
     pub fn state(&self, step_s: f64) -> ChannelState {
         let flat = self.flat.as_ref().map(|f| f.state(step_s));
         let mut state = ChannelState { step_s, pairs: Vec::new(), chains: Vec::new(), flat };
+        let quarters = QUARTERS.map(|quarter| -step_s * (1.0 - quarter));
         for mode in &self.modes {
             let step = mode.step(step_s);
             let before = (0..=PARTS).map(|part| mode.weights_after(-step_s * part as f64 / PARTS as f64));
@@ -166,11 +167,15 @@ impl Channel {
             let first_two = |terms: &[Complex]| [terms[0], terms.get(1).copied().unwrap_or(nothing)];
             if step.len() <= 2 {
                 let before = before.map(|weights| first_two(&weights)).collect();
-                let (step, weights) = (first_two(&step), first_two(&mode.weights));
-                state.pairs.push(Pair { mode: mode.clone(), step, weights, before, states: [nothing; 2] });
+                let along = quarters.map(|time_s| first_two(&mode.weights_after(time_s)));
+                let along = [0, 1].map(|k| QuarterWeights::new(along.map(|weights| weights[k])));
+                let step = first_two(&step);
+                state.pairs.push(Pair { mode: mode.clone(), step, along, before, states: [nothing; 2] });
             } else {
                 let (before, states) = (before.collect(), vec![nothing; step.len()]);
-                state.chains.push(Chain { mode: mode.clone(), states, step, before });
+                let along = quarters.map(|time_s| mode.weights_after(time_s));
+                let along = (0..step.len()).map(|k| QuarterWeights::new(along.each_ref().map(|w| w[k]))).collect();
+                state.chains.push(Chain { mode: mode.clone(), states, step, along, before });
             }
         }
         state
@@ -203,6 +208,31 @@ fn divide_by_linear(series: &mut [Complex], gain: Complex, distance: Complex) {
     }
 }
 
+/// Places in a step at which the envelope is always asked for.
+const QUARTERS: [f64; 4] = [0.25, 0.5, 0.75, 1.0];
+
+/// Weights of one state in the envelope at the four quarters of the step that ends now. A weight w stands as (w.re, w.re) and
+/// (−w.im, w.im), so that the real and the imaginary part of a product are computed side by side.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct QuarterWeights([[[f64; 2]; 2]; 4]);
+
+impl QuarterWeights {
+    fn new(weights: [Complex; 4]) -> Self {
+        Self(weights.map(|w| [[w.re, w.re], [-w.im, w.im]]))
+    }
+
+    /// Adds what a state gives to real and imaginary parts.
+    #[inline]
+    fn add(&self, z: Complex, sums: &mut [[f64; 2]; 4]) {
+        let (straight, crossed) = ([z.re, z.im], [z.im, z.re]);
+        for (sum, [re, im]) in sums.iter_mut().zip(&self.0) {
+            for part in 0..2 {
+                sum[part] += re[part] * straight[part] + im[part] * crossed[part];
+            }
+        }
+    }
+}
+
 /// z_k = Σ step_j·z_(k−j), in place.
 fn convolve(z: &mut [Complex], step: &[Complex]) {
     for k in (0..z.len()).rev() {
@@ -216,10 +246,10 @@ struct Pair {
     mode: Mode,
     /// What one step does to the states.
     step: [Complex; 2],
-    weights: [Complex; 2],
+    along: [QuarterWeights; 2],
+    states: [Complex; 2],
     /// Weights in the output so many parts of a step ago.
     before: Vec<[Complex; 2]>,
-    states: [Complex; 2],
 }
 
 /// States of one pole of higher multiplicity.
@@ -228,6 +258,7 @@ struct Chain {
     mode: Mode,
     /// Step over one sample.
     step: Vec<Complex>,
+    along: Vec<QuarterWeights>,
     /// Weights in the output so many parts of a step ago.
     before: Vec<Vec<Complex>>,
     states: Vec<Complex>,
@@ -354,8 +385,8 @@ impl ChannelState {
     #[must_use]
     pub fn output(&self) -> Complex {
         let mut sum = self.flat.as_ref().map_or(Complex::default(), LinearState::output);
-        for Pair { weights: [w, chained_w], states: [z, chained], .. } in &self.pairs {
-            sum = sum + z * w + chained * chained_w;
+        for Pair { mode, states, .. } in &self.pairs {
+            sum += states.iter().zip(&mode.weights).map(|(z, weight)| z * weight).sum::<Complex>();
         }
         for chain in &self.chains {
             for (z, weight) in chain.states.iter().zip(&chain.mode.weights) {
@@ -363,5 +394,24 @@ impl ChannelState {
             }
         }
         sum
+    }
+
+    /// Complex envelope after each quarter of the step that ends now, as if what has come in since had been there.
+    #[inline]
+    pub(crate) fn quarters(&self) -> [Complex; 4] {
+        if let Some(flat) = &self.flat {
+            return [3, 2, 1, 0].map(|left| flat.output_before(left * PARTS / 4));
+        }
+        let mut sums = [[0.0; 2]; 4];
+        for Pair { along: [w, chained_w], states: [z, chained], .. } in &self.pairs {
+            w.add(*z, &mut sums);
+            chained_w.add(*chained, &mut sums);
+        }
+        for chain in &self.chains {
+            for (z, weights) in chain.states.iter().zip(&chain.along) {
+                weights.add(*z, &mut sums);
+            }
+        }
+        sums.map(|[re, im]| Complex::new(re, im))
     }
 }

@@ -4,7 +4,7 @@
 
 use super::Complex;
 use super::detector::{Detector, DetectorKind, DetectorSettings};
-use super::passage::{PARTS, Passage};
+use super::passage::{PARTS, POINTS, Passage};
 use super::weighting::{Instrument, QuasiPeak};
 use std::f64::consts::PI;
 
@@ -54,7 +54,8 @@ impl Demodulator {
         let (from, way) = (self.before, envelope - self.before);
         self.before = envelope;
         let at = |part: usize| from + way * (part as f64 / PARTS as f64);
-        self.passage(&Passage::new([from, at(PARTS / 2), envelope], &[], at), [reference; 3])
+        let points = [from, at(PARTS / 4), at(PARTS / 2), at(PARTS * 3 / 4), envelope];
+        self.passage(&Passage::new(points, &[], at), [reference; 3])
     }
 
     /// Output for a step of the envelope; the reference at its beginning, middle and end.
@@ -89,8 +90,8 @@ impl Demodulator {
 fn turned<F: Fn(usize) -> Complex>(passage: &Passage<'_, F>) -> f64 {
     let angle = |from: Complex, to: Complex| (to * from.conj()).arg();
     if passage.smooth {
-        return angle(passage.points[0], passage.points[2]);
+        return angle(passage.points[0], passage.points[POINTS - 1]);
     }
-    let at = |piece: usize| (passage.at)(piece * PARTS / PIECES);
+    let at = |piece: usize| passage.at(piece * PARTS / PIECES);
     (0..PIECES).map(|piece| angle(at(piece), at(piece + 1))).sum()
 }

@@ -7,7 +7,7 @@
 //! through five values of one internal step; a step in which one gives way to another is taken in pieces.
 
 use super::Complex;
-use super::passage::{PARTS, Passage};
+use super::passage::{PARTS, POINTS, Passage};
 use super::weighting::Band;
 use serde::{Deserialize, Serialize};
 
@@ -46,8 +46,6 @@ pub struct DetectorSettings {
 /// Pieces of a step in which the diode begins or ceases to conduct.
 const PIECES: usize = 16;
 
-/// Values of the envelope in a step.
-const POINTS: usize = 5;
 /// Coefficients of 1, s, …, s⁴ of the polynomials that are 1 at one of 0, 1/4, 1/2, 3/4, 1 and 0 at the others (Lagrange).
 const POLYNOMIALS: [[f64; POINTS]; POINTS] = [
     [1.0, -25.0 / 3.0, 70.0 / 3.0, -80.0 / 3.0, 32.0 / 3.0],
@@ -56,6 +54,25 @@ const POLYNOMIALS: [[f64; POINTS]; POINTS] = [
     [0.0, 16.0 / 3.0, -112.0 / 3.0, 224.0 / 3.0, -128.0 / 3.0],
     [0.0, -1.0, 22.0 / 3.0, -16.0, 32.0 / 3.0],
 ];
+/// Weights of the five in the value after so many pieces.
+const BETWEEN: [[f64; POINTS]; PIECES + 1] = between();
+
+const fn between() -> [[f64; POINTS]; PIECES + 1] {
+    let mut all = [[0.0; POINTS]; PIECES + 1];
+    let mut piece = 0;
+    while piece <= PIECES {
+        let s = piece as f64 / PIECES as f64;
+        let mut point = 0;
+        while point < POINTS {
+            let [a, b, c, d, e] = POLYNOMIALS[point];
+            all[piece][point] = a + s * (b + s * (c + s * (d + s * e)));
+            point += 1;
+        }
+        piece += 1;
+    }
+    all
+}
+
 /// What rounding may put between the envelope and the voltage that slides along it.
 const ROUNDING: f64 = 1e-9;
 
@@ -95,23 +112,29 @@ impl Detector {
         passage: &Passage<'_, F>,
         measure: impl Fn(f64) -> f64,
     ) -> f64 {
-        let at = |part: usize| measure((passage.at)(part).norm_sqr().sqrt());
-        let [from, middle, to] = passage.lengths.map(&measure);
-        if passage.smooth {
-            let envelope = [from, at(PARTS / 4), middle, at(PARTS * 3 / 4), to];
-            if let Some((end, mean)) = self.whole.plain(self.voltage, envelope) {
-                self.voltage = end;
-                return mean;
-            }
+        let envelope = passage.lengths.map(&measure);
+        if !passage.smooth {
+            let at = |piece: usize| measure(passage.at(piece * PARTS / PIECES).norm_sqr().sqrt());
+            return self.in_pieces(envelope[0], at);
         }
-        let (mut sum, mut from) = (0.0, from);
+        if let Some((end, mean)) = self.whole.plain(self.voltage, envelope) {
+            self.voltage = end;
+            return mean;
+        }
+        let at = |piece: usize| envelope.iter().zip(&BETWEEN[piece]).map(|(a, w)| a * w).sum();
+        self.in_pieces(envelope[0], at)
+    }
+
+    /// The same piece by piece; `at` tells what charges the capacitor at the end of a piece, counted from 1.
+    fn in_pieces(&mut self, mut from: f64, at: impl Fn(usize) -> f64) -> f64 {
+        let mut sum = 0.0;
         for piece in 1..=PIECES {
-            let to = at(piece * PARTS / PIECES);
+            let to = at(piece);
             let end = self.piece.straight(self.voltage, from, to);
-            sum += 0.5 * (self.voltage + end);
+            sum += self.voltage + end;
             (self.voltage, from) = (end, to);
         }
-        sum / PIECES as f64
+        sum * (0.5 / PIECES as f64)
     }
 }
 
@@ -120,8 +143,9 @@ impl Detector {
 struct Stretch {
     /// Length of the stretch in charge time constants; infinite if the diode has no resistance.
     charges: f64,
-    /// The same in discharge time constants.
-    discharges: f64,
+    /// Reciprocal of that, and of the length in discharge time constants.
+    per_charges: f64,
+    per_discharges: f64,
     /// What remains of the voltage after discharge over the stretch, and over a quarter of it.
     remains: [f64; 2],
     /// What remains of the voltage after charging, and the weights of five equidistant values of the envelope in what comes.
@@ -137,7 +161,8 @@ impl Stretch {
         let (charges, discharges) = (in_units(settings.charge_s), in_units(settings.discharge_s));
         Self {
             charges,
-            discharges,
+            per_charges: 1.0 / charges,
+            per_discharges: 1.0 / discharges,
             remains: [(-discharges).exp(), (-0.25 * discharges).exp()],
             charged: charging(charges),
             straight: charged(charges),
@@ -146,14 +171,14 @@ impl Stretch {
 
     /// Voltage at the end and its mean if one and the same thing goes on all the time; the envelope is the polynomial through
     /// five equidistant values.
-    #[inline]
+    #[inline(always)]
     fn plain(&self, voltage: f64, envelope: [f64; POINTS]) -> Option<(f64, f64)> {
         let [from, .., to] = envelope;
         let [whole, quarter] = self.remains;
         if voltage <= from && envelope.is_sorted() {
             let (own, weights) = &self.charged;
             let end = own * voltage + envelope.iter().zip(weights).map(|(a, w)| a * w).sum::<f64>();
-            return Some((end, boole(envelope) - (end - voltage) / self.charges));
+            return Some((end, boole(envelope) - (end - voltage) * self.per_charges));
         }
         let mut falling = voltage;
         let above = |a: &f64| {
@@ -162,7 +187,7 @@ impl Stretch {
             is_above
         };
         if whole > 0.0 && envelope.iter().all(above) {
-            return Some((voltage * whole, voltage * (1.0 - whole) / self.discharges));
+            return Some((voltage * whole, voltage * (1.0 - whole) * self.per_discharges));
         }
         let slides = |a: &f64, b: &f64| b <= a && *b >= a * quarter;
         let on_it = (voltage - from).abs() <= ROUNDING * from;
@@ -210,7 +235,7 @@ fn charged(x: f64) -> [f64; 3] {
 /// Mean of the polynomial through five equidistant values (Boole's rule).
 #[inline]
 fn boole([a, b, c, d, e]: [f64; POINTS]) -> f64 {
-    (7.0 * (a + e) + 32.0 * (b + d) + 12.0 * c) / 90.0
+    (7.0 * (a + e) + 32.0 * (b + d) + 12.0 * c) * (1.0 / 90.0)
 }
 
 /// What remains of the voltage after `x` charge time constants, and the weights of five equidistant values of the envelope in

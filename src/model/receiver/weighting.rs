@@ -11,7 +11,7 @@
 //! whose envelope is 1. Times in s.
 
 use super::detector::remains;
-use super::passage::{PARTS, Passage};
+use super::passage::{PARTS, Passage, halves};
 use super::selectivity::Selectivity;
 use super::{Channel, Complex};
 use serde::{Deserialize, Serialize};
@@ -144,13 +144,13 @@ impl QuasiPeak {
 
     /// Mean voltage over a step of the envelope.
     pub(super) fn passage<F: Fn(usize) -> Complex>(&mut self, passage: &Passage<'_, F>) -> f64 {
-        let [from, middle, to] = passage.lengths;
+        let [from, middle, to] = halves(&passage.lengths);
         let before = self.voltage;
         if from.max(middle).max(to) <= self.bleed * self.voltage {
             self.voltage *= self.bleed;
         } else {
             // The diode conducts for a few steps of each click; where it begins and ends the charge is far from a parabola.
-            let at = |half: usize| (passage.at)(half * PARTS / (2 * PIECES)).norm();
+            let at = |half: usize| passage.at(half * PARTS / (2 * PIECES)).norm();
             for piece in 0..PIECES {
                 self.stretch(self.step_s / PIECES as f64, [at(2 * piece), at(2 * piece + 1), at(2 * piece + 2)]);
             }

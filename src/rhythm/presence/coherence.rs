@@ -94,7 +94,12 @@ fn phase_growth(phase: &[f64], rate_hz: f64, line_hz: f64) -> (f64, f64) {
 
 /// Multiple coherence of the audio at ν with the audio demodulated by the line's phase at ν and −ν, less what chance gives.
 fn coherence(x: &[f32], z: &[Complex32], rate_hz: f64, line_hz: f64) -> f64 {
-    let length = 1usize << ((rate_hz * (24.0 / line_hz).max(0.02)).log2().round() as u32);
+    let samples = rate_hz * (24.0 / line_hz).max(0.02);
+    // A line that stands still, as in silence, would want a window without end.
+    if samples >= x.len() as f64 {
+        return 0.0;
+    }
+    let length = 1usize << (samples.log2().round() as u32);
     if x.len() < 2 * length {
         return 0.0;
     }
@@ -184,5 +189,12 @@ mod tests {
             .collect();
         let whistle = of_line(&bank, &whistle, 48_000.0, 1_900.0).unwrap();
         assert!(whistle.coherence < 0.1, "{whistle:?}");
+    }
+
+    // A damaged recording was like this: its line stood still, and a window for that would have taken all memory.
+    #[test]
+    fn a_line_in_silence_has_no_coherence() {
+        let silence = of_line(&FilterBank::new(), &vec![0.0; 4 * 48_000], 48_000.0, 1_900.0).unwrap();
+        assert_eq!((silence.frequency_hz, silence.coherence), (0.0, 0.0));
     }
 }
