@@ -174,14 +174,14 @@ mod tests {
     #[test]
     fn a_step_is_found_where_it_is_and_a_drift_is_none() {
         for seed in 0..50 {
-            let (t, n) = train(seed, 1200, 0.01, 0.0, 1100, 1.01);
+            let (t, n) = train(seed, 1200, 0.01, 0.0, 1100, 1.02);
             let (before, after) = (Scatter::of(&t[..1000], &n[..1000]).expect("long enough"), Scatter::of(&t, &n));
             // The step itself hardly changes what is thought of the scatter.
             let ratio = after.expect("long enough").long_run_s2 / before.long_run_s2;
             assert!((0.4..2.5).contains(&ratio), "{ratio}");
-            let step = find(&t, &n, before).expect("one per cent in one per cent of jitter, a hundred times");
+            let step = find(&t, &n, before).expect("two per cent in one per cent of jitter, a hundred times");
             assert!((step.time_s - t[1100]).abs() < 0.02, "{} {}", step.time_s, t[1100]);
-            assert!((step.rates_hz.0 / step.rates_hz.1 - 1.01).abs() < 0.005);
+            assert!((step.rates_hz.0 / step.rates_hz.1 - 1.02).abs() < 0.005);
             let drifting: Vec<f64> = t[..1000].iter().map(|t| t + 0.05 * t * t).collect();
             assert_eq!(find(&drifting, &n[..1000], before), None);
         }
