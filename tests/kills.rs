@@ -75,6 +75,31 @@ fn a_measurement_killed_at_any_moment_leaves_whole_files_and_a_log_that_can_be_r
     assert_eq!(left.len(), 4, "what killed runs left beside the files has gone: {left:?}");
 }
 
+const WATCH: [&str; 9] =
+    ["watch", "a.wav", "--every", "0.1", "--log", "gap.jsonl", "--log-every", "0.1", "--record=kept.wav"];
+
+#[test]
+fn a_watch_killed_at_any_moment_keeps_its_audio_and_a_log_that_can_be_read() {
+    let folder = Folder::new();
+    folder.wav("a.wav", &clicks(20.0, 48_000), 1, 48_000, 16);
+    let samples = |name: &str| -> Option<Vec<i32>> {
+        let mut reader = hound::WavReader::open(folder.path(name)).ok()?;
+        let shift = 24 - reader.spec().bits_per_sample;
+        Some(reader.samples::<i32>().map(|x| x.expect("the samples that its head states") << shift).collect())
+    };
+    let heard = samples("a.wav").expect("written");
+    let mut kept = Vec::new();
+    kill_often(folder.0.path(), &WATCH, |round| {
+        // Killed before it had begun its file, it has left none, or an empty one.
+        let now = samples("kept.wav").unwrap_or_default();
+        assert!(now == heard[..now.len()], "round {round}: {} samples are not those heard", now.len());
+        kept.push(now.len());
+        let _ = fs::remove_file(folder.path("kept.wav"));
+    });
+    assert!(kept.iter().any(|&count| count > 0 && count < heard.len()), "{kept:?}");
+    whole(folder.0.path(), &["trend", "gap.jsonl"]);
+}
+
 const BENCH: &str = include_str!("data/series-bench.toml");
 const SERIES: &str = "
 title = \"Killed\"

@@ -38,6 +38,8 @@ struct Abilities {
     reads: Vec<&'static str>,
     does_not_read: Vec<&'static str>,
     writes: [&'static str; 4],
+    /// Whether `watch` has a screen on a terminal.
+    live_view: bool,
     /// None in a build without the sound card.
     sound_outputs: Option<Vec<String>>,
 }
@@ -66,6 +68,7 @@ impl Abilities {
             reads: names(true).collect(),
             does_not_read: names(false).collect(),
             writes: WRITES,
+            live_view: cfg!(feature = "live-view"),
             sound_outputs: sound_outputs(),
         }
     }
@@ -77,13 +80,18 @@ impl Abilities {
             Some(outputs) => outputs.join("; "),
         };
         format!(
-            "gaptone {} on {}, {} cores\n  reads          {}\n  does not read  {}\n  writes         {}\n  sound card     {sound}\n",
+            "gaptone {} on {}, {} cores\n  reads          {}\n  does not read  {}\n  writes         {}\n  watch          {}\n  sound card     {sound}\n",
             self.version,
             self.system,
             self.cores,
             self.reads.join("; "),
             self.does_not_read.join("; "),
             self.writes.join("; "),
+            if self.live_view {
+                "on a terminal with a screen"
+            } else {
+                "in lines; build with the feature live-view for a screen"
+            },
         )
     }
 }

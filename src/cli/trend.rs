@@ -7,6 +7,9 @@ use crate::bench::{self, Dimension};
 use crate::trend::{Charted, Options, Trend, analyse};
 use crate::{pictures, report};
 
+/// Entries on a page or a picture, about: more make no difference to the eye, and a page must stay small enough to be mailed.
+const MOST_SHOWN: usize = 2000;
+
 /// Runs the command.
 ///
 /// # Errors
@@ -33,10 +36,11 @@ pub(super) fn run(arguments: &TrendArguments) -> Result<Exit, Failure> {
     }
     contents.notes.append(&mut trend.notes);
     trend.notes = contents.notes;
+    let shown = trend.shortened(MOST_SHOWN);
     page::put(
         &arguments.page,
-        || page::written(crate::page::trend(&arguments.log, &trend)),
-        || pictures::trend(&trend),
+        || page::written(crate::page::trend(&arguments.log, &shown)),
+        || pictures::trend(&shown),
     )?;
     say(&put(arguments, &trend)?)?;
     Ok(Exit::Done)

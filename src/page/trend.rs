@@ -53,6 +53,8 @@ fn minute(time: Moment) -> String {
 
 fn entries(trend: &Trend) -> String {
     let hidden = trend.points.len().saturating_sub(SHOWN);
+    // A history that was shortened has more entries than points; its last rows are not the last entries.
+    let which = if trend.points.len() < trend.entries { "of those kept here" } else { "entries" };
     let none = || "–".to_owned();
     let rows: Vec<Vec<String>> = trend.points[hidden..]
         .iter()
@@ -68,6 +70,6 @@ fn entries(trend: &Trend) -> String {
         })
         .collect();
     let caption =
-        if hidden > 0 { format!("The last {SHOWN} of {} entries", trend.points.len()) } else { "Entries".to_owned() };
+        if hidden > 0 { format!("The last {SHOWN} of {} {which}", trend.points.len()) } else { "Entries".to_owned() };
     table(&caption, &["time (UTC)", trend.charted.words(), "rate", "voltage as measured", "limits", "recording"], &rows)
 }

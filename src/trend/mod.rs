@@ -14,6 +14,7 @@ pub mod date;
 pub mod entry;
 pub mod limits;
 pub mod regression;
+mod shown;
 pub mod wear;
 pub mod weather;
 

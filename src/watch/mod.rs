@@ -9,6 +9,7 @@
 pub mod change;
 pub mod follow;
 mod glance;
+mod level;
 pub mod limit;
 mod looks;
 pub mod present;
@@ -21,6 +22,7 @@ use crate::rhythm::{Reading, locked_to};
 use crate::voltage::VoltageMeter;
 use change::Scatter;
 use follow::{Follower, Found};
+use level::LevelMeter;
 use limit::Limits;
 use present::Present;
 
@@ -96,10 +98,7 @@ pub struct Watch {
     unlocked: u32,
     drift_per_s: f64,
     samples: u64,
-    peak: f32,
-    square_sum: f64,
-    level_count: u64,
-    clipped: u64,
+    level: LevelMeter,
     changes: Vec<Change>,
 }
 
@@ -127,10 +126,7 @@ impl Watch {
             unlocked: 0,
             drift_per_s: 0.0,
             samples: 0,
-            peak: 0.0,
-            square_sum: 0.0,
-            level_count: 0,
-            clipped: 0,
+            level: LevelMeter::default(),
             changes: Vec::new(),
         }
     }
@@ -138,11 +134,7 @@ impl Watch {
     /// Takes mono samples in units of full scale.
     pub fn push(&mut self, mono: &[f32]) {
         self.samples += mono.len() as u64;
-        self.level_count += mono.len() as u64;
-        for &x in mono {
-            self.peak = self.peak.max(x.abs());
-            self.square_sum += f64::from(x).powi(2);
-        }
+        self.level.push(mono);
         let mut found = std::mem::take(&mut self.found);
         self.follower.push(mono, &mut found);
         for (now_s, found) in found.drain(..) {
@@ -155,7 +147,7 @@ impl Watch {
 
     /// Says how many of the samples pushed since the last glance were clipped.
     pub fn add_clipped(&mut self, frames: u64) {
-        self.clipped += frames;
+        self.level.add_clipped(frames);
     }
 
     /// Says that audio was lost here, nobody knows how much.
@@ -346,7 +338,7 @@ impl Watch {
             extra_share: share(firings.extra, firings.on_rhythm as f64),
             gap_voltage_v: voltage.gap_voltage_v,
             gap_voltage_spread_v: voltage.gap_voltage_spread_v,
-            level: self.level(),
+            level: self.level.read(),
             silence_s: self.last_s.map(|last_s| (time_s - last_s).max(0.0)),
             changes: std::mem::take(&mut self.changes),
             alarms: Vec::new(),
@@ -385,15 +377,6 @@ impl Watch {
             _ => {}
         }
         (self.locked_hz, self.unlocked) = (locked_hz, 0);
-    }
-
-    fn level(&mut self) -> Level {
-        let db = |x: f64| (x > 0.0).then(|| 20.0 * x.log10());
-        let rms = (self.square_sum / self.level_count.max(1) as f64).sqrt();
-        let clipped_share = self.clipped as f64 / self.level_count.max(1) as f64;
-        let level = Level { peak_dbfs: db(f64::from(self.peak)), rms_dbfs: db(rms), clipped_share };
-        (self.peak, self.square_sum, self.level_count, self.clipped) = (0.0, 0.0, 0, 0);
-        level
     }
 
     /// Ends the watch with the figures of the whole.
