@@ -291,21 +291,7 @@ run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2
         let mut measurement = measured();
         measurement.gap_voltage_v = None;
         measurement.gap_voltage_spread_v = None;
-        measurement.reading = Reading {
-            verdict: Verdict::None,
-            reason: "no gap is heard: nothing stands out of the noise".to_owned(),
-            firings: FiringCounts::default(),
-            firing_rate_hz: None,
-            period_s: None,
-            period_jitter_s: None,
-            cycle_jitter_s: None,
-            mains_locked_jitter_s: None,
-            drift_per_s: None,
-            timing_noise_s: None,
-            other_trains: vec![],
-            stretches: vec![],
-            notes: vec![],
-        };
+        measurement.reading = Reading::none("no gap is heard: nothing stands out of the noise".to_owned());
         assert_eq!(
             measurement_text(&measurement),
             "run.wav: 10.00 s at 44.1 kHz, from 2.50 s, channel left of 2\n  \

@@ -86,7 +86,7 @@ enum Stage {
 /// A train as it is followed.
 struct Following {
     known: Known,
-    /// Time up to which firings were handed out, s; time of the last of them; of the first.
+    /// Time up to which firings were handed out, s, and the last firing found.
     done_s: f64,
     last_s: f64,
     /// Audio that the train was learnt on, s, and where that began.

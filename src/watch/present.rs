@@ -31,12 +31,6 @@ impl Present {
         self.trains.clear();
     }
 
-    /// True if there are no firings.
-    #[must_use]
-    pub fn is_empty(&self) -> bool {
-        self.trains.is_empty()
-    }
-
     /// Takes the next firings.
     pub fn add(&mut self, train: Train) {
         self.trains.push_back(train);

@@ -32,18 +32,10 @@ pub fn bench(supply_v: f64, resistance_ohm: f64, capacitance_f: f64, residual_v:
 pub fn reading(period: Estimate) -> Reading {
     Reading {
         verdict: Verdict::Steady,
-        reason: String::new(),
         firings: FiringCounts { on_rhythm: 1000, missed: 0, extra: 0 },
         firing_rate_hz: Some(period.reciprocal()),
         period_s: Some(period),
-        period_jitter_s: None,
-        cycle_jitter_s: None,
-        mains_locked_jitter_s: None,
-        drift_per_s: None,
-        timing_noise_s: None,
-        other_trains: Vec::new(),
-        stretches: Vec::new(),
-        notes: Vec::new(),
+        ..Reading::none(String::new())
     }
 }
 
